@@ -1,0 +1,95 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/**
+ * @file marker.h
+ * Layer 6: topological markers of one sample. Sign: conventions.h.
+ */
+#ifndef SELVEDGE_MARKER_H
+#define SELVEDGE_MARKER_H
+
+#include "projector.h"
+
+#ifdef __cplusplus
+extern "C" {
+#endif
+
+/** How far a value of one sample can be trusted. */
+typedef enum sv_verdict {
+    SV_RESOLVED,   /**< the value stands */
+    SV_UNRESOLVED, /**< arithmetic cannot decide; `reason` says why */
+    SV_ABSENT,     /**< the marker does not exist on this flake; `reason` says why */
+    SV_FAILED      /**< the computation failed; `reason` has the message */
+} sv_verdict;
+
+/** One marker of one realisation, with its pedigree. */
+typedef struct sv_outcome {
+    sv_verdict verdict;
+    char reason[200];
+    char engine[16];
+    double value;  /**< window mean, or the index as a number */
+    int64_t index; /**< for markers that are integers */
+    double numerical_error, estimator_error;
+    double margin; /**< what the verdict hangs on: Bott: smallest distance of an eigenvalue angle
+                        from π, radian; local Chern: level spacing at the Fermi energy; NaN: none */
+    double weakest; /**< Bott: smallest modulus of an eigenvalue of V U V† U†, which is 0 when U or
+                         V is singular; NaN: none */
+    double sum_over_sites; /**< local Chern, when asked for; NaN otherwise */
+    int64_t window_cells;  /**< local Chern */
+    double highest_occupied, lowest_empty; /**< NaN when there is none */
+    int64_t electrons;
+} sv_outcome;
+
+/** Which copy of the flake a marker is computed on. */
+typedef enum sv_boundary { SV_OPEN_COPY, SV_CLOSED_COPY } sv_boundary;
+
+/** What a marker is given. */
+typedef struct sv_marker_input {
+    const sv_sample *sample;
+    sv_projector *projector;
+    const sv_value *values; /**< one per key of its kind */
+    double *ret_site_values; /**< local Chern: n values per site, or NULL; also switches on the
+                                  sum over all sites */
+} sv_marker_input;
+
+/** A marker: one row of the table, one file. */
+typedef struct sv_marker {
+    sv_kind kind;
+    bool is_index;
+    sv_boundary boundary;
+    bool needs_occupied_basis;
+    /** Fills the outcome; an unresolved value is SV_OK with that verdict. */
+    sv_status (*compute)(sv_context *context, const sv_marker_input *input,
+                         sv_outcome *ret_outcome);
+} sv_marker;
+
+/** Table of all markers. */
+SV_API const sv_marker *sv_marker_table(int *ret_count);
+/** Row of a name, or -1. */
+SV_API int sv_marker_find(const char *name);
+/** An outcome with every number set to "none". */
+SV_API sv_outcome sv_outcome_blank(void);
+
+/**
+ * Local Chern marker (Bianco, Resta, Phys. Rev. B 84, 241106(R) (2011)) of an open flake:
+ * c(r) = (4π/A) Im⟨r|P x P y P|r⟩, A the area of a cell; the sum over the orbitals of a cell is
+ * the marker of the cell and tends to +C in the bulk. The window mean is normalised by the number
+ * of cells of the window, vacant ones included. Key: window (share of the linear size).
+ */
+SV_API SV_MUST_USE sv_status sv_local_chern(sv_context *context, const sv_marker_input *input,
+                                            sv_outcome *ret_outcome);
+
+/**
+ * Bott index (Loring, Hastings, EPL 92, 67004 (2010)) of a torus:
+ * (1/2π) Im Tr log(V U V† U†), U = Ψ† e^{2πi u} Ψ, V = Ψ† e^{2πi v} Ψ with Ψ a basis of the
+ * occupied space and u, v the reduced coordinates of the orbital positions on the torus.
+ * Unresolved when an eigenvalue of V U V† U† lies within 1e-6 rad of the negative real axis or
+ * vanishes (U or V is singular), or a level sits on the Fermi energy. With no or with all states
+ * occupied the index is 0 by convention, and the reason says so. Cost: O(N·n²) for n occupied
+ * states plus the eigenvalues of one n×n matrix.
+ */
+SV_API SV_MUST_USE sv_status sv_bott_index(sv_context *context, const sv_marker_input *input,
+                                           sv_outcome *ret_outcome);
+
+#ifdef __cplusplus
+}
+#endif
+#endif

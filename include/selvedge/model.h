@@ -1,0 +1,98 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/**
+ * @file model.h
+ * Layer 3: the clean lattice model: vectors, orbitals, hops, flux. Conventions: conventions.h.
+ */
+#ifndef SELVEDGE_MODEL_H
+#define SELVEDGE_MODEL_H
+
+#include "base.h"
+#include "conventions.h"
+
+#ifdef __cplusplus
+extern "C" {
+#endif
+
+/** An orbital of the cell. Several orbitals may share one position. */
+typedef struct sv_orbital {
+    char name[32]; /**< case-sensitive */
+    double at[2];  /**< Cartesian position in the cell, lattice constants */
+    double onsite; /**< diagonal energy, unit of the model */
+    int position;  /**< number of its position among the distinct positions of the cell */
+} sv_orbital;
+
+/** amplitude = ⟨to, cell R + shift|H|from, cell R⟩; the conjugate element follows. */
+typedef struct sv_hop {
+    int from, to;
+    int shift[2];
+    sv_complex amplitude;
+} sv_hop;
+
+/** A clean model. Build it with sv_model_make() or sv_model_begin() … sv_model_finish(). */
+typedef struct sv_model {
+    char name[32];
+    double vectors[2][2]; /**< a1, a2, Cartesian, lattice constants; right-handed */
+    sv_orbital *orbitals;
+    int n_orbitals;
+    int n_positions; /**< distinct positions per cell */
+    sv_hop *hops;
+    int n_hops;
+    sv_index hop_capacity, orbital_capacity;
+    int flux[2]; /**< p, q: p/q quanta per cell (0, 1: none) */
+} sv_model;
+
+/** Kinds of models: table of names, docs and keys (custom has keys of type SV_KEY_TREE). */
+SV_API const sv_kind *sv_model_kinds(int *ret_count);
+
+/**
+ * Builds a named model other than custom.
+ * @param kind   row of sv_model_kinds()
+ * @param values one per key of the kind, in its order, validated
+ * @return SV_INVALID_INPUT for custom or flux [p, q] with q < 1
+ */
+SV_API SV_MUST_USE sv_status sv_model_make(sv_context *context, const sv_kind *kind,
+                                           const sv_value *values, sv_model *ret_model);
+
+/** Starts an empty model. @return SV_INVALID_INPUT when the vectors are not right-handed */
+SV_API SV_MUST_USE sv_status sv_model_begin(sv_context *context, const char *name,
+                                            const double a1[2], const double a2[2],
+                                            sv_model *ret_model);
+/** Adds an orbital. @return SV_INVALID_INPUT for a repeated or overlong name */
+SV_API SV_MUST_USE sv_status sv_model_add_orbital(sv_context *context, sv_model *model,
+                                                  const char *name, double x, double y,
+                                                  double onsite);
+/**
+ * Adds a hop; the conjugate follows by itself.
+ * @return SV_INVALID_INPUT when the same pair is listed twice (in either direction) or an
+ *         on-site term is not real
+ */
+SV_API SV_MUST_USE sv_status sv_model_add_hop(sv_context *context, sv_model *model, int from,
+                                              int to, int shift_i, int shift_j,
+                                              sv_complex amplitude);
+/** Sets p/q flux quanta per cell. @return SV_INVALID_INPUT for q < 1 */
+SV_API SV_MUST_USE sv_status sv_model_set_flux(sv_context *context, sv_model *model, int p, int q);
+/** Numbers the positions and checks invariants. Call once, last. */
+SV_API SV_MUST_USE sv_status sv_model_finish(sv_context *context, sv_model *model);
+SV_API void sv_model_free(sv_context *context, sv_model *model);
+
+/** Row of an orbital, or -1. */
+SV_API int sv_model_find_orbital(const sv_model *model, const char *name);
+/** Area of the cell, lattice constants squared. */
+SV_API double sv_model_cell_area(const sv_model *model);
+/** Reduced coordinates (u, v) of a Cartesian point: r = u·a1 + v·a2. */
+SV_API void sv_model_reduce(const sv_model *model, const double at[2], double ret_uv[2]);
+/** Largest |E| any flake of the clean model can have (Gershgorin: sums of |amplitude|). */
+SV_API double sv_model_norm_bound(const sv_model *model);
+
+/**
+ * Bloch Hamiltonian H(k), ψ_k(R) = e^{ik·R} u_k(R), k·R with R the cell (so that H is periodic
+ * in k): H_ba(k) = Σ hops t e^{−ik·s}. Only for models without flux.
+ * @param k         dimensionless: k·a1, k·a2
+ * @param[out] ret_matrix n_orbitals² values, column-major
+ */
+SV_API void sv_model_bloch(const sv_model *model, const double k[2], sv_complex *ret_matrix);
+
+#ifdef __cplusplus
+}
+#endif
+#endif

@@ -1,0 +1,102 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/**
+ * @file present.h
+ * Layer 10: terminal tables, JSON, CSV and figures.
+ */
+#ifndef SELVEDGE_PRESENT_H
+#define SELVEDGE_PRESENT_H
+
+#include <stdio.h>
+
+#include "store.h"
+
+#ifdef __cplusplus
+extern "C" {
+#endif
+
+/** Value of one swept parameter at one point. */
+typedef struct sv_coordinate {
+    const char *path;
+    double value;
+    bool integer;
+} sv_coordinate;
+
+/** One point with its summaries, in sweep order. */
+typedef struct sv_point_result {
+    sv_coordinate coordinates[SV_MAX_AXES];
+    int n_coordinates;
+    int64_t realisations;
+    sv_summary summaries[SV_MAX_MARKERS];
+    int n_summaries;
+} sv_point_result;
+
+/** All a table, a JSON document or a sweep figure needs. */
+typedef struct sv_result {
+    const char *title;
+    sv_point_result *points;
+    int32_t n_points;
+    double seconds;          /**< of this invocation; kept outside `points` */
+    bool complete;           /**< false: stopped early */
+} sv_result;
+
+/** JSON document of an ensemble (contract: "Results"), newline-terminated; taken from context. */
+SV_API SV_MUST_USE sv_status sv_result_json(sv_context *context, const sv_result *result,
+                                            char **ret_text);
+/** CSV of all points: one row per point and marker, a header with the parameter paths. */
+SV_API SV_MUST_USE sv_status sv_result_csv(sv_context *context, const sv_result *result,
+                                           char **ret_text);
+/** Table for a terminal, at most 80 columns. */
+SV_API void sv_result_print(const sv_result *result, bool colour, FILE *stream);
+
+/** One realisation seen site by site. */
+typedef struct sv_map_result {
+    const char *title;
+    const sv_sample *sample;
+    const sv_case *point;
+    const sv_record *record;
+    const double *site_values; /**< local Chern marker per site, or NULL */
+    double lattice_constant;   /**< nm, 0: none */
+} sv_map_result;
+
+/** JSON document of one realisation (contract: `map`). */
+SV_API SV_MUST_USE sv_status sv_map_json(sv_context *context, const sv_map_result *map,
+                                         char **ret_text);
+SV_API void sv_map_print(const sv_map_result *map, bool colour, FILE *stream);
+
+/** Paths of the files of one figure; empty when not made. */
+typedef struct sv_figure_files {
+    char script[512], data[512], svg[512], pdf[512], png[512];
+    bool drawn; /**< false: gnuplot is missing or failed; `reason` says so */
+    char reason[300];
+} sv_figure_files;
+
+/** Marker map of a flake, diverging colours about 0, vacancies visible, scale bar. */
+SV_API SV_MUST_USE sv_status sv_figure_map(sv_context *context, const char *folder,
+                                           const char *name, const sv_map_result *map,
+                                           sv_figure_files *ret_files);
+/** Sweep curve with error bars and the quantised values marked. Needs one axis. */
+SV_API SV_MUST_USE sv_status sv_figure_sweep(sv_context *context, const char *folder,
+                                             const char *name, const sv_result *result,
+                                             sv_figure_files *ret_files);
+
+/* ----------------------------------------------------------------- progress */
+
+/** Progress display of the terminal: bar, counts, time to go. */
+typedef struct sv_progress_bar {
+    FILE *stream;
+    bool terminal; /**< false: sparse plain lines */
+    double start_seconds, last_seconds;
+    sv_index first_done;
+    int last_percent;
+    bool shown;
+} sv_progress_bar;
+SV_API void sv_progress_bar_init(sv_progress_bar *bar, FILE *stream, bool terminal);
+/** An sv_progress_function with user = sv_progress_bar. */
+SV_API void sv_progress_bar_show(const char *phase, sv_index done, sv_index total, void *user);
+/** Clears the line. */
+SV_API void sv_progress_bar_end(sv_progress_bar *bar);
+
+#ifdef __cplusplus
+}
+#endif
+#endif

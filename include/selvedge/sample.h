@@ -1,0 +1,230 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/**
+ * @file sample.h
+ * Layer 4: flakes, defects, and the Hamiltonian of one realisation. Conventions: conventions.h.
+ */
+#ifndef SELVEDGE_SAMPLE_H
+#define SELVEDGE_SAMPLE_H
+
+#include "linalg.h"
+#include "model.h"
+
+#ifdef __cplusplus
+extern "C" {
+#endif
+
+/* ------------------------------------------------------------------- shape */
+
+typedef enum sv_shape {
+    SV_SHAPE_RECTANGLE,
+    SV_SHAPE_PARALLELOGRAM,
+    SV_SHAPE_HEXAGON,
+    SV_SHAPE_DISC
+} sv_shape;
+
+/** What the sheet's `flake` block says. Lengths in lattice constants. */
+typedef struct sv_flake_spec {
+    sv_shape shape;
+    bool has_cells;
+    int64_t cells[2]; /**< n1, n2; hexagon: n in cells[0] */
+    bool has_size;
+    double size[2]; /**< rectangle of a lattice whose vectors are not orthogonal */
+    bool has_radius;
+    double radius;    /**< hexagon of other lattices (centre to corner), disc */
+    bool periodic[2]; /**< along a1 and a2 (rectangle by size: along x and y) */
+} sv_flake_spec;
+
+/** Kinds of shapes with their keys (all but `boundary`, common to all). */
+SV_API const sv_kind *sv_shape_kinds(int *ret_count);
+
+/** Site of the pristine flake. */
+typedef struct sv_site {
+    int32_t cell;    /**< number of its cell in sv_flake.cells */
+    int32_t orbital; /**< row in the model */
+    double at[2];    /**< Cartesian, lattice constants */
+} sv_site;
+
+/** Cell of the pristine flake; at an edge some of its orbitals may be missing (hexagon). */
+typedef struct sv_cell {
+    int32_t i, j;
+    sv_index first_site; /**< its sites are first_site … first_site + n_sites − 1 */
+    int32_t n_sites;
+} sv_cell;
+
+/** The pristine flake: which cells and sites there are, and how it wraps. Immutable once made. */
+typedef struct sv_flake {
+    const sv_model *model; /**< borrowed */
+    sv_flake_spec spec;
+    sv_cell *cells;
+    sv_index n_cells;
+    sv_site *sites;
+    sv_index n_sites;
+    double centre[2]; /**< centroid of the shape, Cartesian */
+    int32_t low[2], high[2]; /**< bounding box of cell indices, both ends included */
+    int32_t *cell_at;        /**< (high0−low0+1)·(high1−low1+1) cell numbers or −1 */
+    bool periodic[2];
+    int32_t period[2][2]; /**< torus vectors in units of a1, a2 (rows) */
+} sv_flake;
+
+/** Could this flake be closed to a torus (all sides), or why not? */
+typedef struct sv_closure {
+    bool possible;
+    char reason[160];
+} sv_closure;
+SV_API sv_closure sv_flake_can_close(const sv_model *model, const sv_flake_spec *spec);
+
+/** Number of sites of the pristine flake without building it (an upper estimate for discs). */
+SV_API SV_MUST_USE sv_status sv_flake_count(sv_context *context, const sv_model *model,
+                                            const sv_flake_spec *spec, sv_index *ret_sites);
+
+/**
+ * Builds the pristine flake.
+ * @return SV_INVALID_INPUT for a shape that does not suit the lattice, an empty flake, or a
+ *         periodic side that does not fit the lattice or the flux
+ */
+SV_API SV_MUST_USE sv_status sv_flake_make(sv_context *context, const sv_model *model,
+                                           const sv_flake_spec *spec, sv_flake *ret_flake);
+SV_API void sv_flake_free(sv_context *context, sv_flake *flake);
+
+/**
+ * Averaging window: n1×n2 cells about the centre for flakes of L1×L2 cells, n the integer of the
+ * parity of L nearest to share·L (ties up); other shapes: cells whose centre (mean of the orbital
+ * positions) lies in the shape scaled by `share` about its centroid.
+ * @param share  0 < share ≤ 1
+ * @param[out] ret_inside  n_cells flags, taken from the context
+ * @return SV_INVALID_INPUT when no cell is inside
+ */
+SV_API SV_MUST_USE sv_status sv_flake_window(sv_context *context, const sv_flake *flake,
+                                             double share, bool **ret_inside,
+                                             sv_index *ret_cells);
+/** Centre of a cell: mean of the distinct orbital positions. */
+SV_API void sv_flake_cell_centre(const sv_flake *flake, sv_index cell, double ret_at[2]);
+/** Pristine site nearest to a point, its distance to *ret_distance; −1 for an empty flake. */
+SV_API sv_index sv_flake_nearest(const sv_flake *flake, const double at[2], double *ret_distance);
+
+/* ---------------------------------------------------------------- disorder */
+
+typedef enum sv_disorder_type { SV_DISORDER_VACANCIES, SV_DISORDER_ONSITE } sv_disorder_type;
+typedef enum sv_distribution { SV_BOX, SV_GAUSSIAN, SV_BINARY } sv_distribution;
+
+/** A defect position or site energy read from a measured file. */
+typedef struct sv_mark {
+    bool by_cell;      /**< cell, orbital given instead of a position */
+    int32_t cell[2];
+    int32_t orbital;   /**< −1: all orbitals of the cell or position */
+    double at[2];      /**< lattice constants, flake coordinates */
+    double energy;     /**< unit of the model (on-site files) */
+    int line;          /**< line in the file, for messages */
+} sv_mark;
+
+/** One entry of the sheet's `disorder` list. */
+typedef struct sv_disorder {
+    char name[64]; /**< names its random stream */
+    sv_disorder_type type;
+    int on; /**< orbital row, −1: any */
+    /* vacancies */
+    bool has_share, has_count;
+    double share;  /**< probability per position */
+    int64_t count; /**< exact number of positions */
+    /* on-site */
+    sv_distribution distribution;
+    double width; /**< box: full width; gaussian: standard deviation; binary: full splitting */
+    bool per_cell;
+    /* measured */
+    bool has_marks;
+    sv_mark *marks; /**< owned */
+    sv_index n_marks;
+    double tolerance;   /**< largest distance of a mark from its site, lattice constants */
+    char file[256];     /**< name for messages */
+} sv_disorder;
+
+/** Kinds of disorder with their keys (all but `name` and `kind`). */
+SV_API const sv_kind *sv_disorder_kinds(int *ret_count);
+SV_API void sv_disorder_free(sv_context *context, sv_disorder *disorder);
+
+/** Fault of a measured file found by sv_read_marks(): where and what. */
+typedef struct sv_table_fault {
+    int line, column; /**< from 1 */
+    char message[256];
+    char hint[256];
+    char text[256]; /**< the offending line */
+} sv_table_fault;
+
+/**
+ * Reads a CSV of measured defects (x, y) or site energies (x, y, energy or
+ * cell_i, cell_j[, orbital], energy). The first row names the columns; a unit may follow the name
+ * in brackets (`x [nm]`), after a slash (`x/nm`), or after the value (`12 nm`). Lines starting
+ * with # and blank lines are skipped.
+ * @param lattice_constant in nm, 0 when the model has none (then lengths must be bare)
+ * @param energy_unit      eV per unit of the model
+ * @param origin           where the file's (0, 0) lies in flake coordinates, lattice constants
+ * @param with_energy      an energy column is required
+ * @return SV_INVALID_INPUT with *ret_fault filled
+ */
+SV_API SV_MUST_USE sv_status sv_read_marks(sv_context *context, const sv_model *model,
+                                           const char *text, size_t size, bool with_energy,
+                                           double lattice_constant, double energy_unit,
+                                           const double origin[2], sv_mark **ret_marks,
+                                           sv_index *ret_count, sv_table_fault *ret_fault);
+/**
+ * Checks that every mark of the disorder falls on the flake.
+ * @return SV_INVALID_INPUT with the line of the first mark outside in *ret_fault
+ */
+SV_API SV_MUST_USE sv_status sv_marks_check(sv_context *context, const sv_flake *flake,
+                                            const sv_disorder *disorder,
+                                            sv_table_fault *ret_fault);
+
+/* -------------------------------------------------------------- occupation */
+
+typedef enum sv_filling { SV_BY_ENERGY, SV_BY_FILLING, SV_BY_ELECTRONS } sv_filling;
+
+/** Which states are occupied. */
+typedef struct sv_occupation {
+    sv_filling by;
+    double fermi_energy; /**< unit of the model */
+    double filling;      /**< share of the states present; electrons = nearest integer, ties up */
+    int64_t electrons;
+} sv_occupation;
+
+/* ------------------------------------------------------------------ sample */
+
+/** How many of what. */
+typedef struct sv_inventory {
+    sv_index pristine_sites, sites, vacancies /**< positions */, vacant_sites;
+    sv_index marks_merged; /**< measured defects that fell on a site already taken */
+} sv_inventory;
+
+/** One realisation: the sites that are left, their on-site disorder, and the Hamiltonian. */
+typedef struct sv_sample {
+    const sv_flake *flake; /**< borrowed */
+    sv_index n;            /**< sites left = order of the Hamiltonian */
+    sv_index *pristine;    /**< n pristine site numbers, ascending */
+    double *potential;     /**< n on-site disorder energies */
+    sv_sparse hamiltonian;
+    sv_inventory inventory;
+} sv_sample;
+
+/**
+ * Draws realisation `index` and builds its Hamiltonian, a pure function of the arguments.
+ * @param flake     its periodicity decides the boundary; a periodic and an open flake of the same
+ *                  cells get the same defects and potentials
+ * @param disorder  applied in order
+ * @return SV_INVALID_INPUT when a count exceeds the positions there are, or nothing is left
+ */
+SV_API SV_MUST_USE sv_status sv_sample_draw(sv_context *context, const sv_flake *flake,
+                                            const sv_disorder *disorder, int n_disorder,
+                                            uint64_t seed, sv_index index, sv_sample *ret_sample);
+SV_API void sv_sample_free(sv_context *context, sv_sample *sample);
+
+/** Writes the Hamiltonian as Matrix Market, coordinate complex hermitian (lower triangle). */
+SV_API SV_MUST_USE sv_status sv_sample_write_matrix(sv_context *context, const sv_sample *sample,
+                                                    const char *path);
+/** Writes `site,cell_i,cell_j,orbital,x,y` in matrix order; optional extra column. */
+SV_API SV_MUST_USE sv_status sv_sample_write_sites(sv_context *context, const sv_sample *sample,
+                                                   const char *path, const char *extra_name,
+                                                   const double *extra);
+
+#ifdef __cplusplus
+}
+#endif
+#endif

@@ -1,0 +1,161 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/**
+ * @file sheet.h
+ * The sample sheet: YAML read with positions, checked against one table of keys, completed with
+ * defaults, turned into models, flakes and disorder. Uses layers 1, 3 and 4.
+ */
+#ifndef SELVEDGE_SHEET_H
+#define SELVEDGE_SHEET_H
+
+#include <stdio.h>
+
+#include "sample.h"
+
+#ifdef __cplusplus
+extern "C" {
+#endif
+
+/* ------------------------------------------------------------- diagnostics */
+
+typedef enum sv_severity { SV_SEVERITY_ERROR, SV_SEVERITY_WARNING, SV_SEVERITY_NOTE } sv_severity;
+
+/** One message about an input, with its place. Lines and columns count from 1; 0: no place. */
+typedef struct sv_diagnostic {
+    sv_severity severity;
+    char *file;    /**< or "--set" for an override */
+    int line, column;
+    int length;    /**< characters to underline, at least 1 */
+    char *message;
+    char *hint;    /**< or NULL */
+    char *text;    /**< the source line, or NULL */
+    char *path;    /**< dotted path of the key, or NULL */
+} sv_diagnostic;
+
+/** Messages collected; at most 20 errors, then a last one that says so. */
+typedef struct sv_diagnostics {
+    sv_diagnostic *items;
+    sv_index count, capacity;
+    int errors;
+} sv_diagnostics;
+
+SV_API void sv_diagnostics_free(sv_context *context, sv_diagnostics *diagnostics);
+/** Prints `file:line:col: error: …`, the line, a caret and the hint for each. */
+SV_API void sv_diagnostics_print(const sv_diagnostics *diagnostics, bool colour, FILE *stream);
+
+/* ------------------------------------------------------------------- sheet */
+
+/** A sheet as read: its text, its tree, its overrides. */
+typedef struct sv_sheet sv_sheet;
+
+typedef struct sv_sheet_options {
+    size_t size;                  /**< sizeof(sv_sheet_options) */
+    const char *const *overrides; /**< `path=value` texts, later ones win */
+    int n_overrides;
+    const sv_kind *markers; /**< kinds the `markers` block may name (from the marker layer) */
+    int n_markers;
+    bool confined; /**< refuse files named by absolute paths, `..` or links: for the sheet of a
+                        run folder that came from elsewhere */
+} sv_sheet_options;
+
+/**
+ * Reads and validates a sheet. Every error goes to the diagnostics; nothing else is printed.
+ * @param path "-" reads standard input (files are then looked for in the current folder)
+ * @return SV_INVALID_INPUT with at least one error in the diagnostics
+ */
+SV_API SV_MUST_USE sv_status sv_sheet_read(sv_context *context, const char *path,
+                                           const sv_sheet_options *options,
+                                           sv_diagnostics *diagnostics, sv_sheet **ret_sheet);
+/** As sv_sheet_read() from memory. @param name shown in messages, its folder resolves files */
+SV_API SV_MUST_USE sv_status sv_sheet_parse(sv_context *context, const char *name,
+                                            const char *text, size_t size,
+                                            const sv_sheet_options *options,
+                                            sv_diagnostics *diagnostics, sv_sheet **ret_sheet);
+SV_API void sv_sheet_free(sv_context *context, sv_sheet *sheet);
+
+/** A marker the sheet asks for. */
+typedef struct sv_sheet_marker {
+    int kind;             /**< row of sv_sheet_options.markers */
+    sv_value values[16];  /**< one per key of the kind */
+} sv_sheet_marker;
+
+/** One axis of a sweep. */
+typedef struct sv_sweep_axis {
+    char path[200];
+    double *values;
+    sv_index count;
+    bool integer; /**< the parameter is an integer */
+} sv_sweep_axis;
+
+/** A file the sheet names. */
+typedef struct sv_sheet_file {
+    char *path;     /**< as opened */
+    char *written;  /**< as written in the sheet */
+    char digest[65];
+    char *key_path; /**< dotted path of the key, e.g. disorder.vac.file */
+} sv_sheet_file;
+
+/** The sheet as typed values; everything in the model's units. */
+typedef struct sv_setup {
+    char *title; /**< never NULL */
+    double lattice_constant; /**< nm, 0: not given */
+    double energy_unit;      /**< eV per unit of the model, 0: none known */
+    sv_model model;
+    sv_flake_spec flake;
+    sv_disorder *disorder;
+    int n_disorder;
+    sv_occupation occupation;
+    sv_sheet_marker markers[8];
+    int n_markers;
+    int64_t realisations;
+    uint64_t seed;
+    bool has_stop;
+    double stop_standard_error;
+    int stop_marker; /**< number in `markers` */
+    int64_t stop_at_least;
+    sv_sweep_axis axes[2];
+    int n_axes;
+    char engine[16];
+    double accuracy, sampling_error;
+    sv_sheet_file *files;
+    int n_files;
+    char *resolved; /**< the sheet with all defaults, as YAML that can be read back */
+    char *identity; /**< canonical text of what fixes the numbers: resolved sheet without
+                         realisations, stop, threads and title; files by digest */
+    struct sv_arena_chunk *memory; /**< holds title, files and texts of values */
+} sv_setup;
+
+/** A parameter set to a number: what a sweep does at one point. */
+typedef struct sv_assignment {
+    const char *path;
+    double value;
+} sv_assignment;
+
+/**
+ * The setup of the sheet, at a point of its sweep.
+ * @param assignments NULL for the sheet as written
+ * @return SV_INVALID_INPUT with an error at the sweep when a value is out of range
+ */
+SV_API SV_MUST_USE sv_status sv_sheet_setup(sv_context *context, const sv_sheet *sheet,
+                                            const sv_assignment *assignments, int n_assignments,
+                                            sv_diagnostics *diagnostics, sv_setup *ret_setup);
+SV_API void sv_setup_free(sv_context *context, sv_setup *setup);
+
+/**
+ * The resolved sheet with its files named anew, for a folder that holds copies of them. Reading it
+ * there gives the same identity.
+ * @param names  what to write for sv_setup.files[i] of the sheet as written, one each
+ * @param n_names must be the number of those files
+ * @param[out] ret_text taken from the context
+ */
+SV_API SV_MUST_USE sv_status sv_sheet_resolved_relocated(sv_context *context,
+                                                         const sv_sheet *sheet,
+                                                         const char *const *names, int n_names,
+                                                         char **ret_text);
+
+/** Prints every key with type, unit, range, default and doc line, from the parser's own tables. */
+SV_API void sv_sheet_print_keys(const sv_kind *markers, int n_markers, FILE *stream);
+
+#ifdef __cplusplus
+}
+#endif
+#endif

@@ -1,0 +1,86 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/**
+ * @file store.h
+ * Layer 8: the run folder and its ledger. One writer per folder.
+ *
+ * Layout: sheet.resolved.yaml · ledger.sqlite · points.csv · summary.json · inputs/ (copies of
+ * the files the sheet names) · figures/ (written by the report).
+ */
+#ifndef SELVEDGE_STORE_H
+#define SELVEDGE_STORE_H
+
+#include "ensemble.h"
+
+#ifdef __cplusplus
+extern "C" {
+#endif
+
+typedef struct sv_run sv_run;
+
+/** A file to keep a copy of in the run folder. */
+typedef struct sv_run_input {
+    const char *path;   /**< to read */
+    const char *name;   /**< name inside inputs/, no slashes */
+    const char *digest; /**< SHA-256 it must have */
+} sv_run_input;
+
+/** What a run is. Texts are borrowed for the call. */
+typedef struct sv_run_identity {
+    const char *identity;      /**< canonical text; its SHA-256 names the run */
+    const char *resolved_sheet; /**< written to sheet.resolved.yaml */
+    const char *program_version;
+    const char *kernel;        /**< arithmetic kernel (BLAS kind, threading, core) */
+    const sv_run_input *inputs;
+    int n_inputs;
+    const char *command_line;  /**< for the event table, or NULL */
+    const char *const *markers; /**< names in the order of the outcomes of a record; NULL: not
+                                     known, then rows carry positions only */
+    int n_markers;
+    int32_t n_points; /**< of the sweep, 1 without one; 0: not known */
+} sv_run_identity;
+
+/**
+ * Opens a run folder for writing, making it if needed, and locks it.
+ * A folder without a complete resolved sheet counts as new. A run of another identity is refused
+ * with SV_OTHER_RUN, naming what differs, unless `force` (then the change is recorded as an event
+ * and the rows kept must still match in shape).
+ * @return SV_STORAGE for anything that cannot be written, is locked by another process, or is
+ *         damaged
+ */
+SV_API SV_MUST_USE sv_status sv_run_open(sv_context *context, const char *folder,
+                                         const sv_run_identity *identity, bool force,
+                                         sv_run **ret_run);
+/** Opens an existing run for reading only; takes no lock and writes nothing. */
+SV_API SV_MUST_USE sv_status sv_run_open_read(sv_context *context, const char *folder,
+                                              sv_run **ret_run);
+/** Closes; records the event `end`. NULL is allowed. */
+SV_API void sv_run_close(sv_context *context, sv_run *run);
+
+/** Appends one realisation, durable when it returns (sv_sink.put with user = sv_run). */
+SV_API SV_MUST_USE sv_status sv_run_put(sv_context *context, const sv_record *record, void *run);
+/** Reads every realisation that fits the ensemble (point, realisation in range). */
+SV_API SV_MUST_USE sv_status sv_run_load(sv_context *context, sv_run *run, sv_ensemble *ensemble,
+                                         sv_index *ret_loaded);
+/** Largest realisation number present plus one, over all points (0: none). */
+SV_API SV_MUST_USE sv_status sv_run_extent(sv_context *context, sv_run *run,
+                                           int64_t *ret_realisations, int32_t *ret_points);
+/** Records an event (start, stop, continue, identity change) with a note. */
+SV_API SV_MUST_USE sv_status sv_run_event(sv_context *context, sv_run *run, const char *what,
+                                          const char *note);
+/**
+ * Value of a meta key, or NULL: "identity" (canonical text), "identity_digest", "program_version",
+ * "kernel", "sheet" (resolved sheet), "sheet_digest", "markers", "points".
+ */
+SV_API const char *sv_run_meta(const sv_run *run, const char *key);
+
+/** Writes a file of the run folder whole or not at all (temporary, fsync, rename). */
+SV_API SV_MUST_USE sv_status sv_write_file(sv_context *context, const char *path, const char *text,
+                                           size_t size);
+/** Path of a file inside the run folder. @param[out] path at least `size` bytes */
+SV_API SV_MUST_USE sv_status sv_run_path(sv_context *context, const sv_run *run, const char *name,
+                                         char *path, size_t size);
+
+#ifdef __cplusplus
+}
+#endif
+#endif

@@ -1,0 +1,175 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* One realisation: samples on the boundaries the markers need, projectors, markers. */
+#include "selvedge/ensemble.h"
+
+#include <stdio.h>
+#include <string.h>
+#include <time.h>
+
+static double seconds_now(void)
+{
+    struct timespec now;
+    clock_gettime(CLOCK_MONOTONIC, &now);
+    return (double)now.tv_sec + 1e-9 * (double)now.tv_nsec;
+}
+
+/* Failures that belong to this realisation and must not end the run. */
+static bool is_numerical(sv_status status)
+{
+    return status == SV_NUMERICAL || status == SV_NOT_CONVERGED || status == SV_UNDEFINED;
+}
+
+static bool any_on(const sv_case *point, sv_boundary boundary)
+{
+    for (int k = 0; k < point->n_markers; k++)
+        if (sv_marker_table(&(int){0})[point->markers[k].marker].boundary == boundary)
+            return true;
+    return false;
+}
+
+static void mark_absent(const sv_case *point, sv_boundary boundary, sv_record *record)
+{
+    for (int k = 0; k < point->n_markers; k++) {
+        if (sv_marker_table(&(int){0})[point->markers[k].marker].boundary != boundary)
+            continue;
+        record->outcomes[k] = sv_outcome_blank();
+        record->outcomes[k].verdict = SV_ABSENT;
+        snprintf(record->outcomes[k].reason, sizeof record->outcomes[k].reason, "%s",
+                 point->no_torus);
+    }
+}
+
+static void mark_failed(const sv_context *context, const sv_case *point, sv_boundary boundary,
+                        sv_record *record)
+{
+    for (int k = 0; k < point->n_markers; k++) {
+        if (sv_marker_table(&(int){0})[point->markers[k].marker].boundary != boundary)
+            continue;
+        record->outcomes[k] = sv_outcome_blank();
+        record->outcomes[k].verdict = SV_FAILED;
+        snprintf(record->outcomes[k].reason, sizeof record->outcomes[k].reason, "%.190s",
+                 context->error.message);
+    }
+}
+
+static sv_status one_marker(sv_context *context, const sv_marker *marker,
+                            const sv_marker_input *input, sv_outcome *ret_outcome)
+{
+    sv_status status = marker->compute(context, input, ret_outcome);
+    if (!is_numerical(status))
+        return status;
+    *ret_outcome = sv_outcome_blank();
+    ret_outcome->verdict = SV_FAILED;
+    snprintf(ret_outcome->reason, sizeof ret_outcome->reason, "%.190s", context->error.message);
+    return SV_OK;
+}
+
+/* All markers of one boundary on one sample. */
+static sv_status markers_on(sv_context *context, const sv_case *point, const sv_sample *sample,
+                            sv_boundary boundary, double *site_values, sv_record *record)
+{
+    int count;
+    const sv_marker *table = sv_marker_table(&count);
+    sv_projector_options options = point->solve;
+    sv_projector *projector = NULL;
+    for (int k = 0; k < point->n_markers; k++) {
+        const sv_marker *marker = &table[point->markers[k].marker];
+        if (marker->boundary == boundary && marker->needs_occupied_basis)
+            options.occupied_basis = true;
+    }
+    sv_status status = sv_projector_make(context, sample, &point->occupation, &options, &projector);
+    if (is_numerical(status)) {
+        mark_failed(context, point, boundary, record);
+        return SV_OK;
+    }
+    for (int k = 0; k < point->n_markers && status == SV_OK; k++) {
+        const sv_marker_request *request = &point->markers[k];
+        if (table[request->marker].boundary != boundary)
+            continue;
+        sv_marker_input input = {.sample = sample,
+                                 .projector = projector,
+                                 .values = request->values,
+                                 .ret_site_values = site_values};
+        status = one_marker(context, &table[request->marker], &input, &record->outcomes[k]);
+    }
+    sv_projector_free(context, projector);
+    return status;
+}
+
+static sv_status open_part(sv_context *context, const sv_case *point, sv_index realisation,
+                           double **ret_site_values, sv_sample *ret_sample, sv_record *record)
+{
+    sv_sample sample = {0};
+    double *site_values = NULL;
+    sv_status status = sv_sample_draw(context, point->open_flake, point->disorder,
+                                      point->n_disorder, point->seed, realisation, &sample);
+    if (status != SV_OK)
+        return status;
+    record->sites = sample.n;
+    record->vacancies = sample.inventory.vacancies;
+    if (ret_site_values != NULL)
+        status = sv_take(context, sample.n, sizeof *site_values, &site_values);
+    if (status == SV_OK && any_on(point, SV_OPEN_COPY))
+        status = markers_on(context, point, &sample, SV_OPEN_COPY, site_values, record);
+    if (status == SV_OK && ret_site_values != NULL) {
+        *ret_site_values = site_values;
+        site_values = NULL;
+    }
+    if (status == SV_OK && ret_sample != NULL) {
+        *ret_sample = sample;
+        sample = (sv_sample){0};
+    }
+    sv_give(context, site_values);
+    sv_sample_free(context, &sample);
+    return status;
+}
+
+static sv_status closed_part(sv_context *context, const sv_case *point, sv_index realisation,
+                             sv_record *record)
+{
+    if (!any_on(point, SV_CLOSED_COPY))
+        return SV_OK;
+    if (point->closed_flake == NULL) {
+        mark_absent(point, SV_CLOSED_COPY, record);
+        return SV_OK;
+    }
+    sv_sample sample = {0};
+    sv_status status = sv_sample_draw(context, point->closed_flake, point->disorder,
+                                      point->n_disorder, point->seed, realisation, &sample);
+    if (status != SV_OK)
+        return status;
+    record->sites = sample.n;
+    record->vacancies = sample.inventory.vacancies;
+    status = markers_on(context, point, &sample, SV_CLOSED_COPY, NULL, record);
+    sv_sample_free(context, &sample);
+    return status;
+}
+
+sv_status sv_realise(sv_context *context, const sv_case *point, sv_index realisation,
+                     double **ret_site_values, sv_sample *ret_sample, sv_record *ret_record)
+{
+    double start = seconds_now();
+    sv_record record = {
+        .realisation = realisation, .status = SV_OK, .n_outcomes = point->n_markers};
+    double *site_values = NULL;
+    sv_sample sample = {0};
+    sv_status status = SV_OK;
+    bool want_open = ret_site_values != NULL || ret_sample != NULL || any_on(point, SV_OPEN_COPY);
+    if (want_open)
+        status = open_part(context, point, realisation, ret_site_values ? &site_values : NULL,
+                           ret_sample ? &sample : NULL, &record);
+    if (status == SV_OK)
+        status = closed_part(context, point, realisation, &record);
+    if (status != SV_OK) {
+        sv_give(context, site_values);
+        sv_sample_free(context, &sample);
+        return status;
+    }
+    record.seconds = seconds_now() - start;
+    if (ret_site_values != NULL)
+        *ret_site_values = site_values;
+    if (ret_sample != NULL)
+        *ret_sample = sample;
+    *ret_record = record;
+    return SV_OK;
+}

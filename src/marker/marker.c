@@ -1,0 +1,74 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* The table of markers. */
+#include "marker_internal.h"
+
+#include <math.h>
+#include <string.h>
+
+static const sv_key local_chern_keys[] = {
+    {.name = "window",
+     .type = SV_KEY_REAL,
+     .low = 0,
+     .high = 1,
+     .low_open = true,
+     .fallback = "0.5",
+     .doc = "averaging window: share of the linear size about the centre"},
+};
+
+static const sv_marker table[] = {
+    {.kind = {"local_chern", "local Chern marker, mean over a window (Bianco, Resta 2011)",
+              local_chern_keys, 1},
+     .is_index = false,
+     .boundary = SV_OPEN_COPY,
+     .compute = sv_local_chern},
+    {.kind = {"bott", "Bott index on the torus (Loring, Hastings 2010)", NULL, 0},
+     .is_index = true,
+     .boundary = SV_CLOSED_COPY,
+     .needs_occupied_basis = true,
+     .compute = sv_bott_index},
+};
+
+const sv_marker *sv_marker_table(int *ret_count)
+{
+    *ret_count = (int)(sizeof table / sizeof table[0]);
+    return table;
+}
+
+int sv_marker_find(const char *name)
+{
+    for (int k = 0; k < (int)(sizeof table / sizeof table[0]); k++)
+        if (strcmp(table[k].kind.name, name) == 0)
+            return k;
+    return -1;
+}
+
+sv_outcome sv_outcome_blank(void)
+{
+    return (sv_outcome){.verdict = SV_UNRESOLVED,
+                        .value = NAN,
+                        .numerical_error = NAN,
+                        .estimator_error = 0.0,
+                        .margin = NAN,
+                        .weakest = NAN,
+                        .sum_over_sites = NAN,
+                        .highest_occupied = NAN,
+                        .lowest_empty = NAN};
+}
+
+sv_outcome sv_outcome_start(const sv_projector *projector)
+{
+    sv_outcome outcome = sv_outcome_blank();
+    const sv_levels *levels = sv_projector_levels(projector);
+    snprintf(outcome.engine, sizeof outcome.engine, "%s", sv_projector_engine(projector));
+    outcome.electrons = levels->occupied;
+    if (levels->has_highest)
+        outcome.highest_occupied = levels->highest_occupied;
+    if (levels->has_lowest)
+        outcome.lowest_empty = levels->lowest_empty;
+    if (levels->on_level)
+        snprintf(outcome.reason, sizeof outcome.reason,
+                 "a level coincides with the Fermi energy %.6g (within %.1e): choose a filling, a "
+                 "number of electrons or another energy",
+                 levels->fermi_energy, levels->resolution);
+    return outcome;
+}

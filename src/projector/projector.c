@@ -1,0 +1,137 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "projector_internal.h"
+
+#include <math.h>
+
+sv_projector_options sv_projector_options_default(void)
+{
+    return (sv_projector_options){.size = sizeof(sv_projector_options), .accuracy = 1e-6};
+}
+
+sv_status sv_projector_make(sv_context *context, const sv_sample *sample,
+                            const sv_occupation *occupation, const sv_projector_options *options,
+                            sv_projector **ret_projector)
+{
+    sv_projector *projector = NULL;
+    sv_status status = sv_take(context, 1, sizeof *projector, &projector);
+    if (status != SV_OK)
+        return status;
+    projector->sample = sample;
+    /* One engine so far: automatic choice and an explicit "dense" agree. */
+    status = sv_dense_engine_make(context, sample, occupation, options, projector);
+    if (status != SV_OK) {
+        sv_give(context, projector);
+        return status;
+    }
+    *ret_projector = projector;
+    return SV_OK;
+}
+
+void sv_projector_free(sv_context *context, sv_projector *projector)
+{
+    if (projector == NULL)
+        return;
+    projector->engine->free(context, projector->state);
+    sv_give(context, projector);
+}
+
+const sv_levels *sv_projector_levels(const sv_projector *projector)
+{
+    return &projector->levels;
+}
+
+const char *sv_projector_engine(const sv_projector *projector)
+{
+    return projector->engine->name;
+}
+
+sv_status sv_projector_apply(sv_context *context, sv_projector *projector, sv_index columns,
+                             const sv_complex *x, sv_complex *y)
+{
+    return projector->engine->apply(context, projector->state, columns, x, y);
+}
+
+sv_basis sv_projector_basis(const sv_projector *projector)
+{
+    return projector->engine->basis(projector->state);
+}
+
+sv_status sv_projector_occupied_basis(sv_context *context, const sv_projector *projector,
+                                      sv_basis *ret_basis)
+{
+    sv_basis basis = sv_projector_basis(projector);
+    if (!basis.available || basis.empty_side)
+        return SV_FAIL(context, SV_UNDEFINED, "the %s engine holds no basis of the occupied space",
+                       projector->engine->name);
+    *ret_basis = basis;
+    return SV_OK;
+}
+
+static double norm_of(const sv_complex *x, sv_index n)
+{
+    double sum = 0.0;
+    for (sv_index k = 0; k < n; k++)
+        sum += creal(x[k]) * creal(x[k]) + cimag(x[k]) * cimag(x[k]);
+    return sqrt(sum);
+}
+
+static double distance(const sv_complex *x, const sv_complex *y, sv_index n)
+{
+    double sum = 0.0;
+    for (sv_index k = 0; k < n; k++) {
+        sv_complex d = x[k] - y[k];
+        sum += creal(d) * creal(d) + cimag(d) * cimag(d);
+    }
+    return sqrt(sum);
+}
+
+/* A fixed probe: its phases come from a stream of their own, so results repeat. */
+static void fill_probe(sv_complex *v, sv_index n)
+{
+    sv_stream stream = sv_stream_make(1, "projector probe", 0);
+    for (sv_index k = 0; k < n; k++) {
+        double angle = 2.0 * M_PI * sv_stream_uniform(&stream, (int32_t)k, 0, 0);
+        v[k] = CMPLX(cos(angle), sin(angle));
+    }
+}
+
+static double gap_of(const sv_levels *levels)
+{
+    if (!levels->has_highest || !levels->has_lowest)
+        return INFINITY;
+    return fmax(levels->lowest_empty - levels->highest_occupied, levels->resolution);
+}
+
+sv_status sv_projector_defect(sv_context *context, sv_projector *projector, double *ret_defect)
+{
+    sv_index n = projector->sample->n;
+    const sv_sparse *h = &projector->sample->hamiltonian;
+    sv_complex *block = NULL;
+    sv_status status = sv_take_raw(context, 5 * n, sizeof *block, &block);
+    if (status != SV_OK)
+        return status;
+    sv_complex *v = block, *pv = v + n, *ppv = pv + n, *hv = ppv + n, *phv = hv + n;
+    fill_probe(v, n);
+    sv_sparse_apply(h, v, hv);
+    if ((status = sv_projector_apply(context, projector, 1, v, pv)) != SV_OK ||
+        (status = sv_projector_apply(context, projector, 1, pv, ppv)) != SV_OK ||
+        (status = sv_projector_apply(context, projector, 1, hv, phv)) != SV_OK)
+        goto out;
+    double idempotency = distance(ppv, pv, n) / norm_of(v, n);
+    sv_sparse_apply(h, pv, ppv);
+    double commutator = distance(ppv, phv, n) / norm_of(v, n) / gap_of(&projector->levels);
+    *ret_defect = fmax(idempotency, commutator);
+out:
+    sv_give(context, block);
+    return status;
+}
+
+void sv_projector_forecast(sv_engine engine, sv_index n, double *ret_bytes, double *ret_operations)
+{
+    (void)engine;
+    double order = (double)n;
+    /* Matrix, half of the vectors, work blocks of the markers; reduction, back-transformation and
+     * products, in units of n³ complex multiply–adds. */
+    *ret_bytes = 16.0 * order * order * 2.25;
+    *ret_operations = order * order * order * 2.6;
+}

@@ -1,0 +1,131 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Key tables of shapes and of disorder kinds: what the sheet may say about them. */
+#include "selvedge/sample.h"
+
+#define COUNT(rows) (int)(sizeof rows / sizeof rows[0])
+#define CELLS_PAIR(doc_)                                                                           \
+    {                                                                                              \
+        .name = "cells", .type = SV_KEY_INTEGER_PAIR, .low = 1, .high = 1e6, .doc = doc_           \
+    }
+#define RADIUS(required_, doc_)                                                                    \
+    {                                                                                              \
+        .name = "radius", .type = SV_KEY_REAL, .dimension = SV_DIM_LENGTH, .low = 0, .high = 1e6,  \
+        .low_open = true, .required = required_, .doc = doc_                                       \
+    }
+
+static const sv_key rectangle_keys[] = {
+    CELLS_PAIR("[n1, n2] cells, for lattices with orthogonal vectors"),
+    {.name = "size",
+     .type = SV_KEY_REAL_PAIR,
+     .dimension = SV_DIM_LENGTH,
+     .low = 0,
+     .high = 1e6,
+     .low_open = true,
+     .doc = "[x, y]: whole cells whose centre lies inside"},
+};
+static const sv_key parallelogram_keys[] = {
+    {.name = "cells",
+     .type = SV_KEY_INTEGER_PAIR,
+     .low = 1,
+     .high = 1e6,
+     .required = true,
+     .doc = "[n1, n2] cells along the lattice vectors"},
+};
+static const sv_key hexagon_keys[] = {
+    {.name = "cells",
+     .type = SV_KEY_INTEGER,
+     .low = 1,
+     .high = 1e4,
+     .doc = "honeycomb with zigzag edges: n hexagons a side, 6n² sites"},
+    RADIUS(false, "other lattices: centre to corner; whole cells whose centre lies inside"),
+};
+static const sv_key disc_keys[] = {
+    RADIUS(true, "whole cells whose centre lies inside, about the centre of cell (0, 0)"),
+};
+
+static const sv_kind shapes[] = {
+    [SV_SHAPE_RECTANGLE] = {"rectangle", "sides along x and y", rectangle_keys,
+                            COUNT(rectangle_keys)},
+    [SV_SHAPE_PARALLELOGRAM] = {"parallelogram", "sides along the lattice vectors",
+                                parallelogram_keys, COUNT(parallelogram_keys)},
+    [SV_SHAPE_HEXAGON] = {"hexagon", "regular hexagon, open only", hexagon_keys,
+                          COUNT(hexagon_keys)},
+    [SV_SHAPE_DISC] = {"disc", "disc, open only", disc_keys, COUNT(disc_keys)},
+};
+
+const sv_kind *sv_shape_kinds(int *ret_count)
+{
+    *ret_count = COUNT(shapes);
+    return shapes;
+}
+
+/* Keys every kind of disorder has; one macro so that they cannot differ. */
+#define COMMON_KEYS                                                                                \
+    {.name = "on",                                                                                 \
+     .type = SV_KEY_TEXT,                                                                          \
+     .fallback = "any",                                                                            \
+     .doc = "any, or the name of an orbital (case-sensitive)"},                                    \
+        {.name = "file", .type = SV_KEY_FILE, .doc = "measured values, CSV beside the sheet"},     \
+        {.name = "origin",                                                                         \
+         .type = SV_KEY_REAL_PAIR,                                                                 \
+         .dimension = SV_DIM_LENGTH,                                                               \
+         .low = -1e6,                                                                              \
+         .high = 1e6,                                                                              \
+         .fallback = "[0, 0]",                                                                     \
+         .doc = "where the file's (0, 0) lies in the flake"},                                      \
+    {                                                                                              \
+        .name = "tolerance", .type = SV_KEY_REAL, .dimension = SV_DIM_LENGTH, .low = 0,            \
+        .high = 1e3, .fallback = "0.75",                                                           \
+        .doc = "largest distance of a measured position from its site"                             \
+    }
+
+static const sv_key vacancy_keys[] = {
+    {.name = "share",
+     .type = SV_KEY_REAL,
+     .low = 0,
+     .high = 1,
+     .doc = "probability that a position is vacant, drawn independently"},
+    {.name = "density",
+     .type = SV_KEY_REAL,
+     .dimension = SV_DIM_DENSITY,
+     .low = 0,
+     .high = 1e6,
+     .doc = "vacancies per area; sets share"},
+    {.name = "count",
+     .type = SV_KEY_INTEGER,
+     .low = 0,
+     .high = 1e9,
+     .doc = "exact number of vacant positions"},
+    COMMON_KEYS,
+};
+static const sv_key onsite_keys[] = {
+    {.name = "distribution",
+     .type = SV_KEY_CHOICE,
+     .choices = "box gaussian binary",
+     .doc = "law of the on-site energies"},
+    {.name = "width",
+     .type = SV_KEY_REAL,
+     .dimension = SV_DIM_ENERGY,
+     .low = 0,
+     .high = 1e9,
+     .doc = "box: FULL width, V in [-W/2, W/2]; gaussian: standard deviation; binary: splitting"},
+    {.name = "per",
+     .type = SV_KEY_CHOICE,
+     .choices = "site cell",
+     .fallback = "site",
+     .doc = "site: independent per site; cell: one value for all orbitals of a cell"},
+    COMMON_KEYS,
+};
+
+static const sv_kind disorders[] = {
+    [SV_DISORDER_VACANCIES] = {"vacancies", "removes every orbital at a position", vacancy_keys,
+                               COUNT(vacancy_keys)},
+    [SV_DISORDER_ONSITE] = {"onsite", "adds an energy to each site", onsite_keys,
+                            COUNT(onsite_keys)},
+};
+
+const sv_kind *sv_disorder_kinds(int *ret_count)
+{
+    *ret_count = COUNT(disorders);
+    return disorders;
+}
