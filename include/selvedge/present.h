@@ -19,6 +19,7 @@ typedef struct sv_coordinate {
     const char *path;
     double value;
     bool integer;
+    const char *label; /**< readable name with unit for axes, or NULL: made from the path */
 } sv_coordinate;
 
 /** One point with its summaries, in sweep order. */
@@ -38,6 +39,13 @@ typedef struct sv_result {
     double seconds;          /**< of this invocation; kept outside `points` */
     bool complete;           /**< false: stopped early */
 } sv_result;
+
+/**
+ * A value with its standard error in the last digits: 0.9981(4), 12.3(1.5), 1(0); the error has
+ * one digit, two when it begins with 1. A NaN error leaves the parentheses out, a NaN value gives
+ * "-". @param[out] text at least 48 bytes
+ */
+SV_API void sv_format_uncertain(double value, double error, char *text, size_t size);
 
 /** JSON document of an ensemble (contract: "Results"), newline-terminated; taken from context. */
 SV_API SV_MUST_USE sv_status sv_result_json(sv_context *context, const sv_result *result,
@@ -62,6 +70,14 @@ typedef struct sv_map_result {
 SV_API SV_MUST_USE sv_status sv_map_json(sv_context *context, const sv_map_result *map,
                                          char **ret_text);
 SV_API void sv_map_print(const sv_map_result *map, bool colour, FILE *stream);
+
+/**
+ * Colour of the marker maps: diverging, even steps in the Oklab space (Ottosson 2020), lightness
+ * falling equally to both sides of a neutral centre.
+ * @param position −1 … 1, clipped; 0 is the neutral centre
+ * @param[out] ret_rgb sRGB, 0 … 255
+ */
+SV_API void sv_palette_colour(double position, uint8_t ret_rgb[3]);
 
 /** Paths of the files of one figure; empty when not made. */
 typedef struct sv_figure_files {

@@ -118,9 +118,11 @@ typedef struct sv_setup {
     double accuracy, sampling_error;
     sv_sheet_file *files;
     int n_files;
-    char *resolved; /**< the sheet with all defaults, as YAML that can be read back */
+    char *resolved; /**< the sheet with all defaults, as YAML that can be read back; NULL at a point
+                         of a sweep, which has no axes either */
     char *identity; /**< canonical text of what fixes the numbers: resolved sheet without
-                         realisations, stop, threads and title; files by digest */
+                         realisations, stop, threads and title; files by digest. NULL at a
+                         point of a sweep */
     struct sv_arena_chunk *memory; /**< holds title, files and texts of values */
 } sv_setup;
 

@@ -1,0 +1,65 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* selvedge check: the sheet with all defaults, and what it will cost. Computes no marker. */
+#include "program_internal.h"
+
+#include <math.h>
+#include <string.h>
+
+#include <jansson.h>
+
+static int print_json(session *s, const forecast *f)
+{
+    json_t *root = json_pack(
+        "{s:i, s:s, s:s, s:s, s:{s:I, s:i, s:I, s:s, s:f, s:f, s:i, s:f, s:f}}", "selvedge", 1,
+        "command", "check", "title", s->base.title, "resolved", s->base.resolved, "forecast",
+        "sites", (json_int_t)f->sites, "points", (int)s->n_points, "realisations",
+        (json_int_t)f->realisations, "engine", "dense", "memory_bytes_per_thread",
+        f->bytes_per_thread, "memory_bytes_available", f->bytes_available, "threads", s->threads,
+        "seconds_per_realisation", f->seconds_per_realisation, "seconds", f->seconds);
+    if (root == NULL)
+        return sv_status_exit_code(SV_NO_MEMORY);
+    json_dumpf(root, stdout, JSON_INDENT(1));
+    fputc('\n', stdout);
+    json_decref(root);
+    return 0;
+}
+
+/* Vacancies in the units a grower uses, when the lattice constant is known. */
+static void print_film(const session *s)
+{
+    double a = s->base.lattice_constant;
+    double area = sv_model_cell_area(&s->base.model);
+    if (a <= 0.0)
+        return;
+    printf("#\n# film: one cell is %.4g nm^2; %.4g positions per cm^2\n", area * a * a,
+           s->base.model.n_positions / (area * a * a) * 1e14);
+    for (int k = 0; k < s->base.n_disorder; k++) {
+        const sv_disorder *d = &s->base.disorder[k];
+        double positions = s->base.model.n_positions / (area * a * a);
+        if (d->type == SV_DISORDER_VACANCIES && d->has_share && d->share > 0.0)
+            printf("# %s: share %.4g is %.4g cm^-2, mean distance %.3g nm\n", d->name, d->share,
+                   d->share * positions * 1e14, 0.5 / sqrt(d->share * positions));
+    }
+}
+
+int run_check(sv_context *context, const options *o)
+{
+    session s = {0};
+    forecast f;
+    int code = 0;
+    sv_status status = session_open(context, o, o->files[0], false, true, &s);
+    if (status == SV_OK)
+        status = session_forecast(&s, true, &f);
+    if (status != SV_OK) {
+        code = fail_exit(context, status);
+    } else if (o->json) {
+        code = print_json(&s, &f);
+    } else {
+        fputs(s.base.resolved, stdout);
+        printf("#\n# forecast\n");
+        print_forecast(&f, &s, "#   ", stdout);
+        print_film(&s);
+    }
+    session_close(&s);
+    return code;
+}

@@ -1,0 +1,103 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* selvedge map: one realisation, the local Chern marker site by site. */
+#include "program_internal.h"
+
+#include <errno.h>
+#include <string.h>
+#include <sys/stat.h>
+#include <unistd.h>
+
+static sv_status refuse_existing(sv_context *context, const options *o, const char *path)
+{
+    if (path != NULL && !o->force && access(path, F_OK) == 0)
+        return SV_FAIL(context, SV_STORAGE, "%s exists; --force overwrites it", path);
+    return SV_OK;
+}
+
+static sv_status draw_figure(sv_context *context, const options *o, const sv_map_result *map)
+{
+    sv_figure_files files;
+    if (mkdir(o->output, 0777) != 0 && errno != EEXIST)
+        return SV_FAIL(context, SV_STORAGE, "cannot make folder %s: %s", o->output,
+                       strerror(errno));
+    sv_status status = sv_figure_map(context, o->output, "marker_map", map, &files);
+    if (status != SV_OK || o->json)
+        return status;
+    if (files.drawn)
+        printf("figure: %s\n        %s\n        %s\n", files.svg, files.pdf, files.png);
+    else
+        printf("figure: %s (not drawn: %s)\n", files.script, files.reason);
+    return SV_OK;
+}
+
+static sv_status print_result(sv_context *context, const options *o, const sv_map_result *map)
+{
+    char *text = NULL;
+    if (!o->json) {
+        sv_map_print(map, wants_colour(o, stdout), stdout);
+        return SV_OK;
+    }
+    sv_status status = sv_map_json(context, map, &text);
+    if (status == SV_OK)
+        fputs(text, stdout);
+    sv_give(context, text);
+    return status;
+}
+
+/* A marker that arithmetic could not decide makes the command end with 1. */
+static sv_status verdict(sv_context *context, const sv_record *record)
+{
+    for (int k = 0; k < record->n_outcomes; k++)
+        if (record->outcomes[k].verdict == SV_UNRESOLVED)
+            return SV_FAIL(context, SV_UNDECIDED, "%s", record->outcomes[k].reason);
+        else if (record->outcomes[k].verdict == SV_FAILED)
+            return SV_FAIL(context, SV_NUMERICAL, "%s", record->outcomes[k].reason);
+    return SV_OK;
+}
+
+static sv_status map_one(session *s)
+{
+    sv_context *context = s->context;
+    const options *o = s->options;
+    const sv_case *problem = &s->points[0].problem;
+    sv_record record;
+    sv_sample sample = {0};
+    double *values = NULL;
+    sv_status status = refuse_existing(context, o, o->csv);
+    if (status == SV_OK)
+        status = sv_realise(context, problem, o->realisation, &values, &sample, &record);
+    if (status != SV_OK)
+        goto out;
+    sv_map_result map = {.title = s->base.title,
+                         .sample = &sample,
+                         .point = problem,
+                         .record = &record,
+                         .site_values = values,
+                         .lattice_constant = s->base.lattice_constant};
+    int chern = sv_marker_find("local_chern");
+    for (int k = 0; k < record.n_outcomes; k++)
+        if (problem->markers[k].marker == chern && record.outcomes[k].verdict != SV_RESOLVED)
+            map.site_values = NULL;
+    if (o->csv != NULL && map.site_values != NULL)
+        status = sv_sample_write_sites(context, &sample, o->csv, "local_chern", values);
+    if (status == SV_OK)
+        status = print_result(context, o, &map);
+    if (status == SV_OK && o->output != NULL && map.site_values != NULL)
+        status = draw_figure(context, o, &map);
+    if (status == SV_OK)
+        status = verdict(context, &record);
+out:
+    sv_give(context, values);
+    sv_sample_free(context, &sample);
+    return status;
+}
+
+int run_map(sv_context *context, const options *o)
+{
+    session s = {.add_map_marker = true};
+    sv_status status = session_open(context, o, o->files[0], false, false, &s);
+    if (status == SV_OK)
+        status = map_one(&s);
+    session_close(&s);
+    return status == SV_OK ? 0 : fail_exit(context, status);
+}

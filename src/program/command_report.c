@@ -1,0 +1,164 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* selvedge report: figures of a run. The run folder may come from elsewhere: it is read, checked,
+ * and only its figures/ folder is written. */
+#include "program_internal.h"
+
+#include <errno.h>
+#include <string.h>
+#include <sys/stat.h>
+
+static sv_status figure_folder(session *s, sv_run *run, char *path, size_t size)
+{
+    struct stat info;
+    sv_status status = SV_OK;
+    if (s->options->output != NULL)
+        snprintf(path, size, "%s", s->options->output);
+    else
+        status = sv_run_path(s->context, run, "figures", path, size);
+    if (status != SV_OK)
+        return status;
+    if (mkdir(path, 0777) != 0 && errno != EEXIST)
+        return SV_FAIL(s->context, SV_STORAGE, "cannot make folder %s: %s", path, strerror(errno));
+    if (lstat(path, &info) != 0 || !S_ISDIR(info.st_mode))
+        return SV_FAIL(s->context, SV_STORAGE, "%s is not a folder", path);
+    return SV_OK;
+}
+
+static void name_figure(const sv_figure_files *files, const char *what)
+{
+    if (files->drawn)
+        printf("%s\n  %s\n  %s\n  %s\n", what, files->svg, files->pdf, files->png);
+    else
+        printf("%s not drawn: %s\n  script and data: %s, %s\n", what, files->reason, files->script,
+               files->data);
+}
+
+/* The first point at which the sample has defects makes the more telling map. */
+static int32_t map_point(const session *s)
+{
+    return s->n_points > 1 ? s->n_points / 2 : 0;
+}
+
+static sv_status draw_map(session *s, const char *folder)
+{
+    sv_context *context = s->context;
+    const point *p = &s->points[map_point(s)];
+    sv_record record;
+    sv_sample sample = {0};
+    double *values = NULL;
+    sv_figure_files files;
+    int chern = sv_marker_find("local_chern");
+    sv_case problem = p->problem;
+    int k = 0;
+    while (k < problem.n_markers && problem.markers[k].marker != chern)
+        k++;
+    if (k == problem.n_markers)
+        return SV_OK; /* the run did not ask for it */
+    /* Only the map is wanted: other markers would cost time and show nothing. */
+    problem.markers[0] = problem.markers[k];
+    problem.n_markers = 1;
+    sv_status status =
+        sv_realise(context, &problem, s->options->realisation, &values, &sample, &record);
+    if (status == SV_OK && record.outcomes[0].verdict != SV_RESOLVED) {
+        printf("marker map not drawn: %s\n", record.outcomes[0].reason);
+    } else if (status == SV_OK) {
+        sv_map_result map = {.title = s->base.title,
+                             .sample = &sample,
+                             .point = &problem,
+                             .record = &record,
+                             .site_values = values,
+                             .lattice_constant = s->base.lattice_constant};
+        char what[400];
+        int used = snprintf(what, sizeof what, "marker map, realisation %lld",
+                            (long long)s->options->realisation);
+        for (int c = 0; c < p->n_coordinates && used > 0 && (size_t)used < sizeof what; c++)
+            used += snprintf(what + used, sizeof what - (size_t)used, ", %s = %g",
+                             p->coordinates[c].path, p->coordinates[c].value);
+        status = sv_figure_map(context, folder, "marker_map", &map, &files);
+        if (status == SV_OK)
+            name_figure(&files, what);
+    }
+    sv_give(context, values);
+    sv_sample_free(context, &sample);
+    return status;
+}
+
+static sv_status draw_sweep(session *s, const sv_result *result, const char *folder)
+{
+    sv_figure_files files;
+    if (s->base.n_axes == 0) {
+        printf("sweep figure: none, the run has no sweep\n");
+        return SV_OK;
+    }
+    if (s->base.n_axes > 1) {
+        printf("sweep figure: none, the run has two axes; see points.csv\n");
+        return SV_OK;
+    }
+    sv_status status = sv_figure_sweep(s->context, folder, "sweep", result, &files);
+    if (status == SV_OK)
+        name_figure(&files, "sweep");
+    return status;
+}
+
+static sv_status check_identity(session *s, sv_run *run)
+{
+    const char *identity = sv_run_meta(run, "identity");
+    if (identity == NULL || strcmp(identity, s->base.identity) == 0)
+        return SV_OK;
+    return SV_FAIL(s->context, SV_STORAGE,
+                   "the resolved sheet in the folder is not the one its ledger was made from");
+}
+
+static sv_status report(session *s, sv_run *run)
+{
+    sv_context *context = s->context;
+    sv_ensemble ensemble = {0};
+    sv_result result = {0};
+    sv_index loaded = 0;
+    int64_t realisations;
+    int32_t points;
+    char folder[1024];
+    sv_stop_rule stop = session_stop_rule(s);
+    sv_status status = check_identity(s, run);
+    if (status == SV_OK)
+        status = sv_run_extent(context, run, &realisations, &points);
+    if (status == SV_OK && realisations == 0)
+        status = SV_FAIL(context, SV_STORAGE, "the run has no finished realisation yet");
+    if (status == SV_OK && points > s->n_points)
+        status = SV_FAIL(context, SV_STORAGE, "the ledger has %d points, the sheet %d", points,
+                         s->n_points);
+    if (status == SV_OK)
+        status = sv_ensemble_init(context, s->n_points, realisations, &ensemble);
+    if (status == SV_OK)
+        status = sv_run_load(context, run, &ensemble, &loaded);
+    if (status == SV_OK)
+        status = result_make(s, &ensemble, &stop, &result);
+    if (status == SV_OK && !s->options->quiet && !s->options->json)
+        sv_result_print(&result, wants_colour(s->options, stdout), stdout);
+    if (status == SV_OK)
+        status = figure_folder(s, run, folder, sizeof folder);
+    if (status == SV_OK)
+        status = draw_sweep(s, &result, folder);
+    if (status == SV_OK)
+        status = draw_map(s, folder);
+    result_free(context, &result);
+    sv_ensemble_free(context, &ensemble);
+    return status;
+}
+
+int run_report(sv_context *context, const options *o)
+{
+    session s = {0};
+    sv_run *run = NULL;
+    char sheet[1024];
+    sv_status status = sv_run_open_read(context, o->files[0], &run);
+    if (status == SV_OK)
+        status = sv_run_path(context, run, "sheet.resolved.yaml", sheet, sizeof sheet);
+    if (status == SV_OK)
+        status = session_open(context, o, sheet, true, true, &s);
+    if (status == SV_OK)
+        status = report(&s, run);
+    session_close(&s);
+    sv_run_close(context, run);
+    return status == SV_OK ? 0 : fail_exit(context, status);
+}

@@ -1,0 +1,91 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* The table of commands, and the two that only talk about the program itself. */
+#include "program_internal.h"
+
+#include <sched.h>
+#include <string.h>
+
+#define SHEET_OPTIONS "nsSqvCJ"
+
+static const command commands[] = {
+    {"check", "SHEET", "validates a sheet, prints it resolved, forecasts time and memory",
+     SHEET_OPTIONS "j", 1, 1, run_check},
+    {"map", "SHEET", "one realisation: the local Chern marker site by site", SHEET_OPTIONS "koVF",
+     1, 1, run_map},
+    {"average", "SHEET -o RUN", "the ensemble and its sweep; continues an existing run",
+     SHEET_OPTIONS "ojPDFT", 1, 1, run_average},
+    {"report", "RUN", "figures of a finished or unfinished run", "okqvCJ", 1, 1, run_report},
+    {"export", "SHEET", "writes the Hamiltonian and the sites of one realisation",
+     SHEET_OPTIONS "kHLF", 1, 1, run_export},
+    {"info", "", "versions, BLAS, arithmetic kernel, threads", "J", 0, 0, run_info},
+    {"help", "[COMMAND|keys]", "help on a command, or on the keys of a sheet", "", 0, 1, run_help},
+};
+
+const command *command_table(int *ret_count)
+{
+    *ret_count = (int)(sizeof commands / sizeof commands[0]);
+    return commands;
+}
+
+void kernel_text(const sv_blas_info *blas, char *text, size_t size)
+{
+    snprintf(text, size, "%s %s %s", blas->kind, blas->threading, blas->kernel);
+}
+
+static int cores_allowed(void)
+{
+    cpu_set_t set;
+    return sched_getaffinity(0, sizeof set, &set) == 0 ? CPU_COUNT(&set) : 1;
+}
+
+int run_info(sv_context *context, const options *o)
+{
+    (void)context;
+    sv_blas_info blas;
+    sv_blas_setup(&blas);
+    if (o->json) {
+        printf("{\"selvedge\": 1, \"command\": \"info\", \"version\": \"%s\",\n"
+               " \"blas\": \"%s\", \"blas_threading\": \"%s\", \"kernel\": \"%s\",\n"
+               " \"threads_safe\": %s, \"threads\": %d, \"engines\": [\"dense\"]}\n",
+               sv_version(), blas.kind, blas.threading, blas.kernel,
+               blas.threads_safe ? "true" : "false", cores_allowed());
+        return 0;
+    }
+    printf("selvedge   %s\n", sv_version());
+    printf("BLAS       %s, %s, kernel %s%s\n", blas.kind, blas.threading, blas.kernel,
+           blas.threads_safe ? "" : " (wrong results with several threads: one is used)");
+    printf("threads    %d\n", cores_allowed());
+    printf("engines    dense\n");
+    int count;
+    const sv_marker *markers = sv_marker_table(&count);
+    for (int k = 0; k < count; k++)
+        printf("%-10s %-12s %s\n", k ? "" : "markers", markers[k].kind.name, markers[k].kind.doc);
+    return 0;
+}
+
+int run_help(sv_context *context, const options *o)
+{
+    (void)context;
+    int count;
+    if (o->n_files == 0) {
+        print_help(NULL, stdout);
+        return 0;
+    }
+    if (strcmp(o->files[0], "keys") == 0) {
+        sv_kind kinds[SV_MAX_MARKERS];
+        const sv_marker *markers = sv_marker_table(&count);
+        for (int k = 0; k < count; k++)
+            kinds[k] = markers[k].kind;
+        sv_sheet_print_keys(kinds, count, stdout);
+        return 0;
+    }
+    const command *table = command_table(&count);
+    for (int k = 0; k < count; k++) {
+        if (strcmp(table[k].name, o->files[0]) != 0)
+            continue;
+        print_help(&table[k], stdout);
+        return 0;
+    }
+    fprintf(stderr, "selvedge: error: no help on \"%s\"\n", o->files[0]);
+    return sv_status_exit_code(SV_USAGE);
+}

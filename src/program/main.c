@@ -1,0 +1,44 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "program_internal.h"
+
+#include <errno.h>
+#include <locale.h>
+#include <signal.h>
+#include <string.h>
+#include <unistd.h>
+
+static void log_to_stderr(sv_log_level level, const char *message, void *user)
+{
+    const options *o = user;
+    if (o->quiet || (level == SV_LOG_DETAIL && o->verbose == 0))
+        return;
+    fprintf(stderr, "selvedge: %s%s\n", level == SV_LOG_WARNING ? "warning: " : "", message);
+}
+
+/* A full disk or a closed pipe shows only when the stream is closed. */
+static int close_output(int code)
+{
+    if (ferror(stdout) == 0 && fclose(stdout) == 0)
+        return code;
+    fprintf(stderr, "selvedge: error: cannot write to standard output: %s\n", strerror(errno));
+    return sv_status_exit_code(SV_STORAGE);
+}
+
+int main(int argc, char **argv)
+{
+    options o;
+    sv_context context;
+    setlocale(LC_CTYPE, "");
+    signal(SIGXFSZ, SIG_IGN);
+    int code = options_parse(argc, argv, &o);
+    if (code < 0) {
+        sv_context_init(&context);
+        context.log = log_to_stderr;
+        context.log_user = &o;
+        context.cancel = signals_stop_requested;
+        signals_install();
+        code = o.command->run(&context, &o);
+    }
+    options_free(&o);
+    return close_output(code);
+}

@@ -1,0 +1,118 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* The program: options, commands, and what the commands share. */
+#ifndef SELVEDGE_PROGRAM_INTERNAL_H
+#define SELVEDGE_PROGRAM_INTERNAL_H
+
+#include <selvedge/present.h>
+#include <selvedge/sheet.h>
+
+enum { MOST_FILES = 4, MOST_OVERRIDES = 64, MOST_POINTS = 100000 };
+
+typedef enum choice { CHOICE_AUTO, CHOICE_ALWAYS, CHOICE_NEVER } choice;
+
+/* The command line after parsing. */
+typedef struct options {
+    const struct command *command;
+    const char *files[MOST_FILES];
+    int n_files;
+    const char *output, *hamiltonian, *sites, *csv;
+    int64_t realisation;
+    int64_t threads; /* 0: as many as the affinity mask allows */
+    double time_limit;
+    bool json, quiet, dry_run, force;
+    int verbose;
+    choice colour, progress;
+    const char *overrides[MOST_OVERRIDES];
+    int n_overrides;
+    char *made[2]; /* overrides made from -n and -s */
+    char command_line[2000];
+} options;
+
+/* A command: one row of the table in commands.c. */
+typedef struct command {
+    const char *name, *operands, *doc;
+    const char *option_letters; /* ids of the options it takes, see option_rows */
+    int files_low, files_high;
+    int (*run)(sv_context *context, const options *o);
+} command;
+
+const command *command_table(int *ret_count);
+
+/* Parses; returns −1 to go on, or an exit code (help, usage error). */
+int options_parse(int argc, char **argv, options *ret);
+void options_free(options *o);
+void print_help(const command *one, FILE *stream);
+
+/* ---- session: what every command does first ---- */
+
+/* One point of the sweep, ready to compute. */
+typedef struct point {
+    sv_setup setup;
+    sv_flake open, closed;
+    bool has_closed;
+    sv_case problem;
+    sv_coordinate coordinates[SV_MAX_AXES];
+    int n_coordinates;
+} point;
+
+/* A sheet opened for work. */
+typedef struct session {
+    sv_context *context;
+    const options *options;
+    sv_blas_info blas;
+    sv_sheet *sheet;
+    sv_kind markers[SV_MAX_MARKERS];
+    int n_markers;
+    sv_setup base; /* the sheet as written */
+    point *points;
+    int32_t n_points;
+    int threads;
+    bool add_map_marker; /* the map command always computes the local Chern marker */
+} session;
+
+/* Reads the sheet and builds all points of its sweep (`with_sweep`) or the sheet as written. */
+sv_status session_open(sv_context *context, const options *o, const char *path, bool inside_run,
+                       bool with_sweep, session *ret);
+void session_close(session *s);
+/* Refuses what would not fit memory; lowers the number of threads where that helps. */
+sv_status session_fit_memory(session *s);
+
+/* Forecast of the sheet on this machine. */
+typedef struct forecast {
+    int64_t sites;        /* largest flake of the sweep */
+    int64_t realisations; /* over all points */
+    double bytes_per_thread, bytes_available;
+    double seconds_per_realisation; /* of the largest */
+    double seconds;                 /* whole ensemble on `threads` */
+} forecast;
+sv_status session_forecast(session *s, bool calibrate, forecast *ret);
+void print_forecast(const forecast *f, const session *s, const char *prefix, FILE *stream);
+
+/* Arithmetic kernel of this machine as text: part of the identity of a run. */
+void kernel_text(const sv_blas_info *blas, char *text, size_t size);
+
+/* Prints the context's error as `selvedge: error: …`; returns the exit code of the status. */
+int fail_exit(const sv_context *context, sv_status status);
+
+/* Makes the result of an ensemble: summaries of all points. */
+sv_status result_make(session *s, const sv_ensemble *ensemble, const sv_stop_rule *stop,
+                      sv_result *ret);
+void result_free(sv_context *context, sv_result *result);
+sv_stop_rule session_stop_rule(const session *s);
+
+bool wants_colour(const options *o, FILE *stream);
+bool wants_progress(const options *o);
+
+/* Stop requests from signals. */
+void signals_install(void);
+bool signals_stop_requested(void *user);
+
+int run_check(sv_context *context, const options *o);
+int run_map(sv_context *context, const options *o);
+int run_average(sv_context *context, const options *o);
+int run_report(sv_context *context, const options *o);
+int run_export(sv_context *context, const options *o);
+int run_info(sv_context *context, const options *o);
+int run_help(sv_context *context, const options *o);
+
+#endif

@@ -1,0 +1,48 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Summaries of all points of a run, in the form tables and figures take. */
+#include "program_internal.h"
+
+#include <string.h>
+
+static sv_status fill_point(session *s, const sv_ensemble *ensemble, const sv_stop_rule *stop,
+                            int32_t number, sv_point_result *ret, bool *complete)
+{
+    const point *p = &s->points[number];
+    bool settled;
+    ret->n_coordinates = p->n_coordinates;
+    memcpy(ret->coordinates, p->coordinates, sizeof ret->coordinates);
+    ret->realisations = sv_ensemble_counted(ensemble, number, stop, &settled);
+    *complete = *complete && settled;
+    for (int m = 0; m < p->problem.n_markers; m++) {
+        sv_status status = sv_summarise(s->context, ensemble, &p->problem, number, m,
+                                        ret->realisations, &ret->summaries[m]);
+        if (status != SV_OK)
+            return status;
+        ret->n_summaries = m + 1;
+    }
+    return SV_OK;
+}
+
+sv_status result_make(session *s, const sv_ensemble *ensemble, const sv_stop_rule *stop,
+                      sv_result *ret)
+{
+    sv_result result = {.title = s->base.title, .n_points = s->n_points, .complete = true};
+    sv_status status = sv_take(s->context, s->n_points, sizeof *result.points, &result.points);
+    for (int32_t k = 0; status == SV_OK && k < s->n_points; k++)
+        status = fill_point(s, ensemble, stop, k, &result.points[k], &result.complete);
+    if (status != SV_OK) {
+        result_free(s->context, &result);
+        return status;
+    }
+    *ret = result;
+    return SV_OK;
+}
+
+void result_free(sv_context *context, sv_result *result)
+{
+    for (int32_t k = 0; result->points != NULL && k < result->n_points; k++)
+        for (int m = 0; m < result->points[k].n_summaries; m++)
+            sv_summary_free(context, &result->points[k].summaries[m]);
+    sv_give(context, result->points);
+    *result = (sv_result){0};
+}

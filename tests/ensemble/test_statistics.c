@@ -1,0 +1,125 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "selvedge/ensemble.h"
+#include "testing.h"
+
+#include <stdlib.h>
+
+static int64_t read_series(const char *name, double *values, int64_t most)
+{
+    char path[200];
+    snprintf(path, sizeof path, "../data/reference/nist-strd/%s.txt", name);
+    FILE *f = fopen(test_data(path), "r");
+    if (!test_check(f != NULL, __FILE__, __LINE__, "%s is missing", path))
+        return 0;
+    int64_t n = 0;
+    while (n < most && fscanf(f, "%lf", &values[n]) == 1)
+        n++;
+    fclose(f);
+    return n;
+}
+
+static void check_series(const double *values, int64_t n, double mean, double deviation, double r1)
+{
+    sv_moments m = sv_moments_of(values, n);
+    CHECK_CLOSE(m.mean / mean, 1.0, 1e-14);
+    CHECK_CLOSE(m.deviation / deviation, 1.0, 2e-11);
+    CHECK_CLOSE(sv_autocorrelation(values, n), r1, 2e-10 * fabs(r1) + 1e-13);
+    CHECK_CLOSE(m.standard_error, m.deviation / sqrt((double)n), 1e-15 * m.deviation);
+}
+
+/* NIST Statistical Reference Datasets, univariate summary statistics: certified mean, standard
+ * deviation (n − 1) and lag-1 autocorrelation. */
+SV_TEST(nist_reference_datasets)
+{
+    const struct {
+        const char *name;
+        int64_t n;
+        double mean, deviation, r1;
+    } rows[] = {
+        {"lew", 200, -177.435, 277.332168044316, -0.307304800605679},
+        {"lottery", 218, 518.958715596330, 291.699727470969, -0.120948622967393},
+        {"mavro", 50, 2.001856, 0.000429123454003053, 0.937989183438248},
+        {"michelson", 100, 299.8524, 0.0790105478190518, 0.535199668621283},
+        {"pidigits", 5000, 4.5348, 2.86733906028871, -0.00355099287237972},
+    };
+    static double values[5000];
+    for (size_t k = 0; k < sizeof rows / sizeof rows[0]; k++) {
+        CHECK_INT(read_series(rows[k].name, values, 5000), rows[k].n);
+        check_series(values, rows[k].n, rows[k].mean, rows[k].deviation, rows[k].r1);
+    }
+}
+
+/* NumAcc1–4: built to break naive sums. In doubles the data themselves are rounded, which limits
+ * NumAcc3 and 4 to the accuracy of the stored numbers. */
+SV_TEST(nist_numerical_accuracy)
+{
+    const double first[] = {10000001, 10000003, 10000002};
+    sv_moments m = sv_moments_of(first, 3);
+    CHECK(m.mean == 10000002.0 && m.deviation == 1.0);
+    CHECK_CLOSE(sv_autocorrelation(first, 3), -0.5, 1e-15);
+    const double base[] = {1.2, 1000000.2, 10000000.2};
+    const double tolerance[] = {1e-14, 1e-9, 1e-8};
+    for (int k = 0; k < 3; k++) {
+        static double x[1001];
+        x[0] = base[k];
+        for (int i = 0; i < 500; i++) {
+            x[1 + 2 * i] = base[k] - 0.1;
+            x[2 + 2 * i] = base[k] + 0.1;
+        }
+        m = sv_moments_of(x, 1001);
+        CHECK_CLOSE(m.mean / base[k], 1.0, 1e-15);
+        CHECK_CLOSE(m.deviation, 0.1, tolerance[k]);
+        CHECK_CLOSE(sv_autocorrelation(x, 1001), -0.999, 1e-7);
+    }
+}
+
+/* R. G. Newcombe, Stat. Med. 17, 857 (1998), Table I. */
+SV_TEST(wilson_intervals)
+{
+    const struct {
+        int64_t k, n;
+        double low, high;
+    } rows[] = {{81, 263, 0.255289, 0.366210}, {15, 148, 0.062386, 0.160487},
+                {0, 20, 0.0, 0.161125},        {1, 29, 0.006113, 0.171755},
+                {12, 150, 0.046354, 0.134621}, {23, 60, 0.270883, 0.509824}};
+    for (size_t k = 0; k < sizeof rows / sizeof rows[0]; k++) {
+        double interval[2];
+        sv_wilson_interval(rows[k].k, rows[k].n, 0.95, interval);
+        CHECK_CLOSE(interval[0], rows[k].low, 6e-7);
+        CHECK_CLOSE(interval[1], rows[k].high, 6e-7);
+        /* mirror image */
+        sv_wilson_interval(rows[k].n - rows[k].k, rows[k].n, 0.95, interval);
+        CHECK_CLOSE(interval[0], 1.0 - rows[k].high, 6e-7);
+    }
+    double none[2];
+    sv_wilson_interval(0, 0, 0.95, none);
+    CHECK(none[0] == 0.0 && none[1] == 1.0);
+}
+
+/* Student's t: 95 %, 9 degrees of freedom: 2.262157 (standard tables, recalled from memory). */
+SV_TEST(student_interval)
+{
+    double x[10], interval[2];
+    for (int k = 0; k < 10; k++)
+        x[k] = k;
+    sv_moments m = sv_moments_of(x, 10);
+    CHECK(sv_student_interval(&m, 0.95, interval) == SV_OK);
+    CHECK_CLOSE((interval[1] - m.mean) / m.standard_error, 2.262157, 6e-7);
+    CHECK_CLOSE(interval[0] + interval[1], 9.0, 1e-12);
+    m = sv_moments_of(x, 1);
+    CHECK(sv_student_interval(&m, 0.95, interval) == SV_UNDEFINED);
+    CHECK(isnan(m.standard_error) && isnan(sv_moments_of(x, 0).mean));
+}
+
+/* Hyndman, Fan, Am. Stat. 50, 361 (1996), type 7. */
+SV_TEST(quantiles)
+{
+    const double x[] = {1, 2, 4, 8};
+    CHECK_CLOSE(sv_quantile_sorted(x, 4, 0.5), 3.0, 1e-15);
+    CHECK_CLOSE(sv_quantile_sorted(x, 4, 0.25), 1.75, 1e-15);
+    CHECK_CLOSE(sv_quantile_sorted(x, 4, 1.0), 8.0, 0.0);
+    CHECK_CLOSE(sv_quantile_sorted(x, 1, 0.3), 1.0, 0.0);
+    CHECK(isnan(sv_quantile_sorted(x, 0, 0.3)));
+    for (int k = 1; k < SV_N_QUANTILES; k++)
+        CHECK(sv_quantile_levels()[k] > sv_quantile_levels()[k - 1]);
+}
