@@ -79,7 +79,8 @@ sv_outcome fixture_marker(const char *name, const sv_model *model, const sv_flak
     CHECK_OK(sv_sample_draw(context, &flake, disorder, n_disorder, seed, 0, &sample));
     CHECK_OK(sv_projector_make(context, &sample, occupation, &options, &projector));
     sv_value values[16] = {{.present = true, .real = {window}}};
-    sv_marker_input input = {.sample = &sample, .projector = projector, .values = values};
+    sv_marker_input input = {
+        .sample = &sample, .occupation = occupation, .projector = projector, .values = values};
     CHECK_OK(marker->compute(context, &input, &outcome));
     sv_projector_free(context, projector);
     sv_sample_free(context, &sample);

@@ -29,15 +29,19 @@ void test_register(const char *name, test_function function)
 
 bool test_check(bool condition, const char *file, int line, const char *format, ...)
 {
+    const int most_messages = 8;
     if (condition)
         return true;
+    if (++failures_of_current > most_messages)
+        return false;
     va_list args;
     va_start(args, format);
     printf("# %s:%d: ", file, line);
     vprintf(format, args);
     printf("\n");
     va_end(args);
-    failures_of_current++;
+    if (failures_of_current == most_messages)
+        printf("# further failures of this test are not shown\n");
     return false;
 }
 

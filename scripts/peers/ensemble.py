@@ -1,0 +1,84 @@
+#!/usr/bin/env python3
+# SPDX-License-Identifier: GPL-3.0-or-later
+"""Runs one ensemble with the program and with the SciPy script beside it; prints the ratio.
+
+usage: ensemble.py SELVEDGE [-n REALISATIONS] [-j WORKERS]
+
+The clock of the program covers the whole command, from start to closed ledger; that of the script
+its realisations alone, with the workers started and warm. Exit status 1 when the means differ by
+more than four combined standard errors.
+"""
+import argparse
+import json
+import os
+import subprocess
+import sys
+import tempfile
+import time
+
+SHEET = """\
+selvedge: 1
+title: Benchmark ensemble
+model: {name: haldane, t1: 1, t2: 0.2, phi: 90 deg, mass: 0}
+flake: {shape: parallelogram, cells: [%(cells)d, %(cells)d]}
+disorder:
+  - {name: pot, kind: onsite, distribution: box, width: %(width)g, per: site}
+occupation: {fermi_energy: 0}
+markers: {local_chern: {window: 0.5}}
+ensemble: {realisations: %(realisations)d, seed: 1}
+"""
+SCRIPT = os.path.join(os.path.dirname(os.path.abspath(__file__)), "scipy_ensemble.py")
+
+
+def run_program(program, given):
+    """(seconds, summary of the local Chern marker) of `selvedge average`."""
+    with tempfile.TemporaryDirectory(prefix="selvedge-benchmark-") as folder:
+        sheet = os.path.join(folder, "sheet.yaml")
+        with open(sheet, "w", encoding="utf-8") as file:
+            file.write(SHEET % vars(given))
+        command = [program, "average", sheet, "-o", os.path.join(folder, "run"), "-j",
+                   str(given.workers), "--json", "-q"]
+        begin = time.perf_counter()
+        done = subprocess.run(command, check=True, text=True, stdout=subprocess.PIPE)
+        seconds = time.perf_counter() - begin
+    return seconds, json.loads(done.stdout)["points"][0]["markers"]["local_chern"]
+
+
+def run_script(given):
+    command = [sys.executable, SCRIPT, "--cells", str(given.cells), "--width", str(given.width),
+               "--realisations", str(given.realisations), "--processes", str(given.workers)]
+    return json.loads(subprocess.run(command, check=True, text=True, stdout=subprocess.PIPE).stdout)
+
+
+def show(name, realisations, seconds, mean, error):
+    print("%-24s %7.3f realisations/s   (%d in %.1f s)   mean %.6f ± %.6f"
+          % (name, realisations / seconds, realisations, seconds, mean, error))
+
+
+def main():
+    parser = argparse.ArgumentParser()
+    parser.add_argument("program")
+    parser.add_argument("-n", "--realisations", type=int, default=8)
+    parser.add_argument("-j", "--workers", type=int, default=2)
+    parser.add_argument("--cells", type=int, default=30)
+    parser.add_argument("--width", type=float, default=1.0)
+    given = parser.parse_args()
+    print("haldane, t2 = 0.2, phi = 90 deg, %d×%d cells = %d sites, box of full width %g per site, "
+          "window 0.5, %d workers" % (given.cells, given.cells, 2 * given.cells**2, given.width,
+                                      given.workers), flush=True)
+    peer = run_script(given)
+    seconds, ours = run_program(given.program, given)
+    show("selvedge (%s)" % ours["engine"], given.realisations, seconds, ours["mean"],
+         ours["standard_error"])
+    show("SciPy (%s)" % peer["driver"], given.realisations, peer["seconds"], peer["mean"],
+         peer["standard_error"])
+    print("ratio %.2f" % (peer["seconds"] / seconds))
+    allowed = 4.0 * (ours["standard_error"]**2 + peer["standard_error"]**2)**0.5
+    agree = abs(ours["mean"] - peer["mean"]) <= allowed
+    print("the means %s: difference %.2e, allowed %.2e"
+          % ("agree" if agree else "DISAGREE", abs(ours["mean"] - peer["mean"]), allowed))
+    return 0 if agree else 1
+
+
+if __name__ == "__main__":
+    sys.exit(main())
