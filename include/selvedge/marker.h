@@ -34,6 +34,7 @@ typedef struct sv_outcome {
                          V is singular; NaN: none */
     double sum_over_sites; /**< local Chern, when asked for; NaN otherwise */
     int64_t window_cells;  /**< local Chern */
+    double kappa;          /**< localizer: energy per lattice constant; NaN: none */
     double highest_occupied, lowest_empty; /**< NaN when there is none */
     int64_t electrons;
 } sv_outcome;
@@ -44,8 +45,9 @@ typedef enum sv_boundary { SV_OPEN_COPY, SV_CLOSED_COPY } sv_boundary;
 /** What a marker is given. */
 typedef struct sv_marker_input {
     const sv_sample *sample;
-    sv_projector *projector;
-    const sv_value *values; /**< one per key of its kind */
+    const sv_occupation *occupation;
+    sv_projector *projector; /**< NULL for markers that do not need one */
+    const sv_value *values;  /**< one per key of its kind */
     double *ret_site_values; /**< local Chern: n values per site, or NULL; also switches on the
                                   sum over all sites */
 } sv_marker_input;
@@ -55,6 +57,7 @@ typedef struct sv_marker {
     sv_kind kind;
     bool is_index;
     sv_boundary boundary;
+    bool needs_projector;
     bool needs_occupied_basis;
     /** Fills the outcome; an unresolved value is SV_OK with that verdict. */
     sv_status (*compute)(sv_context *context, const sv_marker_input *input,

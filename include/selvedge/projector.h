@@ -12,7 +12,7 @@
 extern "C" {
 #endif
 
-typedef enum sv_engine { SV_ENGINE_AUTO, SV_ENGINE_DENSE } sv_engine;
+typedef enum sv_engine { SV_ENGINE_AUTO, SV_ENGINE_DENSE, SV_ENGINE_CHEBYSHEV } sv_engine;
 
 /** What to build; fill with sv_projector_options_default(). */
 typedef struct sv_projector_options {
@@ -20,6 +20,9 @@ typedef struct sv_projector_options {
     sv_engine engine;
     double accuracy; /**< numerical error allowed per reported value, in units of the marker */
     bool occupied_basis; /**< a marker will ask for sv_projector_occupied_basis() */
+    int degree;          /**< chebyshev: degree of the polynomial, odd; 0: from half_gap, accuracy */
+    double half_gap;     /**< chebyshev: levels at least this far from the Fermi energy are resolved,
+                              unit of the model */
 } sv_projector_options;
 SV_API sv_projector_options sv_projector_options_default(void);
 

@@ -38,6 +38,7 @@ typedef struct sv_diagnostics {
     int errors;
 } sv_diagnostics;
 
+/** Gives all messages back; safe twice in a row. */
 SV_API void sv_diagnostics_free(sv_context *context, sv_diagnostics *diagnostics);
 /** Prints `file:line:col: error: …`, the line, a caret and the hint for each. */
 SV_API void sv_diagnostics_print(const sv_diagnostics *diagnostics, bool colour, FILE *stream);

@@ -1,0 +1,220 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* The one table of what a sheet may say. A block is a row of `blocks`; its keys are sv_key rows,
+ * those of kinds (models, shapes, disorder) come from the layers that own them. Validation,
+ * defaults, the list of keys, the resolved sheet and the identity all walk these rows. */
+#include "sheet_internal.h"
+
+#include <float.h>
+#include <string.h>
+
+static const sv_key root_keys[] = {
+    {.name = "selvedge",
+     .type = SV_KEY_INTEGER,
+     .low = 1,
+     .high = 1,
+     .required = true,
+     .doc = "version of the sheet: 1"},
+    {.name = "title", .type = SV_KEY_TEXT, .fallback = "", .doc = "one line about the sheet"},
+};
+
+static const sv_key model_keys[] = {
+    {.name = "name", .type = SV_KEY_TEXT, .required = true, .doc = "which model"},
+    {.name = "lattice_constant",
+     .type = SV_KEY_REAL,
+     .dimension = SV_DIM_LENGTH,
+     .low = 0,
+     .low_open = true,
+     .high = DBL_MAX,
+     .doc = "with a unit; gives lengths, areas and densities a meaning"},
+    {.name = "energy_unit",
+     .type = SV_KEY_REAL,
+     .dimension = SV_DIM_ENERGY,
+     .low = 0,
+     .low_open = true,
+     .high = DBL_MAX,
+     .doc = "with a unit: what a bare 1 is worth (1 eV once any energy carries a unit)"},
+};
+
+static const sv_key flake_keys[] = {
+    {.name = "shape", .type = SV_KEY_TEXT, .required = true, .doc = "which shape"},
+    {.name = "boundary",
+     .type = SV_KEY_CHOICE_PAIR,
+     .choices = "open periodic",
+     .fallback = "open",
+     .doc = "of both directions, or [along the first, along the second]"},
+};
+
+static const sv_key disorder_keys[] = {
+    {.name = "name",
+     .type = SV_KEY_TEXT,
+     .doc = "what a sweep points at, and the name of its random numbers (default: the kind)"},
+    {.name = "kind", .type = SV_KEY_TEXT, .required = true, .doc = "which kind of disorder"},
+};
+
+static const sv_key occupation_keys[] = {
+    {.name = "fermi_energy",
+     .type = SV_KEY_REAL,
+     .dimension = SV_DIM_ENERGY,
+     .low = -1e12,
+     .high = 1e12,
+     .fallback = "0",
+     .doc = "states below it are occupied"},
+    {.name = "filling",
+     .type = SV_KEY_REAL,
+     .low = 0,
+     .high = 1,
+     .doc = "share of the states present"},
+    {.name = "electrons",
+     .type = SV_KEY_INTEGER,
+     .low = 0,
+     .high = 1e12,
+     .doc = "number of occupied states"},
+};
+
+static const sv_key ensemble_keys[] = {
+    {.name = "realisations",
+     .type = SV_KEY_INTEGER,
+     .low = 1,
+     .high = 1e9,
+     .fallback = "1",
+     .doc = "samples per point of the sweep"},
+    {.name = "seed",
+     .type = SV_KEY_INTEGER,
+     .low = 0,
+     .high = 4294967295.0,
+     .fallback = "1",
+     .doc = "of all random numbers"},
+};
+
+static const sv_key stop_keys[] = {
+    {.name = "standard_error",
+     .type = SV_KEY_REAL,
+     .low = 0,
+     .low_open = true,
+     .high = 1e6,
+     .required = true,
+     .doc = "stop once the standard error of the mean is this small"},
+    {.name = "of",
+     .type = SV_KEY_TEXT,
+     .doc = "which marker (may be left out when there is only one)"},
+    {.name = "at_least",
+     .type = SV_KEY_INTEGER,
+     .low = 2,
+     .high = 1e9,
+     .fallback = "50",
+     .doc = "realisations before the rule may hold"},
+};
+
+static const sv_key sweep_keys[] = {
+    {.name = "parameter", .type = SV_KEY_TEXT, .required = true, .doc = "dotted path of a number"},
+    {.name = "from", .type = SV_KEY_TREE, .doc = "first value"},
+    {.name = "to", .type = SV_KEY_TREE, .doc = "last value"},
+    {.name = "steps",
+     .type = SV_KEY_INTEGER,
+     .low = 2,
+     .high = 100000,
+     .doc = "number of points, both ends included"},
+    {.name = "values", .type = SV_KEY_TREE, .doc = "[v1, v2, …] instead of from, to, steps"},
+};
+
+static const sv_key solve_keys[] = {
+    {.name = "engine",
+     .type = SV_KEY_CHOICE,
+     .choices = "auto dense",
+     .fallback = "auto",
+     .doc = "how occupied states are projected on"},
+    {.name = "accuracy",
+     .type = SV_KEY_REAL,
+     .low = 1e-14,
+     .high = 0.1,
+     .fallback = "1e-6",
+     .doc = "numerical error allowed per value, units of the marker"},
+    {.name = "sampling_error",
+     .type = SV_KEY_REAL,
+     .low = 0,
+     .low_open = true,
+     .high = 1,
+     .fallback = "0.005",
+     .doc = "error allowed of a window mean that is sampled"},
+};
+
+#define KEYS(rows) .keys = rows, .n_keys = (int)(sizeof rows / sizeof rows[0])
+
+/* Parents stand before their children, and `model` first of all: it fixes the units. */
+static const sv_block blocks[] = {
+    {.name = "", .doc = "the sheet", .required = true, KEYS(root_keys)},
+    {.parent = "",
+     .name = "model",
+     .doc = "the clean lattice model",
+     .required = true,
+     KEYS(model_keys),
+     .kind_key = "name",
+     .kinds = sv_model_kinds},
+    {.parent = "",
+     .name = "flake",
+     .doc = "shape, size and boundary",
+     .required = true,
+     KEYS(flake_keys),
+     .kind_key = "shape",
+     .kinds = sv_shape_kinds},
+    {.parent = "",
+     .name = "disorder",
+     .doc = "list of defects and potentials, applied in order",
+     .form = SV_BLOCK_LIST,
+     .max_entries = 64,
+     KEYS(disorder_keys),
+     .kind_key = "kind",
+     .kinds = sv_disorder_kinds},
+    {.parent = "",
+     .name = "occupation",
+     .doc = "which states are occupied; one of its keys",
+     .exclusive = "fermi_energy filling electrons",
+     KEYS(occupation_keys)},
+    {.parent = "",
+     .name = "markers",
+     .doc = "what is computed",
+     .form = SV_BLOCK_NAMED,
+     .fallback = "local_chern"},
+    {.parent = "", .name = "ensemble", .doc = "how many realisations", KEYS(ensemble_keys)},
+    {.parent = "ensemble",
+     .name = "stop",
+     .doc = "when fewer realisations are enough",
+     .optional_section = true,
+     KEYS(stop_keys)},
+    {.parent = "",
+     .name = "sweep",
+     .doc = "list of one or two axes",
+     .form = SV_BLOCK_LIST,
+     .max_entries = 2,
+     KEYS(sweep_keys)},
+    {.parent = "", .name = "solve", .doc = "engine and accuracy", KEYS(solve_keys)},
+};
+enum { N_BLOCKS = sizeof blocks / sizeof blocks[0] };
+
+const sv_block *sv_schema_blocks(int *ret_count)
+{
+    *ret_count = N_BLOCKS;
+    return blocks;
+}
+
+const sv_block *sv_schema_find(const char *name)
+{
+    for (int i = 0; i < N_BLOCKS; i++)
+        if (strcmp(blocks[i].name, name) == 0)
+            return &blocks[i];
+    return NULL;
+}
+
+const sv_block *sv_schema_child(const sv_block *parent, const sv_block *previous)
+{
+    int first = previous == NULL ? 0 : (int)(previous - blocks) + 1;
+    for (int i = first; i < N_BLOCKS; i++)
+        if (blocks[i].parent != NULL && strcmp(blocks[i].parent, parent->name) == 0)
+            return &blocks[i];
+    return NULL;
+}
+
+bool sv_schema_is_scale(const sv_key *key)
+{
+    return key == &model_keys[1] || key == &model_keys[2];
+}

@@ -1,0 +1,182 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Sections → the typed setup: model, flake, occupation, markers, ensemble, solve. */
+#include "sheet_internal.h"
+
+#include <stdio.h>
+#include <string.h>
+
+bool sv_setup_model(sv_reader *reader, sv_setup *setup)
+{
+    const sv_section *section = sv_document_find(reader, "model", NULL);
+    int n_common = section->block->n_keys;
+    if (strcmp(section->kind->name, "custom") == 0)
+        return sv_custom_read(reader, section, &setup->model);
+    sv_status status =
+        sv_model_make(reader->context, section->kind, section->values + n_common, &setup->model);
+    return status == SV_OK || sv_report_status(reader, sv_section_node(section, "name"), status);
+}
+
+bool sv_setup_flake(sv_reader *reader, sv_setup *setup)
+{
+    const sv_section *section = sv_document_find(reader, "flake", NULL);
+    const sv_value *cells = sv_section_value(section, "cells");
+    const sv_value *size = sv_section_value(section, "size");
+    const sv_value *radius = sv_section_value(section, "radius");
+    const sv_value *boundary = sv_section_value(section, "boundary");
+    sv_flake_spec *flake = &setup->flake;
+    char sizes[100] = "";
+    for (int i = 0; i < section->n_fields; i++)
+        if (sv_words_hold("cells size radius", section->fields[i].key->name))
+            snprintf(sizes + strlen(sizes), sizeof sizes - strlen(sizes), "%s%s",
+                     sizes[0] != '\0' ? " " : "", section->fields[i].key->name);
+    if (!sv_section_one_of(reader, section, sizes))
+        return false;
+    flake->shape = (sv_shape)section->kind_row;
+    flake->has_cells = cells->present;
+    flake->has_size = size->present;
+    flake->has_radius = radius->present;
+    flake->radius = radius->real[0];
+    for (int i = 0; i < 2; i++) {
+        flake->cells[i] = cells->integer[i];
+        flake->size[i] = size->real[i];
+        flake->periodic[i] = boundary->integer[i] == 1;
+    }
+    return true;
+}
+
+static bool use_occupation(sv_reader *reader, sv_setup *setup)
+{
+    const sv_section *section = sv_document_find(reader, "occupation", NULL);
+    const sv_value *filling = sv_section_value(section, "filling");
+    const sv_value *electrons = sv_section_value(section, "electrons");
+    sv_occupation *occupation = &setup->occupation;
+    if (sv_section_written(section, section->block->exclusive) > 1)
+        return sv_section_one_of(reader, section, section->block->exclusive);
+    occupation->by = filling->present     ? SV_BY_FILLING
+                     : electrons->present ? SV_BY_ELECTRONS
+                                          : SV_BY_ENERGY;
+    occupation->fermi_energy = sv_section_value(section, "fermi_energy")->real[0];
+    occupation->filling = filling->real[0];
+    occupation->electrons = electrons->integer[0];
+    return true;
+}
+
+static bool use_markers(sv_reader *reader, sv_setup *setup)
+{
+    enum {
+        MAX_MARKERS = sizeof setup->markers / sizeof setup->markers[0],
+        MAX_VALUES = sizeof setup->markers[0].values / sizeof setup->markers[0].values[0]
+    };
+    const sv_section *section = NULL;
+    while ((section = sv_document_find(reader, "markers", section)) != NULL) {
+        if (setup->n_markers == MAX_MARKERS)
+            return sv_report(reader, section->anchor, NULL, "more than %d markers", MAX_MARKERS);
+        if (section->n_fields > MAX_VALUES)
+            return sv_report_status(reader, section->anchor,
+                                    SV_FAIL(reader->context, SV_INTERNAL,
+                                            "the marker %s has too many keys",
+                                            section->kind->name));
+        sv_sheet_marker *marker = &setup->markers[setup->n_markers++];
+        marker->kind = section->kind_row;
+        for (int i = 0; i < section->n_fields; i++)
+            marker->values[i] = section->values[i];
+    }
+    return true;
+}
+
+/* `of` may be left out when there is one marker; the section then gets its name. */
+static bool find_stop_marker(sv_reader *reader, const sv_section *section, sv_setup *setup)
+{
+    int row = sv_section_find(section, "of");
+    sv_value *of = &section->values[row];
+    char hint[400];
+    if (!of->present && setup->n_markers != 1)
+        return sv_report(reader, section->anchor, "of: the marker whose standard error counts",
+                         "ensemble.stop.of is missing");
+    if (!of->present) {
+        of->present = true;
+        of->text = reader->sheet->markers[setup->markers[0].kind].name;
+    }
+    sv_suggestion suggestion = sv_suggest_start(of->text);
+    for (int i = 0; i < setup->n_markers; i++) {
+        const char *name = reader->sheet->markers[setup->markers[i].kind].name;
+        sv_suggest_name(&suggestion, name);
+        setup->stop_marker = i;
+        if (strcmp(name, of->text) == 0)
+            return true;
+    }
+    sv_suggest_hint(&suggestion, hint, sizeof hint);
+    return sv_report(reader, sv_section_node(section, "of"), hint,
+                     "ensemble.stop.of: %.60s is not among the markers", of->text);
+}
+
+bool sv_setup_ensemble(sv_reader *reader, sv_setup *setup)
+{
+    const sv_section *root = sv_document_find(reader, "", NULL);
+    const sv_section *ensemble = sv_document_find(reader, "ensemble", NULL);
+    const sv_section *stop = sv_document_find(reader, "stop", NULL);
+    const sv_section *solve = sv_document_find(reader, "solve", NULL);
+    const char *title = sv_section_value(root, "title")->text;
+    memcpy(&setup->title, &title, sizeof title);
+    setup->realisations = sv_section_value(ensemble, "realisations")->integer[0];
+    setup->seed = (uint64_t)sv_section_value(ensemble, "seed")->integer[0];
+    snprintf(setup->engine, sizeof setup->engine, "%s", sv_section_value(solve, "engine")->text);
+    setup->accuracy = sv_section_value(solve, "accuracy")->real[0];
+    setup->sampling_error = sv_section_value(solve, "sampling_error")->real[0];
+    bool good = use_occupation(reader, setup);
+    good = use_markers(reader, setup) && good;
+    if (!good || stop == NULL)
+        return good;
+    setup->has_stop = true;
+    setup->stop_standard_error = sv_section_value(stop, "standard_error")->real[0];
+    setup->stop_at_least = sv_section_value(stop, "at_least")->integer[0];
+    return find_stop_marker(reader, stop, setup);
+}
+
+/* Once an energy carries a unit, a bare 1 must be worth something: 1 eV unless the sheet says. */
+static void use_scales(sv_reader *reader, sv_setup *setup)
+{
+    setup->lattice_constant = reader->lattice_constant;
+    setup->energy_unit = reader->energy_unit;
+    /* the unit may stand in the sweep, which a point does not read again */
+    if (reader->prefix != NULL && reader->energy_unit <= 0.0)
+        setup->energy_unit = reader->sheet->energy_unit;
+    if (setup->energy_unit > 0.0 || reader->first_energy == NULL)
+        return;
+    setup->energy_unit = 1.0;
+    if (reader->prefix == NULL)
+        sv_note(reader, reader->first_energy,
+                "this energy carries a unit, so bare energies are read in eV; "
+                "model.energy_unit changes that");
+}
+
+static bool write_texts(sv_reader *reader, sv_setup *setup)
+{
+    sv_status status = sv_resolved_write(reader, setup, NULL, &setup->resolved);
+    if (status == SV_OK)
+        status = sv_identity_write(reader, setup, &setup->identity);
+    return status == SV_OK || sv_report_status(reader, NULL, status);
+}
+
+bool sv_setup_build(sv_reader *reader, sv_setup *setup)
+{
+    reader->setup = setup;
+    setup->model.flux[1] = 1;
+    sv_document_read(reader);
+    if (!sv_reader_good(reader))
+        return false;
+    /* A point of a sweep has no axes of its own, and no texts. */
+    bool is_point = reader->prefix != NULL;
+    bool good = is_point || sv_sweep_read(reader, setup);
+    bool has_model = sv_setup_model(reader, setup);
+    use_scales(reader, setup);
+    good = sv_setup_flake(reader, setup) && good && has_model;
+    if (has_model)
+        good = sv_setup_disorder(reader, setup) && good;
+    good = sv_setup_ensemble(reader, setup) && good;
+    if (!good || !sv_reader_good(reader))
+        return false;
+    if (reader->geometry && !sv_setup_geometry(reader, setup))
+        return false;
+    return (is_point || write_texts(reader, setup)) && sv_reader_good(reader);
+}
