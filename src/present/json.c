@@ -1,0 +1,148 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* The result of an ensemble as JSON. */
+#include <math.h>
+#include <stdio.h>
+#include <string.h>
+
+#include "present_internal.h"
+
+static json_t *make_quantiles(sv_json *json, const sv_summary *summary)
+{
+    json_t *object = json_object();
+    for (int i = 0; i < SV_N_QUANTILES; i++) {
+        char key[32];
+        snprintf(key, sizeof key, "%.2f", sv_quantile_levels()[i]);
+        sv_json_put_real(json, object, key, summary->quantiles[i]);
+    }
+    return object;
+}
+
+static json_t *make_shares(sv_json *json, const sv_summary *summary)
+{
+    json_t *array = json_array();
+    for (int i = 0; i < summary->n_shares; i++) {
+        const sv_index_share *share = &summary->shares[i];
+        json_t *object = json_object();
+        sv_json_put_integer(json, object, "index", share->index);
+        sv_json_put_integer(json, object, "count", share->count);
+        sv_json_put_real(json, object, "share", share->share);
+        sv_json_put(json, object, "interval", sv_json_pair(json, share->interval));
+        sv_json_push(json, array, object);
+    }
+    return array;
+}
+
+static void put_margin(sv_json *json, json_t *object, const sv_summary *summary)
+{
+    const char *name = sv_words_margin(summary->marker);
+    if (name == NULL || !isfinite(summary->smallest_margin))
+        return;
+    json_t *margin = json_object();
+    sv_json_put_real(json, margin, "smallest", summary->smallest_margin);
+    sv_json_put_real(json, margin, "mean", summary->mean_margin);
+    sv_json_put(json, object, name, margin);
+}
+
+/* The mean and how well it is known; a single realisation tells nothing about its spread. */
+static void put_mean(sv_json *json, json_t *object, const sv_summary *summary)
+{
+    const bool spread = isfinite(summary->standard_error);
+    sv_json_put_real(json, object, "mean", summary->mean);
+    sv_json_put_real(json, object, "standard_error", summary->standard_error);
+    sv_json_put(json, object, "interval",
+                isfinite(summary->interval[0]) ? sv_json_pair(json, summary->interval)
+                                               : json_null());
+    sv_json_put_real(json, object, "confidence", summary->confidence);
+    sv_json_put_real(json, object, "deviation", spread ? summary->deviation : (double)NAN);
+    if (!spread)
+        sv_json_put_text(json, object, "reason",
+                         "a standard error needs at least two resolved realisations");
+}
+
+static void put_unresolved(sv_json *json, json_t *object, const sv_summary *summary)
+{
+    sv_json_put_integer(json, object, "unresolved", summary->unresolved);
+    if (summary->unresolved > 0)
+        sv_json_put_text(json, object, "unresolved_reason", summary->unresolved_reason);
+    if (summary->failed > 0)
+        sv_json_put_integer(json, object, "failed", summary->failed);
+}
+
+static json_t *make_marker(sv_json *json, const sv_summary *summary)
+{
+    json_t *object = json_object();
+    if (!summary->exists) {
+        sv_json_put(json, object, "mean", json_null());
+        sv_json_put_text(json, object, "reason", summary->reason);
+        put_unresolved(json, object, summary);
+        return object;
+    }
+    put_mean(json, object, summary);
+    if (!summary->is_index)
+        sv_json_put(json, object, "quantiles", make_quantiles(json, summary));
+    put_unresolved(json, object, summary);
+    if (summary->is_index) {
+        sv_json_put(json, object, "bounds", sv_json_pair(json, summary->bounds));
+        sv_json_put(json, object, "shares", make_shares(json, summary));
+    }
+    sv_json_put_real(json, object, "numerical_error", summary->numerical_error);
+    sv_json_put_real(json, object, "estimator_error", summary->estimator_error);
+    put_margin(json, object, summary);
+    sv_json_put_text(json, object, "engine", summary->engine);
+    return object;
+}
+
+static json_t *make_parameters(sv_json *json, const sv_point_result *point)
+{
+    json_t *object = json_object();
+    for (int i = 0; i < point->n_coordinates; i++) {
+        const sv_coordinate *coordinate = &point->coordinates[i];
+        if (coordinate->integer)
+            sv_json_put_integer(json, object, coordinate->path, (int64_t)coordinate->value);
+        else
+            sv_json_put_real(json, object, coordinate->path, coordinate->value);
+    }
+    return object;
+}
+
+/* Units of the parameters that have one. */
+static void put_units(sv_json *json, json_t *object, const sv_point_result *point)
+{
+    json_t *units = json_object();
+    for (int i = 0; i < point->n_coordinates; i++)
+        if (point->coordinates[i].unit != NULL)
+            sv_json_put_text(json, units, point->coordinates[i].path, point->coordinates[i].unit);
+    if (json_object_size(units) > 0)
+        sv_json_put(json, object, "units", units);
+    else
+        json_decref(units);
+}
+
+static json_t *make_point(sv_json *json, const sv_point_result *point)
+{
+    json_t *object = json_object(), *markers = json_object();
+    sv_json_put(json, object, "parameters", make_parameters(json, point));
+    put_units(json, object, point);
+    sv_json_put_integer(json, object, "realisations", point->realisations);
+    for (int i = 0; i < point->n_summaries; i++)
+        sv_json_put(json, markers, point->summaries[i].marker,
+                    make_marker(json, &point->summaries[i]));
+    sv_json_put(json, object, "markers", markers);
+    return object;
+}
+
+sv_status sv_result_json(sv_context *context, const sv_result *result, char **ret_text)
+{
+    sv_json json = {.context = context};
+    json_t *document = json_object(), *points = json_array(), *timings = json_object();
+    sv_json_put_integer(&json, document, "selvedge", 1);
+    sv_json_put_text(&json, document, "command", "average");
+    sv_json_put_text(&json, document, "title", result->title);
+    for (int32_t i = 0; i < result->n_points; i++)
+        sv_json_push(&json, points, make_point(&json, &result->points[i]));
+    sv_json_put(&json, document, "points", points);
+    sv_json_put(&json, document, "complete", json_boolean(result->complete));
+    sv_json_put_real(&json, timings, "seconds", result->seconds);
+    sv_json_put(&json, document, "timings", timings);
+    return sv_json_finish(&json, document, ret_text);
+}

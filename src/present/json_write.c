@@ -1,0 +1,69 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Building JSON documents: failures stick, numbers that do not exist are null. */
+#include <math.h>
+#include <stdlib.h>
+#include <string.h>
+
+#include "present_internal.h"
+
+void sv_json_put(sv_json *json, json_t *object, const char *key, json_t *value)
+{
+    /* Takes the value even when it fails. */
+    if (json_object_set_new(object, key, value) != 0)
+        json->failed = true;
+}
+
+void sv_json_push(sv_json *json, json_t *array, json_t *value)
+{
+    if (json_array_append_new(array, value) != 0)
+        json->failed = true;
+}
+
+json_t *sv_json_real(double value)
+{
+    return isfinite(value) ? json_real(value + 0.0) : json_null();
+}
+
+json_t *sv_json_pair(sv_json *json, const double pair[2])
+{
+    json_t *array = json_array();
+    sv_json_push(json, array, sv_json_real(pair[0]));
+    sv_json_push(json, array, sv_json_real(pair[1]));
+    return array;
+}
+
+void sv_json_put_real(sv_json *json, json_t *object, const char *key, double value)
+{
+    sv_json_put(json, object, key, sv_json_real(value));
+}
+
+void sv_json_put_integer(sv_json *json, json_t *object, const char *key, int64_t value)
+{
+    sv_json_put(json, object, key, json_integer((json_int_t)value));
+}
+
+void sv_json_put_text(sv_json *json, json_t *object, const char *key, const char *value)
+{
+    char *repaired = NULL;
+    if (sv_words_repair(json->context, value, &repaired) != SV_OK) {
+        json->failed = true;
+        return;
+    }
+    sv_json_put(json, object, key, json_string(repaired));
+    sv_give(json->context, repaired);
+}
+
+sv_status sv_json_finish(sv_json *json, json_t *document, char **ret_text)
+{
+    char *dump = NULL;
+    sv_draft text = {.context = json->context};
+    if (!json->failed && document != NULL)
+        dump = json_dumps(document, JSON_INDENT(2) | JSON_REAL_PRECISION(17));
+    json_decref(document);
+    if (dump == NULL)
+        return SV_FAIL(json->context, SV_NO_MEMORY, "no memory for a JSON document");
+    sv_draft_add_bytes(&text, dump, strlen(dump));
+    sv_draft_add_bytes(&text, "\n", 1);
+    free(dump);
+    return sv_draft_finish(&text, ret_text);
+}

@@ -1,0 +1,143 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Readable names of markers and swept parameters. */
+#include <math.h>
+#include <stdio.h>
+#include <string.h>
+
+#include "present_internal.h"
+
+static const struct {
+    const char *name, *words, *margin, *weakest;
+} markers[] = {
+    {"local_chern", "local Chern marker", "level_spacing", NULL},
+    {"bott", "Bott index", "angle_margin", "weakest_singular_value"},
+};
+
+static int find_marker(const char *name)
+{
+    for (size_t i = 0; i < sizeof markers / sizeof *markers; i++)
+        if (strcmp(markers[i].name, name) == 0)
+            return (int)i;
+    return -1;
+}
+
+const char *sv_words_marker(const char *name)
+{
+    const int row = find_marker(name);
+    return row < 0 ? name : markers[row].words;
+}
+
+const char *sv_words_margin(const char *name)
+{
+    const int row = find_marker(name);
+    return row < 0 ? "margin" : markers[row].margin;
+}
+
+const char *sv_words_weakest(const char *name)
+{
+    const int row = find_marker(name);
+    return row < 0 ? "weakest" : markers[row].weakest;
+}
+
+/* Words for the last part of a path below `disorder.NAME`; %s stands for the name. */
+static const struct {
+    const char *key, *words;
+} disorder_keys[] = {
+    {"share", "share of positions removed (%s)"},
+    {"count", "number of defects (%s)"},
+    {"density", "defect density (%s)"},
+    {"width", "disorder width (%s; box: full width)"},
+};
+
+static const struct {
+    const char *path, *words;
+} known_paths[] = {
+    {"occupation.fermi_energy", "Fermi energy"},
+    {"occupation.filling", "filling (share of the states present)"},
+    {"occupation.electrons", "number of electrons"},
+    {"model.phi", "phase phi of the hops"},
+    {"model.m", "mass parameter m of the model"},
+};
+
+/* Splits `disorder.NAME.KEY`; false for other paths. */
+static bool split_disorder(const char *path, char *name, size_t size, const char **ret_key)
+{
+    static const char prefix[] = "disorder.";
+    const char *key = strrchr(path, '.');
+    if (strncmp(path, prefix, sizeof prefix - 1) != 0 || key < path + sizeof prefix - 1)
+        return false;
+    const char *start = path + sizeof prefix - 1;
+    if ((size_t)(key - start) >= size)
+        return false;
+    memcpy(name, start, (size_t)(key - start));
+    name[key - start] = '\0';
+    *ret_key = key + 1;
+    return true;
+}
+
+/* The one place of `%s` in a text of the table above. */
+static void fill_in(const char *words, const char *name, char *text, size_t size)
+{
+    const char *place = strstr(words, "%s");
+    snprintf(text, size, "%.*s%s%s", (int)(place - words), words, name, place + 2);
+}
+
+/* Words for a path; without a written unit the model's own holds, radian for angles. */
+static void describe_path(const char *path, char *text, size_t size)
+{
+    char name[128], clean[160];
+    const char *key = NULL;
+    if (split_disorder(path, name, sizeof name, &key))
+        for (size_t i = 0; i < sizeof disorder_keys / sizeof *disorder_keys; i++)
+            if (strcmp(key, disorder_keys[i].key) == 0) {
+                sv_words_clean(name, clean, sizeof clean);
+                fill_in(disorder_keys[i].words, clean, text, size);
+                return;
+            }
+    for (size_t i = 0; i < sizeof known_paths / sizeof *known_paths; i++)
+        if (strcmp(path, known_paths[i].path) == 0) {
+            snprintf(text, size, "%s", known_paths[i].words);
+            return;
+        }
+    sv_words_clean(path, text, size);
+}
+
+void sv_words_parameter(const sv_coordinate *coordinate, char *text, size_t size)
+{
+    char words[300];
+    if (coordinate->label != NULL) {
+        sv_words_clean(coordinate->label, text, size);
+        return;
+    }
+    describe_path(coordinate->path, words, sizeof words);
+    snprintf(text, size, "%s%s%s%s", words, coordinate->unit != NULL ? " [" : "",
+             coordinate->unit != NULL ? coordinate->unit : "", coordinate->unit != NULL ? "]" : "");
+}
+
+void sv_words_column(const sv_coordinate *coordinate, char *text, size_t size)
+{
+    char clean[400];
+    sv_words_clean(coordinate->path, clean, sizeof clean);
+    snprintf(text, size, "%s%s%s%s", clean, coordinate->unit != NULL ? " [" : "",
+             coordinate->unit != NULL ? coordinate->unit : "", coordinate->unit != NULL ? "]" : "");
+}
+
+/* Shortest text that reads back the same; 10 as "10", not in powers of ten. */
+void sv_words_real(double value, char *text, size_t size)
+{
+    const double plain = value + 0.0; /* no minus before a zero */
+    char word[40];
+    sv_format_real(plain, word, sizeof word);
+    /* The exponent form of a number in this range means trailing zeros, hence an integer. */
+    if (strchr(word, 'e') != NULL && fabs(plain) >= 1 && fabs(plain) < 1e15)
+        snprintf(word, sizeof word, "%.0f", plain);
+    snprintf(text, size, "%s", word);
+}
+
+void sv_words_value(const sv_coordinate *coordinate, char *text, size_t size)
+{
+    if (coordinate->integer && fabs(coordinate->value) < 9e15)
+        snprintf(text, size, "%lld", (long long)coordinate->value);
+    else
+        sv_words_real(coordinate->value, text, size);
+}

@@ -1,0 +1,80 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* One realisation on a terminal. */
+#include <math.h>
+#include <stdio.h>
+
+#include "present_internal.h"
+
+enum { NAME_COLUMNS = 20, LINE_COLUMNS = 79 };
+
+static void print_line(FILE *stream, const char *name, const char *text)
+{
+    char fitted[512];
+    fprintf(stream, "  ");
+    sv_table_cell(stream, name, NAME_COLUMNS, false);
+    sv_words_fit(text, LINE_COLUMNS - NAME_COLUMNS - 4, fitted, sizeof fitted);
+    fprintf(stream, "%s\n", fitted);
+}
+
+static void print_window_mean(FILE *stream, const char *name, const sv_outcome *outcome)
+{
+    char text[256];
+    snprintf(text, sizeof text, "%.6g   mean over %lld cells (numerical error %.1g)",
+             outcome->value + 0.0, (long long)outcome->window_cells, outcome->numerical_error);
+    print_line(stream, name, text);
+    if (!isfinite(outcome->sum_over_sites))
+        return;
+    snprintf(text, sizeof text, "%.2g   sum over all sites, zero on a finite flake",
+             outcome->sum_over_sites + 0.0);
+    print_line(stream, "", text);
+}
+
+static void print_index(FILE *stream, const char *name, const sv_outcome *outcome)
+{
+    char text[256];
+    snprintf(text, sizeof text, "%lld   (smallest angle to pi %.3g rad, singular value %.3g)",
+             (long long)outcome->index, outcome->margin, outcome->weakest);
+    print_line(stream, name, text);
+}
+
+static void print_levels(FILE *stream, const sv_outcome *outcome)
+{
+    char text[256];
+    if (!isfinite(outcome->highest_occupied) || !isfinite(outcome->lowest_empty))
+        return;
+    snprintf(text, sizeof text, "%lld states filled up to %.6g, next at %.6g",
+             (long long)outcome->electrons, outcome->highest_occupied, outcome->lowest_empty);
+    print_line(stream, "", text);
+}
+
+static void print_outcome(FILE *stream, const sv_marker *marker, const sv_outcome *outcome)
+{
+    static const char *const words[] = {"", "unresolved", "does not exist", "failed"};
+    const char *name = sv_words_marker(marker->kind.name);
+    char text[300];
+    if (outcome->verdict != SV_RESOLVED) {
+        print_line(stream, name, words[outcome->verdict]);
+        snprintf(text, sizeof text, "%s", outcome->reason);
+        print_line(stream, "", text);
+    } else if (marker->is_index) {
+        print_index(stream, name, outcome);
+    } else {
+        print_window_mean(stream, name, outcome);
+    }
+    if (outcome->verdict == SV_RESOLVED || outcome->verdict == SV_UNRESOLVED)
+        print_levels(stream, outcome);
+}
+
+void sv_map_print(const sv_map_result *map, bool colour, FILE *stream)
+{
+    int count;
+    const sv_marker *table = sv_marker_table(&count);
+    const sv_record *record = map->record;
+    sv_table_heading(stream, map->title[0] != '\0' ? map->title : "(no title)", colour);
+    fprintf(stream, "  realisation %lld: %lld sites, %lld vacancies\n\n",
+            (long long)record->realisation, (long long)record->sites, (long long)record->vacancies);
+    if (record->status != SV_OK)
+        fprintf(stream, "  failed: %s\n", sv_status_text(record->status));
+    for (int i = 0; i < record->n_outcomes && i < map->point->n_markers; i++)
+        print_outcome(stream, &table[map->point->markers[i].marker], &record->outcomes[i]);
+}

@@ -1,0 +1,159 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Appending realisations: one transaction each, on disk when the call returns. */
+#include <string.h>
+
+#include "store_internal.h"
+
+static const char row_sql[] =
+    "INSERT INTO realisation (point, realisation, status, sites, vacancies, seconds, outcomes, "
+    "started_by, checksum) VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9)";
+static const char outcome_sql[] =
+    "INSERT INTO outcome (point, realisation, position, marker, verdict, reason, engine, value, "
+    "idx, numerical_error, estimator_error, margin, weakest, sum_over_sites, window_cells, "
+    "highest_occupied, lowest_empty, electrons) VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9, ?10, "
+    "?11, ?12, ?13, ?14, ?15, ?16, ?17, ?18)";
+
+/* SQLite stores NaN as NULL by itself. */
+static bool bind_reals(sqlite3_stmt *statement, int first, const double *values, int count)
+{
+    bool good = true;
+    for (int i = 0; i < count; i++)
+        good &= sqlite3_bind_double(statement, first + i, values[i]) == SQLITE_OK;
+    return good;
+}
+
+static bool bind_integer(sqlite3_stmt *statement, int column, int64_t value)
+{
+    return sqlite3_bind_int64(statement, column, value) == SQLITE_OK;
+}
+
+static bool bind_text(sqlite3_stmt *statement, int column, const char *text)
+{
+    return sqlite3_bind_text(statement, column, text, -1, SQLITE_STATIC) == SQLITE_OK;
+}
+
+static sv_status insert_row(sv_context *context, sv_run *run, const sv_record *record)
+{
+    sqlite3_stmt *statement = run->put_row;
+    char digest[65];
+    sv_record_checksum(record, true, digest);
+    const bool bound = bind_integer(statement, 1, record->point) &&
+                       bind_integer(statement, 2, record->realisation) &&
+                       bind_integer(statement, 3, (int64_t)record->status) &&
+                       bind_integer(statement, 4, record->sites) &&
+                       bind_integer(statement, 5, record->vacancies) &&
+                       bind_reals(statement, 6, &record->seconds, 1) &&
+                       bind_integer(statement, 7, record->n_outcomes) &&
+                       bind_integer(statement, 8, run->session) && bind_text(statement, 9, digest);
+    sv_status status = SV_OK;
+    if (!bound || sqlite3_step(statement) != SQLITE_DONE)
+        status = sv_ledger_fail(context, run, "write");
+    sqlite3_reset(statement);
+    return status;
+}
+
+static sv_status insert_outcome(sv_context *context, sv_run *run, const sv_record *record,
+                                int position)
+{
+    const sv_outcome *outcome = &record->outcomes[position];
+    const double reals[] = {outcome->numerical_error, outcome->estimator_error, outcome->margin,
+                            outcome->weakest, outcome->sum_over_sites};
+    const double levels[] = {outcome->highest_occupied, outcome->lowest_empty};
+    sqlite3_stmt *statement = run->put_outcome;
+    const bool bound =
+        bind_integer(statement, 1, record->point) &&
+        bind_integer(statement, 2, record->realisation) && bind_integer(statement, 3, position) &&
+        bind_text(statement, 4, run->n_markers >= 0 ? run->markers[position] : "") &&
+        bind_integer(statement, 5, (int64_t)outcome->verdict) &&
+        bind_text(statement, 6, outcome->reason) && bind_text(statement, 7, outcome->engine) &&
+        bind_reals(statement, 8, &outcome->value, 1) &&
+        bind_integer(statement, 9, outcome->index) && bind_reals(statement, 10, reals, 5) &&
+        bind_integer(statement, 15, outcome->window_cells) &&
+        bind_reals(statement, 16, levels, 2) && bind_integer(statement, 18, outcome->electrons);
+    sv_status status = SV_OK;
+    if (!bound || sqlite3_step(statement) != SQLITE_DONE)
+        status = sv_ledger_fail(context, run, "write");
+    sqlite3_reset(statement);
+    return status;
+}
+
+static sv_status prepare_writing(sv_context *context, sv_run *run)
+{
+    sv_status status = SV_OK;
+    if (run->put_row == NULL)
+        status = sv_ledger_prepare(context, run, row_sql, &run->put_row);
+    if (status == SV_OK && run->put_outcome == NULL)
+        status = sv_ledger_prepare(context, run, outcome_sql, &run->put_outcome);
+    return status;
+}
+
+static sv_status check_record(sv_context *context, const sv_run *run, const sv_record *record)
+{
+    if (!run->writing)
+        return SV_FAIL(context, SV_STORAGE, "the run %s is open for reading only", run->folder);
+    if (record->point < 0 || record->point >= SV_MAX_POINTS || record->realisation < 0 ||
+        record->realisation >= SV_MAX_REALISATIONS || record->n_outcomes < 0 ||
+        record->n_outcomes > SV_MAX_MARKERS)
+        return SV_FAIL(context, SV_INTERNAL, "point %ld, realisation %lld, %ld outcomes",
+                       (long)record->point, (long long)record->realisation,
+                       (long)record->n_outcomes);
+    if (run->n_markers >= 0 && record->n_outcomes > run->n_markers)
+        return SV_FAIL(context, SV_STORAGE, "%s keeps %d markers, the record has %ld", run->folder,
+                       run->n_markers, (long)record->n_outcomes);
+    return SV_OK;
+}
+
+/* A realisation that is there already must have the same numbers, its time apart. */
+static sv_status compare(sv_context *context, const sv_run *run, const sv_record *old_record,
+                         const sv_record *record)
+{
+    char was[65], is[65];
+    sv_record_checksum(old_record, false, was);
+    sv_record_checksum(record, false, is);
+    if (strcmp(was, is) == 0)
+        return SV_OK;
+    for (int i = 0; i < record->n_outcomes && i < old_record->n_outcomes; i++)
+        if (old_record->outcomes[i].value < record->outcomes[i].value ||
+            old_record->outcomes[i].value > record->outcomes[i].value)
+            return SV_FAIL(context, SV_STORAGE,
+                           "realisation %lld of point %ld is kept in %s with another value: "
+                           "%.17g there, %.17g now (marker number %d)",
+                           (long long)record->realisation, (long)record->point, run->folder,
+                           old_record->outcomes[i].value, record->outcomes[i].value, i);
+    return SV_FAIL(context, SV_STORAGE,
+                   "realisation %lld of point %ld is kept in %s with another outcome",
+                   (long long)record->realisation, (long)record->point, run->folder);
+}
+
+static sv_status insert(sv_context *context, sv_run *run, const sv_record *record)
+{
+    sv_record old_record;
+    bool found = false;
+    sv_status status =
+        sv_record_read(context, run, record->point, record->realisation, &old_record, &found);
+    if (status == SV_OK && found)
+        return compare(context, run, &old_record, record);
+    if (status == SV_OK)
+        status = insert_row(context, run, record);
+    for (int i = 0; i < record->n_outcomes && status == SV_OK; i++)
+        status = insert_outcome(context, run, record, i);
+    return status;
+}
+
+sv_status sv_run_put(sv_context *context, const sv_record *record, void *user)
+{
+    sv_run *run = user;
+    sv_status status = check_record(context, run, record);
+    if (status == SV_OK)
+        status = prepare_writing(context, run);
+    if (status == SV_OK)
+        status = sv_ledger_execute(context, run, "BEGIN IMMEDIATE");
+    if (status != SV_OK)
+        return status;
+    status = insert(context, run, record);
+    if (status == SV_OK)
+        status = sv_ledger_execute(context, run, "COMMIT");
+    if (status != SV_OK && sqlite3_get_autocommit(run->ledger) == 0)
+        sqlite3_exec(run->ledger, "ROLLBACK", NULL, NULL, NULL);
+    return status;
+}

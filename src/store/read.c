@@ -1,0 +1,237 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Reading realisations back, with their checksums. */
+#include <math.h>
+#include <string.h>
+
+#include "store_internal.h"
+
+static const char row_sql[] =
+    "SELECT status, sites, vacancies, seconds, outcomes, checksum FROM realisation "
+    "WHERE point = ?1 AND realisation = ?2";
+static const char outcome_sql[] =
+    "SELECT position, marker, verdict, reason, engine, value, idx, numerical_error, "
+    "estimator_error, margin, weakest, sum_over_sites, window_cells, highest_occupied, "
+    "lowest_empty, electrons FROM outcome WHERE point = ?1 AND realisation = ?2 ORDER BY position";
+
+static double real_at(sqlite3_stmt *row, int column)
+{
+    if (sqlite3_column_type(row, column) == SQLITE_NULL)
+        return (double)NAN;
+    return sqlite3_column_double(row, column);
+}
+
+/* A bounded copy; false when the text is missing, too long, or holds a NUL. */
+static bool text_at(sqlite3_stmt *row, int column, char *text, size_t size)
+{
+    const char *value = (const char *)sqlite3_column_text(row, column);
+    const int bytes = sqlite3_column_bytes(row, column);
+    if (value == NULL || bytes < 0 || (size_t)bytes >= size || strlen(value) != (size_t)bytes)
+        return false;
+    memcpy(text, value, (size_t)bytes + 1);
+    return true;
+}
+
+static sv_status damaged(sv_context *context, const sv_run *run, int32_t point, int64_t realisation,
+                         const char *what)
+{
+    return SV_FAIL(context, SV_STORAGE, "%s/%s: realisation %lld of point %ld is damaged: %s",
+                   run->folder, SV_LEDGER_NAME, (long long)realisation, (long)point, what);
+}
+
+static bool read_outcome(sqlite3_stmt *row, sv_outcome *outcome)
+{
+    memset(outcome, 0, sizeof *outcome);
+    const sqlite3_int64 verdict = sqlite3_column_int64(row, 2);
+    if (verdict < SV_RESOLVED || verdict > SV_FAILED ||
+        !text_at(row, 3, outcome->reason, sizeof outcome->reason) ||
+        !text_at(row, 4, outcome->engine, sizeof outcome->engine))
+        return false;
+    outcome->verdict = (sv_verdict)verdict;
+    outcome->value = real_at(row, 5);
+    outcome->index = sqlite3_column_int64(row, 6);
+    outcome->numerical_error = real_at(row, 7);
+    outcome->estimator_error = real_at(row, 8);
+    outcome->margin = real_at(row, 9);
+    outcome->weakest = real_at(row, 10);
+    outcome->sum_over_sites = real_at(row, 11);
+    outcome->window_cells = sqlite3_column_int64(row, 12);
+    outcome->highest_occupied = real_at(row, 13);
+    outcome->lowest_empty = real_at(row, 14);
+    outcome->electrons = sqlite3_column_int64(row, 15);
+    return true;
+}
+
+/* The head of the record; the checksum it should have goes to `digest`. */
+static sv_status read_row(sv_context *context, sv_run *run, sv_record *record, char digest[65],
+                          bool *ret_found)
+{
+    sqlite3_stmt *row = run->get_row;
+    const int code = sqlite3_step(row);
+    *ret_found = code == SQLITE_ROW;
+    if (code == SQLITE_DONE)
+        return SV_OK;
+    if (code != SQLITE_ROW)
+        return sv_ledger_fail(context, run, "read");
+    const sqlite3_int64 state = sqlite3_column_int64(row, 0), count = sqlite3_column_int64(row, 4);
+    if (state < 0 || state >= SV_STATUS_COUNT || count < 0 || count > SV_MAX_MARKERS ||
+        !text_at(row, 5, digest, 65))
+        return damaged(context, run, record->point, record->realisation, "a value out of range");
+    record->status = (sv_status)state;
+    record->sites = sqlite3_column_int64(row, 1);
+    record->vacancies = sqlite3_column_int64(row, 2);
+    record->seconds = real_at(row, 3);
+    record->n_outcomes = (int32_t)count;
+    return SV_OK;
+}
+
+static sv_status read_outcomes(sv_context *context, sv_run *run, sv_record *record)
+{
+    sqlite3_stmt *row = run->get_outcome;
+    int code, count = 0;
+    while ((code = sqlite3_step(row)) == SQLITE_ROW) {
+        char name[SV_MARKER_NAME_SIZE];
+        if (count >= record->n_outcomes || sqlite3_column_int64(row, 0) != count ||
+            !text_at(row, 1, name, sizeof name) ||
+            (run->n_markers >= 0 &&
+             (count >= run->n_markers || strcmp(name, run->markers[count]) != 0)) ||
+            !read_outcome(row, &record->outcomes[count]))
+            return damaged(context, run, record->point, record->realisation,
+                           "an outcome is out of place or out of range");
+        count++;
+    }
+    if (code != SQLITE_DONE)
+        return sv_ledger_fail(context, run, "read");
+    if (count != record->n_outcomes)
+        return damaged(context, run, record->point, record->realisation, "outcomes are missing");
+    return SV_OK;
+}
+
+static sv_status bind_key(sv_context *context, sv_run *run, sqlite3_stmt *statement, int32_t point,
+                          int64_t realisation)
+{
+    if (sqlite3_bind_int64(statement, 1, point) != SQLITE_OK ||
+        sqlite3_bind_int64(statement, 2, realisation) != SQLITE_OK)
+        return sv_ledger_fail(context, run, "read");
+    return SV_OK;
+}
+
+static sv_status prepare_reading(sv_context *context, sv_run *run)
+{
+    sv_status status = SV_OK;
+    if (run->get_row == NULL)
+        status = sv_ledger_prepare(context, run, row_sql, &run->get_row);
+    if (status == SV_OK && run->get_outcome == NULL)
+        status = sv_ledger_prepare(context, run, outcome_sql, &run->get_outcome);
+    return status;
+}
+
+sv_status sv_record_read(sv_context *context, sv_run *run, int32_t point, int64_t realisation,
+                         sv_record *ret_record, bool *ret_found)
+{
+    sv_record record;
+    char digest[65] = "", expected[65];
+    bool found = false;
+    memset(&record, 0, sizeof record);
+    record.point = point;
+    record.realisation = realisation;
+    sv_status status = prepare_reading(context, run);
+    if (status == SV_OK)
+        status = bind_key(context, run, run->get_row, point, realisation);
+    if (status == SV_OK)
+        status = bind_key(context, run, run->get_outcome, point, realisation);
+    if (status == SV_OK)
+        status = read_row(context, run, &record, digest, &found);
+    if (status == SV_OK && found)
+        status = read_outcomes(context, run, &record);
+    if (run->get_row != NULL)
+        sqlite3_reset(run->get_row);
+    if (run->get_outcome != NULL)
+        sqlite3_reset(run->get_outcome);
+    if (status == SV_OK && found) {
+        sv_record_checksum(&record, true, expected);
+        if (strcmp(digest, expected) != 0)
+            status = damaged(context, run, point, realisation, "its checksum does not fit");
+    }
+    if (status != SV_OK)
+        return status;
+    *ret_found = found;
+    if (found)
+        *ret_record = record;
+    return SV_OK;
+}
+
+/* Loads the rows the key statement names; it yields (point, realisation). */
+static sv_status load_rows(sv_context *context, sv_run *run, sqlite3_stmt *keys,
+                           sv_ensemble *ensemble, sv_index *loaded)
+{
+    int code;
+    while ((code = sqlite3_step(keys)) == SQLITE_ROW) {
+        const sqlite3_int64 point = sqlite3_column_int64(keys, 0);
+        const sqlite3_int64 realisation = sqlite3_column_int64(keys, 1);
+        if (point < 0 || realisation < 0)
+            return SV_FAIL(context, SV_STORAGE, "%s/%s holds a row with a negative number",
+                           run->folder, SV_LEDGER_NAME);
+        if (point >= ensemble->n_points || realisation >= ensemble->realisations)
+            continue;
+        const int64_t place = point * ensemble->realisations + realisation;
+        bool found = false;
+        sv_status status = sv_record_read(context, run, (int32_t)point, realisation,
+                                          &ensemble->records[place], &found);
+        if (status == SV_OK && !found)
+            status = damaged(context, run, (int32_t)point, realisation, "it cannot be found");
+        if (status != SV_OK)
+            return status;
+        ensemble->done[place] = true;
+        (*loaded)++;
+    }
+    return code == SQLITE_DONE ? SV_OK : sv_ledger_fail(context, run, "read");
+}
+
+sv_status sv_run_load(sv_context *context, sv_run *run, sv_ensemble *ensemble, sv_index *ret_loaded)
+{
+    sqlite3_stmt *keys = NULL;
+    sv_index loaded = 0;
+    /* One transaction: a ledger that is being written looks frozen meanwhile. */
+    sv_status status = sv_ledger_execute(context, run, "BEGIN");
+    if (status != SV_OK)
+        return status;
+    status = sv_ledger_prepare(context, run,
+                               "SELECT point, realisation FROM realisation "
+                               "ORDER BY point, realisation",
+                               &keys);
+    if (status == SV_OK)
+        status = load_rows(context, run, keys, ensemble, &loaded);
+    sqlite3_finalize(keys);
+    sqlite3_exec(run->ledger, "COMMIT", NULL, NULL, NULL);
+    if (status == SV_OK)
+        *ret_loaded = loaded;
+    return status;
+}
+
+sv_status sv_run_extent(sv_context *context, sv_run *run, int64_t *ret_realisations,
+                        int32_t *ret_points)
+{
+    sqlite3_stmt *statement = NULL;
+    sv_status status = sv_ledger_prepare(
+        context, run, "SELECT max(realisation), max(point) FROM realisation", &statement);
+    if (status == SV_OK && sqlite3_step(statement) != SQLITE_ROW)
+        status = sv_ledger_fail(context, run, "read");
+    if (status == SV_OK && sqlite3_column_type(statement, 0) == SQLITE_NULL) {
+        *ret_realisations = 0;
+        *ret_points = 0;
+    } else if (status == SV_OK) {
+        const sqlite3_int64 realisation = sqlite3_column_int64(statement, 0);
+        const sqlite3_int64 point = sqlite3_column_int64(statement, 1);
+        if (realisation < 0 || realisation >= SV_MAX_REALISATIONS || point < 0 ||
+            point >= SV_MAX_POINTS) {
+            status =
+                SV_FAIL(context, SV_STORAGE, "%s/%s counts realisations to %lld, points to %lld",
+                        run->folder, SV_LEDGER_NAME, (long long)realisation, (long long)point);
+        } else {
+            *ret_realisations = realisation + 1;
+            *ret_points = (int32_t)point + 1;
+        }
+    }
+    sqlite3_finalize(statement);
+    return status;
+}

@@ -1,0 +1,110 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Parts of the store shared by its files. */
+#ifndef SELVEDGE_STORE_INTERNAL_H
+#define SELVEDGE_STORE_INTERNAL_H
+
+#include <sqlite3.h>
+
+#include "selvedge/store.h"
+
+#define SV_SHEET_NAME   "sheet.resolved.yaml"
+#define SV_LEDGER_NAME  "ledger.sqlite"
+#define SV_JOURNAL_NAME "ledger.sqlite-journal"
+#define SV_LOCK_NAME    ".lock"
+#define SV_INPUTS_NAME  "inputs"
+#define SV_ASIDE_PREFIX "ledger.old-"
+
+enum {
+    SV_PATH_SIZE = 4096,
+    SV_MAX_META = 64,
+    SV_MARKER_NAME_SIZE = 64,
+    /* A ledger row never needs more; guards against huge values in a file from elsewhere. */
+    SV_MAX_POINTS = 1 << 20,
+    SV_MAX_TEXT_BYTES = 1 << 24
+};
+#define SV_MAX_REALISATIONS (INT64_C(1) << 40)
+
+typedef struct sv_meta {
+    char *key, *value;
+} sv_meta;
+
+struct sv_run {
+    char *folder;
+    sqlite3 *ledger;
+    int lock; /* descriptor that holds the lock, or -1 */
+    bool writing;
+    int64_t session; /* number of the event that began this writing */
+    sv_meta meta[SV_MAX_META];
+    int n_meta;
+    int n_markers;    /* -1: unknown */
+    int32_t n_points; /* 0: unknown */
+    char markers[SV_MAX_MARKERS][SV_MARKER_NAME_SIZE];
+    sqlite3_stmt *put_row, *put_outcome, *get_row, *get_outcome;
+};
+
+/* file.c */
+sv_status sv_join_path(sv_context *context, const char *folder, const char *name, char *path,
+                       size_t size);
+sv_status sv_make_folder(sv_context *context, const char *path);
+sv_status sv_copy_inputs(sv_context *context, const char *folder, const sv_run_input *inputs,
+                         int n_inputs);
+
+/* folder.c */
+typedef enum sv_folder_kind { SV_FOLDER_EMPTY, SV_FOLDER_RUN, SV_FOLDER_FOREIGN } sv_folder_kind;
+sv_status sv_folder_look(sv_context *context, const char *folder, sv_folder_kind *ret_kind,
+                         char foreign[256]);
+void sv_folder_sweep(const char *folder);
+sv_status sv_folder_lock(sv_context *context, const char *folder, int *ret_lock);
+void sv_folder_unlock(int lock);
+
+/* schema.c */
+sv_status sv_schema_create(sv_context *context, sv_run *run);
+sv_status sv_schema_check(sv_context *context, sv_run *run);
+
+/* ledger.c */
+sv_status sv_ledger_fail(sv_context *context, const sv_run *run, const char *what);
+sv_status sv_ledger_execute(sv_context *context, sv_run *run, const char *sql);
+sv_status sv_ledger_prepare(sv_context *context, sv_run *run, const char *sql,
+                            sqlite3_stmt **ret_statement);
+sv_status sv_ledger_create(sv_context *context, sv_run *run);
+sv_status sv_ledger_open(sv_context *context, sv_run *run);
+sv_status sv_ledger_open_read(sv_context *context, sv_run *run);
+void sv_ledger_close(sv_run *run);
+
+/* meta.c */
+sv_status sv_meta_load(sv_context *context, sv_run *run);
+sv_status sv_meta_set(sv_context *context, sv_run *run, const char *key, const char *value);
+void sv_meta_free(sv_context *context, sv_run *run);
+sv_status sv_meta_set_shape(sv_context *context, sv_run *run, const sv_run_identity *identity);
+sv_status sv_meta_read_shape(sv_context *context, sv_run *run);
+sv_status sv_event_add(sv_context *context, sv_run *run, const char *what, const char *note,
+                       int64_t *ret_number);
+
+/* run.c */
+sv_status sv_run_new(sv_context *context, const char *folder, bool writing, sv_run **ret_run);
+void sv_run_free(sv_context *context, sv_run *run);
+
+/* start.c */
+sv_status sv_session_write_sheet(sv_context *context, const sv_run *run,
+                                 const sv_run_identity *identity);
+sv_status sv_session_begin(sv_context *context, sv_run *run, const sv_run_identity *identity,
+                           const char *what, bool create);
+sv_status sv_session_start(sv_context *context, sv_run *run, const sv_run_identity *identity);
+
+/* resume.c */
+sv_status sv_session_start_or_resume(sv_context *context, sv_run *run,
+                                     const sv_run_identity *identity, bool force);
+sv_status sv_session_check_sheet(sv_context *context, const sv_run *run);
+
+/* identity.c */
+void sv_identity_digest(sv_context *context, const sv_run_identity *identity, char digest[65]);
+void sv_identity_difference(const sv_run *run, const sv_run_identity *identity, char *text,
+                            size_t size);
+
+/* read.c */
+sv_status sv_record_read(sv_context *context, sv_run *run, int32_t point, int64_t realisation,
+                         sv_record *ret_record, bool *ret_found);
+/* checksum.c */
+void sv_record_checksum(const sv_record *record, bool with_seconds, char digest[65]);
+
+#endif

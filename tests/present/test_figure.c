@@ -1,0 +1,188 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Sweep figures: what is drawn, what is written, what cannot be smuggled in. */
+#include <unistd.h>
+
+#include "figure_fixture.h"
+
+SV_TEST(a_sweep_is_drawn)
+{
+    fixture f;
+    sv_figure_files files = {.drawn = false};
+    fixture_make(&f);
+    choose_folder("sweep");
+    CHECK_OK(sv_figure_sweep(test_context(), folder, "curve", &f.result, &files));
+    check_files(&files, "sweep");
+    size_t size;
+    char *data = slurp(files.data, &size);
+    CHECK(strstr(data, "# local_chern\n") != NULL && strstr(data, "# bott\n") != NULL);
+    CHECK(strstr(data, " 0.9981") != NULL);
+    free(data);
+}
+
+SV_TEST(the_same_numbers_give_the_same_bytes)
+{
+    static const char *const suffixes[] = {"svg", "pdf", "png", "gp", "dat"};
+    sv_context *context = test_context();
+    fixture f;
+    sv_figure_files files = {.drawn = false};
+    fixture_make(&f);
+    choose_folder("bytes");
+    CHECK_OK(sv_figure_sweep(context, folder, "a", &f.result, &files));
+    if (!files.drawn)
+        return;
+    char *first[5], path[1200];
+    size_t sizes[5], size;
+    for (int i = 0; i < 5; i++) {
+        snprintf(path, sizeof path, "%s/a.%s", folder, suffixes[i]);
+        first[i] = slurp(path, &sizes[i]);
+    }
+    sleep(1); /* a date inside would show */
+    CHECK_OK(sv_figure_sweep(context, folder, "a", &f.result, &files));
+    for (int i = 0; i < 5; i++) {
+        snprintf(path, sizeof path, "%s/a.%s", folder, suffixes[i]);
+        char *second = slurp(path, &size);
+        test_check(size == sizes[i] && memcmp(first[i], second, size) == 0, __FILE__, __LINE__,
+                   "a.%s differs", suffixes[i]);
+        free(second);
+        free(first[i]);
+    }
+}
+
+SV_TEST(a_sweep_needs_an_axis)
+{
+    fixture f;
+    sv_figure_files files = {.drawn = true};
+    fixture_make(&f);
+    choose_folder("axis");
+    f.result.n_points = 1;
+    CHECK_OK(sv_figure_sweep(test_context(), folder, "curve", &f.result, &files));
+    CHECK(!files.drawn && strstr(files.reason, "one swept parameter") != NULL);
+}
+
+SV_TEST(markers_that_are_nowhere_leave_an_empty_panel)
+{
+    fixture f;
+    sv_figure_files files = {.drawn = false};
+    fixture_make(&f);
+    for (int i = 0; i < 3; i++)
+        f.points[i].summaries[1].exists = false;
+    choose_folder("nowhere");
+    CHECK_OK(sv_figure_sweep(test_context(), folder, "curve", &f.result, &files));
+    check_files(&files, "nowhere");
+}
+
+SV_TEST(titles_are_shown_and_never_run)
+{
+    fixture f;
+    sv_figure_files files = {.drawn = false};
+    struct stat info;
+    char title[600];
+    fixture_make(&f);
+    choose_folder("hostile");
+    snprintf(
+        title, sizeof title,
+        "it's `touch pwned` \"$(touch pwned)\" <b>&\n' ; system('touch pwned') #{/Symbol a}\xff");
+    f.result.title = title;
+    for (int i = 0; i < 3; i++)
+        f.points[i].coordinates[0].path = "disorder.a'`touch pwned`\"<i>\n.width";
+    CHECK_OK(sv_figure_sweep(test_context(), folder, "hostile", &f.result, &files));
+    check_files(&files, "hostile");
+    CHECK(stat(inside("pwned"), &info) != 0 && stat("pwned", &info) != 0);
+    size_t size;
+    char *script = slurp(files.script, &size);
+    CHECK(strstr(script, "set label 1 'it''s `touch pwned` \"$(touch pwned)\" <b>&") != NULL);
+    free(script);
+    if (!files.drawn)
+        return;
+    char *svg = slurp(files.svg, &size);
+    CHECK(strstr(svg, "<b>") == NULL && strstr(svg, "<i>") == NULL);
+    CHECK(strstr(svg, "<title>it's `touch pwned` \"$(touch pwned)\" &lt;b&gt;&amp;\\n") != NULL);
+    CHECK(strstr(svg, "&lt;i>\\n") != NULL);
+    free(svg);
+}
+
+SV_TEST(names_of_figures_are_plain)
+{
+    static const char *const bad[] = {"", "../up", "-e", ".hidden", "a b", "a'b", "a/b", "a\nb"};
+    fixture f;
+    sv_figure_files files = {.drawn = false};
+    fixture_make(&f);
+    choose_folder("names");
+    for (size_t i = 0; i < sizeof bad / sizeof *bad; i++)
+        CHECK_STATUS(SV_INVALID_INPUT,
+                     sv_figure_sweep(test_context(), folder, bad[i], &f.result, &files));
+    CHECK_STATUS(SV_STORAGE, sv_figure_sweep(test_context(), "/proc/none", "a", &f.result, &files));
+}
+
+SV_TEST(without_gnuplot_there_is_a_script_and_a_reason)
+{
+    fixture f;
+    sv_figure_files files = {.drawn = true};
+    fixture_make(&f);
+    choose_folder("without");
+    char *path = strdup(getenv("PATH"));
+    setenv("PATH", "/nowhere", 1);
+    CHECK_OK(sv_figure_sweep(test_context(), folder, "curve", &f.result, &files));
+    setenv("PATH", path, 1);
+    free(path);
+    struct stat info;
+    CHECK(!files.drawn && strstr(files.reason, "gnuplot was not found") != NULL);
+    CHECK(files.svg[0] == '\0' && files.pdf[0] == '\0' && files.png[0] == '\0');
+    CHECK(stat(files.script, &info) == 0 && info.st_size > 0);
+}
+
+/* Puts a shell script named gnuplot first in PATH. */
+static void draw_with_stand_in(const char *script, sv_figure_files *files)
+{
+    fixture f;
+    char place[1024], path[1200], longer[4096];
+    fixture_make(&f);
+    snprintf(place, sizeof place, "%s", test_scratch("bin"));
+    mkdir(place, 0777);
+    snprintf(path, sizeof path, "%s/gnuplot", place);
+    FILE *stream = fopen(path, "w");
+    fprintf(stream, "#!/bin/sh\n%s\n", script);
+    fclose(stream);
+    chmod(path, 0755);
+    char *before = strdup(getenv("PATH"));
+    snprintf(longer, sizeof longer, "%s:%s", place, before);
+    setenv("PATH", longer, 1);
+    CHECK_OK(sv_figure_sweep(test_context(), folder, "curve", &f.result, files));
+    setenv("PATH", before, 1);
+    free(before);
+}
+
+SV_TEST(success_is_not_believed_without_files)
+{
+    sv_figure_files files = {.drawn = true};
+    struct stat info;
+    choose_folder("believed");
+    draw_with_stand_in("exit 0", &files);
+    CHECK(!files.drawn && strstr(files.reason, "left no curve.png") != NULL);
+    draw_with_stand_in("printf 'IEND....' >curve.png; printf '%%PDF half' >curve.pdf", &files);
+    CHECK(!files.drawn && strstr(files.reason, "incomplete curve.pdf") != NULL);
+    CHECK(stat(inside("curve.png"), &info) != 0); /* half a figure is none */
+    draw_with_stand_in("echo 'line 3: nonsense' >&2; exit 1", &files);
+    CHECK(!files.drawn && strstr(files.reason, "line 3: nonsense") != NULL);
+}
+
+SV_TEST(links_in_the_folder_are_not_written_through)
+{
+    fixture f;
+    sv_figure_files files = {.drawn = false};
+    char target[1200];
+    struct stat info;
+    fixture_make(&f);
+    choose_folder("links");
+    CHECK(mkdir(folder, 0777) == 0);
+    snprintf(target, sizeof target, "%s", test_scratch("victim"));
+    FILE *stream = fopen(target, "w");
+    fputs("precious", stream);
+    fclose(stream);
+    static const char *const names[] = {"curve.svg", "curve.pdf", "curve.png", "curve.gp",
+                                        "curve.dat"};
+    for (int i = 0; i < 5; i++)
+        CHECK(symlink(target, inside(names[i])) == 0);
+    CHECK_OK(sv_figure_sweep(test_context(), folder, "curve", &f.result, &files));
+    CHECK(stat(target, &info) == 0 && info.st_size == 8);
+}
