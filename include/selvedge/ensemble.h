@@ -58,6 +58,23 @@ SV_API SV_MUST_USE sv_status sv_realise(sv_context *context, const sv_case *poin
                                         sv_index realisation, double **ret_site_values,
                                         sv_sample *ret_sample, sv_record *ret_record);
 
+/** What sv_case_plan() decided, in words. */
+typedef struct sv_plan {
+    char reason[240]; /**< "chebyshev: degree …" or "dense: …" */
+} sv_plan;
+
+/**
+ * Settles the engine of a point and its settings (degree, reach of columns, sampled cells) and
+ * writes them into point->solve. A pure function of the point: it tries realisation 0 on a sample
+ * of the window and takes the lowest degree whose stated error is within point->solve.accuracy.
+ * @param site_map        the marker of every site is wanted
+ * @param sampling_error  estimator error allowed when the window must be sampled (above 20,000
+ *                        window columns)
+ * @return SV_INVALID_INPUT when the engine asked for cannot do the job
+ */
+SV_API SV_MUST_USE sv_status sv_case_plan(sv_context *context, sv_case *point, bool site_map,
+                                          double sampling_error, sv_plan *ret_plan);
+
 /** Stop rule: the first n ≥ at_least at which the standard error of `marker` is ≤ the target. */
 typedef struct sv_stop_rule {
     bool active;

@@ -48,6 +48,10 @@ typedef struct sv_marker_input {
     const sv_occupation *occupation;
     sv_projector *projector; /**< NULL for markers that do not need one */
     const sv_value *values;  /**< one per key of its kind */
+    sv_index sampled_cells;  /**< local Chern: window cells to sample, 0: all */
+    int threads;             /**< inside this realisation; 0 or 1: one */
+    uint64_t seed;           /**< of the ensemble: draws the sampled cells */
+    sv_index realisation;
     double *ret_site_values; /**< local Chern: n values per site, or NULL; also switches on the
                                   sum over all sites */
 } sv_marker_input;
@@ -91,6 +95,46 @@ SV_API SV_MUST_USE sv_status sv_local_chern(sv_context *context, const sv_marker
  */
 SV_API SV_MUST_USE sv_status sv_bott_index(sv_context *context, const sv_marker_input *input,
                                            sv_outcome *ret_outcome);
+
+/**
+ * The spectral localizer [[H − E, κ(X − iY)], [κ(X + iY), −(H − E)]], positions relative to the
+ * probe, rows 2r and 2r + 1 for site r. Its half signature is −C in the bulk.
+ * @param kappa  energy per lattice constant
+ * @param at     probe point, Cartesian, lattice constants
+ */
+SV_API SV_MUST_USE sv_status sv_localizer_matrix(sv_context *context, const sv_sample *sample,
+                                                 double energy, double kappa, const double at[2],
+                                                 sv_sparse *ret_matrix);
+/** Distance from a point to the nearest site of the infinite clean lattice that the flake lacks. */
+SV_API double sv_localizer_radius(const sv_flake *flake, const double at[2]);
+
+/**
+ * Replaces `auto` among the values of the localizer's keys: κ = 2g/ρ, τ = g/4, with g the half
+ * width of the clean gap around the Fermi energy (energy: its distance to the bands) and ρ =
+ * sv_localizer_radius(). They depend on the sheet alone; call it once per point and hand the
+ * values to every realisation, which would otherwise compute them again.
+ * @param[in,out] values  at, kappa, threshold, gap; afterwards kappa.count = 2, kappa.real[1] = g
+ *                        (0: no gap, or unknown), and κ = 0 or τ = 0 when there is no rule for it
+ */
+SV_API SV_MUST_USE sv_status sv_localizer_prepare(sv_context *context, const sv_flake *flake,
+                                                  const sv_occupation *occupation,
+                                                  sv_value *values);
+
+/**
+ * Localizer index at a point of an open flake (Loring, Ann. Phys. 356, 383 (2015); Loring,
+ * Schulz-Baldes, J. Noncommut. Geom. 14, 1 (2020)): minus the half signature of
+ * sv_localizer_matrix(), from inertia. Needs no projector; a filling is turned into a Fermi energy
+ * by inertia.
+ *
+ * Resolved when the inertia is equal at +τ and −τ (no level of the localizer is nearer to 0), the
+ * index at κ/2 agrees, and the localizer gap does not exceed g (κ would be too large); else the
+ * reason says what failed. Margin: the localizer gap, or with gap: bound its certified lower bound
+ * τ. The gap is 1-Lipschitz in H and E, κ-Lipschitz in the probe: the index stands for every
+ * potential of norm below the margin. Keys: at, kappa, threshold, gap.
+ * Cost: one analysis and three factorisations of order 2N, one or more of order N.
+ */
+SV_API SV_MUST_USE sv_status sv_localizer_index(sv_context *context, const sv_marker_input *input,
+                                                sv_outcome *ret_outcome);
 
 #ifdef __cplusplus
 }

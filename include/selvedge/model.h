@@ -92,6 +92,25 @@ SV_API double sv_model_norm_bound(const sv_model *model);
  */
 SV_API void sv_model_bloch(const sv_model *model, const double k[2], sv_complex *ret_matrix);
 
+/**
+ * Distance of an energy from the bands of the infinite clean model; 0 when it lies in a band.
+ * Bands are followed on a grid over the (magnetic) Brillouin zone, their edges by descent from the
+ * extreme grid points: a pocket narrower than the grid (36² points, 12² with flux) can be missed.
+ * @return SV_UNDEFINED for more than 200 bands
+ */
+SV_API SV_MUST_USE sv_status sv_model_spectral_distance(sv_context *context, const sv_model *model,
+                                                        double energy, double *ret_distance);
+/**
+ * Edges of the gap above a whole number of bands, in the same way; edge 1 ≤ edge 0: no gap.
+ * @param filling    share of all states that is filled
+ * @param tolerance  largest deviation of it from a whole number of bands
+ * @param[out] ret_edges  top of the filled bands, bottom of the empty ones; ∓∞ where there are none
+ * @return SV_UNDEFINED for a partly filled band or more than 200 bands
+ */
+SV_API SV_MUST_USE sv_status sv_model_filling_gap(sv_context *context, const sv_model *model,
+                                                  double filling, double tolerance,
+                                                  double ret_edges[2]);
+
 #ifdef __cplusplus
 }
 #endif

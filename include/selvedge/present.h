@@ -17,8 +17,9 @@ extern "C" {
 /** Value of one swept parameter at one point. */
 typedef struct sv_coordinate {
     const char *path;
-    double value;
+    double value; /**< in `unit` where there is one, else in the model's unit */
     bool integer;
+    const char *unit; /**< symbol, or NULL */
     const char *label; /**< readable name with unit for axes, or NULL: made from the path */
 } sv_coordinate;
 

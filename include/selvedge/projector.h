@@ -23,6 +23,10 @@ typedef struct sv_projector_options {
     int degree;          /**< chebyshev: degree of the polynomial, odd; 0: from half_gap, accuracy */
     double half_gap;     /**< chebyshev: levels at least this far from the Fermi energy are resolved,
                               unit of the model */
+    double reach;        /**< chebyshev: radius of the parts for single columns, lattice constants;
+                              0: columns use the whole flake */
+    sv_index sampled_cells; /**< local Chern: number of window cells to sample; 0: all */
+    int threads;            /**< threads inside one realisation (huge flakes); 0 or 1: one */
 } sv_projector_options;
 SV_API sv_projector_options sv_projector_options_default(void);
 
@@ -67,6 +71,20 @@ SV_API const char *sv_projector_engine(const sv_projector *projector);
 SV_API SV_MUST_USE sv_status sv_projector_apply(sv_context *context, sv_projector *projector,
                                                 sv_index columns, const sv_complex *x,
                                                 sv_complex *y);
+
+/**
+ * The projector of a part of the sample: rows within `radius` of a point, hops that leave it cut.
+ * Columns that start near the middle feel the cut only through their weight at the rim.
+ * @param n_rows, rows  row numbers of the part, ascending; borrowed for the call
+ * @param[in,out] place scratch of sample->n numbers, all −1 before and after
+ * @return SV_UNDEFINED when the engine cannot be restricted (dense)
+ */
+SV_API SV_MUST_USE sv_status sv_projector_restrict(sv_context *context,
+                                                   const sv_projector *projector,
+                                                   const sv_index *rows, sv_index n_rows,
+                                                   int32_t *place, sv_projector **ret_part);
+/** Radius of the parts that markers should ask for, lattice constants; 0: use the whole. */
+SV_API double sv_projector_reach(const sv_projector *projector);
 
 /** Orthonormal basis of the occupied or of the empty space, when the engine has one. */
 typedef struct sv_basis {

@@ -85,6 +85,8 @@ typedef struct sv_sweep_axis {
     double *values;
     sv_index count;
     bool integer; /**< the parameter is an integer */
+    const char *unit;  /**< symbol of the unit the sweep is written in, NULL: none */
+    double unit_scale; /**< what is written = unit_scale · value; 1 without a unit */
 } sv_sweep_axis;
 
 /** A file the sheet names. */

@@ -42,8 +42,9 @@ typedef struct sv_run_identity {
 /**
  * Opens a run folder for writing, making it if needed, and locks it.
  * A folder without a complete resolved sheet counts as new. A run of another identity is refused
- * with SV_OTHER_RUN, naming what differs, unless `force` (then the change is recorded as an event
- * and the rows kept must still match in shape).
+ * with SV_OTHER_RUN, naming what differs, unless `force`: then the change is recorded as an event;
+ * under another version or kernel the rows go on (their shape must match), under another sheet
+ * the old ledger is kept aside and the run starts over.
  * @return SV_STORAGE for anything that cannot be written, is locked by another process, or is
  *         damaged
  */

@@ -22,6 +22,15 @@ sv_status sv_output_begin(sv_context *context, const char *path, sv_output *ret_
     if (strlen(path) + 16 > sizeof output.path)
         return SV_FAIL(context, SV_STORAGE, "the path %.100s… is too long", path);
     snprintf(output.path, sizeof output.path, "%s", path);
+    struct stat info;
+    if (stat(path, &info) == 0 && !S_ISREG(info.st_mode)) {
+        /* A device or pipe is written to; a rename would replace it by a file. */
+        output.stream = S_ISDIR(info.st_mode) ? NULL : fopen(path, "we");
+        if (output.stream == NULL)
+            return failed(context, &output, "write", S_ISDIR(info.st_mode) ? EISDIR : errno);
+        *ret_output = output;
+        return SV_OK;
+    }
     snprintf(output.temporary, sizeof output.temporary, "%s.partXXXXXX", path);
     int fd = mkostemp(output.temporary, O_CLOEXEC);
     if (fd < 0) {
@@ -62,7 +71,7 @@ sv_status sv_output_commit(sv_context *context, sv_output *output)
     output->stream = NULL;
     if (closed != 0)
         return failed(context, output, "write", errno);
-    if (rename(output->temporary, output->path) != 0)
+    if (output->temporary[0] != '\0' && rename(output->temporary, output->path) != 0)
         return failed(context, output, "replace", errno);
     output->temporary[0] = '\0';
     sync_folder(output->path);

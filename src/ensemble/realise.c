@@ -64,20 +64,37 @@ static sv_status one_marker(sv_context *context, const sv_marker *marker,
     return SV_OK;
 }
 
+/* The projector of one boundary, or NULL when no marker there needs one. */
+static sv_status project(sv_context *context, const sv_case *point, const sv_sample *sample,
+                         sv_boundary boundary, sv_projector **ret_projector)
+{
+    int count;
+    const sv_marker *table = sv_marker_table(&count);
+    sv_projector_options options = point->solve;
+    bool needed = false;
+    for (int k = 0; k < point->n_markers; k++) {
+        const sv_marker *marker = &table[point->markers[k].marker];
+        if (marker->boundary != boundary)
+            continue;
+        needed = needed || marker->needs_projector;
+        /* A basis, and everything on the torus, is the dense engine's business. */
+        if (marker->needs_occupied_basis)
+            options.engine = SV_ENGINE_DENSE;
+        options.occupied_basis = options.occupied_basis || marker->needs_occupied_basis;
+    }
+    *ret_projector = NULL;
+    return needed ? sv_projector_make(context, sample, &point->occupation, &options, ret_projector)
+                  : SV_OK;
+}
+
 /* All markers of one boundary on one sample. */
 static sv_status markers_on(sv_context *context, const sv_case *point, const sv_sample *sample,
                             sv_boundary boundary, double *site_values, sv_record *record)
 {
     int count;
     const sv_marker *table = sv_marker_table(&count);
-    sv_projector_options options = point->solve;
     sv_projector *projector = NULL;
-    for (int k = 0; k < point->n_markers; k++) {
-        const sv_marker *marker = &table[point->markers[k].marker];
-        if (marker->boundary == boundary && marker->needs_occupied_basis)
-            options.occupied_basis = true;
-    }
-    sv_status status = sv_projector_make(context, sample, &point->occupation, &options, &projector);
+    sv_status status = project(context, point, sample, boundary, &projector);
     if (is_numerical(status)) {
         mark_failed(context, point, boundary, record);
         return SV_OK;
@@ -87,8 +104,13 @@ static sv_status markers_on(sv_context *context, const sv_case *point, const sv_
         if (table[request->marker].boundary != boundary)
             continue;
         sv_marker_input input = {.sample = sample,
+                                 .occupation = &point->occupation,
                                  .projector = projector,
                                  .values = request->values,
+                                 .sampled_cells = point->solve.sampled_cells,
+                                 .threads = point->solve.threads,
+                                 .seed = point->seed,
+                                 .realisation = record->realisation,
                                  .ret_site_values = site_values};
         status = one_marker(context, &table[request->marker], &input, &record->outcomes[k]);
     }

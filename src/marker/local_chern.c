@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Local Chern marker from a basis of the occupied or empty space. */
+/* Local Chern marker of the sites of a window: from a basis of the occupied or empty space, or
+ * column by column (chern_columns.c). */
 #include "marker_internal.h"
 
 #include <cblas.h>
@@ -10,16 +11,19 @@
 typedef struct chern_work {
     const sv_sample *sample;
     sv_basis basis;
+    window_choice choice; /* unit NULL: every cell of the window */
     sv_index *rows, n_rows;
     sv_complex *scaled;           /* n × m */
     sv_complex *x, *y;            /* m × m, position in the basis */
     sv_complex *picked, *px, *py; /* n_rows × m */
     double *marker;               /* n_rows */
+    double *error;                /* n_rows, column by column only */
 } chern_work;
 
 static void free_work(sv_context *context, chern_work *w)
 {
     sv_give(context, w->rows);
+    sv_give(context, w->choice.unit);
     sv_give(context, w->scaled);
     sv_give(context, w->x);
     sv_give(context, w->y);
@@ -27,6 +31,7 @@ static void free_work(sv_context *context, chern_work *w)
     sv_give(context, w->px);
     sv_give(context, w->py);
     sv_give(context, w->marker);
+    sv_give(context, w->error);
 }
 
 static sv_status take_blocks(sv_context *context, chern_work *w)
@@ -44,15 +49,18 @@ static sv_status take_blocks(sv_context *context, chern_work *w)
     return sv_take(context, w->n_rows, sizeof *w->marker, &w->marker);
 }
 
-/* Sites of the window cells, or all sites. */
+/* Sites of the window cells (of the chosen ones when sampling), or all sites. */
 static sv_status pick_rows(sv_context *context, chern_work *w, const bool *inside, bool all)
 {
     sv_status status = sv_take_raw(context, w->sample->n, sizeof *w->rows, &w->rows);
     if (status != SV_OK)
         return status;
-    for (sv_index r = 0; r < w->sample->n; r++)
-        if (all || inside[w->sample->flake->sites[w->sample->pristine[r]].cell])
+    for (sv_index r = 0; r < w->sample->n; r++) {
+        int32_t cell = w->sample->flake->sites[w->sample->pristine[r]].cell;
+        bool wanted = w->choice.unit == NULL ? inside[cell] : w->choice.unit[cell] >= 0;
+        if (all || wanted)
             w->rows[w->n_rows++] = r;
+    }
     return SV_OK;
 }
 
@@ -138,6 +146,80 @@ static void reduce(const chern_work *w, const bool *inside, sv_index cells, doub
         outcome->sum_over_sites = total;
 }
 
+/* Error of the sampled mean from the means of the chosen runs. */
+static sv_status estimator_error(sv_context *context, const chern_work *w, sv_outcome *outcome)
+{
+    const sv_flake *flake = w->sample->flake;
+    double *sums = NULL;
+    sv_index *cells = NULL;
+    sv_status status;
+    if (w->choice.unit == NULL)
+        return SV_OK;
+    if ((status = sv_take(context, w->choice.n_units, sizeof *sums, &sums)) != SV_OK ||
+        (status = sv_take(context, w->choice.n_units, sizeof *cells, &cells)) != SV_OK)
+        goto out;
+    for (sv_index k = 0; k < w->n_rows; k++)
+        sums[w->choice.unit[flake->sites[w->sample->pristine[w->rows[k]]].cell]] += w->marker[k];
+    for (sv_index c = 0; c < flake->n_cells; c++)
+        if (w->choice.unit[c] >= 0)
+            cells[w->choice.unit[c]]++;
+    outcome->estimator_error = sv_window_error(&w->choice, sums, cells);
+out:
+    sv_give(context, sums);
+    sv_give(context, cells);
+    return status;
+}
+
+/* All rows from the basis, in three products. */
+static sv_status from_basis(sv_context *context, const sv_marker_input *input, chern_work *w,
+                            sv_outcome *outcome)
+{
+    double defect = 0.0;
+    sv_status status = take_blocks(context, w);
+    if (status != SV_OK)
+        return status;
+    if (w->basis.columns > 0) {
+        position_in_basis(w, 0, w->x);
+        position_in_basis(w, 1, w->y);
+        evaluate(w);
+    }
+    status = sv_projector_defect(context, input->projector, &defect);
+    outcome->numerical_error = error_estimate(w->sample, defect);
+    return status;
+}
+
+/* Row by row through P · columns, for engines without a basis. */
+static sv_status from_columns(sv_context *context, const sv_marker_input *input, chern_work *w,
+                              const bool *inside, sv_index cells, sv_outcome *outcome)
+{
+    double sum = 0.0;
+    sv_status status;
+    if ((status = sv_take(context, w->n_rows, sizeof *w->marker, &w->marker)) != SV_OK ||
+        (status = sv_take(context, w->n_rows, sizeof *w->error, &w->error)) != SV_OK ||
+        (status = sv_chern_columns(context, w->sample, input->projector, input->threads, w->rows,
+                                   w->n_rows, w->marker, w->error)) != SV_OK)
+        return status;
+    for (sv_index k = 0; k < w->n_rows; k++)
+        if (inside[w->sample->flake->sites[w->sample->pristine[w->rows[k]]].cell])
+            sum += w->error[k];
+    outcome->numerical_error = sum / (double)cells;
+    return SV_OK;
+}
+
+/* Sampling replaces the window by a random choice of its cells; site maps need them all. */
+static sv_status choose_cells(sv_context *context, const sv_marker_input *input, const bool *inside,
+                              sv_index *cells, chern_work *w)
+{
+    if (input->sampled_cells <= 0 || input->sampled_cells >= *cells ||
+        input->ret_site_values != NULL)
+        return SV_OK;
+    sv_status status = sv_window_choose(context, w->sample->flake, inside, input->sampled_cells,
+                                        input->seed, input->realisation, &w->choice);
+    if (status == SV_OK)
+        *cells = w->choice.n_cells;
+    return status;
+}
+
 sv_status sv_local_chern(sv_context *context, const sv_marker_input *input, sv_outcome *ret_outcome)
 {
     sv_outcome outcome = sv_outcome_start(input->projector);
@@ -145,26 +227,21 @@ sv_status sv_local_chern(sv_context *context, const sv_marker_input *input, sv_o
     const sv_levels *levels = sv_projector_levels(input->projector);
     bool *inside = NULL;
     sv_index cells = 0;
-    double defect = 0.0;
     sv_status status = SV_OK;
-    if (!w.basis.available)
-        return SV_FAIL(context, SV_UNDEFINED, "the engine gives no basis");
     if (levels->on_level)
         goto done;
     if ((status = sv_flake_window(context, w.sample->flake, input->values[0].real[0], &inside,
                                   &cells)) != SV_OK ||
-        (status = pick_rows(context, &w, inside, input->ret_site_values != NULL)) != SV_OK ||
-        (status = take_blocks(context, &w)) != SV_OK)
+        (status = choose_cells(context, input, inside, &cells, &w)) != SV_OK ||
+        (status = pick_rows(context, &w, inside, input->ret_site_values != NULL)) != SV_OK)
         goto out;
-    if (w.basis.columns > 0) {
-        position_in_basis(&w, 0, w.x);
-        position_in_basis(&w, 1, w.y);
-        evaluate(&w);
-    }
+    status = w.basis.available ? from_basis(context, input, &w, &outcome)
+                               : from_columns(context, input, &w, inside, cells, &outcome);
+    if (status != SV_OK)
+        goto out;
     reduce(&w, inside, cells, input->ret_site_values, &outcome);
-    if ((status = sv_projector_defect(context, input->projector, &defect)) != SV_OK)
+    if ((status = estimator_error(context, &w, &outcome)) != SV_OK)
         goto out;
-    outcome.numerical_error = error_estimate(w.sample, defect);
     outcome.margin = levels->has_highest && levels->has_lowest
                          ? levels->lowest_empty - levels->highest_occupied
                          : (double)NAN;

@@ -15,17 +15,56 @@ static const sv_key local_chern_keys[] = {
      .doc = "averaging window: share of the linear size about the centre"},
 };
 
+static const sv_key localizer_keys[] = {
+    {.name = "at",
+     .type = SV_KEY_PLACE,
+     .dimension = SV_DIM_LENGTH,
+     .low = -1e9,
+     .high = 1e9,
+     .fallback = "centre",
+     .doc = "probe point: centre or [x, y]"},
+    {.name = "kappa",
+     .type = SV_KEY_AUTO_OR_REAL,
+     .dimension = SV_DIM_ENERGY,
+     .low = 0,
+     .high = 1e12,
+     .low_open = true,
+     .fallback = "auto",
+     .doc = "weight of the position, energy per lattice constant; auto: 2 g / rho, g half the "
+            "clean gap, rho the distance of the probe from the edge"},
+    {.name = "threshold",
+     .type = SV_KEY_AUTO_OR_REAL,
+     .dimension = SV_DIM_ENERGY,
+     .low = 0,
+     .high = 1e12,
+     .low_open = true,
+     .fallback = "auto",
+     .doc = "least localizer gap of a resolved index; auto: g / 4"},
+    {.name = "gap",
+     .type = SV_KEY_CHOICE,
+     .choices = "value bound",
+     .fallback = "value",
+     .doc = "report the localizer gap itself, or only that it exceeds the threshold (faster)"},
+};
+
 static const sv_marker table[] = {
     {.kind = {"local_chern", "local Chern marker, mean over a window (Bianco, Resta 2011)",
               local_chern_keys, 1},
      .is_index = false,
      .boundary = SV_OPEN_COPY,
+     .needs_projector = true,
      .compute = sv_local_chern},
     {.kind = {"bott", "Bott index on the torus (Loring, Hastings 2010)", NULL, 0},
      .is_index = true,
      .boundary = SV_CLOSED_COPY,
+     .needs_projector = true,
      .needs_occupied_basis = true,
      .compute = sv_bott_index},
+    {.kind = {"localizer", "spectral localizer index at a point (Loring, Schulz-Baldes 2020)",
+              localizer_keys, 4},
+     .is_index = true,
+     .boundary = SV_OPEN_COPY,
+     .compute = sv_localizer_index},
 };
 
 const sv_marker *sv_marker_table(int *ret_count)
@@ -51,6 +90,7 @@ sv_outcome sv_outcome_blank(void)
                         .margin = NAN,
                         .weakest = NAN,
                         .sum_over_sites = NAN,
+                        .kappa = NAN,
                         .highest_occupied = NAN,
                         .lowest_empty = NAN};
 }

@@ -9,4 +9,28 @@
 /* A blank outcome with engine and levels filled in; says so when the projector is ambiguous. */
 sv_outcome sv_outcome_start(const sv_projector *projector);
 
+/*
+ * Local Chern marker of some rows by two projector applications each: v = P|r⟩, then
+ * (4π/A) Im⟨x v|P|y v⟩ with positions relative to the site.
+ * ret_error receives an estimate of the numerical error of each row.
+ */
+sv_status sv_chern_columns(sv_context *context, const sv_sample *sample, sv_projector *projector,
+                           int threads, const sv_index *rows, sv_index n_rows, double *ret_marker,
+                           double *ret_error);
+
+/* A stratified random choice of window cells, in runs that one block of columns serves. */
+typedef struct window_choice {
+    int32_t *unit; /* per cell: number of its chosen run, −1: not chosen */
+    sv_index n_units, n_cells;
+    double left_out; /* share of the window's runs that are not chosen */
+} window_choice;
+
+/* Chooses about `wanted` cells: the window's runs of neighbouring cells are cut into as many strata
+ * as runs are wanted, and one run of each is drawn. */
+sv_status sv_window_choose(sv_context *context, const sv_flake *flake, const bool *inside,
+                           sv_index wanted, uint64_t seed, sv_index realisation,
+                           window_choice *ret_choice);
+/* Standard error of the mean over the chosen runs: differences of neighbouring strata. */
+double sv_window_error(const window_choice *choice, const double *sums, const sv_index *cells);
+
 #endif

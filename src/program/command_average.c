@@ -65,6 +65,10 @@ static sv_status open_run(session *s, sv_run **ret_run)
 {
     copies c = {0};
     char *resolved = NULL, kernel[160];
+    const char *markers[SV_MAX_MARKERS];
+    const sv_case *problem = &s->points[0].problem;
+    for (int k = 0; k < problem->n_markers; k++)
+        markers[k] = sv_marker_table(&(int){0})[problem->markers[k].marker].kind.name;
     kernel_text(&s->blas, kernel, sizeof kernel);
     sv_status status = copies_make(s->context, &s->base, &c);
     if (status == SV_OK)
@@ -75,6 +79,9 @@ static sv_status open_run(session *s, sv_run **ret_run)
                                     .resolved_sheet = resolved,
                                     .program_version = sv_version(),
                                     .kernel = kernel,
+                                    .markers = markers,
+                                    .n_markers = problem->n_markers,
+                                    .n_points = s->n_points,
                                     .inputs = c.inputs,
                                     .n_inputs = s->base.n_files,
                                     .command_line = s->options->command_line};
@@ -143,8 +150,7 @@ static sv_status compute(session *s, sv_run *run, sv_ensemble *ensemble)
                                 .stop = session_stop_rule(s),
                                 .sink = {sv_run_put, run},
                                 .time_limit = o->time_limit};
-    bool terminal = o->progress == CHOICE_ALWAYS || isatty(fileno(stderr));
-    sv_progress_bar_init(&bar, stderr, terminal);
+    sv_progress_bar_init(&bar, stderr, isatty(fileno(stderr)));
     if (wants_progress(o)) {
         context->progress = sv_progress_bar_show;
         context->progress_user = &bar;
@@ -212,7 +218,9 @@ int run_average(sv_context *context, const options *o)
         if (status == SV_OK)
             print_forecast(&f, &s, "", stdout);
     } else if (status == SV_OK) {
-        status = average(&s);
+        status = session_plan(&s, false);
+        if (status == SV_OK)
+            status = average(&s);
     }
     session_close(&s);
     return status == SV_OK ? 0 : fail_exit(context, status);

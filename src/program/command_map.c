@@ -7,6 +7,9 @@
 #include <sys/stat.h>
 #include <unistd.h>
 
+/* Above this many sites a map takes the window only. */
+static const int64_t SITE_MAP_LARGEST = 200000;
+
 static sv_status refuse_existing(sv_context *context, const options *o, const char *path)
 {
     if (path != NULL && !o->force && access(path, F_OK) == 0)
@@ -65,7 +68,9 @@ static sv_status map_one(session *s)
     double *values = NULL;
     sv_status status = refuse_existing(context, o, o->csv);
     if (status == SV_OK)
-        status = sv_realise(context, problem, o->realisation, &values, &sample, &record);
+        status = sv_realise(context, problem, o->realisation,
+                            problem->open_flake->n_sites <= SITE_MAP_LARGEST ? &values : NULL,
+                            &sample, &record);
     if (status != SV_OK)
         goto out;
     sv_map_result map = {.title = s->base.title,
@@ -96,6 +101,8 @@ int run_map(sv_context *context, const options *o)
 {
     session s = {.add_map_marker = true};
     sv_status status = session_open(context, o, o->files[0], false, false, &s);
+    if (status == SV_OK)
+        status = session_plan(&s, s.points[0].open.n_sites <= SITE_MAP_LARGEST);
     if (status == SV_OK)
         status = map_one(&s);
     session_close(&s);

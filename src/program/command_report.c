@@ -57,6 +57,11 @@ static sv_status draw_map(session *s, const char *folder)
     /* Only the map is wanted: other markers would cost time and show nothing. */
     problem.markers[0] = problem.markers[k];
     problem.n_markers = 1;
+    problem.solve.engine = SV_ENGINE_AUTO;
+    sv_plan plan;
+    sv_status planned = sv_case_plan(context, &problem, true, s->base.sampling_error, &plan);
+    if (planned != SV_OK)
+        return planned;
     sv_status status =
         sv_realise(context, &problem, s->options->realisation, &values, &sample, &record);
     if (status == SV_OK && record.outcomes[0].verdict != SV_RESOLVED) {
@@ -127,6 +132,9 @@ static sv_status report(session *s, sv_run *run)
     if (status == SV_OK && points > s->n_points)
         status = SV_FAIL(context, SV_STORAGE, "the ledger has %d points, the sheet %d", points,
                          s->n_points);
+    if (status == SV_OK && realisations > 10000000 / s->n_points)
+        status = SV_FAIL(context, SV_REFUSED, "the ledger claims %lld realisations at %d points",
+                         (long long)realisations, s->n_points);
     if (status == SV_OK)
         status = sv_ensemble_init(context, s->n_points, realisations, &ensemble);
     if (status == SV_OK)

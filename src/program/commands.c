@@ -29,7 +29,8 @@ const command *command_table(int *ret_count)
 
 void kernel_text(const sv_blas_info *blas, char *text, size_t size)
 {
-    snprintf(text, size, "%s %s %s", blas->kind, blas->threading, blas->kernel);
+    snprintf(text, size, "%s %s %s, panels %s", blas->kind, blas->threading, blas->kernel,
+             sv_panel_kernel_name(sv_panel_best_kernel()));
 }
 
 static int cores_allowed(void)
@@ -46,16 +47,19 @@ int run_info(sv_context *context, const options *o)
     if (o->json) {
         printf("{\"selvedge\": 1, \"command\": \"info\", \"version\": \"%s\",\n"
                " \"blas\": \"%s\", \"blas_threading\": \"%s\", \"kernel\": \"%s\",\n"
-               " \"threads_safe\": %s, \"threads\": %d, \"engines\": [\"dense\"]}\n",
+               " \"panel_kernel\": \"%s\", \"threads_safe\": %s, \"threads\": %d,\n"
+               " \"engines\": [\"dense\", \"chebyshev\"]}\n",
                sv_version(), blas.kind, blas.threading, blas.kernel,
-               blas.threads_safe ? "true" : "false", cores_allowed());
+               sv_panel_kernel_name(sv_panel_best_kernel()), blas.threads_safe ? "true" : "false",
+               cores_allowed());
         return 0;
     }
     printf("selvedge   %s\n", sv_version());
     printf("BLAS       %s, %s, kernel %s%s\n", blas.kind, blas.threading, blas.kernel,
            blas.threads_safe ? "" : " (wrong results with several threads: one is used)");
     printf("threads    %d\n", cores_allowed());
-    printf("engines    dense\n");
+    printf("panels     %s\n", sv_panel_kernel_name(sv_panel_best_kernel()));
+    printf("engines    dense, chebyshev\n");
     int count;
     const sv_marker *markers = sv_marker_table(&count);
     for (int k = 0; k < count; k++)

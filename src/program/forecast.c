@@ -50,13 +50,27 @@ static void boundaries_needed(const session *s, const sv_setup *setup, bool *ope
     }
 }
 
+/* Does the sheet force the dense engine, whatever the size? */
+static bool needs_dense(const session *s, const sv_setup *setup, int64_t sites)
+{
+    const int64_t dense_by_choice = 12000;
+    bool open, closed;
+    boundaries_needed(s, setup, &open, &closed);
+    return closed || setup->occupation.by != SV_BY_ENERGY || strcmp(setup->engine, "dense") == 0 ||
+           (strcmp(setup->engine, "auto") == 0 && sites <= dense_by_choice);
+}
+
 static sv_status bytes_of(session *s, const sv_setup *setup, int64_t *ret_sites, double *ret_bytes)
 {
     double operations;
     sv_status status = sv_flake_count(s->context, &setup->model, &setup->flake, ret_sites);
-    if (status == SV_OK)
-        sv_projector_forecast(SV_ENGINE_AUTO, *ret_sites, ret_bytes, &operations);
-    return status;
+    if (status != SV_OK)
+        return status;
+    if (needs_dense(s, setup, *ret_sites))
+        sv_projector_forecast(SV_ENGINE_DENSE, *ret_sites, ret_bytes, &operations);
+    else
+        sv_projector_forecast(SV_ENGINE_CHEBYSHEV, *ret_sites, ret_bytes, &operations);
+    return SV_OK;
 }
 
 /* Largest flake over the points (or of the sheet as written when there are none yet). */
@@ -83,10 +97,12 @@ sv_status session_fit_memory(session *s)
     if (status != SV_OK)
         return status;
     if (bytes > usable)
-        return SV_FAIL(s->context, SV_REFUSED,
-                       "a flake of %lld sites needs about %.3g GB per realisation with the dense "
-                       "engine; this machine has %.3g GB (make the flake smaller)",
-                       (long long)sites, bytes / 1e9, usable / 0.9 / 1e9);
+        return SV_FAIL(
+            s->context, SV_REFUSED,
+            "a flake of %lld sites needs about %.3g GB per realisation; this machine has "
+            "%.3g GB (make the flake smaller, or leave out what needs the dense "
+            "engine: markers on a torus, a filling)",
+            (long long)sites, bytes / 1e9, usable / 0.9 / 1e9);
     int fit = (int)fmin(usable / bytes, 1e6);
     if (fit < s->threads) {
         sv_log(s->context, SV_LOG_WARNING, "memory holds %d realisations at once: %d threads", fit,

@@ -68,12 +68,15 @@ typedef struct session {
     int32_t n_points;
     int threads;
     bool add_map_marker; /* the map command always computes the local Chern marker */
+    sv_plan plans;       /* of the last point planned */
 } session;
 
 /* Reads the sheet and builds all points of its sweep (`with_sweep`) or the sheet as written. */
 sv_status session_open(sv_context *context, const options *o, const char *path, bool inside_run,
                        bool with_sweep, session *ret);
 void session_close(session *s);
+/* Settles the engine of every point (tries realisation 0 of each). */
+sv_status session_plan(session *s, bool site_map);
 /* Refuses what would not fit memory; lowers the number of threads where that helps. */
 sv_status session_fit_memory(session *s);
 

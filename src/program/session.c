@@ -32,7 +32,8 @@ bool wants_colour(const options *o, FILE *stream)
 
 bool wants_progress(const options *o)
 {
-    return o->progress != CHOICE_NEVER && !(o->quiet && o->progress == CHOICE_AUTO);
+    return o->progress == CHOICE_ALWAYS ||
+           (o->progress == CHOICE_AUTO && !o->quiet && isatty(fileno(stderr)));
 }
 
 static int default_threads(void)
@@ -111,6 +112,9 @@ static sv_status make_point(session *s, point *p)
     p->problem.occupation = setup->occupation;
     p->problem.solve = sv_projector_options_default();
     p->problem.solve.accuracy = setup->accuracy;
+    p->problem.solve.engine = strcmp(setup->engine, "dense") == 0       ? SV_ENGINE_DENSE
+                              : strcmp(setup->engine, "chebyshev") == 0 ? SV_ENGINE_CHEBYSHEV
+                                                                        : SV_ENGINE_AUTO;
     p->problem.seed = setup->seed;
     return set_markers(s, setup, &p->problem);
 }
@@ -122,10 +126,16 @@ static int axis_values(const sv_setup *base, int32_t number, sv_assignment *ret,
     for (int a = base->n_axes - 1; a >= 0; a--) {
         const sv_sweep_axis *axis = &base->axes[a];
         double value = axis->values[number % axis->count];
+        double shown = value;
+        if (axis->unit != NULL) { /* rounding hides the conversion there and back */
+            char text[32];
+            snprintf(text, sizeof text, "%.12g", value * axis->unit_scale);
+            (void)sv_parse_real(text, &shown);
+        }
         number = (int32_t)(number / axis->count);
         ret[a] = (sv_assignment){axis->path, value};
-        coordinates[a] =
-            (sv_coordinate){.path = axis->path, .value = value, .integer = axis->integer};
+        coordinates[a] = (sv_coordinate){
+            .path = axis->path, .value = shown, .integer = axis->integer, .unit = axis->unit};
     }
     return base->n_axes;
 }
@@ -211,6 +221,24 @@ void session_close(session *s)
     sv_give(s->context, s->points);
     sv_setup_free(s->context, &s->base);
     sv_sheet_free(s->context, s->sheet);
+}
+
+sv_status session_plan(session *s, bool site_map)
+{
+    char before[sizeof s->plans.reason] = "";
+    for (int32_t k = 0; k < s->n_points; k++) {
+        sv_case *problem = &s->points[k].problem;
+        sv_status status =
+            sv_case_plan(s->context, problem, site_map, s->base.sampling_error, &s->plans);
+        if (status != SV_OK)
+            return status;
+        /* With fewer realisations than threads the cores work inside one realisation. */
+        problem->solve.threads = s->base.realisations < s->threads ? s->threads : 1;
+        if (strcmp(before, s->plans.reason) != 0)
+            sv_log(s->context, SV_LOG_DETAIL, "point %d: engine %s", k, s->plans.reason);
+        memcpy(before, s->plans.reason, sizeof before);
+    }
+    return SV_OK;
 }
 
 sv_stop_rule session_stop_rule(const session *s)

@@ -17,8 +17,12 @@ sv_status sv_projector_make(sv_context *context, const sv_sample *sample,
     if (status != SV_OK)
         return status;
     projector->sample = sample;
-    /* One engine so far: automatic choice and an explicit "dense" agree. */
-    status = sv_dense_engine_make(context, sample, occupation, options, projector);
+    projector->n = sample->n;
+    projector->reach = options->reach;
+    if (options->engine == SV_ENGINE_CHEBYSHEV)
+        status = sv_chebyshev_engine_make(context, sample, occupation, options, projector);
+    else
+        status = sv_dense_engine_make(context, sample, occupation, options, projector);
     if (status != SV_OK) {
         sv_give(context, projector);
         return status;
@@ -49,6 +53,37 @@ sv_status sv_projector_apply(sv_context *context, sv_projector *projector, sv_in
                              const sv_complex *x, sv_complex *y)
 {
     return projector->engine->apply(context, projector->state, columns, x, y);
+}
+
+double sv_projector_reach(const sv_projector *projector)
+{
+    return projector->engine->restrict_to != NULL ? projector->reach : 0.0;
+}
+
+sv_status sv_projector_restrict(sv_context *context, const sv_projector *projector,
+                                const sv_index *rows, sv_index n_rows, int32_t *place,
+                                sv_projector **ret_part)
+{
+    sv_projector *part = NULL;
+    if (projector->engine->restrict_to == NULL)
+        return SV_FAIL(context, SV_UNDEFINED, "the %s engine cannot be restricted",
+                       projector->engine->name);
+    sv_status status = sv_take(context, 1, sizeof *part, &part);
+    if (status != SV_OK)
+        return status;
+    *part = *projector;
+    part->state = NULL;
+    part->n = n_rows;
+    for (sv_index k = 0; k < n_rows; k++)
+        place[rows[k]] = (int32_t)k;
+    status = projector->engine->restrict_to(context, projector, rows, n_rows, place, &part->state);
+    for (sv_index k = 0; k < n_rows; k++)
+        place[rows[k]] = -1;
+    if (status == SV_OK)
+        *ret_part = part;
+    else
+        sv_give(context, part);
+    return status;
 }
 
 sv_basis sv_projector_basis(const sv_projector *projector)
@@ -128,8 +163,13 @@ out:
 
 void sv_projector_forecast(sv_engine engine, sv_index n, double *ret_bytes, double *ret_operations)
 {
-    (void)engine;
     double order = (double)n;
+    if (engine == SV_ENGINE_CHEBYSHEV) {
+        /* Flake, sample and matrix; panels and blocks of 16 columns while the flake is small. */
+        *ret_bytes = order * (420.0 + (n < 200000 ? 1800.0 : 0.0));
+        *ret_operations = order * 16.0 * 10.0 * 200.0;
+        return;
+    }
     /* Matrix, half of the vectors, work blocks of the markers; reduction, back-transformation and
      * products, in units of n³ complex multiply–adds. */
     *ret_bytes = 16.0 * order * order * 2.25;

@@ -240,6 +240,33 @@ static bool read_values(sv_reader *reader, const sv_section *section, const targ
     return good;
 }
 
+/* The unit of the first value that has one: results are shown in it. */
+static void set_unit(const sv_reader *reader, const sv_section *section, const target *aim,
+                     sv_sweep_axis *axis)
+{
+    const sv_node *list = sv_section_node(section, "values");
+    const sv_node *ends[2] = {sv_section_node(section, "from"), sv_section_node(section, "to")};
+    bool by_list = sv_section_written(section, "values") > 0;
+    sv_index count = by_list ? list->count : 2;
+    double a = reader->lattice_constant;
+    double unit = reader->energy_unit > 0.0 ? reader->energy_unit : 1.0;
+    double base = aim->key->dimension == SV_DIM_LENGTH    ? a
+                  : aim->key->dimension == SV_DIM_DENSITY ? 1.0 / (a * a)
+                  : aim->key->dimension == SV_DIM_ENERGY  ? unit
+                                                          : 1.0;
+    axis->unit_scale = 1.0;
+    for (sv_index i = 0; i < count && axis->unit == NULL; i++) {
+        sv_quantity quantity = {0};
+        const sv_node *node = by_list ? list->items[i] : ends[i];
+        if (node->text == NULL ||
+            sv_parse_quantity(node->text, aim->key->dimension, &quantity) != SV_PARSE_OK ||
+            !quantity.has_unit)
+            continue;
+        axis->unit = quantity.unit->symbol;
+        axis->unit_scale = base / quantity.unit->factor;
+    }
+}
+
 static bool read_axis(sv_reader *reader, const sv_section *section, sv_sweep_axis *axis)
 {
     target aim = {0};
@@ -251,8 +278,12 @@ static bool read_axis(sv_reader *reader, const sv_section *section, sv_sweep_axi
         return false;
     snprintf(axis->path, sizeof axis->path, "%s", path);
     axis->integer = aim.key->type == SV_KEY_INTEGER;
-    return sv_section_written(section, "values") > 0 ? read_values(reader, section, &aim, axis)
-                                                     : read_steps(reader, section, &aim, axis);
+    bool good = sv_section_written(section, "values") > 0
+                    ? read_values(reader, section, &aim, axis)
+                    : read_steps(reader, section, &aim, axis);
+    if (good)
+        set_unit(reader, section, &aim, axis);
+    return good;
 }
 
 bool sv_sweep_read(sv_reader *reader, sv_setup *setup)

@@ -72,6 +72,30 @@ static sv_status force_identity(sv_context *context, sv_run *run, const sv_run_i
     return status;
 }
 
+/* Rows of another sheet answer another question: they are kept aside and a new ledger begins. */
+static sv_status force_sheet(sv_context *context, sv_run *run, const sv_run_identity *identity,
+                             const char *difference)
+{
+    char note[700], digest[65], old_digest[65];
+    const char *before = sv_run_meta(run, "identity_digest");
+    snprintf(old_digest, sizeof old_digest, "%.64s", before == NULL ? "unknown" : before);
+    sv_identity_digest(context, identity, digest);
+    snprintf(note, sizeof note, "forced from %s to %s: %s", old_digest, digest, difference);
+    sv_status status = sv_session_start(context, run, identity);
+    if (status == SV_OK)
+        status = sv_run_event(context, run, "identity change", note);
+    if (status == SV_OK)
+        sv_log(context, SV_LOG_WARNING, "%s starts over under another sheet: %s", run->folder,
+               difference);
+    return status;
+}
+
+static bool same_sheet(const sv_run *run, const sv_run_identity *identity)
+{
+    const char *before = sv_run_meta(run, "identity");
+    return before != NULL && strcmp(before, identity->identity) == 0;
+}
+
 static sv_status resume(sv_context *context, sv_run *run, const sv_run_identity *identity,
                         bool force)
 {
@@ -84,8 +108,10 @@ static sv_status resume(sv_context *context, sv_run *run, const sv_run_identity 
         if (!force)
             return SV_FAIL(context, SV_OTHER_RUN,
                            "%s holds another run: %s; choose another folder, or --force to go on "
-                           "with it and record the change",
+                           "here and record the change",
                            run->folder, difference);
+        if (!same_sheet(run, identity))
+            return force_sheet(context, run, identity, difference);
         status = force_identity(context, run, identity, difference);
     }
     if (status == SV_OK)

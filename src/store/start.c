@@ -74,9 +74,7 @@ static sv_status set_aside(sv_context *context, const char *folder, const char *
         if (sv_join_path(context, folder, name, beside, sizeof beside) == SV_OK)
             rename(journal, beside);
         sv_log(context, SV_LOG_WARNING,
-               "the folder had a ledger but no complete sheet: it counts "
-               "as new, the old ledger is now %s",
-               path);
+               "the folder's ledger does not belong to this sheet; it is kept as %s", path);
         return SV_OK;
     }
     return SV_FAIL(context, SV_STORAGE, "cannot move %s away: %s", ledger, strerror(errno));

@@ -4,6 +4,7 @@
 #include <signal.h>
 #include <stdlib.h>
 #include <sys/resource.h>
+#include <sys/stat.h>
 #include <unistd.h>
 
 SV_TEST(status_table_is_complete)
@@ -139,6 +140,13 @@ SV_TEST(output_appears_whole_or_not_at_all)
     sv_output_abort(&o);
     CHECK(length_of(path) == 5);
     CHECK_STATUS(SV_STORAGE, sv_output_begin(test_context(), "/nowhere/x", &o));
+    /* Devices are written to, never replaced; folders are refused. */
+    CHECK_OK(sv_output_begin(test_context(), "/dev/null", &o));
+    fputs("gone", o.stream);
+    CHECK_OK(sv_output_commit(test_context(), &o));
+    struct stat info;
+    CHECK(stat("/dev/null", &info) == 0 && S_ISCHR(info.st_mode));
+    CHECK_STATUS(SV_STORAGE, sv_output_begin(test_context(), "/tmp", &o));
     /* A file-size limit hits in the middle: the old file stays, the temporary goes. */
     struct rlimit before, low;
     signal(SIGXFSZ, SIG_IGN);

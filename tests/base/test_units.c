@@ -74,6 +74,14 @@ SV_TEST(reals_format_shortest_and_exact)
     char text[32];
     sv_format_real(0.1, text, sizeof text);
     CHECK_TEXT(text, "0.1");
+    sv_format_real(10.0, text, sizeof text);
+    CHECK_TEXT(text, "10");
+    sv_format_real(1500000.0, text, sizeof text);
+    CHECK_TEXT(text, "1500000");
+    sv_format_real(1e15, text, sizeof text);
+    CHECK_TEXT(text, "1e+15");
+    sv_format_real(-NAN, text, sizeof text);
+    CHECK_TEXT(text, "nan");
 }
 
 SV_TEST(edit_distance_counts_steps)

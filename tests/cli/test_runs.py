@@ -205,6 +205,12 @@ def force_records_the_change():
     notes = [note for (note,) in ledger.execute("select note from event where what like 'identity%'")]
     ledger.close()
     check(len(notes) == 1 and "ensemble.seed = 3" in notes[0], "events: %r" % notes)
+    # Numbers of the former seed are kept aside and none of them is averaged under the new one.
+    check(os.path.exists(os.path.join(place, "ledger.old-1.sqlite")), "the old ledger is gone")
+    fresh = os.path.join(folder(), "fresh")
+    run("average", path, "-o", fresh, "-s", "4", code=0)
+    summaries = [json.loads(read(os.path.join(one, "summary.json"))) for one in (place, fresh)]
+    equal(summaries[0]["points"], summaries[1]["points"], "points after --force")
 
 
 @test

@@ -171,3 +171,30 @@ SV_TEST(a_swept_scale_keeps_its_unit)
     }
     reading_free(&r);
 }
+
+/* A sweep written in a grower's units is shown in them: 1e13 cm^-2 with a = 0.5 nm is 0.025 per
+ * lattice constant squared. */
+SV_TEST(an_axis_keeps_its_unit)
+{
+    static const char text[] = "selvedge: 1\n"
+                               "model: {name: qi_wu_zhang, m: -1, lattice_constant: 0.5 nm}\n"
+                               "flake: {shape: rectangle, cells: [6, 6]}\n"
+                               "disorder:\n"
+                               "  - {name: vac, kind: vacancies, density: 0 cm^-2}\n"
+                               "sweep:\n"
+                               "  - {parameter: disorder.vac.density, values: [0, 1e13 cm^-2]}\n";
+    sv_context *context = test_context();
+    sv_diagnostics diagnostics = {0};
+    sv_sheet_options options = {.size = sizeof options};
+    sv_sheet *sheet = NULL;
+    sv_setup setup = {0};
+    CHECK_OK(sv_sheet_parse(context, "sheet.yaml", text, sizeof text - 1, &options, &diagnostics,
+                            &sheet));
+    CHECK_OK(sv_sheet_setup(context, sheet, NULL, 0, &diagnostics, &setup));
+    CHECK(setup.axes[0].unit != NULL && strcmp(setup.axes[0].unit, "cm^-2") == 0);
+    CHECK_CLOSE(setup.axes[0].values[1], 0.025, 1e-15);
+    CHECK_CLOSE(setup.axes[0].values[1] * setup.axes[0].unit_scale, 1e13, 1.0);
+    sv_setup_free(context, &setup);
+    sv_sheet_free(context, sheet);
+    sv_diagnostics_free(context, &diagnostics);
+}

@@ -161,13 +161,33 @@ SV_TEST(force_records_the_change_and_keeps_the_rows)
     CHECK_INT(count_events("end"), 2);
     /* Rows of another shape cannot be continued at all. */
     static const char *const other[2] = {"bott", "local_chern"};
-    identity.identity = "something else\n";
+    identity.kernel = "a third kernel";
     identity.markers = other;
     CHECK_STATUS(SV_OTHER_RUN, sv_run_open(context, fixture_folder, &identity, true, &run));
     identity.markers = fixture_markers;
     identity.n_points = 4;
     CHECK_STATUS(SV_OTHER_RUN, sv_run_open(context, fixture_folder, &identity, true, &run));
     CHECK_INT(count_events("identity change"), 1);
+}
+
+SV_TEST(force_under_another_sheet_starts_over)
+{
+    sv_context *context = test_context();
+    struct stat info;
+    fixture_make_run(fresh("other-sheet"), 2);
+    sv_run *run = NULL;
+    sv_run_identity identity = fixture_identity();
+    identity.identity = "something else\n";
+    CHECK_STATUS(SV_OTHER_RUN, sv_run_open(context, fixture_folder, &identity, false, &run));
+    CHECK_OK(sv_run_open(context, fixture_folder, &identity, true, &run));
+    sv_ensemble ensemble = fixture_ensemble(3, 2);
+    sv_index loaded = -1;
+    CHECK_OK(sv_run_load(context, run, &ensemble, &loaded));
+    CHECK_INT(loaded, 0);
+    fixture_ensemble_free(&ensemble);
+    sv_run_close(context, run);
+    CHECK_INT(count_events("identity change"), 1);
+    CHECK(stat(fixture_path("ledger.old-1.sqlite"), &info) == 0);
 }
 
 static int64_t loaded_from(const sv_run_identity *identity)

@@ -1,0 +1,223 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* The choice of the engine and its settings for one point of a sweep. It looks at realisation 0 of
+ * the point and at nothing else, so every thread, rank and later run makes the same choice. */
+#include "selvedge/ensemble.h"
+
+#include <math.h>
+#include <stdio.h>
+#include <string.h>
+
+static const sv_index DENSE_ALWAYS = 400;    /* sites: below, nothing else pays */
+static const sv_index DENSE_LARGEST = 12000; /* sites: above, one diagonalisation takes an hour */
+static const sv_index SAMPLE_ABOVE = 20000;  /* window columns: above, cells are sampled */
+static const sv_index PILOT_CELLS = 48;
+
+/* Costs measured on one core of an x86-64 machine; only their ratio matters. */
+static const double DENSE_SECONDS = 0.8e-9; /* per site³ */
+static const double STEP_SECONDS = 0.6e-9;  /* per site, column and degree */
+
+/* The polynomial's own error lies this far below the accuracy asked for. */
+static const double POLYNOMIAL_SHARE = 0.01;
+
+typedef struct pilot {
+    const sv_case *point;
+    sv_marker_request request; /* of the local Chern marker */
+    sv_index columns;          /* window columns of a whole realisation */
+    sv_index sites;
+    double scale; /* half width of the spectrum */
+} pilot;
+
+static int find_request(const sv_case *point)
+{
+    int chern = sv_marker_find("local_chern");
+    for (int k = 0; k < point->n_markers; k++)
+        if (point->markers[k].marker == chern)
+            return k;
+    return -1;
+}
+
+/* δ for which a polynomial of this degree has the error asked for. */
+static double half_gap_of(const pilot *p, double accuracy, int degree)
+{
+    double ratio = pow(POLYNOMIAL_SHARE * accuracy, -2.0 / (degree + 1));
+    return p->scale * (ratio - 1.0) / (ratio + 1.0);
+}
+
+/* Realisation 0 with these settings on a sample of the window. */
+static sv_status try_settings(sv_context *context, const pilot *p, const sv_projector_options *o,
+                              sv_outcome *ret_outcome)
+{
+    sv_case trial = *p->point;
+    sv_record record;
+    trial.markers[0] = p->request;
+    trial.n_markers = 1;
+    trial.solve = *o;
+    trial.solve.sampled_cells = PILOT_CELLS;
+    sv_status status = sv_realise(context, &trial, 0, NULL, NULL, &record);
+    if (status == SV_OK)
+        *ret_outcome = record.outcomes[0];
+    return status;
+}
+
+/* Lowest degree of the ladder whose stated error is within what is allowed. */
+static sv_status climb_degrees(sv_context *context, const pilot *p, int most,
+                               sv_projector_options *o, bool *ret_found, double *ret_error)
+{
+    *ret_found = false;
+    for (int degree = 31; degree <= most; degree += 2 * (degree / 6)) {
+        sv_outcome outcome;
+        o->degree = degree;
+        o->half_gap = half_gap_of(p, o->accuracy, degree);
+        if (o->half_gap > 0.5 * p->scale)
+            continue;
+        sv_status status = try_settings(context, p, o, &outcome);
+        if (status != SV_OK)
+            return status;
+        *ret_error = outcome.numerical_error;
+        *ret_found = outcome.verdict == SV_RESOLVED && outcome.numerical_error <= o->accuracy;
+        if (*ret_found)
+            return SV_OK;
+    }
+    return SV_OK;
+}
+
+/* Smallest radius of parts whose rim adds little to the error; 0 when the flake is not much larger.
+ */
+static sv_status find_reach(sv_context *context, const pilot *p, double whole_error,
+                            sv_projector_options *o)
+{
+    const sv_flake *flake = p->point->open_flake;
+    double per_area = (double)flake->model->n_orbitals / sv_model_cell_area(flake->model);
+    double allowed = fmax(whole_error, 0.25 * o->accuracy) + 0.25 * o->accuracy;
+    sv_projector_options trial = *o;
+    for (double reach = 6.0; reach < 1e4; reach = ceil(1.25 * reach)) {
+        double part = M_PI * (reach + 4.0) * (reach + 4.0) * per_area;
+        sv_outcome outcome;
+        if (part > 0.5 * (double)p->sites)
+            return SV_OK;
+        trial.reach = reach;
+        sv_status status = try_settings(context, p, &trial, &outcome);
+        if (status != SV_OK)
+            return status;
+        if (outcome.verdict == SV_RESOLVED && outcome.numerical_error <= allowed) {
+            o->reach = reach;
+            return SV_OK;
+        }
+    }
+    return SV_OK;
+}
+
+/* Cells to sample so that the window mean has the sampling error asked for. */
+static sv_status find_sampling(sv_context *context, const pilot *p, sv_projector_options *o,
+                               double sampling_error)
+{
+    sv_outcome outcome;
+    if (p->columns <= SAMPLE_ABOVE)
+        return SV_OK;
+    sv_status status = try_settings(context, p, o, &outcome);
+    if (status != SV_OK)
+        return status;
+    double ratio = outcome.estimator_error / sampling_error;
+    /* A margin of 1.5 in the variance for the roughness of the pilot's own error. */
+    o->sampled_cells = (sv_index)((double)PILOT_CELLS * fmax(1.0, 1.5 * ratio * ratio));
+    return SV_OK;
+}
+
+static sv_status start_pilot(sv_context *context, const sv_case *point, pilot *p)
+{
+    bool *inside = NULL;
+    sv_index cells = 0;
+    sv_sample sample = {0};
+    int row = find_request(point);
+    *p = (pilot){
+        .point = point, .request = point->markers[row], .sites = point->open_flake->n_sites};
+    sv_status status =
+        sv_flake_window(context, point->open_flake, p->request.values[0].real[0], &inside, &cells);
+    if (status != SV_OK)
+        return status;
+    p->columns = cells * point->open_flake->model->n_orbitals;
+    status = sv_sample_draw(context, point->open_flake, point->disorder, point->n_disorder,
+                            point->seed, 0, &sample);
+    if (status == SV_OK)
+        p->scale = 1.0001 * (sv_sparse_norm_bound(&sample.hamiltonian) +
+                             fabs(point->occupation.fermi_energy));
+    sv_sample_free(context, &sample);
+    sv_give(context, inside);
+    return status;
+}
+
+/* Highest degree that still beats (or, for huge flakes, replaces) the dense engine. */
+static int highest_degree(const pilot *p)
+{
+    double n = (double)p->sites;
+    double columns = (double)(p->columns > SAMPLE_ABOVE ? SAMPLE_ABOVE : p->columns);
+    double degree = DENSE_SECONDS * n * n / (2.0 * columns * STEP_SECONDS);
+    return p->sites > DENSE_LARGEST ? 4001 : (int)fmin(degree, 4001.0);
+}
+
+/* Why the dense engine is the only one, or NULL. */
+static const char *dense_reason(const sv_case *point, bool site_map)
+{
+    if (find_request(point) < 0)
+        return "no marker of single sites is asked for";
+    if (point->occupation.by != SV_BY_ENERGY)
+        return "the occupation is given by a filling, not by an energy";
+    if (point->solve.engine == SV_ENGINE_CHEBYSHEV)
+        return NULL;
+    if (point->solve.engine == SV_ENGINE_DENSE)
+        return "asked for";
+    if (point->open_flake->n_sites <= DENSE_ALWAYS)
+        return "the flake is small";
+    if (site_map && point->open_flake->n_sites <= DENSE_LARGEST)
+        return "every site is wanted";
+    return NULL;
+}
+
+static sv_status plan_chebyshev(sv_context *context, sv_case *point, double sampling_error,
+                                sv_plan *plan)
+{
+    pilot p;
+    bool found = false, asked = point->solve.engine == SV_ENGINE_CHEBYSHEV;
+    double error = NAN;
+    sv_projector_options o = point->solve;
+    o.engine = SV_ENGINE_CHEBYSHEV;
+    sv_status status = start_pilot(context, point, &p);
+    if (status == SV_OK)
+        status = climb_degrees(context, &p, asked ? 4001 : highest_degree(&p), &o, &found, &error);
+    if (status != SV_OK)
+        return status;
+    if (!found && !asked && p.sites <= DENSE_LARGEST) {
+        point->solve.engine = SV_ENGINE_DENSE;
+        snprintf(plan->reason, sizeof plan->reason,
+                 "dense: levels near the Fermi energy need more than a polynomial can give");
+        return SV_OK;
+    }
+    if ((status = find_reach(context, &p, error, &o)) != SV_OK ||
+        (status = find_sampling(context, &p, &o, sampling_error)) != SV_OK)
+        return status;
+    point->solve = o;
+    snprintf(plan->reason, sizeof plan->reason,
+             "chebyshev: degree %d resolves levels %.3g from the Fermi energy, stated error %.1e%s",
+             o.degree, o.half_gap, error, found ? "" : " (more than the accuracy asked for)");
+    return SV_OK;
+}
+
+sv_status sv_case_plan(sv_context *context, sv_case *point, bool site_map, double sampling_error,
+                       sv_plan *ret_plan)
+{
+    sv_plan plan = {0};
+    sv_status status = SV_OK;
+    const char *reason = dense_reason(point, site_map);
+    if (reason != NULL && point->solve.engine == SV_ENGINE_CHEBYSHEV)
+        return SV_FAIL(context, SV_INVALID_INPUT, "the chebyshev engine cannot be used: %s",
+                       reason);
+    if (reason != NULL) {
+        point->solve.engine = SV_ENGINE_DENSE;
+        snprintf(plan.reason, sizeof plan.reason, "dense: %s", reason);
+    } else {
+        status = plan_chebyshev(context, point, sampling_error, &plan);
+    }
+    if (status == SV_OK)
+        *ret_plan = plan;
+    return status;
+}

@@ -1,0 +1,212 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Levels next to the shift of the latest factorisation, by Lanczos on its inverse with full
+ * orthogonalisation (C. Lanczos, J. Res. Natl. Bur. Stand. 45, 255 (1950)). */
+#include "inertia_internal.h"
+
+#include <cblas.h>
+#include <math.h>
+#include <string.h>
+
+#define lapack_complex_double double _Complex
+#define lapack_complex_float  float _Complex
+#include <lapacke.h>
+
+enum { MOST_STEPS = 80, FIRST_CHECK = 8, CHECK_EVERY = 4 };
+/* A level is settled when its error is below this share of its distance from the shift. */
+static const double SETTLED = 1e-9;
+
+typedef struct lanczos {
+    sv_index n;
+    int steps;
+    sv_complex *basis;                            /* n × (MOST_STEPS + 1) */
+    double diagonal[MOST_STEPS], off[MOST_STEPS]; /* of the tridiagonal matrix */
+    double value[MOST_STEPS], copy[MOST_STEPS];
+    double vectors[MOST_STEPS * MOST_STEPS];
+} lanczos;
+
+static void start_vector(sv_complex *x, sv_index n)
+{
+    sv_stream stream = sv_stream_make(1, "lanczos", 0);
+    for (sv_index k = 0; k < n; k++)
+        x[k] = CMPLX(sv_stream_normal(&stream, (int32_t)k, 0, 0),
+                     sv_stream_normal(&stream, (int32_t)k, 0, 1));
+    cblas_zdscal((int)n, 1.0 / cblas_dznrm2((int)n, x, 1), x, 1);
+}
+
+/* One step; false when the space is exhausted. */
+static sv_status lanczos_step(sv_context *context, sv_inertia_plan *plan, lanczos *z,
+                              bool *ret_exhausted)
+{
+    const sv_complex one = 1.0, minus = -1.0, zero = 0.0;
+    int n = (int)z->n, k = z->steps;
+    sv_complex overlap[MOST_STEPS + 1], *next = z->basis + (k + 1) * z->n;
+    memcpy(next, z->basis + k * z->n, (size_t)n * sizeof *next);
+    sv_status status = sv_inertia_solve(context, plan, next);
+    if (status != SV_OK)
+        return status;
+    for (int pass = 0; pass < 2; pass++) {
+        cblas_zgemv(CblasColMajor, CblasConjTrans, n, k + 1, &one, z->basis, n, next, 1, &zero,
+                    overlap, 1);
+        cblas_zgemv(CblasColMajor, CblasNoTrans, n, k + 1, &minus, z->basis, n, overlap, 1, &one,
+                    next, 1);
+        z->diagonal[k] = (pass == 0 ? 0.0 : z->diagonal[k]) + creal(overlap[k]);
+    }
+    z->off[k] = cblas_dznrm2(n, next, 1);
+    z->steps++;
+    double scale = fabs(z->diagonal[0]) + z->off[0];
+    *ret_exhausted = z->steps >= n || !(z->off[k] > 1e-14 * scale);
+    if (!*ret_exhausted)
+        cblas_zdscal(n, 1.0 / z->off[k], next, 1);
+    return SV_OK;
+}
+
+/* Ritz values of the inverse; the extreme ones are the levels next to the shift. */
+static sv_status ritz(sv_context *context, lanczos *z)
+{
+    memcpy(z->value, z->diagonal, (size_t)z->steps * sizeof *z->value);
+    memcpy(z->copy, z->off, (size_t)z->steps * sizeof *z->copy);
+    double work[2 * MOST_STEPS];
+    lapack_int info = LAPACKE_dstev_work(LAPACK_COL_MAJOR, 'V', z->steps, z->value, z->copy,
+                                         z->vectors, z->steps, work);
+    if (info != 0)
+        return SV_FAIL(context, SV_NUMERICAL, "dstev failed with code %d", (int)info);
+    return SV_OK;
+}
+
+/* Level and its error from Ritz pair k: |1/θ − λ + shift| ≲ residual/θ². */
+static double level_of(const lanczos *z, int k, bool exhausted, double *ret_error)
+{
+    double theta = z->value[k];
+    double residual =
+        exhausted ? 0.0
+                  : fabs(z->off[z->steps - 1] * z->vectors[z->steps - 1 + (sv_index)k * z->steps]);
+    *ret_error = residual / (theta * theta);
+    return 1.0 / theta;
+}
+
+static bool read_levels(const lanczos *z, const sv_inertia *inertia, bool exhausted, double shift,
+                        sv_inertia_levels *levels)
+{
+    bool settled = true;
+    *levels = (sv_inertia_levels){.below = -INFINITY, .above = INFINITY, .steps = z->steps};
+    if (inertia->negative > 0) {
+        double distance = level_of(z, 0, exhausted, &levels->error_below);
+        settled = settled && distance < 0.0 && levels->error_below <= SETTLED * fabs(distance);
+        levels->below = shift + distance;
+    }
+    if (inertia->positive > 0) {
+        double distance = level_of(z, z->steps - 1, exhausted, &levels->error_above);
+        settled = settled && distance > 0.0 && levels->error_above <= SETTLED * fabs(distance);
+        levels->above = shift + distance;
+    }
+    return settled;
+}
+
+static sv_status iterate(sv_context *context, sv_inertia_plan *plan, const sv_inertia *inertia,
+                         double shift, lanczos *z, sv_inertia_levels *levels)
+{
+    bool settled = false, exhausted = false;
+    while (!settled) {
+        sv_status status = lanczos_step(context, plan, z, &exhausted);
+        if (status != SV_OK)
+            return status;
+        bool last = exhausted || z->steps == MOST_STEPS;
+        if (!last && (z->steps < FIRST_CHECK || z->steps % CHECK_EVERY != 0))
+            continue;
+        if ((status = ritz(context, z)) != SV_OK)
+            return status;
+        settled = read_levels(z, inertia, exhausted, shift, levels) || last;
+        if (sv_cancelled(context))
+            return SV_FAIL(context, SV_INTERRUPTED, "stopped during a search for levels");
+    }
+    return SV_OK;
+}
+
+sv_status sv_inertia_levels_near(sv_context *context, sv_inertia_plan *plan,
+                                 const sv_inertia *inertia, double shift,
+                                 sv_inertia_levels *ret_levels)
+{
+    lanczos *z = NULL;
+    sv_inertia_levels levels;
+    sv_status status;
+    if (plan->order == 0)
+        return SV_FAIL(context, SV_INVALID_INPUT, "a matrix of order 0 has no levels");
+    sv_index columns = plan->order < MOST_STEPS ? plan->order + 1 : MOST_STEPS + 1;
+    if ((status = sv_take_raw(context, 1, sizeof *z, &z)) != SV_OK)
+        return status;
+    z->n = plan->order;
+    z->steps = 0;
+    if ((status = sv_take_raw(context, z->n * columns, sizeof *z->basis, &z->basis)) != SV_OK)
+        goto out;
+    start_vector(z->basis, z->n);
+    status = iterate(context, plan, inertia, shift, z, &levels);
+    if (status == SV_OK)
+        *ret_levels = levels;
+out:
+    sv_give(context, z->basis);
+    sv_give(context, z);
+    return status;
+}
+
+/* --- the Fermi energy of a number of electrons --- */
+
+/* Bisects to an energy with the wanted number of states below it. */
+static sv_status bisect(sv_context *context, sv_inertia_plan *plan, const sv_sparse *h,
+                        sv_index electrons, double resolution, double *ret_energy,
+                        sv_inertia *ret_inertia, bool *ret_found)
+{
+    double bound = sv_sparse_norm_bound(h);
+    double low = -bound - 1.0, high = bound + 1.0;
+    double energy = electrons == 0 ? low : electrons == h->n ? high : 0.0;
+    for (;;) {
+        sv_status status = sv_inertia_factor(context, plan, h, energy, ret_inertia);
+        if (status != SV_OK)
+            return status;
+        *ret_energy = energy;
+        *ret_found = ret_inertia->negative == electrons;
+        if (*ret_found || high - low <= resolution)
+            return SV_OK;
+        if (ret_inertia->negative < electrons)
+            low = energy;
+        else
+            high = energy;
+        energy = 0.5 * (low + high);
+    }
+}
+
+sv_status sv_inertia_fermi_energy(sv_context *context, sv_inertia_plan *plan, const sv_sparse *h,
+                                  sv_index electrons, sv_fermi_level *ret_fermi)
+{
+    sv_fermi_level fermi = {.resolution = 1e-11 * fmax(sv_sparse_norm_bound(h), 1e-300)};
+    sv_inertia inertia;
+    double energy;
+    bool found;
+    if (electrons < 0 || electrons > h->n)
+        return SV_FAIL(context, SV_INVALID_INPUT, "%lld electrons do not fit into %lld states",
+                       (long long)electrons, (long long)h->n);
+    sv_status status =
+        bisect(context, plan, h, electrons, fermi.resolution, &energy, &inertia, &found);
+    if (status != SV_OK)
+        return status;
+    fermi.energy = energy;
+    fermi.highest_occupied = fermi.lowest_empty = energy;
+    fermi.on_level = !found;
+    if (!found)
+        goto done;
+    sv_inertia_levels levels;
+    if ((status = sv_inertia_levels_near(context, plan, &inertia, energy, &levels)) != SV_OK)
+        return status;
+    fermi.highest_occupied = levels.below;
+    fermi.lowest_empty = levels.above;
+    fermi.energy = electrons == 0      ? levels.above - 1.0
+                   : electrons == h->n ? levels.below + 1.0
+                                       : 0.5 * (levels.below + levels.above);
+    sv_inertia_count check;
+    if ((status = sv_inertia_count_below(context, plan, h, fermi.energy, &check)) != SV_OK)
+        return status;
+    fermi.on_level = levels.above - levels.below <= fermi.resolution || !check.decided ||
+                     check.below != electrons;
+done:
+    *ret_fermi = fermi;
+    return SV_OK;
+}

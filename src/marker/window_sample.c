@@ -1,0 +1,81 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Stratified sampling of a window too large for every cell. */
+#include "marker_internal.h"
+
+#include <math.h>
+#include <string.h>
+
+/* Cells of a run: as many as fill one block of columns with their orbitals. */
+static sv_index run_length(const sv_flake *flake)
+{
+    sv_index cells = SV_PANEL_COLUMNS / flake->model->n_orbitals;
+    return cells < 1 ? 1 : cells;
+}
+
+/* Numbers the runs of neighbouring window cells; returns how many there are. */
+static sv_index number_runs(const sv_flake *flake, const bool *inside, int32_t *run)
+{
+    sv_index runs = 0, longest = run_length(flake), length = 0;
+    for (sv_index c = 0; c < flake->n_cells; c++) {
+        run[c] = -1;
+        if (!inside[c]) {
+            length = 0;
+            continue;
+        }
+        bool goes_on = length > 0 && length < longest &&
+                       flake->cells[c].i == flake->cells[c - 1].i &&
+                       flake->cells[c].j == flake->cells[c - 1].j + 1;
+        if (!goes_on) {
+            runs++;
+            length = 0;
+        }
+        run[c] = (int32_t)(runs - 1);
+        length++;
+    }
+    return runs;
+}
+
+sv_status sv_window_choose(sv_context *context, const sv_flake *flake, const bool *inside,
+                           sv_index wanted, uint64_t seed, sv_index realisation,
+                           window_choice *ret_choice)
+{
+    window_choice choice = {0};
+    int32_t *number = NULL;
+    sv_stream stream = sv_stream_make(seed, "window sample", realisation);
+    sv_status status = sv_take_raw(context, flake->n_cells, sizeof *choice.unit, &choice.unit);
+    if (status != SV_OK)
+        return status;
+    sv_index runs = number_runs(flake, inside, choice.unit);
+    sv_index units = (wanted + run_length(flake) - 1) / run_length(flake);
+    units = units > runs ? runs : units < 2 ? 2 : units + units % 2;
+    if ((status = sv_take_raw(context, runs, sizeof *number, &number)) != SV_OK) {
+        sv_give(context, choice.unit);
+        return status;
+    }
+    memset(number, 0xff, (size_t)runs * sizeof *number);
+    for (sv_index k = 0; k < units; k++) {
+        sv_index low = k * runs / units, high = (k + 1) * runs / units;
+        double u = sv_stream_uniform(&stream, (int32_t)k, 0, 0);
+        number[low + (sv_index)(u * (double)(high - low))] = (int32_t)k;
+    }
+    for (sv_index c = 0; c < flake->n_cells; c++) {
+        choice.unit[c] = choice.unit[c] < 0 ? -1 : number[choice.unit[c]];
+        choice.n_cells += choice.unit[c] >= 0;
+    }
+    choice.n_units = units;
+    choice.left_out = 1.0 - (double)units / (double)runs;
+    sv_give(context, number);
+    *ret_choice = choice;
+    return SV_OK;
+}
+
+double sv_window_error(const window_choice *choice, const double *sums, const sv_index *cells)
+{
+    double squares = 0.0;
+    for (sv_index k = 0; k + 1 < choice->n_units; k += 2) {
+        double d = sums[k] / (double)cells[k] - sums[k + 1] / (double)cells[k + 1];
+        squares += d * d;
+    }
+    /* One run a stratum: neighbouring strata stand in for each other (collapsed strata). */
+    return sqrt(squares * choice->left_out) / (double)choice->n_units;
+}

@@ -1,0 +1,156 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* The Chebyshev engine: P ≈ p(H) with a near-best polynomial of the occupation step. */
+#include "projector_internal.h"
+
+#include <math.h>
+#include <string.h>
+
+typedef struct chebyshev_state {
+    sv_packed packed; /* (H − E_F)/scale; empty when only parts are used */
+    double *coefficients;
+    bool shared_coefficients; /* of a part: they belong to the whole */
+    int degree;
+    double energy, scale;
+    sv_panel_kernel kernel;
+    double *panels; /* four panels: x, two of work, y */
+} chebyshev_state;
+
+static void chebyshev_free(sv_context *context, void *state)
+{
+    chebyshev_state *s = state;
+    if (s == NULL)
+        return;
+    sv_packed_free(context, &s->packed);
+    if (!s->shared_coefficients)
+        sv_give(context, s->coefficients);
+    sv_give(context, s->panels);
+    sv_give(context, s);
+}
+
+static void fill_panel(double *panel, sv_index n, const sv_complex *x, sv_index columns)
+{
+    const int c = SV_PANEL_COLUMNS;
+    memset(panel, 0, (size_t)(2 * c * n) * sizeof *panel);
+    for (sv_index k = 0; k < columns; k++)
+        for (sv_index r = 0; r < n; r++) {
+            panel[2 * c * r + k] = creal(x[r + k * n]);
+            panel[2 * c * r + c + k] = cimag(x[r + k * n]);
+        }
+}
+
+static void empty_panel(const double *panel, sv_index n, sv_complex *y, sv_index columns)
+{
+    const int c = SV_PANEL_COLUMNS;
+    for (sv_index k = 0; k < columns; k++)
+        for (sv_index r = 0; r < n; r++)
+            y[r + k * n] = CMPLX(panel[2 * c * r + k], panel[2 * c * r + c + k]);
+}
+
+static sv_status chebyshev_apply(sv_context *context, void *state, sv_index columns,
+                                 const sv_complex *x, sv_complex *y)
+{
+    chebyshev_state *s = state;
+    if (s->panels == NULL)
+        return SV_FAIL(context, SV_INTERNAL, "a projector made for parts is applied whole");
+    sv_index n = s->packed.n, panel = 2 * SV_PANEL_COLUMNS * n;
+    double *in = s->panels, *work = in + panel, *out = work + 2 * panel;
+    for (sv_index first = 0; first < columns; first += SV_PANEL_COLUMNS) {
+        sv_index width = columns - first;
+        if (width > SV_PANEL_COLUMNS)
+            width = SV_PANEL_COLUMNS;
+        if (sv_cancelled(context))
+            return SV_FAIL(context, SV_INTERRUPTED, "stopped during a projection");
+        fill_panel(in, n, x + first * n, width);
+        sv_panel_polynomial(&s->packed, s->coefficients, s->degree, s->kernel, in, work, out);
+        empty_panel(out, n, y + first * n, width);
+    }
+    return SV_OK;
+}
+
+static sv_basis chebyshev_basis(const void *state)
+{
+    (void)state;
+    return (sv_basis){.available = false};
+}
+
+/* Matrix and panels for the given rows (NULL: all). */
+static sv_status set_matrix(sv_context *context, const sv_sparse *h, const sv_index *rows,
+                            sv_index n, const int32_t *place, chebyshev_state *s)
+{
+    sv_status status = sv_packed_make(context, h, rows, n, place, s->energy, s->scale, &s->packed);
+    if (status != SV_OK)
+        return status;
+    return sv_take_raw(context, 8 * SV_PANEL_COLUMNS * n, sizeof *s->panels, &s->panels);
+}
+
+static sv_status chebyshev_restrict(sv_context *context, const sv_projector *projector,
+                                    const sv_index *rows, sv_index n_rows, const int32_t *place,
+                                    void **ret_state)
+{
+    const chebyshev_state *whole = projector->state;
+    chebyshev_state *part = NULL;
+    sv_status status = sv_take(context, 1, sizeof *part, &part);
+    if (status != SV_OK)
+        return status;
+    *part = (chebyshev_state){.coefficients = whole->coefficients,
+                              .shared_coefficients = true,
+                              .degree = whole->degree,
+                              .energy = whole->energy,
+                              .scale = whole->scale,
+                              .kernel = whole->kernel};
+    status = set_matrix(context, &projector->sample->hamiltonian, rows, n_rows, place, part);
+    if (status == SV_OK)
+        *ret_state = part;
+    else
+        chebyshev_free(context, part);
+    return status;
+}
+
+static const engine_class chebyshev_class = {"chebyshev", chebyshev_free, chebyshev_apply,
+                                             chebyshev_basis, chebyshev_restrict};
+
+/* Gap and degree in units of the half width of the spectrum about the Fermi energy. */
+static sv_status set_polynomial(sv_context *context, const sv_projector_options *options,
+                                double scale, chebyshev_state *s)
+{
+    double delta = options->half_gap / scale;
+    if (!(delta > 0.0))
+        return SV_FAIL(context, SV_INVALID_INPUT, "the chebyshev engine needs a gap to resolve");
+    delta = fmin(delta, 0.9);
+    s->degree =
+        options->degree > 0 ? options->degree : sv_step_degree(delta, 0.01 * options->accuracy);
+    sv_status status = sv_take(context, s->degree + 1, sizeof *s->coefficients, &s->coefficients);
+    return status == SV_OK ? sv_step_polynomial(context, delta, s->degree, s->coefficients)
+                           : status;
+}
+
+sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
+                                   const sv_occupation *occupation,
+                                   const sv_projector_options *options, sv_projector *projector)
+{
+    chebyshev_state *s = NULL;
+    sv_index n = sample->n;
+    sv_status status;
+    if (occupation->by != SV_BY_ENERGY)
+        return SV_FAIL(context, SV_UNDEFINED,
+                       "the chebyshev engine needs a Fermi energy, not a filling");
+    if ((status = sv_take(context, 1, sizeof *s, &s)) != SV_OK)
+        return status;
+    s->energy = occupation->fermi_energy;
+    /* Gershgorin holds for every sample; the margin keeps |T_k| ≤ 1 under rounding. */
+    s->scale = 1.0001 * (sv_sparse_norm_bound(&sample->hamiltonian) + fabs(s->energy));
+    s->kernel = sv_panel_best_kernel();
+    status = set_polynomial(context, options, s->scale, s);
+    /* Parts bring their own matrix; the whole one would only cost memory. */
+    if (status == SV_OK && options->reach <= 0.0)
+        status = set_matrix(context, &sample->hamiltonian, NULL, n, NULL, s);
+    if (status != SV_OK) {
+        chebyshev_free(context, s);
+        return status;
+    }
+    projector->engine = &chebyshev_class;
+    projector->state = s;
+    projector->levels =
+        (sv_levels){.occupied = -1, .fermi_energy = s->energy, .resolution = options->half_gap};
+    return SV_OK;
+}
