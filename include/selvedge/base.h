@@ -127,7 +127,9 @@ SV_API sv_status sv_fail_at(sv_context *context, sv_status status, const char *f
                             const char *format, ...) SV_PRINTF(5, 6);
 #define SV_FAIL(context, status, ...) sv_fail_at((context), (status), __FILE__, __LINE__, __VA_ARGS__)
 
+/** Hands a message to the log callback; nothing without one. */
 SV_API void sv_log(sv_context *context, sv_log_level level, const char *format, ...) SV_PRINTF(3, 4);
+/** Tells the progress callback how far the work is. */
 SV_API void sv_progress(sv_context *context, const char *phase, sv_index done, sv_index total);
 /** True when the caller asked to stop; the function that sees it returns SV_INTERRUPTED. */
 SV_API bool sv_cancelled(const sv_context *context);

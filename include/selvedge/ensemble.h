@@ -107,8 +107,10 @@ typedef struct sv_ensemble {
     bool *done;
 } sv_ensemble;
 
+/** Room for all records, none done. @return SV_INVALID_INPUT for no points or realisations */
 SV_API SV_MUST_USE sv_status sv_ensemble_init(sv_context *context, int32_t n_points,
                                               int64_t realisations, sv_ensemble *ret_ensemble);
+/** Gives the records back; safe on a zeroed ensemble and twice in a row. */
 SV_API void sv_ensemble_free(sv_context *context, sv_ensemble *ensemble);
 
 /**

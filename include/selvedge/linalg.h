@@ -20,6 +20,7 @@ typedef struct sv_sparse {
     sv_complex *value;   /**< row_start[n] values */
 } sv_sparse;
 
+/** Gives the arrays back; safe on a zeroed matrix and twice in a row. */
 SV_API void sv_sparse_free(sv_context *context, sv_sparse *matrix);
 /** Verifies the invariants: monotone offsets, sorted columns, Hermitian to rounding. */
 SV_API SV_MUST_USE sv_status sv_sparse_check(sv_context *context, const sv_sparse *matrix);

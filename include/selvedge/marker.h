@@ -29,7 +29,8 @@ typedef struct sv_outcome {
     int64_t index; /**< for markers that are integers */
     double numerical_error, estimator_error;
     double margin; /**< what the verdict hangs on: Bott: smallest distance of an eigenvalue angle
-                        from π, radian; local Chern: level spacing at the Fermi energy; NaN: none */
+                        from π, radian; local Chern: level spacing at the Fermi energy;
+                        localizer: its gap, unit of the model; NaN: none */
     double weakest; /**< Bott: smallest modulus of an eigenvalue of V U V† U†, which is 0 when U or
                          V is singular; NaN: none */
     double sum_over_sites; /**< local Chern, when asked for; NaN otherwise */

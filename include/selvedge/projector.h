@@ -59,6 +59,7 @@ SV_API SV_MUST_USE sv_status sv_projector_make(sv_context *context, const sv_sam
                                                sv_projector **ret_projector);
 SV_API void sv_projector_free(sv_context *context, sv_projector *projector);
 
+/** Levels around the Fermi energy; owned by the projector. */
 SV_API const sv_levels *sv_projector_levels(const sv_projector *projector);
 /** Name of the engine ("dense"); static text. */
 SV_API const char *sv_projector_engine(const sv_projector *projector);

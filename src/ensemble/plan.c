@@ -11,6 +11,7 @@ static const sv_index DENSE_ALWAYS = 400;    /* sites: below, nothing else pays 
 static const sv_index DENSE_LARGEST = 12000; /* sites: above, one diagonalisation takes an hour */
 static const sv_index SAMPLE_ABOVE = 20000;  /* window columns: above, cells are sampled */
 static const sv_index PILOT_CELLS = 48;
+static const int MOST_DEGREE = 4001;
 
 /* Costs measured on one core of an x86-64 machine; only their ratio matters. */
 static const double DENSE_SECONDS = 0.8e-9; /* per site³ */
@@ -22,6 +23,7 @@ static const double POLYNOMIAL_SHARE = 0.01;
 typedef struct pilot {
     const sv_case *point;
     sv_marker_request request; /* of the local Chern marker */
+    sv_sample sample;          /* realisation 0, open */
     sv_index columns;          /* window columns of a whole realisation */
     sv_index sites;
     double scale; /* half width of the spectrum */
@@ -43,19 +45,22 @@ static double half_gap_of(const pilot *p, double accuracy, int degree)
     return p->scale * (ratio - 1.0) / (ratio + 1.0);
 }
 
-/* Realisation 0 with these settings on a sample of the window. */
+/* The marker of realisation 0 with these settings on a sample of the window. */
 static sv_status try_settings(sv_context *context, const pilot *p, const sv_projector_options *o,
                               sv_outcome *ret_outcome)
 {
-    sv_case trial = *p->point;
-    sv_record record;
-    trial.markers[0] = p->request;
-    trial.n_markers = 1;
-    trial.solve = *o;
-    trial.solve.sampled_cells = PILOT_CELLS;
-    sv_status status = sv_realise(context, &trial, 0, NULL, NULL, &record);
-    if (status == SV_OK)
-        *ret_outcome = record.outcomes[0];
+    sv_projector *projector = NULL;
+    sv_status status = sv_projector_make(context, &p->sample, &p->point->occupation, o, &projector);
+    if (status != SV_OK)
+        return status;
+    sv_marker_input input = {.sample = &p->sample,
+                             .occupation = &p->point->occupation,
+                             .projector = projector,
+                             .values = p->request.values,
+                             .sampled_cells = PILOT_CELLS,
+                             .seed = p->point->seed};
+    status = sv_local_chern(context, &input, ret_outcome);
+    sv_projector_free(context, projector);
     return status;
 }
 
@@ -90,6 +95,7 @@ static sv_status find_reach(sv_context *context, const pilot *p, double whole_er
     double per_area = (double)flake->model->n_orbitals / sv_model_cell_area(flake->model);
     double allowed = fmax(whole_error, 0.25 * o->accuracy) + 0.25 * o->accuracy;
     sv_projector_options trial = *o;
+    o->reach = 0.0;
     for (double reach = 6.0; reach < 1e4; reach = ceil(1.25 * reach)) {
         double part = M_PI * (reach + 4.0) * (reach + 4.0) * per_area;
         sv_outcome outcome;
@@ -118,8 +124,8 @@ static sv_status find_sampling(sv_context *context, const pilot *p, sv_projector
     if (status != SV_OK)
         return status;
     double ratio = outcome.estimator_error / sampling_error;
-    /* A margin of 1.5 in the variance for the roughness of the pilot's own error. */
-    o->sampled_cells = (sv_index)((double)PILOT_CELLS * fmax(1.0, 1.5 * ratio * ratio));
+    /* A margin of 2 in the variance for the roughness of the pilot's own error. */
+    o->sampled_cells = (sv_index)((double)PILOT_CELLS * fmax(1.0, 2.0 * ratio * ratio));
     return SV_OK;
 }
 
@@ -127,7 +133,6 @@ static sv_status start_pilot(sv_context *context, const sv_case *point, pilot *p
 {
     bool *inside = NULL;
     sv_index cells = 0;
-    sv_sample sample = {0};
     int row = find_request(point);
     *p = (pilot){
         .point = point, .request = point->markers[row], .sites = point->open_flake->n_sites};
@@ -137,11 +142,10 @@ static sv_status start_pilot(sv_context *context, const sv_case *point, pilot *p
         return status;
     p->columns = cells * point->open_flake->model->n_orbitals;
     status = sv_sample_draw(context, point->open_flake, point->disorder, point->n_disorder,
-                            point->seed, 0, &sample);
+                            point->seed, 0, &p->sample);
     if (status == SV_OK)
-        p->scale = 1.0001 * (sv_sparse_norm_bound(&sample.hamiltonian) +
+        p->scale = 1.0001 * (sv_sparse_norm_bound(&p->sample.hamiltonian) +
                              fabs(point->occupation.fermi_energy));
-    sv_sample_free(context, &sample);
     sv_give(context, inside);
     return status;
 }
@@ -152,7 +156,7 @@ static int highest_degree(const pilot *p)
     double n = (double)p->sites;
     double columns = (double)(p->columns > SAMPLE_ABOVE ? SAMPLE_ABOVE : p->columns);
     double degree = DENSE_SECONDS * n * n / (2.0 * columns * STEP_SECONDS);
-    return p->sites > DENSE_LARGEST ? 4001 : (int)fmin(degree, 4001.0);
+    return p->sites > DENSE_LARGEST ? MOST_DEGREE : (int)fmin(degree, (double)MOST_DEGREE);
 }
 
 /* Why the dense engine is the only one, or NULL. */
@@ -173,6 +177,21 @@ static const char *dense_reason(const sv_case *point, bool site_map)
     return NULL;
 }
 
+/* Degree, reach and sampling, in this order: each is tried with the ones before it. On huge flakes
+ * the degree is tried on parts from the start, of a radius the next step corrects. */
+static sv_status settle(sv_context *context, const pilot *p, double sampling_error,
+                        sv_projector_options *o, bool *ret_found, double *ret_error)
+{
+    const double first_reach = 24.0;
+    bool asked = p->point->solve.engine == SV_ENGINE_CHEBYSHEV;
+    o->reach = p->sites > DENSE_LARGEST ? first_reach : 0.0;
+    sv_status status =
+        climb_degrees(context, p, asked ? MOST_DEGREE : highest_degree(p), o, ret_found, ret_error);
+    if (status == SV_OK)
+        status = find_reach(context, p, *ret_error, o);
+    return status == SV_OK ? find_sampling(context, p, o, sampling_error) : status;
+}
+
 static sv_status plan_chebyshev(sv_context *context, sv_case *point, double sampling_error,
                                 sv_plan *plan)
 {
@@ -183,18 +202,17 @@ static sv_status plan_chebyshev(sv_context *context, sv_case *point, double samp
     o.engine = SV_ENGINE_CHEBYSHEV;
     sv_status status = start_pilot(context, point, &p);
     if (status == SV_OK)
-        status = climb_degrees(context, &p, asked ? 4001 : highest_degree(&p), &o, &found, &error);
+        status = settle(context, &p, sampling_error, &o, &found, &error);
+    sv_index sites = p.sites;
+    sv_sample_free(context, &p.sample);
     if (status != SV_OK)
         return status;
-    if (!found && !asked && p.sites <= DENSE_LARGEST) {
+    if (!found && !asked && sites <= DENSE_LARGEST) {
         point->solve.engine = SV_ENGINE_DENSE;
         snprintf(plan->reason, sizeof plan->reason,
                  "dense: levels near the Fermi energy need more than a polynomial can give");
         return SV_OK;
     }
-    if ((status = find_reach(context, &p, error, &o)) != SV_OK ||
-        (status = find_sampling(context, &p, &o, sampling_error)) != SV_OK)
-        return status;
     point->solve = o;
     snprintf(plan->reason, sizeof plan->reason,
              "chebyshev: degree %d resolves levels %.3g from the Fermi energy, stated error %.1e%s",

@@ -162,6 +162,20 @@ static sv_status all_fronts(sv_context *context, sv_inertia_plan *p, const sv_sp
     return SV_OK;
 }
 
+/* Largest row sum of |re| + |im|; NaN or infinite when an element is. */
+static double row_sum_norm(const sv_sparse *h)
+{
+    double norm = 0.0, total = 0.0;
+    for (sv_index row = 0; row < h->n; row++) {
+        double sum = 0.0;
+        for (sv_index k = h->row_start[row]; k < h->row_start[row + 1]; k++)
+            sum += fabs(creal(h->value[k])) + fabs(cimag(h->value[k]));
+        norm = fmax(norm, sum);
+        total += sum;
+    }
+    return isfinite(total) ? norm : total;
+}
+
 sv_status sv_inertia_factor(sv_context *context, sv_inertia_plan *plan, const sv_sparse *h,
                             double shift, sv_inertia *ret_inertia)
 {
@@ -170,10 +184,11 @@ sv_status sv_inertia_factor(sv_context *context, sv_inertia_plan *plan, const sv
         return SV_FAIL(context, SV_INVALID_INPUT, "a matrix of order %lld for a plan of order %lld",
                        (long long)h->n, (long long)plan->order);
     plan->factored = false;
-    plan->norm = sv_sparse_norm_bound(h) + fabs(shift);
+    plan->norm = row_sum_norm(h) + fabs(shift);
     if (!isfinite(plan->norm))
         return SV_FAIL(context, SV_NUMERICAL, "the matrix is not finite");
-    double tiny = TINY_PIVOT * fmax(plan->norm, DBL_MIN / TINY_PIVOT);
+    plan->norm = fmax(plan->norm, DBL_MIN / DBL_EPSILON); /* a matrix of zeros */
+    double tiny = TINY_PIVOT * plan->norm;
     for (sv_index k = 0; k < plan->groups; k++)
         plan->slot[k] = -1;
     sv_status status = all_fronts(context, plan, h, shift, tiny, &tally);

@@ -82,6 +82,26 @@ static sv_status place_energy(sv_context *context, const sv_marker_input *input,
     return status;
 }
 
+/* Factors on both sides of 0, the upper side last. Clean flakes can have singular leading blocks at
+ * special shifts: then a slightly larger one serves as well. */
+static sv_status factor_both(sv_context *context, localizer_work *w, double *ret_shift,
+                             sv_inertia *ret_below, sv_inertia *ret_above, double *ret_error)
+{
+    double shift = w->threshold;
+    for (int attempt = 0;; attempt++) {
+        sv_status status;
+        if ((status = sv_inertia_factor(context, w->plan, &w->matrix, -shift, ret_below)) !=
+                SV_OK ||
+            (status = sv_inertia_factor(context, w->plan, &w->matrix, shift, ret_above)) != SV_OK)
+            return status;
+        *ret_error = fmax(ret_below->error, ret_above->error);
+        *ret_shift = shift;
+        if (*ret_error < 1e-6 * shift || attempt == 3)
+            return SV_OK;
+        shift *= 1.01;
+    }
+}
+
 /*
  * Equal inertia at ±τ: no level in between, so the index is that of any shift there, and the levels
  * next to +τ are those next to 0.
@@ -90,23 +110,21 @@ static sv_status certify(sv_context *context, localizer_work *w, sv_outcome *out
 {
     sv_inertia below, above;
     sv_inertia_levels levels;
-    double tau = w->threshold;
-    sv_status status;
-    if ((status = sv_inertia_factor(context, w->plan, &w->matrix, -tau, &below)) != SV_OK ||
-        (status = sv_inertia_factor(context, w->plan, &w->matrix, tau, &above)) != SV_OK)
+    double shift, error;
+    sv_status status = factor_both(context, w, &shift, &below, &above, &error);
+    if (status != SV_OK)
         return status;
-    double error = fmax(below.error, above.error);
-    bool open = below.negative == above.negative && error < 0.5 * tau;
-    double shift = open ? tau : 0.0;
+    bool trusted = error < 0.5 * shift, open = trusted && below.negative == above.negative;
     w->negative = above.negative;
-    w->certain = open ? tau - error : 0.0;
-    if (!open)
-        UNRESOLVED(outcome,
-                   error < 0.5 * tau ? "a level of the localizer lies below the threshold %.3g"
-                                     : "the factorisation is too inaccurate for the threshold %.3g",
-                   tau);
+    w->certain = open ? shift - error : 0.0;
+    if (!trusted)
+        UNRESOLVED(outcome, "the factorisation is too inaccurate for the threshold %.3g",
+                   w->threshold);
+    else if (!open)
+        UNRESOLVED(outcome, "a level of the localizer lies below the threshold %.3g", shift);
     if (!w->want_value)
         return SV_OK;
+    shift = open ? shift : 0.0;
     if (!open && (status = sv_inertia_factor(context, w->plan, &w->matrix, shift, &above)) != SV_OK)
         return status;
     status = sv_inertia_levels_near(context, w->plan, &above, shift, &levels);

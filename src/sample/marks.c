@@ -39,8 +39,8 @@ static sv_status fail(sv_context *context, reader *r, int column, const char *me
 {
     sv_table_fault *f = r->fault;
     *f = (sv_table_fault){.line = r->line, .column = column};
-    snprintf(f->message, sizeof f->message, "%s", message);
-    snprintf(f->hint, sizeof f->hint, "%s", hint);
+    snprintf(f->message, sizeof f->message, "%.250s", message);
+    snprintf(f->hint, sizeof f->hint, "%.250s", hint);
     snprintf(f->text, sizeof f->text, "%.*s", r->line_length, r->line_text);
     return SV_FAIL(context, SV_INVALID_INPUT, "line %d, column %d: %s", r->line, column, message);
 }

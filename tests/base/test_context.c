@@ -85,6 +85,9 @@ SV_TEST(context_calls_back)
     sv_progress(&c, "p", 1, 2);
     CHECK_INT(calls, 2);
     sv_context fork = sv_context_fork(&c);
+    /* SV_FAIL is sv_fail_at() with the place filled in. */
+    CHECK_STATUS(SV_INTERNAL, sv_fail_at(&fork, SV_INTERNAL, "file.c", 12, "first"));
+    CHECK(fork.error.source_line == 12 && strcmp(fork.error.source_file, "file.c") == 0);
     CHECK_STATUS(SV_NUMERICAL, SV_FAIL(&fork, SV_NUMERICAL, "value %g", 1.5));
     CHECK(c.error.status == SV_OK);
     sv_context_take_error(&c, &fork);

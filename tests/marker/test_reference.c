@@ -5,6 +5,36 @@
 
 #include <stdlib.h>
 
+SV_TEST(the_table_of_markers_is_consistent)
+{
+    int count;
+    const sv_marker *table = sv_marker_table(&count);
+    for (int k = 0; k < count; k++) {
+        CHECK_INT(sv_marker_find(table[k].kind.name), k);
+        CHECK(table[k].compute != NULL && strlen(table[k].kind.doc) > 10);
+        CHECK(!table[k].needs_occupied_basis || table[k].needs_projector);
+    }
+    CHECK(table[sv_marker_find("local_chern")].compute == sv_local_chern);
+    CHECK(table[sv_marker_find("bott")].compute == sv_bott_index);
+    CHECK_INT(sv_marker_find("bot"), -1);
+    /* A Bott index needs a torus: an open flake is a fault of the caller, said as such. */
+    sv_model model = fixture_qi_wu_zhang(-1.0);
+    sv_flake_spec open = fixture_cells(&model, 4, 4, false);
+    sv_flake flake = fixture_flake(&model, &open);
+    sv_sample sample = {0};
+    sv_projector *p = NULL;
+    sv_projector_options o = sv_projector_options_default();
+    sv_outcome outcome;
+    CHECK_OK(sv_sample_draw(test_context(), &flake, NULL, 0, 1, 0, &sample));
+    CHECK_OK(sv_projector_make(test_context(), &sample, &fixture_below_zero, &o, &p));
+    sv_marker_input input = {.sample = &sample, .projector = p};
+    CHECK_STATUS(SV_UNDEFINED, sv_bott_index(test_context(), &input, &outcome));
+    sv_projector_free(test_context(), p);
+    sv_sample_free(test_context(), &sample);
+    sv_flake_free(test_context(), &flake);
+    sv_model_free(test_context(), &model);
+}
+
 /* F. D. M. Haldane, PRL 61, 2015 (1988); X.-L. Qi, Y.-S. Wu, S.-C. Zhang, PRB 74, 085308 (2006);
  * integers by link variables: Fukui, Hatsugai, Suzuki, J. Phys. Soc. Jpn. 74, 1674 (2005). */
 SV_TEST(bott_equals_the_link_variable_chern_number)

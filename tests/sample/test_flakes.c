@@ -31,6 +31,34 @@ SV_TEST(hexagon_counts)
     sv_model_free(test_context(), &model);
 }
 
+SV_TEST(kinds_have_keys_and_docs)
+{
+    int count;
+    const sv_kind *shapes = sv_shape_kinds(&count);
+    CHECK_INT(count, SV_SHAPE_DISC + 1);
+    CHECK_TEXT(shapes[SV_SHAPE_HEXAGON].name, "hexagon");
+    for (int k = 0; k < count; k++)
+        CHECK(shapes[k].n_keys > 0 && strlen(shapes[k].doc) > 0);
+    const sv_kind *disorders = sv_disorder_kinds(&count);
+    CHECK_INT(count, SV_DISORDER_ONSITE + 1);
+    CHECK_TEXT(disorders[SV_DISORDER_VACANCIES].name, "vacancies");
+    CHECK(sv_kind_find_key(&disorders[SV_DISORDER_ONSITE], "width") >= 0);
+}
+
+/* The centre of a cell is the mean of its orbital positions. */
+SV_TEST(cell_centres)
+{
+    sv_model model = fixture_haldane(0.1, 1.0, 0.0);
+    sv_flake_spec spec = fixture_cells(&model, 3, 2, false);
+    sv_flake flake = fixture_flake(&model, &spec);
+    double at[2];
+    sv_flake_cell_centre(&flake, 5, at); /* cell (2, 1): 2 a1 + a2 + (a1 + a2)/6 */
+    CHECK_CLOSE(at[0], 2.5 + 0.25, 1e-14);
+    CHECK_CLOSE(at[1], sqrt(3.0) / 2.0 * (1.0 + 1.0 / 6.0), 1e-14);
+    sv_flake_free(test_context(), &flake);
+    sv_model_free(test_context(), &model);
+}
+
 SV_TEST(window_rule)
 {
     /* The rule's own examples: 30·0.5 → 16, 13·0.4 → 5. */
