@@ -127,9 +127,9 @@ SV_API SV_MUST_USE sv_status sv_localizer_prepare(sv_context *context, const sv_
  * sv_localizer_matrix(), from inertia. Needs no projector; a filling is turned into a Fermi energy
  * by inertia.
  *
- * Resolved when the inertia is equal at +τ and −τ (no level of the localizer is nearer to 0), the
- * index at κ/2 agrees, and the localizer gap does not exceed g (κ would be too large); else the
- * reason says what failed. Margin: the localizer gap, or with gap: bound its certified lower bound
+ * Resolved when the inertia is equal at +τ and −τ (no level of the localizer is nearer to 0) and the
+ * index at κ/2 agrees; a localizer gap above g, a sign of too large a κ that trivial phases show as
+ * well, asks for the same index down to a quarter of 2g/ρ. Else the reason says what failed. Margin: the localizer gap, or with gap: bound its certified lower bound
  * τ. The gap is 1-Lipschitz in H and E, κ-Lipschitz in the probe: the index stands for every
  * potential of norm below the margin. Keys: at, kappa, threshold, gap.
  * Cost: one analysis and three factorisations of order 2N, one or more of order N.

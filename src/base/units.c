@@ -196,11 +196,11 @@ sv_parse_result sv_parse_quantity(const char *text, sv_dimension dimension,
     return SV_PARSE_OK;
 }
 
-/* Digits needed so that whole numbers below 10¹⁵ are written out: 10, not 1e+01. */
+/* Digits needed so that whole numbers below 10⁷ are written out: 10, not 1e+01. */
 static int whole_digits(double value)
 {
     double size = fabs(value);
-    return size >= 10.0 && size < 1e15 ? (int)floor(log10(size)) + 1 : 1;
+    return size >= 10.0 && size < 1e7 ? (int)floor(log10(size)) + 1 : 1;
 }
 
 void sv_format_real(double value, char *text, size_t size)

@@ -7,9 +7,6 @@
 
 enum { AT, KAPPA, THRESHOLD, GAP };
 
-/* A probe farther than this from every site is outside the flake, lattice constants. */
-static const double OUTSIDE = 1.0;
-
 typedef struct localizer_work {
     const sv_sample *sample;
     double at[2], energy, kappa, threshold;
@@ -133,67 +130,81 @@ static sv_status certify(sv_context *context, localizer_work *w, sv_outcome *out
     return status;
 }
 
-/* Is there a level within the pristine gap? Without one κ is too large for the flake, unless the
- * probe lies well outside and sees nothing at all. */
-static sv_status gap_is_plausible(sv_context *context, localizer_work *w, bool *ret_plausible)
+/* Is the localizer gap larger than the pristine one? */
+static sv_status exceeds_gap(sv_context *context, localizer_work *w, bool *ret_exceeds)
 {
     sv_inertia one;
-    double distance;
-    sv_flake_nearest(w->sample->flake, w->at, &distance);
-    *ret_plausible = !(w->gap > 0.0) || distance > OUTSIDE;
-    if (*ret_plausible)
+    *ret_exceeds = w->gap > 0.0;
+    if (w->gap > 0.0 && w->want_value)
+        *ret_exceeds = w->lowest > w->gap;
+    if (!*ret_exceeds || w->want_value)
         return SV_OK;
-    *ret_plausible = true;
-    if (w->want_value) {
-        *ret_plausible = w->lowest <= w->gap * (1.0 + 1e-9);
-        return SV_OK;
-    }
     for (int side = 1; side >= -1; side -= 2) {
-        sv_status status =
-            sv_inertia_factor(context, w->plan, &w->matrix, side * w->gap * (1.0 + 1e-9), &one);
-        if (status != SV_OK || one.negative != w->negative)
+        sv_status status = sv_inertia_factor(context, w->plan, &w->matrix, side * w->gap, &one);
+        if (status != SV_OK)
             return status;
+        *ret_exceeds = *ret_exceeds && one.negative == w->negative;
     }
-    *ret_plausible = false;
     return SV_OK;
 }
 
-/* The index at κ/2, undecided included. */
-static sv_status index_at_half(sv_context *context, localizer_work *w, sv_inertia_count *ret_count)
+/*
+ * How far down the index must not change: κ/2. A localizer gap above g is found in trivial phases,
+ * but also where κ is too large and the integer wrong: then down to a quarter of 2g/ρ, and at least
+ * to κ/4.
+ */
+static sv_status least_kappa(sv_context *context, localizer_work *w, double *ret_kappa)
 {
-    sv_sparse_free(context, &w->matrix);
-    sv_status status =
-        sv_localizer_matrix(context, w->sample, w->energy, 0.5 * w->kappa, w->at, &w->matrix);
-    return status == SV_OK ? sv_inertia_count_below(context, w->plan, &w->matrix, 0.0, ret_count)
-                           : status;
+    bool exceeds = false;
+    sv_status status = exceeds_gap(context, w, &exceeds);
+    if (status != SV_OK)
+        return status;
+    *ret_kappa = 0.5 * w->kappa;
+    if (exceeds) {
+        double radius = sv_localizer_radius(w->sample->flake, w->at);
+        *ret_kappa = fmin(0.25 * w->kappa, 0.5 * w->gap / fmax(radius, 1.0));
+    }
+    return SV_OK;
+}
+
+/* Follows the index from κ/2 down by halves; false when it changes or cannot be decided. */
+static sv_status follow_index(sv_context *context, localizer_work *w, double least,
+                              sv_outcome *outcome, bool *ret_steady)
+{
+    sv_inertia_count count;
+    *ret_steady = true;
+    for (double kappa = 0.5 * w->kappa; *ret_steady; kappa *= 0.5) {
+        sv_sparse_free(context, &w->matrix);
+        sv_status status =
+            sv_localizer_matrix(context, w->sample, w->energy, kappa, w->at, &w->matrix);
+        if (status == SV_OK)
+            status = sv_inertia_count_below(context, w->plan, &w->matrix, 0.0, &count);
+        if (status != SV_OK)
+            return status;
+        *ret_steady = count.decided && count.below == w->negative;
+        if (!*ret_steady)
+            UNRESOLVED(outcome, "the index differs between kappa %.3g and %.3g", w->kappa, kappa);
+        if (kappa <= least * (1.0 + 1e-12))
+            break;
+    }
+    return SV_OK;
 }
 
 static sv_status judge(sv_context *context, localizer_work *w, sv_outcome *outcome)
 {
-    bool plausible = false;
-    sv_inertia_count half;
+    bool steady = false;
+    double least;
     sv_status status = certify(context, w, outcome);
     if (status != SV_OK)
         return status;
     outcome->margin = w->want_value ? w->lowest : w->certain;
     if (!(w->certain > 0.0))
         return SV_OK;
-    if ((status = gap_is_plausible(context, w, &plausible)) != SV_OK)
+    if ((status = least_kappa(context, w, &least)) != SV_OK ||
+        (status = follow_index(context, w, least, outcome, &steady)) != SV_OK)
         return status;
-    if (!plausible) {
-        UNRESOLVED(
-            outcome,
-            "the localizer gap exceeds the gap %.3g of the pristine torus: kappa %.3g is too "
-            "large here",
-            w->gap, w->kappa);
+    if (!steady)
         return SV_OK;
-    }
-    if ((status = index_at_half(context, w, &half)) != SV_OK)
-        return status;
-    if (!half.decided || half.below != w->negative) {
-        UNRESOLVED(outcome, "the index at kappa %.3g and at half of it disagree", w->kappa);
-        return SV_OK;
-    }
     outcome->verdict = SV_RESOLVED;
     outcome->index = w->negative - w->sample->n;
     outcome->value = (double)outcome->index;

@@ -80,6 +80,8 @@ SV_TEST(reals_format_shortest_and_exact)
     CHECK_TEXT(text, "1500000");
     sv_format_real(1e15, text, sizeof text);
     CHECK_TEXT(text, "1e+15");
+    sv_format_real(5e12, text, sizeof text);
+    CHECK_TEXT(text, "5e+12");
     sv_format_real(-NAN, text, sizeof text);
     CHECK_TEXT(text, "nan");
 }

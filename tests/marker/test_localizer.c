@@ -226,6 +226,35 @@ SV_TEST(hofstadter_gaps_are_right_or_unresolved)
     CHECK(10 * right >= 8 * total);
 }
 
+/* Whatever κ is given: never a wrong integer. At κ = 0.6 gap 1 of 3/7 gives 0 with a localizer gap
+ * of 0.32, above g itself. */
+SV_TEST(no_kappa_gives_a_wrong_integer)
+{
+    const struct {
+        int p, q, r, chern;
+    } gaps[] = {{3, 7, 1, -2}, {2, 5, 1, -2}, {1, 5, 2, 2}, {1, 3, 1, 1}};
+    const double kappas[] = {0.01, 0.03, 0.1, 0.2, 0.4, 0.6, 0.9, 1.5, 3.0, 8.0, 30.0};
+    for (int k = 0; k < 4; k++) {
+        int right = 0;
+        double edge[2];
+        sv_model model = fixture_hofstadter(gaps[k].p, gaps[k].q);
+        sv_flake_spec spec = fixture_cells(&model, 20, 20, false);
+        CHECK_OK(sv_model_filling_gap(test_context(), &model, (double)gaps[k].r / gaps[k].q, 1e-6,
+                                      edge));
+        sv_occupation middle = {.by = SV_BY_ENERGY, .fermi_energy = 0.5 * (edge[0] + edge[1])};
+        for (size_t j = 0; j < sizeof kappas / sizeof kappas[0]; j++) {
+            probe p = {.kappa = kappas[j], .bound = j % 2 == 0};
+            sv_outcome o = localize_flake(&model, &spec, NULL, 0, 1, &middle, &p);
+            if (o.verdict != SV_RESOLVED)
+                continue;
+            CHECK_INT(o.index, gaps[k].chern);
+            right++;
+        }
+        CHECK(right >= 1);
+        sv_model_free(test_context(), &model);
+    }
+}
+
 static sv_sample random_sample(const sv_flake *flake, double width, double vacant, uint64_t seed)
 {
     sv_sample sample = {0};
@@ -324,7 +353,7 @@ SV_TEST(radius_of_the_flake)
     sv_flake_spec cells = fixture_cells(&square, 12, 8, false);
     sv_flake_spec hexagon = {.shape = SV_SHAPE_HEXAGON, .has_cells = true, .cells = {5}};
     sv_flake flake = fixture_flake(&square, &cells), six = fixture_flake(&honeycomb, &hexagon);
-    CHECK_CLOSE(sv_localizer_radius(&flake, flake.centre), 4.5, 1e-12);
+    CHECK_CLOSE(sv_localizer_radius(&flake, flake.centre), hypot(0.5, 4.5), 1e-12);
     CHECK_CLOSE(sv_localizer_radius(&flake, (const double[]){10.0, 3.0}), 2.0, 1e-12);
     CHECK_CLOSE(sv_localizer_radius(&flake, (const double[]){12.0, 3.0}), 0.0, 1e-12);
     double least = INFINITY, r = sv_localizer_radius(&six, six.centre);
@@ -358,7 +387,7 @@ SV_TEST(automatic_scale)
     probe p = {0};
     fill_values(&p, values);
     CHECK_OK(sv_localizer_prepare(test_context(), &flake, &fixture_below_zero, values));
-    CHECK_CLOSE(values[KAPPA].real[0], 2.0 / 6.5, 1e-8);
+    CHECK_CLOSE(values[KAPPA].real[0], 2.0 / hypot(0.5, 6.5), 1e-8);
     CHECK_CLOSE(values[KAPPA].real[1], 1.0, 1e-8);
     CHECK_CLOSE(values[THRESHOLD].real[0], 0.25, 1e-8);
     sv_outcome a = localize(&s, &fixture_below_zero, &p), b = sv_outcome_blank();
