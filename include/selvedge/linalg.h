@@ -200,19 +200,23 @@ SV_API SV_MUST_USE sv_status sv_inertia_count_below(sv_context *context, sv_iner
 /** Eigenvalues next to a shift; ∓∞ where there is none. */
 typedef struct sv_inertia_levels {
     double below, above;             /**< nearest on either side */
-    double error_below, error_above; /**< from the residual */
+    double error_below, error_above; /**< estimates */
     int steps;
 } sv_inertia_levels;
 
 /**
  * Levels next to the shift of the latest factorisation, by at most 80 steps of Lanczos on its
- * inverse, until both errors are 1e-9 of their distance from the shift. The start vector is fixed:
- * results repeat bit by bit.
+ * inverse. The start vector is fixed: results repeat bit by bit.
  * @param inertia, shift  of that factorisation
+ * @param tolerance  wanted error of a level over its distance from the shift
+ * @param target     only the level nearer to this energy must be that good; NaN: both
+ * @param[out] ret_levels  the errors say what was reached: r²/δ for a residual r and the next
+ *                   Ritz value δ away, plus that of the factor
  * Memory: 81 vectors. Cost: a solve and two passes over the basis per step.
  */
 SV_API SV_MUST_USE sv_status sv_inertia_levels_near(sv_context *context, sv_inertia_plan *plan,
                                                     const sv_inertia *inertia, double shift,
+                                                    double tolerance, double target,
                                                     sv_inertia_levels *ret_levels);
 
 /** Where a number of electrons puts the Fermi energy. */
@@ -240,6 +244,31 @@ SV_API SV_MUST_USE sv_status sv_inertia_fermi_energy(sv_context *context, sv_ine
  */
 SV_API SV_MUST_USE sv_status sv_inertia_simplicial(sv_context *context, const sv_sparse *h,
                                                    double shift, sv_index *ret_negative);
+
+/* -------------------------------------------------------- states near an energy */
+
+/** Eigenpairs in an interval around an energy. */
+typedef struct sv_near_states {
+    int count;
+    double half_width;   /**< all states nearer to the energy than this are here */
+    double *energies;    /**< count values, in no particular order */
+    sv_complex *vectors; /**< n × count, column-major, orthonormal */
+} sv_near_states;
+
+/**
+ * All eigenpairs within half_width of a shift: their number from two inertia counts, the pairs by
+ * Lanczos on (H − shift)^{-1} with full orthogonalisation and a fixed start vector. Degenerate
+ * levels are found too (the number says when one is missing).
+ * @param half_width  narrowed until at most `most` states lie inside and no level at its ends
+ * @return SV_NOT_CONVERGED when pairs are missing; the shift must not be a level itself
+ * Cost: an analysis, three factorisations, about twice as many solves as states. Memory: up to
+ * 4·count + 60 vectors.
+ */
+SV_API SV_MUST_USE sv_status sv_near_states_find(sv_context *context, const sv_sparse *h,
+                                                 double shift, double half_width, int most,
+                                                 sv_near_states *ret_states);
+/** Gives the arrays back; safe on a zeroed struct and twice in a row. */
+SV_API void sv_near_states_free(sv_context *context, sv_near_states *states);
 
 #ifdef __cplusplus
 }

@@ -23,6 +23,8 @@ typedef struct sv_projector_options {
     int degree;          /**< chebyshev: degree of the polynomial, odd; 0: from half_gap, accuracy */
     double half_gap;     /**< chebyshev: levels at least this far from the Fermi energy are resolved,
                               unit of the model */
+    int near_states;     /**< chebyshev: levels nearer than half_gap, up to this many, are computed
+                              one by one and occupied exactly; 0: left to the polynomial */
     double reach;        /**< chebyshev: radius of the parts for single columns, lattice constants;
                               0: columns use the whole flake */
     sv_index sampled_cells; /**< local Chern: number of window cells to sample; 0: all */

@@ -185,6 +185,8 @@ typedef struct sv_occupation {
     double filling;      /**< share of the states present; electrons = nearest integer, ties up */
     int64_t electrons;
 } sv_occupation;
+/** Number of electrons of a filling or count among `states`: filling·states, nearest, ties up. */
+SV_API int64_t sv_occupation_electrons(const sv_occupation *occupation, sv_index states);
 
 /* ------------------------------------------------------------------ sample */
 

@@ -9,16 +9,20 @@
 
 static const sv_index DENSE_ALWAYS = 400;    /* sites: below, nothing else pays */
 static const sv_index DENSE_LARGEST = 12000; /* sites: above, one diagonalisation takes an hour */
-static const sv_index SAMPLE_ABOVE = 20000;  /* window columns: above, cells are sampled */
+static const sv_index FILLING_LARGEST = 300000; /* sites: counting states above takes minutes */
+static const sv_index SAMPLE_ABOVE = 20000;     /* window columns: above, cells are sampled */
 static const sv_index PILOT_CELLS = 48;
 static const int MOST_DEGREE = 4001;
+static const int EASY_DEGREE = 161;      /* a plain polynomial of this degree needs no help */
+static const int NEAR_STATES = 48;       /* levels computed one by one in realisation 0 … */
+static const int NEAR_STATES_MOST = 192; /* … and in any other */
 
 /* Costs measured on one core of an x86-64 machine; only their ratio matters. */
 static const double DENSE_SECONDS = 0.8e-9; /* per site³ */
 static const double STEP_SECONDS = 0.6e-9;  /* per site, column and degree */
 
-/* The polynomial's own error lies this far below the accuracy asked for. */
-static const double POLYNOMIAL_SHARE = 0.01;
+/* Error of the polynomial over the accuracy asked for; the marker feels about a fifth of it. */
+static const double POLYNOMIAL_SHARE = 0.5;
 
 typedef struct pilot {
     const sv_case *point;
@@ -26,7 +30,8 @@ typedef struct pilot {
     sv_sample sample;          /* realisation 0, open */
     sv_index columns;          /* window columns of a whole realisation */
     sv_index sites;
-    double scale; /* half width of the spectrum */
+    double energy; /* Fermi energy */
+    double scale;  /* half width of the spectrum about it */
 } pilot;
 
 static int find_request(const sv_case *point)
@@ -64,12 +69,13 @@ static sv_status try_settings(sv_context *context, const pilot *p, const sv_proj
     return status;
 }
 
-/* Lowest degree of the ladder whose stated error is within what is allowed. */
-static sv_status climb_degrees(sv_context *context, const pilot *p, int most,
+/* Lowest degree of the ladder from `first` whose stated error is within what is allowed. */
+static sv_status climb_degrees(sv_context *context, const pilot *p, int first, int most,
                                sv_projector_options *o, bool *ret_found, double *ret_error)
 {
     *ret_found = false;
-    for (int degree = 31; degree <= most; degree += 2 * (degree / 6)) {
+    o->near_states = 0;
+    for (int degree = first; degree <= most; degree += 2 * (degree / 13)) {
         sv_outcome outcome;
         o->degree = degree;
         o->half_gap = half_gap_of(p, o->accuracy, degree);
@@ -83,6 +89,38 @@ static sv_status climb_degrees(sv_context *context, const pilot *p, int most,
         if (*ret_found)
             return SV_OK;
     }
+    return SV_OK;
+}
+
+/* The widest interval that holds few levels, those computed one by one, the rest left to a
+ * polynomial of the degree this needs. */
+static sv_status try_near_states(sv_context *context, const pilot *p, int most,
+                                 sv_projector_options *o, bool *ret_found, double *ret_error)
+{
+    sv_near_states near = {0};
+    sv_outcome outcome;
+    sv_projector_options trial = *o;
+    double energy = p->energy + 1e-4 * p->scale;
+    *ret_found = false;
+    sv_status status = sv_near_states_find(context, &p->sample.hamiltonian, energy, 0.16 * p->scale,
+                                           NEAR_STATES, &near);
+    trial.half_gap = near.half_width / 1.05;
+    sv_near_states_free(context, &near);
+    if (status == SV_NOT_CONVERGED)
+        return SV_OK;
+    if (status != SV_OK)
+        return status;
+    trial.near_states = NEAR_STATES_MOST;
+    trial.degree = sv_step_degree(trial.half_gap / p->scale, POLYNOMIAL_SHARE * o->accuracy);
+    if (trial.degree > most)
+        return SV_OK;
+    if ((status = try_settings(context, p, &trial, &outcome)) != SV_OK)
+        return status == SV_NOT_CONVERGED ? SV_OK : status;
+    if (outcome.verdict != SV_RESOLVED || outcome.numerical_error > o->accuracy)
+        return SV_OK;
+    *o = trial;
+    *ret_found = true;
+    *ret_error = outcome.numerical_error;
     return SV_OK;
 }
 
@@ -129,6 +167,24 @@ static sv_status find_sampling(sv_context *context, const pilot *p, sv_projector
     return SV_OK;
 }
 
+/* Fermi energy of realisation 0; a filling is turned into one by counting states. */
+static sv_status find_energy(sv_context *context, const sv_case *point, pilot *p)
+{
+    sv_inertia_plan *plan = NULL;
+    sv_fermi_level fermi = {.energy = point->occupation.fermi_energy};
+    sv_status status = SV_OK;
+    if (point->occupation.by != SV_BY_ENERGY) {
+        status = sv_inertia_plan_make(context, &p->sample.hamiltonian, 1, &plan);
+        if (status == SV_OK)
+            status = sv_inertia_fermi_energy(
+                context, plan, &p->sample.hamiltonian,
+                sv_occupation_electrons(&point->occupation, p->sample.n), &fermi);
+        sv_inertia_plan_free(context, plan);
+    }
+    p->energy = fermi.energy;
+    return status;
+}
+
 static sv_status start_pilot(sv_context *context, const sv_case *point, pilot *p)
 {
     bool *inside = NULL;
@@ -144,8 +200,9 @@ static sv_status start_pilot(sv_context *context, const sv_case *point, pilot *p
     status = sv_sample_draw(context, point->open_flake, point->disorder, point->n_disorder,
                             point->seed, 0, &p->sample);
     if (status == SV_OK)
-        p->scale = 1.0001 * (sv_sparse_norm_bound(&p->sample.hamiltonian) +
-                             fabs(point->occupation.fermi_energy));
+        status = find_energy(context, point, p);
+    if (status == SV_OK)
+        p->scale = 1.0001 * (sv_sparse_norm_bound(&p->sample.hamiltonian) + fabs(p->energy));
     sv_give(context, inside);
     return status;
 }
@@ -164,8 +221,8 @@ static const char *dense_reason(const sv_case *point, bool site_map)
 {
     if (find_request(point) < 0)
         return "no marker of single sites is asked for";
-    if (point->occupation.by != SV_BY_ENERGY)
-        return "the occupation is given by a filling, not by an energy";
+    if (point->occupation.by != SV_BY_ENERGY && point->open_flake->n_sites > FILLING_LARGEST)
+        return "a filling needs state counts, too costly for a flake of this size";
     if (point->solve.engine == SV_ENGINE_CHEBYSHEV)
         return NULL;
     if (point->solve.engine == SV_ENGINE_DENSE)
@@ -177,17 +234,30 @@ static const char *dense_reason(const sv_case *point, bool site_map)
     return NULL;
 }
 
+/* A plain polynomial if an easy one will do, else near levels one by one, else a long one. */
+static sv_status settle_degree(sv_context *context, const pilot *p, sv_projector_options *o,
+                               bool *ret_found, double *ret_error)
+{
+    bool asked = p->point->solve.engine == SV_ENGINE_CHEBYSHEV;
+    int most = asked ? MOST_DEGREE : highest_degree(p);
+    int easy = most < EASY_DEGREE ? most : EASY_DEGREE;
+    sv_status status = climb_degrees(context, p, 31, easy, o, ret_found, ret_error);
+    if (status == SV_OK && !*ret_found && o->reach <= 0.0)
+        status = try_near_states(context, p, most, o, ret_found, ret_error);
+    if (status == SV_OK && !*ret_found)
+        status = climb_degrees(context, p, EASY_DEGREE + 2, most, o, ret_found, ret_error);
+    return status;
+}
+
 /* Degree, reach and sampling, in this order: each is tried with the ones before it. On huge flakes
  * the degree is tried on parts from the start, of a radius the next step corrects. */
 static sv_status settle(sv_context *context, const pilot *p, double sampling_error,
                         sv_projector_options *o, bool *ret_found, double *ret_error)
 {
     const double first_reach = 24.0;
-    bool asked = p->point->solve.engine == SV_ENGINE_CHEBYSHEV;
     o->reach = p->sites > DENSE_LARGEST ? first_reach : 0.0;
-    sv_status status =
-        climb_degrees(context, p, asked ? MOST_DEGREE : highest_degree(p), o, ret_found, ret_error);
-    if (status == SV_OK)
+    sv_status status = settle_degree(context, p, o, ret_found, ret_error);
+    if (status == SV_OK && o->near_states == 0)
         status = find_reach(context, p, *ret_error, o);
     return status == SV_OK ? find_sampling(context, p, o, sampling_error) : status;
 }
@@ -214,9 +284,11 @@ static sv_status plan_chebyshev(sv_context *context, sv_case *point, double samp
         return SV_OK;
     }
     point->solve = o;
-    snprintf(plan->reason, sizeof plan->reason,
-             "chebyshev: degree %d resolves levels %.3g from the Fermi energy, stated error %.1e%s",
-             o.degree, o.half_gap, error, found ? "" : " (more than the accuracy asked for)");
+    snprintf(
+        plan->reason, sizeof plan->reason,
+        "chebyshev: degree %d resolves levels %.3g from the Fermi energy%s, stated error %.1e%s",
+        o.degree, o.half_gap, o.near_states > 0 ? ", nearer ones one by one" : "", error,
+        found ? "" : " (more than the accuracy asked for)");
     return SV_OK;
 }
 

@@ -61,8 +61,9 @@ static bool gather(const sv_inertia_plan *p, const sv_sparse *h, double shift, c
     return true;
 }
 
-/* Adds the update a child left (lower triangle, `side` rows) into the front. */
-static void absorb(const sv_inertia_plan *p, sv_index child, const sv_complex *update,
+/* Adds the part of an update a child left (lower triangle) that falls into the columns of the
+ * front, or into those below. */
+static void absorb(const sv_inertia_plan *p, sv_index child, const sv_complex *update, bool below,
                    const front *f)
 {
     sv_index b = p->block, own = p->first[child + 1] - p->first[child];
@@ -70,6 +71,8 @@ static void absorb(const sv_inertia_plan *p, sv_index child, const sv_complex *u
     sv_index groups = p->row_start[child + 1] - p->row_start[child] - own, side = groups * b;
     for (sv_index c = 0; c < side; c++) {
         sv_index column = target[c / b] * b + c % b;
+        if ((column >= f->columns) != below)
+            continue;
         const sv_complex *from = update + c * side;
         sv_complex *to = column < f->columns ? f->panel + column * f->rows
                                              : f->update + (column - f->columns) * f->below;
@@ -103,15 +106,15 @@ static void eliminate(sv_inertia_plan *p, const front *f, sv_index start, int wi
                     f->panel + next + next * lead, (int)lead);
 }
 
-/* update −= L W†, lower triangle by blocks of columns. */
+/* update := −L W†, lower triangle by blocks of columns. */
 static void update_below(const sv_inertia_plan *p, const front *f)
 {
-    const sv_complex one = 1.0, minus = -1.0;
+    const sv_complex minus = -1.0, zero = 0.0;
     const sv_complex *l = f->panel + f->columns, *w = p->work + f->columns;
     for (sv_index c = 0; c < f->below; c += UPDATE_WIDTH) {
         sv_index width = f->below - c < UPDATE_WIDTH ? f->below - c : UPDATE_WIDTH;
         cblas_zgemm(CblasColMajor, CblasNoTrans, CblasConjTrans, (int)(f->below - c), (int)width,
-                    (int)f->columns, &minus, l + c, (int)f->rows, w + c, (int)f->rows, &one,
+                    (int)f->columns, &minus, l + c, (int)f->rows, w + c, (int)f->rows, &zero,
                     f->update + c + c * f->below, (int)f->below);
     }
 }
@@ -139,19 +142,25 @@ static sv_status all_fronts(sv_context *context, sv_inertia_plan *p, const sv_sp
     sv_index top = 0, n_pending = 0;
     for (sv_index s = 0; s < p->n_nodes; s++) {
         front f = front_of(p, s);
-        sv_index size = f.below * f.below, base = top;
+        sv_index size = f.below * f.below, base = top, children = 0;
         f.update = p->stack + top;
         memset(f.panel, 0, (size_t)(f.rows * f.columns) * sizeof *f.panel);
-        memset(f.update, 0, (size_t)size * sizeof *f.update);
         if (!gather(p, h, shift, &f))
             return SV_FAIL(context, SV_INVALID_INPUT,
                            "the matrix has elements outside the pattern that was analysed");
-        while (n_pending > 0 && p->parent[p->pending[n_pending - 1]] == s) {
-            sv_index child = p->pending[--n_pending], side = update_side(p, child);
-            base -= side * side;
-            absorb(p, child, p->stack + base, &f);
+        for (; children < n_pending && p->parent[p->pending[n_pending - 1 - children]] == s;
+             children++) {
+            sv_index child = p->pending[n_pending - 1 - children];
+            base -= update_side(p, child) * update_side(p, child);
+            absorb(p, child, p->stack + base, false, &f);
         }
         factor_front(p, &f, tiny, tally);
+        sv_index from = base;
+        for (sv_index k = n_pending - children; k < n_pending; k++) {
+            absorb(p, p->pending[k], p->stack + from, true, &f);
+            from += update_side(p, p->pending[k]) * update_side(p, p->pending[k]);
+        }
+        n_pending -= children;
         memmove(p->stack + base, f.update, (size_t)size * sizeof *f.update);
         top = base + size;
         if (p->parent[s] >= 0)

@@ -13,8 +13,7 @@
 #include <lapacke.h>
 
 enum { MOST_STEPS = 80, FIRST_CHECK = 8, CHECK_EVERY = 4 };
-/* A level is settled when its error is below this share of its distance from the shift. */
-static const double SETTLED = 1e-9;
+static const double SETTLED = 1e-9; /* for the Fermi energy */
 /* The Krylov space is exhausted when a step adds less than this. */
 static const double BREAKDOWN = 1e-12;
 
@@ -36,6 +35,22 @@ static void start_vector(sv_complex *x, sv_index n)
     cblas_zdscal((int)n, 1.0 / cblas_dznrm2((int)n, x, 1), x, 1);
 }
 
+/* The three-term recurrence; what rounding leaves of it goes in a full pass afterwards. */
+static void remove_last_two(lanczos *z, sv_complex *next)
+{
+    int n = (int)z->n, k = z->steps;
+    const sv_complex *last = z->basis + k * z->n;
+    sv_complex overlap, factor;
+    cblas_zdotc_sub(n, last, 1, next, 1, &overlap);
+    z->diagonal[k] = creal(overlap);
+    factor = -z->diagonal[k];
+    cblas_zaxpy(n, &factor, last, 1, next, 1);
+    if (k == 0)
+        return;
+    factor = -z->off[k - 1];
+    cblas_zaxpy(n, &factor, last - n, 1, next, 1);
+}
+
 /* One step. */
 static sv_status lanczos_step(sv_context *context, sv_inertia_plan *plan, lanczos *z,
                               bool *ret_exhausted)
@@ -47,13 +62,12 @@ static sv_status lanczos_step(sv_context *context, sv_inertia_plan *plan, lanczo
     sv_status status = sv_inertia_solve(context, plan, next);
     if (status != SV_OK)
         return status;
-    for (int pass = 0; pass < 2; pass++) {
-        cblas_zgemv(CblasColMajor, CblasConjTrans, n, k + 1, &one, z->basis, n, next, 1, &zero,
-                    overlap, 1);
-        cblas_zgemv(CblasColMajor, CblasNoTrans, n, k + 1, &minus, z->basis, n, overlap, 1, &one,
-                    next, 1);
-        z->diagonal[k] = (pass == 0 ? 0.0 : z->diagonal[k]) + creal(overlap[k]);
-    }
+    remove_last_two(z, next);
+    cblas_zgemv(CblasColMajor, CblasConjTrans, n, k + 1, &one, z->basis, n, next, 1, &zero, overlap,
+                1);
+    cblas_zgemv(CblasColMajor, CblasNoTrans, n, k + 1, &minus, z->basis, n, overlap, 1, &one, next,
+                1);
+    z->diagonal[k] += creal(overlap[k]);
     z->off[k] = cblas_dznrm2(n, next, 1);
     z->steps++;
     double scale = fabs(z->diagonal[0]) + z->off[0];
@@ -78,9 +92,9 @@ static sv_status ritz(sv_context *context, lanczos *z)
 }
 
 /*
- * Level and its error from Ritz pair k: |1/θ − λ + shift| ≲ residual/θ². The residual has a floor
- * of rounding relative to the largest θ: a level far away is blurred by one very close to the
- * shift.
+ * Level and its error from Ritz pair k with residual r: θ is off by r, or by r²/δ when the next
+ * Ritz value is δ away (Kato, Temple), and 1/θ by that over θ². The residual has a floor of
+ * rounding relative to the largest θ: a level far away is blurred by one very close to the shift.
  */
 static double level_of(const lanczos *z, int k, double *ret_error)
 {
@@ -88,32 +102,42 @@ static double level_of(const lanczos *z, int k, double *ret_error)
     double residual =
         fabs(z->off[z->steps - 1] * z->vectors[z->steps - 1 + (sv_index)k * z->steps]);
     double largest = fmax(fabs(z->value[0]), fabs(z->value[z->steps - 1]));
-    *ret_error = (residual + 16.0 * DBL_EPSILON * largest) / (theta * theta);
+    int next = k == 0 ? 1 : k - 1;
+    double apart = z->steps > 1 ? fabs(theta - z->value[next]) : largest;
+    double error = apart > residual ? residual * residual / apart : residual;
+    *ret_error = (error + 16.0 * DBL_EPSILON * largest) / (theta * theta);
     return 1.0 / theta;
 }
 
-static bool read_levels(const lanczos *z, const sv_inertia *inertia, double shift,
-                        sv_inertia_levels *levels)
+/* Levels as they are; true when both, or the one nearer to `target`, are known well enough. */
+static bool read_levels(const lanczos *z, const sv_inertia *inertia, double shift, double tolerance,
+                        double target, sv_inertia_levels *levels)
 {
-    bool settled = true;
+    bool below = true, above = true;
     *levels = (sv_inertia_levels){.below = -INFINITY, .above = INFINITY, .steps = z->steps};
     if (inertia->negative > 0) {
         double distance = level_of(z, 0, &levels->error_below);
-        settled = settled && distance < 0.0 && levels->error_below <= SETTLED * fabs(distance);
+        below = distance < 0.0 && levels->error_below <= tolerance * fabs(distance);
         levels->below = shift + distance;
         levels->error_below += inertia->error;
     }
     if (inertia->positive > 0) {
         double distance = level_of(z, z->steps - 1, &levels->error_above);
-        settled = settled && distance > 0.0 && levels->error_above <= SETTLED * fabs(distance);
+        above = distance > 0.0 && levels->error_above <= tolerance * fabs(distance);
         levels->above = shift + distance;
         levels->error_above += inertia->error;
     }
-    return settled;
+    if (isnan(target) || (below && above))
+        return below && above;
+    /* Ritz values lie farther out than the levels: a level can only come nearer. */
+    double to_below = fabs(target - levels->below), to_above = fabs(levels->above - target);
+    return to_below < to_above ? below && to_below < to_above - 100.0 * levels->error_above
+                               : above && to_above < to_below - 100.0 * levels->error_below;
 }
 
 static sv_status iterate(sv_context *context, sv_inertia_plan *plan, const sv_inertia *inertia,
-                         double shift, lanczos *z, sv_inertia_levels *levels)
+                         double shift, double tolerance, double target, lanczos *z,
+                         sv_inertia_levels *levels)
 {
     bool settled = false, exhausted = false;
     while (!settled) {
@@ -125,7 +149,7 @@ static sv_status iterate(sv_context *context, sv_inertia_plan *plan, const sv_in
             continue;
         if ((status = ritz(context, z)) != SV_OK)
             return status;
-        settled = read_levels(z, inertia, shift, levels) || last;
+        settled = read_levels(z, inertia, shift, tolerance, target, levels) || last;
         if (sv_cancelled(context))
             return SV_FAIL(context, SV_INTERRUPTED, "stopped during a search for levels");
     }
@@ -133,8 +157,8 @@ static sv_status iterate(sv_context *context, sv_inertia_plan *plan, const sv_in
 }
 
 sv_status sv_inertia_levels_near(sv_context *context, sv_inertia_plan *plan,
-                                 const sv_inertia *inertia, double shift,
-                                 sv_inertia_levels *ret_levels)
+                                 const sv_inertia *inertia, double shift, double tolerance,
+                                 double target, sv_inertia_levels *ret_levels)
 {
     lanczos *z = NULL;
     sv_inertia_levels levels;
@@ -150,7 +174,7 @@ sv_status sv_inertia_levels_near(sv_context *context, sv_inertia_plan *plan,
     if ((status = sv_take_raw(context, z->n * columns, sizeof *z->basis, &z->basis)) != SV_OK)
         goto out;
     start_vector(z->basis, z->n);
-    status = iterate(context, plan, inertia, shift, z, &levels);
+    status = iterate(context, plan, inertia, shift, tolerance, target, z, &levels);
     if (status == SV_OK)
         *ret_levels = levels;
 out:
@@ -203,7 +227,8 @@ static sv_status settle_between(sv_context *context, sv_inertia_plan *plan, cons
     sv_status status;
     for (int round = 0; round < 6; round++) {
         double energy = fermi->energy;
-        status = sv_inertia_levels_near(context, plan, &inertia, energy, &levels);
+        status =
+            sv_inertia_levels_near(context, plan, &inertia, energy, SETTLED, (double)NAN, &levels);
         if (status != SV_OK)
             return status;
         double gap = levels.above - levels.below, half = isfinite(gap) ? 0.5 * gap : 1.0;

@@ -7,6 +7,9 @@
 
 enum { AT, KAPPA, THRESHOLD, GAP };
 
+/* Relative error of the reported gap. */
+static const double GAP_ACCURACY = 1e-7;
+
 typedef struct localizer_work {
     const sv_sample *sample;
     double at[2], energy, kappa, threshold;
@@ -124,7 +127,7 @@ static sv_status certify(sv_context *context, localizer_work *w, sv_outcome *out
     shift = open ? shift : 0.0;
     if (!open && (status = sv_inertia_factor(context, w->plan, &w->matrix, shift, &above)) != SV_OK)
         return status;
-    status = sv_inertia_levels_near(context, w->plan, &above, shift, &levels);
+    status = sv_inertia_levels_near(context, w->plan, &above, shift, GAP_ACCURACY, 0.0, &levels);
     if (status == SV_OK)
         w->lowest = fmin(fabs(levels.below), fabs(levels.above));
     return status;

@@ -1,7 +1,11 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* The Chebyshev engine: P ≈ p(H) with a near-best polynomial of the occupation step. */
+/* The Chebyshev engine: P ≈ p(H) with a near-best polynomial of the occupation step. Levels too
+ * near to the Fermi energy for the polynomial can be computed one by one and put right:
+ * P = p(H) + Σ (θ_n − p(E_n)) |n⟩⟨n|. */
 #include "projector_internal.h"
 
+#include <cblas.h>
+#include <float.h>
 #include <math.h>
 #include <string.h>
 
@@ -13,6 +17,8 @@ typedef struct chebyshev_state {
     double energy, scale;
     sv_panel_kernel kernel;
     double *panels; /* four panels: x, two of work, y */
+    sv_near_states near;
+    double *correction; /* θ_n − p(E_n) of the near states */
 } chebyshev_state;
 
 static void chebyshev_free(sv_context *context, void *state)
@@ -24,6 +30,8 @@ static void chebyshev_free(sv_context *context, void *state)
     if (!s->shared_coefficients)
         sv_give(context, s->coefficients);
     sv_give(context, s->panels);
+    sv_give(context, s->correction);
+    sv_near_states_free(context, &s->near);
     sv_give(context, s);
 }
 
@@ -46,6 +54,29 @@ static void empty_panel(const double *panel, sv_index n, sv_complex *y, sv_index
             y[r + k * n] = CMPLX(panel[2 * c * r + k], panel[2 * c * r + c + k]);
 }
 
+/* y += Σ (θ_n − p(E_n)) |n⟩⟨n|x⟩ */
+static sv_status correct(sv_context *context, const chebyshev_state *s, sv_index columns,
+                         const sv_complex *x, sv_complex *y)
+{
+    const sv_complex one = 1.0, zero = 0.0;
+    int n = (int)s->packed.n, m = s->near.count, k = (int)columns;
+    sv_complex *overlap = NULL;
+    if (m == 0)
+        return SV_OK;
+    sv_status status = sv_take_raw(context, m * columns, sizeof *overlap, &overlap);
+    if (status != SV_OK)
+        return status;
+    cblas_zgemm(CblasColMajor, CblasConjTrans, CblasNoTrans, m, k, n, &one, s->near.vectors, n, x,
+                n, &zero, overlap, m);
+    for (int c = 0; c < k; c++)
+        for (int l = 0; l < m; l++)
+            overlap[l + (sv_index)c * m] *= s->correction[l];
+    cblas_zgemm(CblasColMajor, CblasNoTrans, CblasNoTrans, n, k, m, &one, s->near.vectors, n,
+                overlap, m, &one, y, n);
+    sv_give(context, overlap);
+    return SV_OK;
+}
+
 static sv_status chebyshev_apply(sv_context *context, void *state, sv_index columns,
                                  const sv_complex *x, sv_complex *y)
 {
@@ -63,6 +94,9 @@ static sv_status chebyshev_apply(sv_context *context, void *state, sv_index colu
         fill_panel(in, n, x + first * n, width);
         sv_panel_polynomial(&s->packed, s->coefficients, s->degree, s->kernel, in, work, out);
         empty_panel(out, n, y + first * n, width);
+        sv_status status = correct(context, s, width, x + first * n, y + first * n);
+        if (status != SV_OK)
+            return status;
     }
     return SV_OK;
 }
@@ -124,6 +158,82 @@ static sv_status set_polynomial(sv_context *context, const sv_projector_options 
                            : status;
 }
 
+/* p(E) by Clenshaw's recurrence. */
+static double polynomial_at(const chebyshev_state *s, double energy)
+{
+    double t = (energy - s->energy) / s->scale, b1 = 0.0, b2 = 0.0;
+    for (int k = s->degree; k >= 1; k--) {
+        double b0 = 2.0 * t * b1 - b2 + s->coefficients[k];
+        b2 = b1;
+        b1 = b0;
+    }
+    return t * b1 - b2 + s->coefficients[0];
+}
+
+/* Notes the level of a near state: nearest ones, and whether it sits on the Fermi energy. */
+static void note_level(sv_levels *levels, double energy)
+{
+    if (fabs(energy - levels->fermi_energy) <= levels->resolution)
+        levels->on_level = true;
+    if (energy < levels->fermi_energy) {
+        if (!levels->has_highest || energy > levels->highest_occupied)
+            levels->highest_occupied = energy;
+        levels->has_highest = true;
+    } else {
+        if (!levels->has_lowest || energy < levels->lowest_empty)
+            levels->lowest_empty = energy;
+        levels->has_lowest = true;
+    }
+}
+
+static sv_status set_near_states(sv_context *context, const sv_sample *sample,
+                                 const sv_projector_options *options, chebyshev_state *s,
+                                 sv_levels *levels)
+{
+    /* A little off the Fermi energy, so that a level exactly there does not spoil the inverse. */
+    double shift = s->energy + 0.0137 * options->half_gap;
+    double relative = fmax(1e-12, 4.0 * DBL_EPSILON * (double)sample->n);
+    levels->resolution = relative * s->scale;
+    sv_status status =
+        sv_near_states_find(context, &sample->hamiltonian, shift, 1.02 * options->half_gap,
+                            options->near_states, &s->near);
+    if (status == SV_OK)
+        status = sv_take(context, s->near.count, sizeof *s->correction, &s->correction);
+    for (int k = 0; k < s->near.count && status == SV_OK; k++) {
+        double energy = s->near.energies[k];
+        s->correction[k] = (energy < s->energy ? 1.0 : 0.0) - polynomial_at(s, energy);
+        note_level(levels, energy);
+    }
+    return status;
+}
+
+/* A filling becomes an energy in the middle of the gap, by counting states (no eigenvalue needed).
+ */
+static sv_status set_energy(sv_context *context, const sv_sample *sample,
+                            const sv_occupation *occupation, chebyshev_state *s, sv_levels *levels)
+{
+    sv_inertia_plan *plan = NULL;
+    sv_fermi_level fermi;
+    s->energy = occupation->fermi_energy;
+    if (occupation->by == SV_BY_ENERGY)
+        return SV_OK;
+    int64_t electrons = sv_occupation_electrons(occupation, sample->n);
+    sv_status status = sv_inertia_plan_make(context, &sample->hamiltonian, 1, &plan);
+    if (status == SV_OK)
+        status = sv_inertia_fermi_energy(context, plan, &sample->hamiltonian, electrons, &fermi);
+    sv_inertia_plan_free(context, plan);
+    if (status != SV_OK)
+        return status;
+    s->energy = fermi.energy;
+    levels->occupied = electrons;
+    levels->on_level = fermi.on_level;
+    levels->has_highest = isfinite(fermi.highest_occupied);
+    levels->has_lowest = isfinite(fermi.lowest_empty);
+    levels->highest_occupied = fermi.highest_occupied;
+    levels->lowest_empty = fermi.lowest_empty;
+    return SV_OK;
+}
+
 sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
                                    const sv_occupation *occupation,
                                    const sv_projector_options *options, sv_projector *projector)
@@ -131,12 +241,14 @@ sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
     chebyshev_state *s = NULL;
     sv_index n = sample->n;
     sv_status status;
-    if (occupation->by != SV_BY_ENERGY)
-        return SV_FAIL(context, SV_UNDEFINED,
-                       "the chebyshev engine needs a Fermi energy, not a filling");
+    sv_levels levels = {.occupied = -1, .resolution = options->half_gap};
     if ((status = sv_take(context, 1, sizeof *s, &s)) != SV_OK)
         return status;
-    s->energy = occupation->fermi_energy;
+    if ((status = set_energy(context, sample, occupation, s, &levels)) != SV_OK) {
+        chebyshev_free(context, s);
+        return status;
+    }
+    levels.fermi_energy = s->energy;
     /* Gershgorin holds for every sample; the margin keeps |T_k| ≤ 1 under rounding. */
     s->scale = 1.0001 * (sv_sparse_norm_bound(&sample->hamiltonian) + fabs(s->energy));
     s->kernel = sv_panel_best_kernel();
@@ -144,13 +256,14 @@ sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
     /* Parts bring their own matrix; the whole one would only cost memory. */
     if (status == SV_OK && options->reach <= 0.0)
         status = set_matrix(context, &sample->hamiltonian, NULL, n, NULL, s);
+    if (status == SV_OK && options->near_states > 0 && options->reach <= 0.0)
+        status = set_near_states(context, sample, options, s, &levels);
     if (status != SV_OK) {
         chebyshev_free(context, s);
         return status;
     }
     projector->engine = &chebyshev_class;
     projector->state = s;
-    projector->levels =
-        (sv_levels){.occupied = -1, .fermi_energy = s->energy, .resolution = options->half_gap};
+    projector->levels = levels;
     return SV_OK;
 }

@@ -46,18 +46,10 @@ static void occupy_by_energy(const double *values, sv_index n, choice *c)
     levels->on_level = near_above != near_below;
 }
 
-/* Electrons of a filling: nearest integer, ties up; the nudge absorbs 0.3·10 = 2.9999…. */
-static int64_t electrons_of(const sv_occupation *occupation, sv_index n)
-{
-    if (occupation->by == SV_BY_ELECTRONS)
-        return occupation->electrons;
-    return (int64_t)floor(occupation->filling * (double)n + 0.5 + 1e-9);
-}
-
 static void occupy_by_count(const double *values, sv_index n, choice *c)
 {
     sv_levels *levels = &c->levels;
-    int64_t electrons = electrons_of(c->occupation, n);
+    int64_t electrons = sv_occupation_electrons(c->occupation, n);
     if (electrons < 0 || electrons > n) {
         c->too_many = true;
         return;
@@ -164,7 +156,7 @@ sv_status sv_dense_engine_make(sv_context *context, const sv_sample *sample,
         sv_dense_eigen(context, n, a, values, choose_range, &c, &first, &last, &state->vectors);
     if (status == SV_OK && c.too_many)
         status = SV_FAIL(context, SV_INVALID_INPUT, "%lld electrons do not fit into %lld states",
-                         (long long)electrons_of(occupation, n), (long long)n);
+                         (long long)sv_occupation_electrons(occupation, n), (long long)n);
     if (status != SV_OK)
         goto out;
     state->n = n;

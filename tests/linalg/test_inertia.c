@@ -197,6 +197,31 @@ SV_TEST(chains_without_a_diagonal)
     }
 }
 
+/* Far from all levels one factorisation is enough; on a level small matrices get all eigenvalues,
+ * larger ones counts on both sides. */
+SV_TEST(doubt_is_met_by_size)
+{
+    const int sizes[] = {6, 14};
+    for (int k = 0; k < 2; k++) {
+        subject s = make(1, sizes[k], false, 1.0, 0.0, 2);
+        settle(&s);
+        const sv_sparse *h = &s.sample.hamiltonian;
+        sv_inertia_plan *plan = NULL;
+        sv_inertia_count count;
+        CHECK_OK(sv_inertia_plan_make(test_context(), h, 1, &plan));
+        double level = s.level[h->n / 3], apart = s.level[h->n / 3 + 1] - level;
+        CHECK_OK(sv_inertia_count_below(test_context(), plan, h, level + 0.4 * apart, &count));
+        CHECK(count.decided && count.how == SV_COUNTED_ONCE);
+        CHECK(count.distance > 0.39 * apart && count.distance < 2.0 * apart);
+        CHECK_OK(sv_inertia_count_below(test_context(), plan, h, level, &count));
+        CHECK(!count.decided && count.how == (k == 0 ? SV_COUNTED_DENSE : SV_COUNTED_TWICE));
+        CHECK(count.low == h->n / 3 && count.high == h->n / 3 + 1);
+        CHECK(count.width > 0.0 && count.width < 1e-7);
+        sv_inertia_plan_free(test_context(), plan);
+        release(&s);
+    }
+}
+
 /* Another order and another code without pivoting. */
 SV_TEST(two_codes_agree)
 {
@@ -272,7 +297,8 @@ SV_TEST(levels_next_to_a_shift)
                 sv_inertia inertia;
                 sv_inertia_levels levels;
                 CHECK_OK(sv_inertia_factor(test_context(), plan, h, shift, &inertia));
-                CHECK_OK(sv_inertia_levels_near(test_context(), plan, &inertia, shift, &levels));
+                CHECK_OK(sv_inertia_levels_near(test_context(), plan, &inertia, shift, 1e-9,
+                                                (double)NAN, &levels));
                 sv_index count = below(&s, shift);
                 if (count > 0)
                     CHECK_CLOSE(levels.below, s.level[count - 1], 1e-9);

@@ -61,26 +61,57 @@ SV_TEST(hofstadter_gaps)
     sv_model_free(test_context(), &fine);
 }
 
-/* The edges must be those of a large torus, for fluxes and positions off the cell corner. */
+static void check_torus(sv_model *model, int side, double filling)
+{
+    sv_flake_spec spec = fixture_cells(model, side, side, true);
+    sv_flake flake = fixture_flake(model, &spec);
+    sv_sample sample = {0};
+    double edge[2];
+    CHECK_OK(sv_sample_draw(test_context(), &flake, NULL, 0, 1, 0, &sample));
+    double *level = fixture_spectrum(&sample);
+    sv_index filled = (sv_index)lround((double)sample.n * filling);
+    CHECK_OK(sv_model_filling_gap(test_context(), model, filling, 1e-6, edge));
+    CHECK(edge[0] >= level[filled - 1] - 1e-9 && edge[0] < level[filled - 1] + 0.02);
+    CHECK(edge[1] <= level[filled] + 1e-9 && edge[1] > level[filled] - 0.02);
+    sv_give(test_context(), level);
+    sv_sample_free(test_context(), &sample);
+    sv_flake_free(test_context(), &flake);
+    sv_model_free(test_context(), model);
+}
+
+/* The edges must be those of a large torus, also with orbitals off the corner of the cell. */
 SV_TEST(gaps_agree_with_a_torus)
 {
     const int flux[][3] = {{2, 5, 1}, {2, 5, 2}, {3, 7, 2}, {-2, 5, 1}};
     for (int k = 0; k < 4; k++) {
-        int p = flux[k][0], q = flux[k][1], r = flux[k][2];
-        sv_model model = fixture_hofstadter(p, q);
-        sv_flake_spec spec = fixture_cells(&model, 4 * q, 4 * q, true);
-        sv_flake flake = fixture_flake(&model, &spec);
-        sv_sample sample = {0};
-        double edge[2];
-        CHECK_OK(sv_sample_draw(test_context(), &flake, NULL, 0, 1, 0, &sample));
-        double *level = fixture_spectrum(&sample);
-        sv_index filled = sample.n * r / q;
-        CHECK_OK(sv_model_filling_gap(test_context(), &model, (double)r / q, 1e-6, edge));
-        CHECK(edge[0] >= level[filled - 1] - 1e-9 && edge[0] < level[filled - 1] + 0.02);
-        CHECK(edge[1] <= level[filled] + 1e-9 && edge[1] > level[filled] - 0.02);
-        sv_give(test_context(), level);
-        sv_sample_free(test_context(), &sample);
-        sv_flake_free(test_context(), &flake);
-        sv_model_free(test_context(), &model);
+        sv_model model = fixture_hofstadter(flux[k][0], flux[k][1]);
+        check_torus(&model, 4 * flux[k][1], (double)flux[k][2] / flux[k][1]);
     }
+    for (int p = 1; p <= 2; p++) {
+        sv_model model = fixture_haldane(0.2, 0.9, 0.3);
+        CHECK_OK(sv_model_set_flux(test_context(), &model, p, 3));
+        check_torus(&model, 18, p / 6.0);
+    }
+}
+
+/* A band edge away from the symmetric points, against a fine scan. */
+SV_TEST(edges_between_the_grid_points)
+{
+    sv_model model = fixture_haldane(0.3, 0.7, 0.1);
+    enum { SCAN = 700 };
+    double low = INFINITY, high = -INFINITY, edge[2];
+    for (int i = 0; i < SCAN; i++)
+        for (int j = 0; j < SCAN; j++) {
+            sv_complex h[4];
+            sv_model_bloch(&model, (const double[]){2 * M_PI * i / SCAN, 2 * M_PI * j / SCAN}, h);
+            double mean = 0.5 * creal(h[0] + h[3]);
+            double half = hypot(0.5 * creal(h[0] - h[3]), cabs(h[1]));
+            high = fmax(high, mean - half);
+            low = fmin(low, mean + half);
+        }
+    CHECK_OK(sv_model_filling_gap(test_context(), &model, 0.5, 1e-6, edge));
+    CHECK(edge[0] >= high - 1e-12 && edge[1] <= low + 1e-12);
+    CHECK_CLOSE(edge[0], high, 3e-4);
+    CHECK_CLOSE(edge[1], low, 3e-4);
+    sv_model_free(test_context(), &model);
 }
