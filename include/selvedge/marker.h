@@ -33,9 +33,9 @@ typedef struct sv_outcome {
                         localizer: its gap, unit of the model; NaN: none */
     double weakest; /**< Bott: smallest modulus of an eigenvalue of V U V† U†, which is 0 when U or
                          V is singular; NaN: none */
-    double sum_over_sites; /**< local Chern, when asked for; NaN otherwise */
-    int64_t window_cells;  /**< local Chern */
-    double kappa;          /**< localizer: energy per lattice constant; NaN: none */
+    double sum_over_sites;                 /**< local Chern, when asked for; NaN otherwise */
+    int64_t window_cells;                  /**< local Chern */
+    double kappa;                          /**< localizer: energy per lattice constant; NaN: none */
     double highest_occupied, lowest_empty; /**< NaN when there is none */
     int64_t electrons;
 } sv_outcome;
@@ -127,12 +127,13 @@ SV_API SV_MUST_USE sv_status sv_localizer_prepare(sv_context *context, const sv_
  * sv_localizer_matrix(), from inertia. Needs no projector; a filling is turned into a Fermi energy
  * by inertia.
  *
- * Resolved when the inertia is equal at +τ and −τ (no level of the localizer is nearer to 0) and the
- * index at κ/2 agrees; a localizer gap above g, a sign of too large a κ that trivial phases show as
- * well, asks for the same index down to a quarter of 2g/ρ. Else the reason says what failed. Margin: the localizer gap, or with gap: bound its certified lower bound
- * τ. The gap is 1-Lipschitz in H and E, κ-Lipschitz in the probe: the index stands for every
- * potential of norm below the margin. Keys: at, kappa, threshold, gap.
- * Cost: one analysis and three factorisations of order 2N, one or more of order N.
+ * Resolved when the inertia is equal at +τ and −τ (no level of the localizer is nearer to 0) and
+ * the index at κ/2 agrees; a localizer gap above g, a sign of too large a κ that trivial phases
+ * show as well, asks for the same index down to a quarter of 2g/ρ. Else the reason says what
+ * failed. Margin: the localizer gap (relative error 1e-7), or with gap: bound its certified lower
+ * bound τ. The gap is 1-Lipschitz in H and E, κ-Lipschitz in the probe: the half signature stands
+ * for every potential of norm below the margin. Keys: at, kappa, threshold, gap. Cost: one analysis
+ * and three factorisations of order 2N, one or more of order N.
  */
 SV_API SV_MUST_USE sv_status sv_localizer_index(sv_context *context, const sv_marker_input *input,
                                                 sv_outcome *ret_outcome);

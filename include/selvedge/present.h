@@ -65,6 +65,7 @@ typedef struct sv_map_result {
     const sv_record *record;
     const double *site_values; /**< local Chern marker per site, or NULL */
     double lattice_constant;   /**< nm, 0: none */
+    const char *note;          /**< shown under the title of the figure, or NULL */
 } sv_map_result;
 
 /** JSON document of one realisation (contract: `map`). */

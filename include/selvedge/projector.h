@@ -52,7 +52,7 @@ typedef struct sv_projector sv_projector;
  * unique: the call succeeds, sv_projector_levels() has on_level set, and the markers come out
  * unresolved.
  * @param sample   borrowed; must outlive the projector
- * @return SV_NUMERICAL, SV_NO_MEMORY, SV_INTERRUPTED; SV_INVALID_INPUT for more electrons than
+ * @return SV_NUMERICAL, SV_NO_MEMORY, SV_INTERRUPTED; SV_UNDEFINED for more electrons than
  *         states
  */
 SV_API SV_MUST_USE sv_status sv_projector_make(sv_context *context, const sv_sample *sample,

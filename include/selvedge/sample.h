@@ -211,7 +211,8 @@ typedef struct sv_sample {
  * @param flake     its periodicity decides the boundary; a periodic and an open flake of the same
  *                  cells get the same defects and potentials
  * @param disorder  applied in order
- * @return SV_INVALID_INPUT when a count exceeds the positions there are, or nothing is left
+ * @return SV_INVALID_INPUT when a count exceeds the positions there are, SV_UNDEFINED when nothing
+ *         is left
  */
 SV_API SV_MUST_USE sv_status sv_sample_draw(sv_context *context, const sv_flake *flake,
                                             const sv_disorder *disorder, int n_disorder,

@@ -143,6 +143,13 @@ typedef struct sv_assignment {
 SV_API SV_MUST_USE sv_status sv_sheet_setup(sv_context *context, const sv_sheet *sheet,
                                             const sv_assignment *assignments, int n_assignments,
                                             sv_diagnostics *diagnostics, sv_setup *ret_setup);
+/**
+ * Adds an error of the caller at a top-level key of the sheet (for what only the program can know,
+ * such as memory).
+ * @param hint NULL: none
+ */
+SV_API void sv_sheet_report(sv_context *context, const sv_sheet *sheet, const char *key,
+                            const char *message, const char *hint, sv_diagnostics *diagnostics);
 SV_API void sv_setup_free(sv_context *context, sv_setup *setup);
 
 /**

@@ -23,8 +23,10 @@ sv_status sv_output_begin(sv_context *context, const char *path, sv_output *ret_
         return SV_FAIL(context, SV_STORAGE, "the path %.100s… is too long", path);
     snprintf(output.path, sizeof output.path, "%s", path);
     struct stat info;
-    if (stat(path, &info) == 0 && !S_ISREG(info.st_mode)) {
-        /* A device or pipe is written to; a rename would replace it by a file. */
+    /* A device or pipe is written to, and what /dev names (stdout may be a file): a rename would
+     * replace it. Other links are replaced, never followed: folders from elsewhere have them. */
+    bool device = strncmp(path, "/dev/", 5) == 0;
+    if (stat(path, &info) == 0 && (device || !S_ISREG(info.st_mode))) {
         output.stream = S_ISDIR(info.st_mode) ? NULL : fopen(path, "we");
         if (output.stream == NULL)
             return failed(context, &output, "write", S_ISDIR(info.st_mode) ? EISDIR : errno);

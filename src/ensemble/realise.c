@@ -39,14 +39,16 @@ static void mark_absent(const sv_case *point, sv_boundary boundary, sv_record *r
     }
 }
 
+/* What failed, on every marker of a boundary; what is undefined on this sample is unresolved. */
 static void mark_failed(const sv_context *context, const sv_case *point, sv_boundary boundary,
                         sv_record *record)
 {
+    bool undefined = context->error.status == SV_UNDEFINED;
     for (int k = 0; k < point->n_markers; k++) {
         if (sv_marker_table(&(int){0})[point->markers[k].marker].boundary != boundary)
             continue;
         record->outcomes[k] = sv_outcome_blank();
-        record->outcomes[k].verdict = SV_FAILED;
+        record->outcomes[k].verdict = undefined ? SV_UNRESOLVED : SV_FAILED;
         snprintf(record->outcomes[k].reason, sizeof record->outcomes[k].reason, "%.190s",
                  context->error.message);
     }
@@ -125,6 +127,10 @@ static sv_status open_part(sv_context *context, const sv_case *point, sv_index r
     double *site_values = NULL;
     sv_status status = sv_sample_draw(context, point->open_flake, point->disorder,
                                       point->n_disorder, point->seed, realisation, &sample);
+    if (status == SV_UNDEFINED && ret_sample == NULL) {
+        mark_failed(context, point, SV_OPEN_COPY, record);
+        return SV_OK;
+    }
     if (status != SV_OK)
         return status;
     record->sites = sample.n;
@@ -158,6 +164,10 @@ static sv_status closed_part(sv_context *context, const sv_case *point, sv_index
     sv_sample sample = {0};
     sv_status status = sv_sample_draw(context, point->closed_flake, point->disorder,
                                       point->n_disorder, point->seed, realisation, &sample);
+    if (status == SV_UNDEFINED) {
+        mark_failed(context, point, SV_CLOSED_COPY, record);
+        return SV_OK;
+    }
     if (status != SV_OK)
         return status;
     record->sites = sample.n;

@@ -101,6 +101,22 @@ static sv_status count_shares(sv_context *context, const double *sorted, sv_summ
     return SV_OK;
 }
 
+/*
+ * Interval of the mean of an index: with two values the Wilson interval of their shares, with more
+ * Student's, cut at the values seen. Student's alone would leave the range of the index.
+ */
+static void index_interval(sv_summary *s)
+{
+    double low = (double)s->shares[0].index, high = (double)s->shares[s->n_shares - 1].index;
+    if (s->n_shares == 2 && s->unresolved == 0) {
+        s->interval[0] = low + (high - low) * s->shares[1].interval[0];
+        s->interval[1] = low + (high - low) * s->shares[1].interval[1];
+    } else if (!isnan(s->interval[0])) {
+        s->interval[0] = fmax(s->interval[0], low);
+        s->interval[1] = fmin(s->interval[1], high);
+    }
+}
+
 static sv_status fill(sv_context *context, double *values, sv_summary *s)
 {
     sv_moments m = sv_moments_of(values, s->resolved);
@@ -115,7 +131,12 @@ static sv_status fill(sv_context *context, double *values, sv_summary *s)
     qsort(values, (size_t)s->resolved, sizeof *values, compare_doubles);
     for (int k = 0; k < SV_N_QUANTILES; k++)
         s->quantiles[k] = sv_quantile_sorted(values, s->resolved, sv_quantile_levels()[k]);
-    return s->is_index ? count_shares(context, values, s) : SV_OK;
+    if (!s->is_index)
+        return SV_OK;
+    sv_status status = count_shares(context, values, s);
+    if (status == SV_OK)
+        index_interval(s);
+    return status;
 }
 
 sv_status sv_summarise(sv_context *context, const sv_ensemble *ensemble, const sv_case *point,

@@ -84,12 +84,14 @@ out:
     return status;
 }
 
-/* Counts at shift ± width, wider as long as the backward error is not well below the width. */
+/* Counts at shift ± width, wider as long as the backward error is not well below the width: clean
+ * flakes have shifts at which many leading blocks are singular, and growth there falls with the
+ * distance from the shift. */
 static sv_status bracket_count(sv_context *context, sv_inertia_plan *plan, const sv_sparse *h,
                                double shift, double error, sv_inertia_count *count)
 {
-    const double widest = 1e-6 * plan->norm;
-    double width = fmin(fmax(16.0 * error, 1e-12 * plan->norm), widest);
+    const double widest = 1e-2 * plan->norm;
+    double width = fmin(fmax(16.0 * error, 1e-12 * plan->norm), 1e-7 * plan->norm);
     count->how = SV_COUNTED_TWICE;
     for (;;) {
         sv_inertia below, above;

@@ -223,8 +223,8 @@ static sv_status settle_between(sv_context *context, sv_inertia_plan *plan, cons
 {
     sv_inertia inertia = *first;
     sv_inertia_levels levels;
-    sv_inertia_count check;
-    sv_status status;
+    sv_inertia_count check = {0};
+    sv_status status = SV_OK;
     for (int round = 0; round < 6; round++) {
         double energy = fermi->energy;
         status =
@@ -246,7 +246,12 @@ static sv_status settle_between(sv_context *context, sv_inertia_plan *plan, cons
     fermi->energy = middle(&levels, electrons, h->n);
     fermi->highest_occupied = levels.below;
     fermi->lowest_empty = levels.above;
-    if ((status = sv_inertia_count_below(context, plan, h, fermi->energy, &check)) != SV_OK)
+    fermi->error = fmax(levels.error_below, levels.error_above);
+    /* Any energy between the two levels proves the count as well as the middle. */
+    double gap = levels.above - levels.below, half = isfinite(gap) ? 0.5 * gap : 1.0;
+    for (int k = 0; k < 3 && status == SV_OK && !check.decided; k++)
+        status = sv_inertia_count_below(context, plan, h, fermi->energy + 0.17 * k * half, &check);
+    if (status != SV_OK)
         return status;
     fermi->on_level = levels.above - levels.below <= fermi->resolution || !check.decided ||
                       check.below != electrons;

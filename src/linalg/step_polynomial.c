@@ -54,8 +54,8 @@ sv_status sv_step_polynomial(sv_context *context, double delta, int degree, doub
         goto out;
     /* Beyond double precision the interpolant only amplifies rounding between −δ and δ. */
     if (sv_step_error(delta, degree) < 1e-15) {
-        status = SV_FAIL(context, SV_INVALID_INPUT, "degree %d is too high for gap %g", degree,
-                         delta);
+        status =
+            SV_FAIL(context, SV_INVALID_INPUT, "degree %d is too high for gap %g", degree, delta);
         goto out;
     }
     root_coefficients(delta, m, c);

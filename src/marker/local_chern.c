@@ -228,11 +228,13 @@ sv_status sv_local_chern(sv_context *context, const sv_marker_input *input, sv_o
     bool *inside = NULL;
     sv_index cells = 0;
     sv_status status = SV_OK;
+    if ((status = sv_flake_window(context, w.sample->flake, input->values[0].real[0], &inside,
+                                  &cells)) != SV_OK)
+        goto out;
+    outcome.window_cells = cells;
     if (levels->on_level)
         goto done;
-    if ((status = sv_flake_window(context, w.sample->flake, input->values[0].real[0], &inside,
-                                  &cells)) != SV_OK ||
-        (status = choose_cells(context, input, inside, &cells, &w)) != SV_OK ||
+    if ((status = choose_cells(context, input, inside, &cells, &w)) != SV_OK ||
         (status = pick_rows(context, &w, inside, input->ret_site_values != NULL)) != SV_OK)
         goto out;
     status = w.basis.available ? from_basis(context, input, &w, &outcome)

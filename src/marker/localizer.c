@@ -124,9 +124,18 @@ static sv_status certify(sv_context *context, localizer_work *w, sv_outcome *out
         UNRESOLVED(outcome, "a level of the localizer lies below the threshold %.3g", shift);
     if (!w->want_value)
         return SV_OK;
-    shift = open ? shift : 0.0;
-    if (!open && (status = sv_inertia_factor(context, w->plan, &w->matrix, shift, &above)) != SV_OK)
-        return status;
+    /* Inside the threshold the level is looked for from 0, or from beside it if that is singular.
+     */
+    if (!open) {
+        shift = 0.0;
+        status = sv_inertia_factor(context, w->plan, &w->matrix, shift, &above);
+        if (status == SV_OK && above.replaced > 0) {
+            shift = 1e-3 * w->threshold;
+            status = sv_inertia_factor(context, w->plan, &w->matrix, shift, &above);
+        }
+        if (status != SV_OK)
+            return status;
+    }
     status = sv_inertia_levels_near(context, w->plan, &above, shift, GAP_ACCURACY, 0.0, &levels);
     if (status == SV_OK)
         w->lowest = fmin(fabs(levels.below), fabs(levels.above));

@@ -80,9 +80,10 @@ static void choose_words(sv_map_figure *f, char note[300])
 {
     const sv_outcome *o = f->outcome;
     const long long realisation = (long long)f->map->record->realisation;
+    const char *where = f->map->note == NULL ? "" : f->map->note;
     if (o != NULL && o->verdict == SV_RESOLVED)
-        snprintf(note, 300, "mean over the dashed window %.4f (realisation %lld)", o->value,
-                 realisation);
+        snprintf(note, 300, "mean over the dashed window %.4f (realisation %lld)%s%.150s", o->value,
+                 realisation, where[0] ? "\n" : "", where);
     else
         snprintf(note, 300, "realisation %lld; the window mean is not resolved", realisation);
 }

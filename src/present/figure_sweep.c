@@ -35,14 +35,65 @@ static void add_bar(sv_draft *text, double low, double high)
     add_number(text, drawn ? high : (double)NAN);
 }
 
+/* Power of ten taken out of the axis when its numbers are too long for tick labels. */
+static int axis_exponent(const sv_result *result)
+{
+    double largest = 0.0;
+    for (int32_t i = 0; i < result->n_points; i++)
+        largest = fmax(largest, fabs(result->points[i].coordinates[0].value));
+    bool short_enough = largest == 0.0 || (largest < 1e5 && largest >= 1e-3);
+    return short_enough ? 0 : (int)floor(log10(largest));
+}
+
+static double axis_value(const sv_result *result, int32_t point)
+{
+    return result->points[point].coordinates[0].value / pow(10.0, axis_exponent(result));
+}
+
+/* cm^-2 as cm⁻², and the power of ten in the same way. */
+static void raise_exponents(const char *plain, char *text, size_t size)
+{
+    static const char *const raised[] = {"\u2070", "\u00b9", "\u00b2", "\u00b3", "\u2074",
+                                         "\u2075", "\u2076", "\u2077", "\u2078", "\u2079"};
+    size_t used = 0;
+    bool up = false;
+    for (; *plain != '\0' && used + 5 < size; plain++) {
+        if (*plain == '^') {
+            up = true;
+            continue;
+        }
+        up = up && (*plain == '-' || (*plain >= '0' && *plain <= '9'));
+        char one[2] = {*plain, '\0'};
+        const char *sign = !up ? one : *plain == '-' ? "\u207b" : raised[*plain - '0'];
+        used += (size_t)snprintf(text + used, size - used, "%s", sign);
+    }
+    text[used] = '\0';
+}
+
+/* "vacancy density (growth) [10¹³ cm⁻²]" */
+static void axis_name(const sv_result *result, char *text, size_t size)
+{
+    const sv_coordinate *c = &result->points[0].coordinates[0];
+    char plain[400], power[440];
+    int exponent = axis_exponent(result);
+    sv_words_parameter(c, plain, sizeof plain);
+    if (exponent != 0 && c->unit != NULL && strrchr(plain, '[') != NULL) {
+        int head = (int)(strrchr(plain, '[') - plain);
+        snprintf(power, sizeof power, "%.*s[10^%d %s", head, plain, exponent, plain + head + 1);
+    } else if (exponent != 0) {
+        snprintf(power, sizeof power, "%s [10^%d]", plain, exponent);
+    } else {
+        snprintf(power, sizeof power, "%s", plain);
+    }
+    raise_exponents(power, text, size);
+}
+
 static void add_block(sv_draft *text, const sv_result *result, int marker)
 {
     sv_draft_add(text, "\n\n# %s\n", result->points[0].summaries[marker].marker);
     for (int32_t i = 0; i < result->n_points; i++) {
         const sv_summary *s = &result->points[i].summaries[marker];
-        char word[40];
-        sv_words_value(&result->points[i].coordinates[0], word, sizeof word);
-        sv_draft_add(text, "%s", word);
+        sv_draft_add(text, "%.12g", axis_value(result, i));
         add_number(text, s->exists ? s->mean : (double)NAN);
         add_bar(text, s->exists ? s->interval[0] : (double)NAN, s->interval[1]);
         add_bar(text, s->exists && s->unresolved > 0 ? s->bounds[0] : (double)NAN, s->bounds[1]);
@@ -164,8 +215,8 @@ static void add_axis(sv_figure *figure, const sv_result *result)
 {
     double low = INFINITY, high = -INFINITY;
     for (int32_t i = 0; i < result->n_points; i++) {
-        low = fmin(low, result->points[i].coordinates[0].value);
-        high = fmax(high, result->points[i].coordinates[0].value);
+        low = fmin(low, axis_value(result, i));
+        high = fmax(high, axis_value(result, i));
     }
     const double air = high > low ? 0.04 * (high - low) : 1;
     const double w = figure->width_cm;
@@ -182,7 +233,7 @@ static void add_script(sv_figure *figure, const sv_result *result, const sv_head
     sv_draft *script = &figure->script;
     const int n = result->points[0].n_summaries;
     char name[400], literal[500];
-    sv_words_parameter(&result->points[0].coordinates[0], name, sizeof name);
+    axis_name(result, name, sizeof name);
     sv_script_literal(name, literal, sizeof literal);
     sv_draft_add(script,
                  "# Markers along a sweep; draw it again with: gnuplot %s.gp\n"
@@ -222,6 +273,10 @@ static void choose_note(const sv_result *result, char *note, size_t size)
         snprintf(count, sizeof count, "%lld", (long long)most);
     else
         snprintf(count, sizeof count, "%lld to %lld", (long long)least, (long long)most);
+    if (most == 1) {
+        snprintf(note, size, "one realisation at each point, no error bars");
+        return;
+    }
     snprintf(note, size, "mean of %s realisations%s; bars: 95 %% interval%s", count,
              result->complete ? "" : " (stopped early)",
              has_unresolved_index(result) ? "\ngrey: bounds of the mean with the unresolved ones"

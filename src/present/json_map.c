@@ -14,9 +14,18 @@ static void put_levels(sv_json *json, json_t *object, const sv_outcome *outcome)
 {
     if (outcome->verdict == SV_ABSENT || outcome->verdict == SV_FAILED)
         return;
-    put_known(json, object, "highest_occupied", outcome->highest_occupied);
-    put_known(json, object, "lowest_empty", outcome->lowest_empty);
-    sv_json_put_integer(json, object, "electrons", outcome->electrons);
+    const bool none = outcome->electrons == 0 && isfinite(outcome->lowest_empty);
+    const bool all = outcome->electrons > 0 && isfinite(outcome->highest_occupied) &&
+                     !isfinite(outcome->lowest_empty);
+    if (none || isfinite(outcome->highest_occupied))
+        sv_json_put_real(json, object, "highest_occupied", outcome->highest_occupied);
+    if (all || isfinite(outcome->lowest_empty))
+        sv_json_put_real(json, object, "lowest_empty", outcome->lowest_empty);
+    if (outcome->electrons >= 0) /* an engine without levels does not count them */
+        sv_json_put_integer(json, object, "electrons", outcome->electrons);
+    if ((none || all) && json_object_get(object, "reason") == NULL)
+        sv_json_put_text(json, object, "reason",
+                         none ? "no state is occupied" : "all states are occupied");
 }
 
 static json_t *make_index(sv_json *json, const char *name, const sv_outcome *outcome)

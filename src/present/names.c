@@ -10,7 +10,7 @@ static const struct {
     const char *name, *words, *margin, *weakest;
 } markers[] = {
     {"local_chern", "local Chern marker", "level_spacing", NULL},
-    {"bott", "Bott index", "angle_margin", "weakest_singular_value"},
+    {"bott", "Bott index", "angle_margin", "smallest_modulus"},
 };
 
 static int find_marker(const char *name)
@@ -129,7 +129,7 @@ void sv_words_real(double value, char *text, size_t size)
     char word[40];
     sv_format_real(plain, word, sizeof word);
     /* The exponent form of a number in this range means trailing zeros, hence an integer. */
-    if (strchr(word, 'e') != NULL && fabs(plain) >= 1 && fabs(plain) < 1e15)
+    if (strchr(word, 'e') != NULL && fabs(plain) >= 1 && fabs(plain) < 1e7)
         snprintf(word, sizeof word, "%.0f", plain);
     snprintf(text, size, "%s", word);
 }

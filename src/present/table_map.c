@@ -32,9 +32,17 @@ static void print_window_mean(FILE *stream, const char *name, const sv_outcome *
 static void print_index(FILE *stream, const char *name, const sv_outcome *outcome)
 {
     char text[256];
-    snprintf(text, sizeof text, "%lld   (smallest angle to pi %.3g rad, singular value %.3g)",
-             (long long)outcome->index, outcome->margin, outcome->weakest);
+    snprintf(text, sizeof text, "%lld", (long long)outcome->index);
     print_line(stream, name, text);
+    if (isfinite(outcome->weakest))
+        snprintf(text, sizeof text, "    eigenvalues keep %.3g rad from pi and %.3g from zero",
+                 outcome->margin, outcome->weakest);
+    else if (isfinite(outcome->kappa))
+        snprintf(text, sizeof text, "    localizer gap %.3g at kappa %.3g", outcome->margin,
+                 outcome->kappa);
+    else
+        return;
+    print_line(stream, "", text);
 }
 
 static void print_levels(FILE *stream, const sv_outcome *outcome)

@@ -61,6 +61,26 @@ static sv_status copies_make(sv_context *context, const sv_setup *setup, copies 
     return SV_OK;
 }
 
+/* The resolved sheet for the run folder: files by the names of their copies, engines noted. */
+static sv_status resolved_text(session *s, const copies *c, char **ret_text)
+{
+    char *resolved = NULL, *plans = NULL, *text = NULL;
+    sv_status status =
+        sv_sheet_resolved_relocated(s->context, s->sheet, c->relocated, s->base.n_files, &resolved);
+    if (status == SV_OK)
+        status = session_plan_text(s, &plans);
+    size_t size = status == SV_OK ? strlen(resolved) + strlen(plans) + 1 : 0;
+    if (status == SV_OK)
+        status = sv_take(s->context, (sv_index)size, 1, &text);
+    if (status == SV_OK) {
+        snprintf(text, size, "%s%s", resolved, plans);
+        *ret_text = text;
+    }
+    sv_give(s->context, resolved);
+    sv_give(s->context, plans);
+    return status;
+}
+
 static sv_status open_run(session *s, sv_run **ret_run)
 {
     copies c = {0};
@@ -72,8 +92,7 @@ static sv_status open_run(session *s, sv_run **ret_run)
     kernel_text(&s->blas, kernel, sizeof kernel);
     sv_status status = copies_make(s->context, &s->base, &c);
     if (status == SV_OK)
-        status = sv_sheet_resolved_relocated(s->context, s->sheet, c.relocated, s->base.n_files,
-                                             &resolved);
+        status = resolved_text(s, &c, &resolved);
     if (status == SV_OK) {
         sv_run_identity identity = {.identity = s->base.identity,
                                     .resolved_sheet = resolved,
@@ -214,7 +233,9 @@ int run_average(sv_context *context, const options *o)
     }
     sv_status status = session_open(context, o, o->files[0], false, true, &s);
     if (status == SV_OK && o->dry_run) {
-        status = session_forecast(&s, true, &f);
+        status = session_plan(&s, false);
+        if (status == SV_OK)
+            status = session_forecast(&s, true, &f);
         if (status == SV_OK)
             print_forecast(&f, &s, "", stdout);
     } else if (status == SV_OK) {

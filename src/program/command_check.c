@@ -13,7 +13,7 @@ static int print_json(session *s, const forecast *f)
         "{s:i, s:s, s:s, s:s, s:{s:I, s:i, s:I, s:s, s:f, s:f, s:i, s:f, s:f}}", "selvedge", 1,
         "command", "check", "title", s->base.title, "resolved", s->base.resolved, "forecast",
         "sites", (json_int_t)f->sites, "points", (int)s->n_points, "realisations",
-        (json_int_t)f->realisations, "engine", "dense", "memory_bytes_per_thread",
+        (json_int_t)f->realisations, "engine", s->points[0].plan.reason, "memory_bytes_per_thread",
         f->bytes_per_thread, "memory_bytes_available", f->bytes_available, "threads", s->threads,
         "seconds_per_realisation", f->seconds_per_realisation, "seconds", f->seconds);
     if (root == NULL)
@@ -49,6 +49,8 @@ int run_check(sv_context *context, const options *o)
     int code = 0;
     sv_status status = session_open(context, o, o->files[0], false, true, &s);
     if (status == SV_OK)
+        status = session_plan(&s, false);
+    if (status == SV_OK)
         status = session_forecast(&s, true, &f);
     if (status != SV_OK) {
         code = fail_exit(context, status);
@@ -56,6 +58,10 @@ int run_check(sv_context *context, const options *o)
         code = print_json(&s, &f);
     } else {
         fputs(s.base.resolved, stdout);
+        char *plans = NULL;
+        if (session_plan_text(&s, &plans) == SV_OK)
+            printf("#\n%s", plans);
+        sv_give(context, plans);
         printf("#\n# forecast\n");
         print_forecast(&f, &s, "#   ", stdout);
         print_film(&s);

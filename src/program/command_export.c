@@ -2,6 +2,7 @@
 /* selvedge export: the Hamiltonian and the sites of one realisation, for anyone to recompute. */
 #include "program_internal.h"
 
+#include <string.h>
 #include <unistd.h>
 
 static sv_status may_write(sv_context *context, const options *o, const char *path)
@@ -42,6 +43,10 @@ int run_export(sv_context *context, const options *o)
     if (o->hamiltonian == NULL && o->sites == NULL) {
         fprintf(stderr, "selvedge: error: nothing to export\n"
                         "hint: give --hamiltonian FILE, --sites FILE, or both\n");
+        return sv_status_exit_code(SV_USAGE);
+    }
+    if (o->hamiltonian != NULL && o->sites != NULL && strcmp(o->hamiltonian, o->sites) == 0) {
+        fprintf(stderr, "selvedge: error: --hamiltonian and --sites name the same file\n");
         return sv_status_exit_code(SV_USAGE);
     }
     sv_status status = may_write(context, o, o->hamiltonian);

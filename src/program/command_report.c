@@ -76,9 +76,13 @@ static sv_status draw_map(session *s, const char *folder)
         char what[400];
         int used = snprintf(what, sizeof what, "marker map, realisation %lld",
                             (long long)s->options->realisation);
+        int head = used + 2;
         for (int c = 0; c < p->n_coordinates && used > 0 && (size_t)used < sizeof what; c++)
-            used += snprintf(what + used, sizeof what - (size_t)used, ", %s = %g",
-                             p->coordinates[c].path, p->coordinates[c].value);
+            used += snprintf(what + used, sizeof what - (size_t)used, ", %s = %g%s%s",
+                             p->coordinates[c].path, p->coordinates[c].value,
+                             p->coordinates[c].unit ? " " : "",
+                             p->coordinates[c].unit ? p->coordinates[c].unit : "");
+        map.note = p->n_coordinates > 0 ? what + head : NULL;
         status = sv_figure_map(context, folder, "marker_map", &map, &files);
         if (status == SV_OK)
             name_figure(&files, what);

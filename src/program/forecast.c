@@ -100,8 +100,7 @@ sv_status session_fit_memory(session *s)
         return SV_FAIL(
             s->context, SV_REFUSED,
             "a flake of %lld sites needs about %.3g GB per realisation; this machine has "
-            "%.3g GB (make the flake smaller, or leave out what needs the dense "
-            "engine: markers on a torus, a filling)",
+            "%.3g GB",
             (long long)sites, bytes / 1e9, usable / 0.9 / 1e9);
     int fit = (int)fmin(usable / bytes, 1e6);
     if (fit < s->threads) {
@@ -112,77 +111,137 @@ sv_status session_fit_memory(session *s)
     return SV_OK;
 }
 
-/*
- * Times one realisation of a small flake of the same kind and scales it: the work grows as the
- * cube of the number of sites, and a little faster once the matrix leaves the cache.
- */
-static sv_status time_small(session *s, double *ret_seconds_per_cube)
+/* What the forecast's small trials found. */
+typedef struct calibration {
+    double per_cube; /* dense: seconds per site³ */
+    double per_step; /* chebyshev: seconds per stored element, column and degree */
+} calibration;
+
+/* The fastest of three realisations of a small flake, seconds. */
+static sv_status time_small(session *s, const sv_case *problem, double *ret_seconds)
 {
-    enum { SIDE = 14, SITES = 2 * SIDE * SIDE };
-    sv_value mass = {.present = true, .real = {-1.0}};
-    int count;
+    sv_record record;
+    sv_status status = SV_OK;
+    *ret_seconds = INFINITY;
+    for (int k = 0; status == SV_OK && k < 3; k++) {
+        double start = seconds_now();
+        status = sv_realise(s->context, problem, k, NULL, NULL, &record);
+        *ret_seconds = fmin(*ret_seconds, seconds_now() - start);
+    }
+    return status;
+}
+
+/* One realisation of half-BHZ with each engine: 14×14 cells dense, 24×24 by polynomials. */
+static sv_status calibrate_engine(session *s, bool dense, calibration *c)
+{
+    const int side = dense ? 14 : 24, degree = 101;
+    double sites = 2.0 * side * side, seconds = 0.0;
+    int count, qi_wu_zhang = 0;
     const sv_kind *kinds = sv_model_kinds(&count);
-    const sv_kind *kind = kinds;
-    for (int k = 0; k < count; k++)
-        if (strcmp(kinds[k].name, "qi_wu_zhang") == 0)
-            kind = &kinds[k];
+    while (strcmp(kinds[qi_wu_zhang].name, "qi_wu_zhang") != 0)
+        qi_wu_zhang++;
+    sv_value mass = {.present = true, .real = {-1.0}};
     sv_model model = {0};
     sv_flake flake = {0};
-    sv_record record;
-    sv_disorder disorder = {
-        .name = "calibration", .type = SV_DISORDER_ONSITE, .on = -1, .width = 1.0};
-    sv_flake_spec spec = {.shape = SV_SHAPE_RECTANGLE, .has_cells = true, .cells = {SIDE, SIDE}};
+    sv_disorder disorder = {.name = "trial", .type = SV_DISORDER_ONSITE, .on = -1, .width = 1.0};
+    sv_flake_spec spec = {.shape = SV_SHAPE_RECTANGLE, .has_cells = true, .cells = {side, side}};
     sv_case problem = {.open_flake = &flake,
                        .disorder = &disorder,
                        .n_disorder = 1,
                        .solve = sv_projector_options_default(),
                        .n_markers = 1};
+    problem.solve.engine = dense ? SV_ENGINE_DENSE : SV_ENGINE_CHEBYSHEV;
+    problem.solve.degree = degree;
+    problem.solve.half_gap = 0.5;
     problem.markers[0] = (sv_marker_request){.marker = sv_marker_find("local_chern"),
                                              .values = {{.present = true, .real = {0.5}}}};
-    sv_status status = sv_model_make(s->context, kind, &mass, &model);
+    sv_status status = sv_model_make(s->context, &kinds[qi_wu_zhang], &mass, &model);
     if (status == SV_OK)
         status = sv_flake_make(s->context, &model, &spec, &flake);
-    double least = INFINITY;
-    for (int k = 0; status == SV_OK && k < 3; k++) {
-        double start = seconds_now();
-        status = sv_realise(s->context, &problem, k, NULL, NULL, &record);
-        least = fmin(least, seconds_now() - start);
-    }
-    *ret_seconds_per_cube = least / pow((double)SITES, 3.0);
+    if (status == SV_OK)
+        status = time_small(s, &problem, &seconds);
+    if (dense)
+        c->per_cube = seconds / pow(sites, 3.0);
+    else /* 9 elements a row, a window of half the side, two applications */
+        c->per_step = seconds / (9.0 * sites * (0.25 * sites) * 2.0 * degree);
     sv_flake_free(s->context, &flake);
     sv_model_free(s->context, &model);
     return status;
 }
 
-/* Cost of one realisation in units of (sites)³ of the calibration. */
-static double relative_cost(const session *s, const sv_setup *setup, int64_t sites)
+static double window_columns(session *s, const sv_case *problem)
+{
+    bool *inside = NULL;
+    sv_index cells = 0;
+    double share = 0.5;
+    for (int k = 0; k < problem->n_markers; k++)
+        if (problem->markers[k].marker == sv_marker_find("local_chern"))
+            share = problem->markers[k].values[0].real[0];
+    if (sv_flake_window(s->context, problem->open_flake, share, &inside, &cells) != SV_OK)
+        return 0.0;
+    sv_give(s->context, inside);
+    if (problem->solve.sampled_cells > 0 && problem->solve.sampled_cells < cells)
+        cells = problem->solve.sampled_cells;
+    return (double)cells * problem->open_flake->model->n_orbitals;
+}
+
+/* Elements a row of the Hamiltonian has in the bulk. */
+static double row_elements(const sv_model *model)
+{
+    return 1.0 + 2.0 * model->n_hops / (double)model->n_orbitals;
+}
+
+static double chebyshev_seconds(session *s, const point *p, const calibration *c)
+{
+    const sv_case *problem = &p->problem;
+    const sv_model *model = &p->setup.model;
+    double sites = (double)p->open.n_sites, part = sites;
+    if (problem->solve.reach > 0.0)
+        part = M_PI * pow(problem->solve.reach + 4.0, 2.0) * model->n_orbitals /
+               sv_model_cell_area(model);
+    double steps = part * window_columns(s, problem) * 2.0 * problem->solve.degree;
+    /* Drawing the sample and, where asked for, counting and finding levels one by one. */
+    double other = 1.5e-6 * sites + (problem->solve.near_states > 0 ? 5e-5 * sites : 0.0);
+    return c->per_step * row_elements(model) * steps + other;
+}
+
+/* Dense work grows as the cube of the sites, a little faster once it leaves the cache (measured:
+ * 1.0 at the calibration's 392 sites, 1.35 at 1,800). */
+static double dense_seconds(double sites, const calibration *c)
+{
+    double cache = 1.0 + 0.35 * fmin(1.0, fmax(0.0, (sites - 400.0) / 1400.0));
+    return c->per_cube * sites * sites * sites * cache;
+}
+
+static double point_seconds(session *s, const point *p, const calibration *c)
 {
     bool open, closed;
-    boundaries_needed(s, setup, &open, &closed);
-    double n = (double)sites;
-    /* Measured against the calibration at 392 sites: 1.0 there, 1.35 at 1,800 sites. */
-    double cache = 1.0 + 0.35 * fmin(1.0, fmax(0.0, (n - 400.0) / 1400.0));
+    boundaries_needed(s, &p->setup, &open, &closed);
+    double sites = (double)p->open.n_sites, seconds = 0.0;
+    if (open && p->problem.solve.engine == SV_ENGINE_CHEBYSHEV)
+        seconds += chebyshev_seconds(s, p, c);
+    else if (open)
+        seconds += dense_seconds(sites, c);
     /* The Bott index adds the eigenvalues of a general matrix of half the order. */
-    return n * n * n * cache * ((open ? 1.0 : 0.0) + (closed ? 1.5 : 0.0));
+    return closed ? seconds + 1.5 * dense_seconds(sites, c) : seconds;
 }
 
 sv_status session_forecast(session *s, bool calibrate, forecast *ret)
 {
     forecast f = {.bytes_available = memory_available()};
-    double per_cube = 0.0, worst = 0.0, all = 0.0;
+    calibration c = {0};
+    double all = 0.0;
     sv_status status = largest(s, &f.sites, &f.bytes_per_thread);
     if (status == SV_OK && calibrate)
-        status = time_small(s, &per_cube);
+        status = calibrate_engine(s, true, &c);
+    if (status == SV_OK && calibrate)
+        status = calibrate_engine(s, false, &c);
     for (int32_t k = 0; status == SV_OK && k < s->n_points; k++) {
-        int64_t sites;
-        double bytes;
-        status = bytes_of(s, &s->points[k].setup, &sites, &bytes);
-        double seconds = per_cube * relative_cost(s, &s->points[k].setup, sites);
-        worst = fmax(worst, seconds);
+        double seconds = point_seconds(s, &s->points[k], &c);
+        f.seconds_per_realisation = fmax(f.seconds_per_realisation, seconds);
         all += seconds * (double)s->base.realisations;
     }
     f.realisations = (int64_t)s->n_points * s->base.realisations;
-    f.seconds_per_realisation = worst;
     f.seconds = all / s->threads;
     if (status == SV_OK)
         *ret = f;
@@ -211,7 +270,6 @@ void print_forecast(const forecast *f, const session *s, const char *prefix, FIL
     fprintf(stream, "%ssites         %lld (largest flake)\n", prefix, (long long)f->sites);
     fprintf(stream, "%spoints        %d\n", prefix, s->n_points);
     fprintf(stream, "%srealisations  %lld over all points\n", prefix, (long long)f->realisations);
-    fprintf(stream, "%sengine        dense (the only engine of this version)\n", prefix);
     fprintf(stream, "%smemory        %.3g MB per thread, %d threads, %.3g GB in this machine\n",
             prefix, f->bytes_per_thread / 1e6, s->threads, f->bytes_available / 1e9);
     fprintf(stream, "%stime          about %s per realisation, about %s in all\n", prefix, one,

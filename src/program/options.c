@@ -152,6 +152,12 @@ static bool add_override(options *o, const char *value)
     return true;
 }
 
+/* "-" would make a file of that name; standard output is for the result itself. */
+static bool is_file_name(const char *value)
+{
+    return value[0] != '\0' && strcmp(value, "-") != 0;
+}
+
 /* Takes one option; false when its value is not legal. */
 static bool apply(options *o, option_id id, const char *value)
 {
@@ -161,7 +167,8 @@ static bool apply(options *o, option_id id, const char *value)
         o->output = value;
         return value[0] != '\0';
     case OPT_REALISATION:
-        return parse_count(value, 0, &o->realisation);
+        /* The random streams number realisations with 32 bits. */
+        return parse_count(value, 0, &o->realisation) && o->realisation <= UINT32_MAX;
     case OPT_REALISATIONS:
         return add_made_override(o, 0, "ensemble.realisations", value);
     case OPT_SEED:
@@ -192,13 +199,13 @@ static bool apply(options *o, option_id id, const char *value)
         return true;
     case OPT_HAMILTONIAN:
         o->hamiltonian = value;
-        return value[0] != '\0';
+        return is_file_name(value);
     case OPT_SITES:
         o->sites = value;
-        return value[0] != '\0';
+        return is_file_name(value);
     case OPT_CSV:
         o->csv = value;
-        return value[0] != '\0';
+        return is_file_name(value);
     case OPT_HELP:
         return true;
     }

@@ -53,6 +53,7 @@ typedef struct point {
     sv_case problem;
     sv_coordinate coordinates[SV_MAX_AXES];
     int n_coordinates;
+    sv_plan plan; /* of its engine, in words */
 } point;
 
 /* A sheet opened for work. */
@@ -68,7 +69,6 @@ typedef struct session {
     int32_t n_points;
     int threads;
     bool add_map_marker; /* the map command always computes the local Chern marker */
-    sv_plan plans;       /* of the last point planned */
 } session;
 
 /* Reads the sheet and builds all points of its sweep (`with_sweep`) or the sheet as written. */
@@ -77,6 +77,8 @@ sv_status session_open(sv_context *context, const options *o, const char *path, 
 void session_close(session *s);
 /* Settles the engine of every point (tries realisation 0 of each). */
 sv_status session_plan(session *s, bool site_map);
+/* The plans of all points as comment lines of a sheet; taken from the context. */
+sv_status session_plan_text(const session *s, char **ret_text);
 /* Refuses what would not fit memory; lowers the number of threads where that helps. */
 sv_status session_fit_memory(session *s);
 

@@ -12,7 +12,7 @@ int fail_exit(const sv_context *context, sv_status status)
     const sv_error *error = &context->error;
     if (error->message[0] != '\0')
         fprintf(stderr, "selvedge: error: %s\n", error->message);
-    else
+    else if (status != SV_INVALID_INPUT && status != SV_REFUSED) /* those have been shown */
         fprintf(stderr, "selvedge: error: %s\n", sv_status_text(status));
     return sv_status_exit_code(status);
 }
@@ -188,6 +188,11 @@ static sv_status open_sheet(session *s, const char *path, bool inside_run, bool 
         status = make_points(s, with_sweep, diagnostics);
     if (status == SV_OK && with_sweep && s->base.n_axes > 0)
         status = session_fit_memory(s);
+    if (status == SV_REFUSED && diagnostics->errors == 0 && s->sheet != NULL)
+        sv_sheet_report(s->context, s->sheet, "flake", s->context->error.message,
+                        "make the flake smaller, or leave out what needs the dense engine: markers "
+                        "on a torus, engine: dense",
+                        diagnostics);
     return status;
 }
 
@@ -205,7 +210,7 @@ sv_status session_open(sv_context *context, const options *o, const char *path, 
     if (!quiet)
         sv_diagnostics_print(&diagnostics, wants_colour(o, stderr), stderr);
     /* What the diagnostics have said need not be said again. */
-    if (diagnostics.errors > 0 && status == SV_INVALID_INPUT)
+    if (diagnostics.errors > 0 && (status == SV_INVALID_INPUT || status == SV_REFUSED))
         context->error.message[0] = '\0';
     sv_diagnostics_free(context, &diagnostics);
     return status;
@@ -225,19 +230,35 @@ void session_close(session *s)
 
 sv_status session_plan(session *s, bool site_map)
 {
-    char before[sizeof s->plans.reason] = "";
+    const char *before = "";
     for (int32_t k = 0; k < s->n_points; k++) {
-        sv_case *problem = &s->points[k].problem;
+        point *p = &s->points[k];
         sv_status status =
-            sv_case_plan(s->context, problem, site_map, s->base.sampling_error, &s->plans);
+            sv_case_plan(s->context, &p->problem, site_map, s->base.sampling_error, &p->plan);
         if (status != SV_OK)
             return status;
         /* With fewer realisations than threads the cores work inside one realisation. */
-        problem->solve.threads = s->base.realisations < s->threads ? s->threads : 1;
-        if (strcmp(before, s->plans.reason) != 0)
-            sv_log(s->context, SV_LOG_DETAIL, "point %d: engine %s", k, s->plans.reason);
-        memcpy(before, s->plans.reason, sizeof before);
+        p->problem.solve.threads = s->base.realisations < s->threads ? s->threads : 1;
+        if (strcmp(before, p->plan.reason) != 0)
+            sv_log(s->context, SV_LOG_DETAIL, "point %d: engine %s", k, p->plan.reason);
+        before = p->plan.reason;
     }
+    return SV_OK;
+}
+
+sv_status session_plan_text(const session *s, char **ret_text)
+{
+    const size_t line = sizeof s->points[0].plan.reason + 40;
+    size_t size = line * (size_t)(s->n_points + 1), used = 0;
+    char *text = NULL;
+    sv_status status = sv_take(s->context, (sv_index)size, 1, &text);
+    if (status != SV_OK)
+        return status;
+    for (int32_t k = 0; k < s->n_points; k++)
+        if (k == 0 || strcmp(s->points[k].plan.reason, s->points[k - 1].plan.reason) != 0)
+            used += (size_t)snprintf(text + used, size - used, "# engine from point %d: %s\n", k,
+                                     s->points[k].plan.reason);
+    *ret_text = text;
     return SV_OK;
 }
 

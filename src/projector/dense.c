@@ -155,7 +155,7 @@ sv_status sv_dense_engine_make(sv_context *context, const sv_sample *sample,
     status =
         sv_dense_eigen(context, n, a, values, choose_range, &c, &first, &last, &state->vectors);
     if (status == SV_OK && c.too_many)
-        status = SV_FAIL(context, SV_INVALID_INPUT, "%lld electrons do not fit into %lld states",
+        status = SV_FAIL(context, SV_UNDEFINED, "%lld electrons do not fit into %lld states",
                          (long long)sv_occupation_electrons(occupation, n), (long long)n);
     if (status != SV_OK)
         goto out;

@@ -248,7 +248,7 @@ static sv_status keep_sites(sv_context *context, const drawing *d, sv_sample *sa
     int32_t *row = NULL;
     sv_status status;
     if (n <= 0)
-        return SV_FAIL(context, SV_INVALID_INPUT, "no site is left: all %lld are vacant",
+        return SV_FAIL(context, SV_UNDEFINED, "no site is left: all %lld are vacant",
                        (long long)flake->n_sites);
     if ((status = sv_take_raw(context, flake->n_sites, sizeof *row, &row)) != SV_OK)
         return status;

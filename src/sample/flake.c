@@ -205,8 +205,13 @@ static bool site_inside(const outline *o, int64_t i, int64_t j, int orbital)
 {
     double at[2];
     lattice_point(o->model, (double)i, (double)j, at);
-    if (!o->by_site)
-        return point_in_shape(o, at); /* relative to the centre of cell (0, 0) */
+    if (!o->by_site) {
+        /* A rectangle lies between (0, 0) and its size; hexagon and disc about cell (0, 0). */
+        bool fixed = o->spec->shape == SV_SHAPE_RECTANGLE;
+        at[0] += fixed ? o->origin[0] : 0.0;
+        at[1] += fixed ? o->origin[1] : 0.0;
+        return point_in_shape(o, at);
+    }
     at[0] += o->model->orbitals[orbital].at[0];
     at[1] += o->model->orbitals[orbital].at[1];
     return vertex_in_hexagon(o, at);
@@ -320,11 +325,16 @@ static sv_status fill(sv_context *context, const outline *o, sv_flake *flake)
     return SV_OK;
 }
 
-/* Centroid of the shape; for shapes of whole cells the middle of the box of their centres. */
+/* Centroid of the shape; for shapes of n1×n2 cells the middle of their centres. */
 static void set_centre(const outline *o, sv_flake *flake)
 {
     if (o->spec->shape == SV_SHAPE_HEXAGON || o->spec->shape == SV_SHAPE_DISC) {
         memcpy(flake->centre, o->origin, sizeof flake->centre);
+        return;
+    }
+    if (o->spec->shape == SV_SHAPE_RECTANGLE && o->spec->has_size) {
+        flake->centre[0] = 0.5 * o->spec->size[0];
+        flake->centre[1] = 0.5 * o->spec->size[1];
         return;
     }
     double low[2] = {INFINITY, INFINITY}, high[2] = {-INFINITY, -INFINITY};

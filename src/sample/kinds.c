@@ -21,7 +21,7 @@ static const sv_key rectangle_keys[] = {
      .low = 0,
      .high = 1e6,
      .low_open = true,
-     .doc = "[x, y]: whole cells whose centre lies inside"},
+     .doc = "[x, y]: whole cells whose centre lies between (0, 0) and [x, y]"},
 };
 static const sv_key parallelogram_keys[] = {
     {.name = "cells",

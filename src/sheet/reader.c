@@ -105,6 +105,8 @@ bool sv_report_status(sv_reader *reader, const sv_node *node, sv_status status)
 {
     if (status == SV_INVALID_INPUT)
         return sv_report(reader, node, NULL, "%s", reader->context->error.message);
+    if (status == SV_REFUSED)
+        sv_report(reader, node, "make the flake smaller", "%s", reader->context->error.message);
     if (reader->status == SV_OK)
         reader->status = status;
     return false;

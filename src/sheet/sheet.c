@@ -45,6 +45,17 @@ static sv_status finish_reader(const sv_reader *reader)
     return SV_OK;
 }
 
+void sv_sheet_report(sv_context *context, const sv_sheet *sheet, const char *key,
+                     const char *message, const char *hint, sv_diagnostics *diagnostics)
+{
+    sv_arena arena = {0};
+    sv_reader reader = start_reader(context, sheet, &arena, diagnostics);
+    const sv_node *name = NULL;
+    const sv_node *node = sv_node_get(sheet->root, key, &name);
+    sv_report(&reader, node != NULL ? name : sheet->root, hint, "%s", message);
+    sv_arena_free(context, &arena);
+}
+
 static sv_status read_tree(sv_context *context, sv_sheet *sheet, const sv_sheet_options *options,
                            sv_diagnostics *diagnostics)
 {

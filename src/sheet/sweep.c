@@ -278,9 +278,8 @@ static bool read_axis(sv_reader *reader, const sv_section *section, sv_sweep_axi
         return false;
     snprintf(axis->path, sizeof axis->path, "%s", path);
     axis->integer = aim.key->type == SV_KEY_INTEGER;
-    bool good = sv_section_written(section, "values") > 0
-                    ? read_values(reader, section, &aim, axis)
-                    : read_steps(reader, section, &aim, axis);
+    bool good = sv_section_written(section, "values") > 0 ? read_values(reader, section, &aim, axis)
+                                                          : read_steps(reader, section, &aim, axis);
     if (good)
         set_unit(reader, section, &aim, axis);
     return good;

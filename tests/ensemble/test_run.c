@@ -287,6 +287,37 @@ SV_TEST(a_marker_without_a_torus_is_absent)
     release(&p);
 }
 
+/* A realisation without sites, or with fewer sites than electrons, is recorded as unresolved. */
+SV_TEST(empty_realisations_are_recorded)
+{
+    problem p;
+    make(&p, 2, 1.0);
+    sv_disorder vacancies = {
+        .name = "vac", .type = SV_DISORDER_VACANCIES, .on = -1, .has_share = true, .share = 0.8};
+    p.point.disorder = &vacancies;
+    sv_ensemble e = {0};
+    sink out = {0};
+    sv_summary s = {0};
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 60, &e));
+    CHECK_OK(run(&p, 60, 2, (sv_stop_rule){0}, &out, &e));
+    CHECK_INT(out.calls, 60);
+    for (int m = 0; m < 2; m++) {
+        CHECK_OK(sv_summarise(test_context(), &e, &p.point, 0, m, 60, &s));
+        CHECK(s.unresolved > 5 && strstr(s.unresolved_reason, "no site is left") != NULL);
+        sv_summary_free(test_context(), &s);
+    }
+    sv_ensemble_free(test_context(), &e);
+    p.point.occupation = (sv_occupation){.by = SV_BY_ELECTRONS, .electrons = 6};
+    vacancies.share = 0.3;
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 40, &e));
+    CHECK_OK(run(&p, 40, 1, (sv_stop_rule){0}, &out, &e));
+    CHECK_OK(sv_summarise(test_context(), &e, &p.point, 0, 0, 40, &s));
+    CHECK(s.unresolved > 3 && s.resolved > 3);
+    sv_summary_free(test_context(), &s);
+    sv_ensemble_free(test_context(), &e);
+    release(&p);
+}
+
 /* Fails the k-th allocation, k = 0, 1, 2, …: a status every time, nothing leaked (the harness
  * counts), no crash. */
 static long allowed;

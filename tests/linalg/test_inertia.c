@@ -222,6 +222,34 @@ SV_TEST(doubt_is_met_by_size)
     }
 }
 
+/* A clean honeycomb with imaginary second hops has many singular leading blocks at E = 0, where its
+ * spectrum is symmetric: half of the states are below. */
+SV_TEST(singular_leading_blocks)
+{
+    sv_model model = fixture_haldane(0.2, M_PI / 2, 0.0);
+    for (int periodic = 0; periodic < 2; periodic++) {
+        sv_flake_spec spec = fixture_cells(&model, 24, 24, periodic);
+        sv_flake flake = fixture_flake(&model, &spec);
+        sv_sample sample = {0};
+        sv_inertia_plan *plan = NULL;
+        sv_inertia_count count;
+        sv_fermi_level fermi;
+        CHECK_OK(sv_sample_draw(test_context(), &flake, NULL, 0, 1, 0, &sample));
+        const sv_sparse *h = &sample.hamiltonian;
+        CHECK_OK(sv_inertia_plan_make(test_context(), h, 1, &plan));
+        CHECK_OK(sv_inertia_count_below(test_context(), plan, h, 0.0, &count));
+        CHECK(count.factor.replaced > 0 && count.how == SV_COUNTED_TWICE && count.decided);
+        CHECK_INT(count.below, h->n / 2);
+        CHECK_OK(sv_inertia_fermi_energy(test_context(), plan, h, h->n / 2, &fermi));
+        CHECK(!fermi.on_level);
+        CHECK_CLOSE(fermi.energy, 0.0, 1e-4);
+        sv_inertia_plan_free(test_context(), plan);
+        sv_sample_free(test_context(), &sample);
+        sv_flake_free(test_context(), &flake);
+    }
+    sv_model_free(test_context(), &model);
+}
+
 /* Another order and another code without pivoting. */
 SV_TEST(two_codes_agree)
 {
@@ -335,6 +363,7 @@ SV_TEST(fermi_energy_of_every_number_of_electrons)
                                   : e == h->n ? s.level[e - 1] + 1.0
                                               : 0.5 * (s.level[e - 1] + s.level[e]);
                 CHECK_CLOSE(f.energy, expected, 1e-8);
+                CHECK(f.error < 1e-8);
                 CHECK(e == 0 || fabs(f.highest_occupied - s.level[e - 1]) < 1e-8);
                 CHECK(e == h->n || fabs(f.lowest_empty - s.level[e]) < 1e-8);
             }

@@ -43,7 +43,7 @@ SV_TEST(the_map_has_the_shape_of_the_contract)
     CHECK_INT(json_integer_value(json_object_get(bott, "index")), 1);
     CHECK(json_is_true(json_object_get(bott, "resolved")));
     CHECK(json_real_value(json_object_get(bott, "angle_margin")) == 2.5);
-    CHECK(json_real_value(json_object_get(bott, "weakest_singular_value")) == 0.5);
+    CHECK(json_real_value(json_object_get(bott, "smallest_modulus")) == 0.5);
     json_decref(document);
     map_fixture_free(&f);
 }

@@ -177,3 +177,12 @@ SV_TEST(nearest_site)
     sv_flake_free(test_context(), &flake);
     sv_model_free(test_context(), &model);
 }
+
+SV_TEST(electrons_of_a_filling)
+{
+    const sv_occupation filling = {.by = SV_BY_FILLING, .filling = 0.3};
+    const sv_occupation count = {.by = SV_BY_ELECTRONS, .electrons = 7};
+    CHECK_INT(sv_occupation_electrons(&filling, 10), 3);
+    CHECK_INT(sv_occupation_electrons(&filling, 15), 5); /* 4.5: ties go up */
+    CHECK_INT(sv_occupation_electrons(&count, 10), 7);
+}

@@ -194,6 +194,11 @@ SV_TEST(an_axis_keeps_its_unit)
     CHECK(setup.axes[0].unit != NULL && strcmp(setup.axes[0].unit, "cm^-2") == 0);
     CHECK_CLOSE(setup.axes[0].values[1], 0.025, 1e-15);
     CHECK_CLOSE(setup.axes[0].values[1] * setup.axes[0].unit_scale, 1e13, 1.0);
+    /* An error only the program can know is shown at a key of the sheet. */
+    sv_sheet_report(context, sheet, "flake", "too large", "make it smaller", &diagnostics);
+    CHECK_INT(diagnostics.errors, 1);
+    CHECK_INT(diagnostics.items[diagnostics.count - 1].line, 3);
+    CHECK_TEXT(diagnostics.items[diagnostics.count - 1].message, "too large");
     sv_setup_free(context, &setup);
     sv_sheet_free(context, sheet);
     sv_diagnostics_free(context, &diagnostics);
