@@ -225,6 +225,8 @@ typedef struct sv_fermi_level {
     double highest_occupied, lowest_empty; /**< ∓∞ where there is none */
     bool on_level;                         /**< the last electron goes into a degenerate level */
     double resolution;                     /**< levels closer than this are degenerate */
+    double error; /**< of the two levels, an estimate: 1e-9 of their distance, more where 80 steps
+                       do not reach it (far from a dense band edge) */
 } sv_fermi_level;
 
 /**

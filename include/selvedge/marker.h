@@ -138,6 +138,25 @@ SV_API SV_MUST_USE sv_status sv_localizer_prepare(sv_context *context, const sv_
 SV_API SV_MUST_USE sv_status sv_localizer_index(sv_context *context, const sv_marker_input *input,
                                                 sv_outcome *ret_outcome);
 
+/**
+ * Three-sector Chern number (A. Kitaev, Ann. Phys. 321, 2 (2006), App. C) of a disc of an open
+ * flake: −12πi Σ (P_jk P_kl P_lj − P_jl P_lk P_kj) over j, k, l in three sectors, counter-clockwise.
+ * Tends to +C exponentially with the radius while the disc stays away from the edge; over a whole
+ * finite flake it would be 0. Keys: at, radius. Cost: one projector application per site of the
+ * disc and the cube of their number.
+ */
+SV_API SV_MUST_USE sv_status sv_three_sector(sv_context *context, const sv_marker_input *input,
+                                             sv_outcome *ret_outcome);
+
+/**
+ * Crosshair marker (P. d'Ornellas, R. Barnett, D. K. K. Lee, Phys. Rev. B 106, 155124 (2022),
+ * formula recalled from memory): 4π Σ_r Im⟨r|P θx P θy P|r⟩ over a disc about the crossing of the
+ * two steps. Tends to +C; needs columns of the disc only. Keys: at, radius. Cost: two projector
+ * applications per site of the disc.
+ */
+SV_API SV_MUST_USE sv_status sv_crosshair(sv_context *context, const sv_marker_input *input,
+                                          sv_outcome *ret_outcome);
+
 #ifdef __cplusplus
 }
 #endif

@@ -47,6 +47,24 @@ static const sv_key localizer_keys[] = {
      .doc = "report the localizer gap itself, or only that it exceeds the threshold (faster)"},
 };
 
+static const sv_key disc_keys[] = {
+    {.name = "at",
+     .type = SV_KEY_PLACE,
+     .dimension = SV_DIM_LENGTH,
+     .low = -1e9,
+     .high = 1e9,
+     .fallback = "centre",
+     .doc = "centre of the disc: centre or [x, y]"},
+    {.name = "radius",
+     .type = SV_KEY_AUTO_OR_REAL,
+     .dimension = SV_DIM_LENGTH,
+     .low = 0,
+     .high = 1e6,
+     .low_open = true,
+     .fallback = "auto",
+     .doc = "radius of the disc summed; auto: half the distance to the edge"},
+};
+
 static const sv_marker table[] = {
     {.kind = {"local_chern", "local Chern marker, mean over a window (Bianco, Resta 2011)",
               local_chern_keys, 1},
@@ -65,6 +83,17 @@ static const sv_marker table[] = {
      .is_index = true,
      .boundary = SV_OPEN_COPY,
      .compute = sv_localizer_index},
+    {.kind = {"three_sector", "three-sector Chern number of a disc (Kitaev 2006)", disc_keys, 2},
+     .is_index = false,
+     .boundary = SV_OPEN_COPY,
+     .needs_projector = true,
+     .compute = sv_three_sector},
+    {.kind = {"crosshair", "crosshair marker of a disc (d'Ornellas, Barnett, Lee 2022)", disc_keys,
+              2},
+     .is_index = false,
+     .boundary = SV_OPEN_COPY,
+     .needs_projector = true,
+     .compute = sv_crosshair},
 };
 
 const sv_marker *sv_marker_table(int *ret_count)
