@@ -176,6 +176,7 @@ typedef struct sv_summary {
     double numerical_error; /**< largest */
     double estimator_error; /**< root mean square */
     double smallest_margin, mean_margin;
+    double kappa; /**< localizer: of the first realisation (one per run when automatic) */
     sv_index_share *shares; /**< ascending by index; taken from the context */
     int n_shares;
     char unresolved_reason[200]; /**< of the first unresolved realisation */

@@ -19,6 +19,7 @@ static void blank(sv_summary *s)
 {
     s->mean = s->deviation = s->standard_error = NAN;
     s->interval[0] = s->interval[1] = s->bounds[0] = s->bounds[1] = NAN;
+    s->kappa = NAN;
     s->numerical_error = s->estimator_error = s->smallest_margin = s->mean_margin = NAN;
     s->confidence = CONFIDENCE;
     for (int k = 0; k < SV_N_QUANTILES; k++)
@@ -37,6 +38,8 @@ static void gather(const sv_record *records, int marker, int64_t counted, double
             snprintf(s->reason, sizeof s->reason, "%s", o->reason);
             continue;
         }
+        if (isnan(s->kappa))
+            s->kappa = o->kappa;
         if (isfinite(o->margin)) {
             margins += o->margin;
             s->smallest_margin = n_margins++ == 0 ? o->margin : fmin(s->smallest_margin, o->margin);

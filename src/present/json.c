@@ -88,6 +88,8 @@ static json_t *make_marker(sv_json *json, const sv_summary *summary)
     sv_json_put_real(json, object, "numerical_error", summary->numerical_error);
     sv_json_put_real(json, object, "estimator_error", summary->estimator_error);
     put_margin(json, object, summary);
+    if (isfinite(summary->kappa))
+        sv_json_put_real(json, object, "kappa", summary->kappa);
     sv_json_put_text(json, object, "engine", summary->engine);
     return object;
 }

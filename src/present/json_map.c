@@ -39,6 +39,17 @@ static json_t *make_index(sv_json *json, const char *name, const sv_outcome *out
     sv_json_put(json, object, "resolved", json_boolean(resolved));
     put_known(json, object, sv_words_margin(name), outcome->margin);
     put_known(json, object, sv_words_weakest(name), outcome->weakest);
+    put_known(json, object, "kappa", outcome->kappa);
+    return object;
+}
+
+/* A real number of one sample that is no window mean: three-sector, crosshair. */
+static json_t *make_value(sv_json *json, const sv_outcome *outcome)
+{
+    json_t *object = json_object();
+    const bool resolved = outcome->verdict == SV_RESOLVED;
+    sv_json_put_real(json, object, "value", resolved ? outcome->value : (double)NAN);
+    sv_json_put(json, object, "resolved", json_boolean(resolved));
     return object;
 }
 
@@ -59,8 +70,9 @@ static json_t *make_window_mean(sv_json *json, const sv_outcome *outcome)
 
 static json_t *make_marker(sv_json *json, const sv_marker *marker, const sv_outcome *outcome)
 {
-    json_t *object = marker->is_index ? make_index(json, marker->kind.name, outcome)
-                                      : make_window_mean(json, outcome);
+    json_t *object = marker->is_index            ? make_index(json, marker->kind.name, outcome)
+                     : outcome->window_cells > 0 ? make_window_mean(json, outcome)
+                                                 : make_value(json, outcome);
     if (outcome->verdict != SV_RESOLVED)
         sv_json_put_text(json, object, "reason", outcome->reason);
     if (outcome->verdict == SV_ABSENT || outcome->verdict == SV_FAILED)

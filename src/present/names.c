@@ -11,6 +11,9 @@ static const struct {
 } markers[] = {
     {"local_chern", "local Chern marker", "level_spacing", NULL},
     {"bott", "Bott index", "angle_margin", "smallest_modulus"},
+    {"localizer", "localizer index", "gap", NULL},
+    {"three_sector", "three-sector number", NULL, NULL},
+    {"crosshair", "crosshair marker", NULL, NULL},
 };
 
 static int find_marker(const char *name)

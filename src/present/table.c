@@ -209,7 +209,7 @@ static void print_block(FILE *stream, const sv_result *result, int marker, bool 
     const sv_summary *first = &result->points[0].summaries[marker];
     char heading[160];
     snprintf(heading, sizeof heading, "%s%s", sv_words_marker(first->marker),
-             first->is_index ? "" : ", mean over the window");
+             strcmp(first->marker, "local_chern") == 0 ? ", mean over the window" : "");
     fprintf(stream, "\n");
     sv_table_heading(stream, heading, colour);
     print_columns(stream, &result->points[0], first->is_index);

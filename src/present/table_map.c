@@ -19,6 +19,12 @@ static void print_line(FILE *stream, const char *name, const char *text)
 static void print_window_mean(FILE *stream, const char *name, const sv_outcome *outcome)
 {
     char text[256];
+    if (outcome->window_cells == 0) {
+        snprintf(text, sizeof text, "%.6g   (numerical error %.1g)", outcome->value + 0.0,
+                 outcome->numerical_error);
+        print_line(stream, name, text);
+        return;
+    }
     snprintf(text, sizeof text, "%.6g   mean over %lld cells (numerical error %.1g)",
              outcome->value + 0.0, (long long)outcome->window_cells, outcome->numerical_error);
     print_line(stream, name, text);
@@ -35,7 +41,7 @@ static void print_index(FILE *stream, const char *name, const sv_outcome *outcom
     snprintf(text, sizeof text, "%lld", (long long)outcome->index);
     print_line(stream, name, text);
     if (isfinite(outcome->weakest))
-        snprintf(text, sizeof text, "    eigenvalues keep %.3g rad from pi and %.3g from zero",
+        snprintf(text, sizeof text, "    %.3g rad from pi; smallest modulus %.3g",
                  outcome->margin, outcome->weakest);
     else if (isfinite(outcome->kappa))
         snprintf(text, sizeof text, "    localizer gap %.3g at kappa %.3g", outcome->margin,

@@ -3,6 +3,7 @@
 
 #include <errno.h>
 #include <locale.h>
+#include <malloc.h>
 #include <signal.h>
 #include <string.h>
 #include <unistd.h>
@@ -29,6 +30,10 @@ int main(int argc, char **argv)
     options o;
     sv_context context;
     setlocale(LC_CTYPE, "");
+    /* Realisations take and give back the same large blocks: keep them instead of handing them to
+     * the system, which would have to clear their pages each time. */
+    mallopt(M_MMAP_THRESHOLD, 1 << 30);
+    mallopt(M_TRIM_THRESHOLD, 1 << 30);
     signal(SIGXFSZ, SIG_IGN);
     int code = options_parse(argc, argv, &o);
     if (code < 0) {

@@ -101,6 +101,19 @@ static sv_status make_flakes(session *s, point *p)
     return status;
 }
 
+/* The localizer's kappa and threshold follow from the sheet: once per point, not per realisation.
+ */
+static sv_status prepare_localizer(session *s, point *p)
+{
+    int localizer = sv_marker_find("localizer");
+    sv_status status = SV_OK;
+    for (int k = 0; k < p->problem.n_markers && status == SV_OK; k++)
+        if (p->problem.markers[k].marker == localizer)
+            status = sv_localizer_prepare(s->context, &p->open, &p->problem.occupation,
+                                          p->problem.markers[k].values);
+    return status;
+}
+
 static sv_status make_point(session *s, point *p)
 {
     const sv_setup *setup = &p->setup;
@@ -116,7 +129,8 @@ static sv_status make_point(session *s, point *p)
                               : strcmp(setup->engine, "chebyshev") == 0 ? SV_ENGINE_CHEBYSHEV
                                                                         : SV_ENGINE_AUTO;
     p->problem.seed = setup->seed;
-    return set_markers(s, setup, &p->problem);
+    status = set_markers(s, setup, &p->problem);
+    return status == SV_OK ? prepare_localizer(s, p) : status;
 }
 
 /* Point number → values of the axes; the last axis runs fastest. */

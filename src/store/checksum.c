@@ -58,6 +58,7 @@ static void add_outcome(pack *out, const sv_outcome *outcome)
     add_real(out, outcome->highest_occupied);
     add_real(out, outcome->lowest_empty);
     add_integer(out, outcome->electrons);
+    add_real(out, outcome->kappa);
 }
 
 void sv_record_checksum(const sv_record *record, bool with_seconds, char digest[65])

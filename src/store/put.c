@@ -10,8 +10,9 @@ static const char row_sql[] =
 static const char outcome_sql[] =
     "INSERT INTO outcome (point, realisation, position, marker, verdict, reason, engine, value, "
     "idx, numerical_error, estimator_error, margin, weakest, sum_over_sites, window_cells, "
-    "highest_occupied, lowest_empty, electrons) VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9, ?10, "
-    "?11, ?12, ?13, ?14, ?15, ?16, ?17, ?18)";
+    "highest_occupied, lowest_empty, electrons, kappa) VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9, "
+    "?10, "
+    "?11, ?12, ?13, ?14, ?15, ?16, ?17, ?18, ?19)";
 
 /* SQLite stores NaN as NULL by itself. */
 static bool bind_reals(sqlite3_stmt *statement, int first, const double *values, int count)
@@ -69,7 +70,8 @@ static sv_status insert_outcome(sv_context *context, sv_run *run, const sv_recor
         bind_reals(statement, 8, &outcome->value, 1) &&
         bind_integer(statement, 9, outcome->index) && bind_reals(statement, 10, reals, 5) &&
         bind_integer(statement, 15, outcome->window_cells) &&
-        bind_reals(statement, 16, levels, 2) && bind_integer(statement, 18, outcome->electrons);
+        bind_reals(statement, 16, levels, 2) && bind_integer(statement, 18, outcome->electrons) &&
+        bind_reals(statement, 19, &outcome->kappa, 1);
     sv_status status = SV_OK;
     if (!bound || sqlite3_step(statement) != SQLITE_DONE)
         status = sv_ledger_fail(context, run, "write");

@@ -11,7 +11,8 @@ static const char row_sql[] =
 static const char outcome_sql[] =
     "SELECT position, marker, verdict, reason, engine, value, idx, numerical_error, "
     "estimator_error, margin, weakest, sum_over_sites, window_cells, highest_occupied, "
-    "lowest_empty, electrons FROM outcome WHERE point = ?1 AND realisation = ?2 ORDER BY position";
+    "lowest_empty, electrons, kappa FROM outcome WHERE point = ?1 AND realisation = ?2 ORDER BY "
+    "position";
 
 static double real_at(sqlite3_stmt *row, int column)
 {
@@ -58,6 +59,7 @@ static bool read_outcome(sqlite3_stmt *row, sv_outcome *outcome)
     outcome->highest_occupied = real_at(row, 13);
     outcome->lowest_empty = real_at(row, 14);
     outcome->electrons = sqlite3_column_int64(row, 15);
+    outcome->kappa = real_at(row, 16);
     return true;
 }
 

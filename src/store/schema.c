@@ -56,6 +56,7 @@ static const char *const statements[] = {
     "  highest_occupied REAL,\n"
     "  lowest_empty REAL,\n"
     "  electrons INTEGER NOT NULL,\n"
+    "  kappa REAL,\n"
     "  PRIMARY KEY (point, realisation, position),\n"
     "  FOREIGN KEY (point, realisation) REFERENCES realisation (point, realisation)\n"
     ") STRICT, WITHOUT ROWID",
