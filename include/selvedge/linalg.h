@@ -272,6 +272,129 @@ SV_API SV_MUST_USE sv_status sv_near_states_find(sv_context *context, const sv_s
 /** Gives the arrays back; safe on a zeroed struct and twice in a row. */
 SV_API void sv_near_states_free(sv_context *context, sv_near_states *states);
 
+/* -------------------------------------------------- rational functions of a matrix */
+
+enum { SV_ZOLOTAREV_MOST = 96 };
+
+/**
+ * Best approximation of the sign by an odd rational function of type (2·terms + 1, 2·terms) on
+ * [−1, −δ] ∪ [δ, 1] (E. I. Zolotarev, 1877): sign x ≈ x (constant + Σ residue/(x² + pole²)).
+ * Everything is positive, so no digits are lost in the sum.
+ */
+typedef struct sv_zolotarev {
+    int terms;
+    double delta;
+    double error; /**< largest deviation from the sign, reached at 2·terms + 2 points of [δ, 1] */
+    double constant;
+    double residue[SV_ZOLOTAREV_MOST];
+    double pole[SV_ZOLOTAREV_MOST]; /**< ascending */
+} sv_zolotarev;
+
+/**
+ * Computes the approximation.
+ * @param delta  0 < δ < 1; accurate to rounding down to 1e-12
+ * @param terms  1 … SV_ZOLOTAREV_MOST
+ * @return SV_INVALID_INPUT outside these ranges
+ */
+SV_API SV_MUST_USE sv_status sv_zolotarev_make(sv_context *context, double delta, int terms,
+                                               sv_zolotarev *ret_sign);
+/** Value of the approximation at x. */
+SV_API double sv_zolotarev_value(const sv_zolotarev *sign, double x);
+/**
+ * Fewest terms with 4 exp(−(2·terms + 1) π²/(2 ln(4/δ))) ≤ error, a slight overestimate of the
+ * error; SV_ZOLOTAREV_MOST when even those do not reach it.
+ */
+SV_API int sv_zolotarev_terms(double delta, double error);
+
+/**
+ * ((H − shift)/scale)², both triangles, every element of the pattern and the whole diagonal stored.
+ * @param[out] ret_square  give back with sv_sparse_free()
+ */
+SV_API SV_MUST_USE sv_status sv_sparse_square(sv_context *context, const sv_sparse *h, double shift,
+                                              double scale, sv_sparse *ret_square);
+
+/**
+ * A Hermitian matrix with Cholesky factors L L† of itself plus multiples of one: one analysis
+ * (approximate minimum degree order, supernodes) for all of them. Used by one thread at a time.
+ */
+typedef struct sv_definite sv_definite;
+
+/**
+ * Copies and analyses a matrix.
+ * @param factors  number of factors to be held at a time
+ * @return SV_INVALID_INPUT for an empty matrix or no factors, SV_NO_MEMORY
+ */
+SV_API SV_MUST_USE sv_status sv_definite_make(sv_context *context, const sv_sparse *matrix,
+                                              int factors, sv_definite **ret_definite);
+SV_API void sv_definite_free(sv_context *context, sv_definite *definite);
+/** Memory of one factor in bytes. */
+SV_API double sv_definite_bytes(const sv_definite *definite);
+/**
+ * Factors matrix + shift into factor number `slot`, replacing what was there.
+ * @return SV_NUMERICAL when the sum is not positive definite, SV_NO_MEMORY; the slot is empty then
+ */
+SV_API SV_MUST_USE sv_status sv_definite_factor(sv_context *context, sv_definite *definite,
+                                                int slot, double shift);
+/**
+ * Solves (matrix + shift) x = b for a block of columns with factor number `slot`.
+ * @param[in,out] x  n × columns, column-major: b, then the solution
+ * @return SV_INVALID_INPUT for an empty slot
+ */
+SV_API SV_MUST_USE sv_status sv_definite_solve(sv_context *context, sv_definite *definite, int slot,
+                                               sv_index columns, sv_complex *x);
+
+/* -------------------------------------------- bounds of the spectrum, density of states */
+
+/**
+ * An interval that holds all eigenvalues of H: extreme Ritz values of a Lanczos run from a fixed
+ * random vector, widened by 0.5 % of their distance, cut by Gershgorin's discs where those are
+ * tighter. The run is long enough (about 200 steps for 10^6 rows) that an eigenvalue lies outside
+ * with probability below 1e-9 over start vectors: P(error > ε·width) ≤ 1.648 √n e^{−√ε(2k−1)} after
+ * k steps (J. Kuczyński, H. Woźniakowski, SIAM J. Matrix Anal. Appl. 13, 1094 (1992), Theorem 4.2).
+ * The bounds exceed the spectrum by at most 0.51 % of its width (and 1e-12 of the norm) a side.
+ * @param[out] ret_bounds low, high
+ * @return SV_INVALID_INPUT for order 0, SV_NUMERICAL, SV_INTERRUPTED
+ * Cost: a product and two passes over three vectors per step.
+ */
+SV_API SV_MUST_USE sv_status sv_spectral_bounds(sv_context *context, const sv_sparse *h,
+                                                double ret_bounds[2]);
+
+/**
+ * Chebyshev moments μ_k = tr T_k(A)/n, k = 0 … count − 1, of a matrix with its spectrum in [−1, 1].
+ *
+ * Stochastic trace: every one of the SV_PANEL_COLUMNS columns of the result is an estimate of its
+ * own from `panels` vectors of random phases, so that their spread gives the error of the mean
+ * (A. Weiße et al., Rev. Mod. Phys. 78, 275 (2006), sections II.B.2 and II.D). Moments 2k and 2k+1
+ * come from T_k x and T_{k+1} x: count/2 products per panel.
+ * @param panels  ≥ 1; 0: the exact trace over unit vectors, all columns alike
+ * @param stream  where the phases come from (row, column and panel fix a phase)
+ * @param[out] ret_moments count × SV_PANEL_COLUMNS, moment k of column c at [k·columns + c]
+ * @return SV_NUMERICAL when a moment exceeds 1: the spectrum is not in [−1, 1]; SV_INTERRUPTED
+ * Memory: two panels.
+ */
+SV_API SV_MUST_USE sv_status sv_chebyshev_moments(sv_context *context, const sv_packed *a,
+                                                  int count, int panels, const sv_stream *stream,
+                                                  double *ret_moments);
+
+/**
+ * Jackson's kernel g_k, k = 0 … count − 1, which keeps a truncated Chebyshev series of a positive
+ * function positive: g_k = [(N−k+1) cos(πk/(N+1)) + sin(πk/(N+1)) cot(π/(N+1))]/(N+1), N = count.
+ * It broadens a level at x = 0 to about a Gaussian of standard deviation π/N (Weiße et al., Eqs.
+ * (71) and (75)).
+ */
+SV_API void sv_jackson_kernel(int count, double *ret_kernel);
+
+/**
+ * Density of states per row and energy from moments of (H − centre)/half_width, Jackson-damped.
+ * @param stride   distance between moments in the array
+ * @param energies n_energies values inside centre ± half_width
+ * @param[out] ret_density n_energies values; 0 outside
+ */
+SV_API SV_MUST_USE sv_status sv_chebyshev_density(sv_context *context, const double *moments,
+                                                  int count, int stride, double centre,
+                                                  double half_width, const double *energies,
+                                                  sv_index n_energies, double *ret_density);
+
 #ifdef __cplusplus
 }
 #endif

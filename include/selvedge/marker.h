@@ -29,10 +29,11 @@ typedef struct sv_outcome {
     int64_t index; /**< for markers that are integers */
     double numerical_error, estimator_error;
     double margin; /**< what the verdict hangs on: Bott: smallest distance of an eigenvalue angle
-                        from π, radian; local Chern: level spacing at the Fermi energy;
-                        localizer: its gap, unit of the model; NaN: none */
+                        from π, radian (above 256 occupied states often a proven lower bound); local
+                      Chern: level spacing at the Fermi energy; localizer: its gap, unit of the
+                      model; NaN: none */
     double weakest; /**< Bott: smallest modulus of an eigenvalue of V U V† U†, which is 0 when U or
-                         V is singular; NaN: none */
+                         V is singular (or a lower bound, as for the margin); NaN: none */
     double sum_over_sites;                 /**< local Chern, when asked for; NaN otherwise */
     int64_t window_cells;                  /**< local Chern */
     double kappa;                          /**< localizer: energy per lattice constant; NaN: none */
@@ -91,11 +92,38 @@ SV_API SV_MUST_USE sv_status sv_local_chern(sv_context *context, const sv_marker
  * occupied space and u, v the reduced coordinates of the orbital positions on the torus.
  * Unresolved when an eigenvalue of V U V† U† lies within 1e-6 rad of the negative real axis or
  * vanishes (U or V is singular), or a level sits on the Fermi energy. With no or with all states
- * occupied the index is 0 by convention, and the reason says so. Cost: O(N·n²) for n occupied
- * states plus the eigenvalues of one n×n matrix.
+ * occupied the index is 0 by convention, and the reason says so. See sv_bott_of_basis() for the
+ * ways to the integer; all give the one of the definition.
  */
 SV_API SV_MUST_USE sv_status sv_bott_index(sv_context *context, const sv_marker_input *input,
                                            sv_outcome *ret_outcome);
+
+/** Ways to the integer of the Bott index. */
+typedef enum sv_bott_method {
+    SV_BOTT_AUTO,       /**< eigenvalues up to 256 states, above the series, then eigenvalues */
+    SV_BOTT_SERIES,     /**< the series where it is certified, else eigenvalues */
+    SV_BOTT_EIGENVALUES /**< the definition as it stands, in double precision */
+} sv_bott_method;
+
+/**
+ * Bott index of a space: (1/2π) Im Tr log(V U V† U†), principal branch.
+ *
+ * The series sums traces of up to eight powers of V U V† U† − 1, in single precision. It is used
+ * where norms of those powers prove that every eigenvalue lies within ρ < 1 of 1 and that the
+ * rest of the sum cannot reach the next integer, with an allowance for rounding: the integer is
+ * then that of the definition. numerical_error is 0, margin = π − asin ρ and weakest = 1 − ρ are
+ * lower bounds. Without proof, and this is the rule near transitions, the eigenvalues decide.
+ * @param basis  orthonormal to about 1e-8; any basis of the space gives the same index
+ * @param uv     reduced coordinates on the torus, in turns, one pair per row
+ * @param[in,out] outcome  verdict, reason, value, index, numerical_error, margin, weakest are set
+ * @param[out] ret_used  what gave the outcome: SV_BOTT_SERIES or SV_BOTT_EIGENVALUES
+ * @return SV_INVALID_INPUT for an empty basis, SV_NUMERICAL, SV_NO_MEMORY, SV_INTERRUPTED
+ * Cost: N rows, n columns: 2 N n² + 3 n³ to 6 n³ multiply–adds for the series; 2 N n² + 3 n³ and
+ * the eigenvalues of an n×n matrix (about 25 n³, slow ones) otherwise.
+ */
+SV_API SV_MUST_USE sv_status sv_bott_of_basis(sv_context *context, const sv_basis *basis,
+                                              const double (*uv)[2], sv_bott_method method,
+                                              sv_outcome *outcome, sv_bott_method *ret_used);
 
 /**
  * The spectral localizer [[H − E, κ(X − iY)], [κ(X + iY), −(H − E)]], positions relative to the
@@ -140,10 +168,10 @@ SV_API SV_MUST_USE sv_status sv_localizer_index(sv_context *context, const sv_ma
 
 /**
  * Three-sector Chern number (A. Kitaev, Ann. Phys. 321, 2 (2006), App. C) of a disc of an open
- * flake: −12πi Σ (P_jk P_kl P_lj − P_jl P_lk P_kj) over j, k, l in three sectors, counter-clockwise.
- * Tends to +C exponentially with the radius while the disc stays away from the edge; over a whole
- * finite flake it would be 0. Keys: at, radius. Cost: one projector application per site of the
- * disc and the cube of their number.
+ * flake: −12πi Σ (P_jk P_kl P_lj − P_jl P_lk P_kj) over j, k, l in three sectors,
+ * counter-clockwise. Tends to +C exponentially with the radius while the disc stays away from the
+ * edge; over a whole finite flake it would be 0. Keys: at, radius. Cost: one projector application
+ * per site of the disc and the cube of their number.
  */
 SV_API SV_MUST_USE sv_status sv_three_sector(sv_context *context, const sv_marker_input *input,
                                              sv_outcome *ret_outcome);

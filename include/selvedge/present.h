@@ -73,6 +73,21 @@ SV_API SV_MUST_USE sv_status sv_map_json(sv_context *context, const sv_map_resul
                                          char **ret_text);
 SV_API void sv_map_print(const sv_map_result *map, bool colour, FILE *stream);
 
+/** The spectrum of one realisation. */
+typedef struct sv_spectrum_result {
+    const char *title;
+    int64_t realisation;
+    const sv_spectrum *spectrum; /**< borrowed */
+} sv_spectrum_result;
+
+/** JSON document of a spectrum (contract: `spectrum`). */
+SV_API SV_MUST_USE sv_status sv_spectrum_json(sv_context *context, const sv_spectrum_result *result,
+                                              char **ret_text);
+/** Density of states as CSV: energy,density. */
+SV_API SV_MUST_USE sv_status sv_spectrum_csv(sv_context *context, const sv_spectrum_result *result,
+                                             char **ret_text);
+SV_API void sv_spectrum_print(const sv_spectrum_result *result, bool colour, FILE *stream);
+
 /**
  * Colour of the marker maps: diverging, even steps in the Oklab space (Ottosson 2020), lightness
  * falling equally to both sides of a neutral centre.
@@ -96,6 +111,10 @@ SV_API SV_MUST_USE sv_status sv_figure_map(sv_context *context, const char *fold
 SV_API SV_MUST_USE sv_status sv_figure_sweep(sv_context *context, const char *folder,
                                              const char *name, const sv_result *result,
                                              sv_figure_files *ret_files);
+/** Density of states with Fermi energy and gap; below, the levels next to the Fermi energy. */
+SV_API SV_MUST_USE sv_status sv_figure_spectrum(sv_context *context, const char *folder,
+                                                const char *name, const sv_spectrum_result *result,
+                                                sv_figure_files *ret_files);
 
 /* ----------------------------------------------------------------- progress */
 

@@ -99,8 +99,12 @@ SV_API SV_MUST_USE sv_status sv_flake_window(sv_context *context, const sv_flake
                                              sv_index *ret_cells);
 /** Centre of a cell: mean of the distinct orbital positions. */
 SV_API void sv_flake_cell_centre(const sv_flake *flake, sv_index cell, double ret_at[2]);
-/** Pristine site nearest to a point, its distance to *ret_distance; −1 for an empty flake. */
-SV_API sv_index sv_flake_nearest(const sv_flake *flake, const double at[2], double *ret_distance);
+/**
+ * Pristine site nearest to a point, its distance to *ret_distance; −1 when none is near.
+ * @param orbital  only sites of this orbital count; −1: all
+ */
+SV_API sv_index sv_flake_nearest(const sv_flake *flake, const double at[2], int orbital,
+                                 double *ret_distance);
 
 /* ---------------------------------------------------------------- disorder */
 

@@ -124,7 +124,7 @@ typedef struct sv_setup {
     char *resolved; /**< the sheet with all defaults, as YAML that can be read back; NULL at a point
                          of a sweep, which has no axes either */
     char *identity; /**< canonical text of what fixes the numbers: resolved sheet without
-                         realisations, stop, threads and title; files by digest. NULL at a
+                         realisations, stop and threads; files by digest. NULL at a
                          point of a sweep */
     struct sv_arena_chunk *memory; /**< holds title, files and texts of values */
 } sv_setup;

@@ -7,8 +7,9 @@
 #include <stdio.h>
 #include <string.h>
 
-static const sv_index DENSE_ALWAYS = 400;    /* sites: below, nothing else pays */
-static const sv_index DENSE_LARGEST = 12000; /* sites: above, one diagonalisation takes an hour */
+static const sv_index DENSE_ALWAYS = 400;      /* sites: below, nothing else pays */
+static const sv_index BASIS_DENSE_UP_TO = 600; /* sites: below, diagonalisation is as fast */
+static const sv_index DENSE_LARGEST = 12000;   /* sites: above, one diagonalisation takes an hour */
 static const sv_index FILLING_LARGEST = 300000; /* sites: counting states above takes minutes */
 static const sv_index SAMPLE_ABOVE = 20000;     /* window columns: above, cells are sampled */
 static const sv_index PILOT_CELLS = 48;
@@ -223,7 +224,7 @@ static const char *dense_reason(const sv_case *point, bool site_map)
         return "no marker of single sites is asked for";
     if (point->occupation.by != SV_BY_ENERGY && point->open_flake->n_sites > FILLING_LARGEST)
         return "a filling needs state counts, too costly for a flake of this size";
-    if (point->solve.engine == SV_ENGINE_CHEBYSHEV)
+    if (point->solve.engine == SV_ENGINE_CHEBYSHEV || point->solve.engine == SV_ENGINE_RATIONAL)
         return NULL;
     if (point->solve.engine == SV_ENGINE_DENSE)
         return "asked for";
@@ -292,18 +293,51 @@ static sv_status plan_chebyshev(sv_context *context, sv_case *point, double samp
     return SV_OK;
 }
 
+/* The rational engine finds what it must resolve by itself, sample by sample; only the sampling of
+ * large windows is settled here. It is never chosen, only asked for: at 1,800 sites it costs twice
+ * as much as near levels one by one and a polynomial for the others. */
+static sv_status plan_rational(sv_context *context, sv_case *point, double sampling_error,
+                               sv_plan *plan)
+{
+    pilot p;
+    sv_projector_options o = point->solve;
+    sv_status status = start_pilot(context, point, &p);
+    if (status == SV_OK)
+        status = find_sampling(context, &p, &o, sampling_error);
+    sv_sample_free(context, &p.sample);
+    if (status != SV_OK)
+        return status;
+    point->solve = o;
+    snprintf(plan->reason, sizeof plan->reason,
+             "rational: asked for; resolves the level next to the Fermi energy of every sample");
+    return SV_OK;
+}
+
+/* Engine for a basis of the occupied space on the torus: a rule of its size alone. It need not look
+ * at a sample, since what the polynomial cannot do is done densely, sample by sample. */
+static sv_engine basis_engine(const sv_case *point)
+{
+    bool large = point->closed_flake != NULL && point->closed_flake->n_sites > BASIS_DENSE_UP_TO;
+    return large && point->solve.engine != SV_ENGINE_DENSE ? SV_ENGINE_CHEBYSHEV : SV_ENGINE_DENSE;
+}
+
 sv_status sv_case_plan(sv_context *context, sv_case *point, bool site_map, double sampling_error,
                        sv_plan *ret_plan)
 {
     sv_plan plan = {0};
     sv_status status = SV_OK;
     const char *reason = dense_reason(point, site_map);
+    point->solve.basis_engine = basis_engine(point);
     if (reason != NULL && point->solve.engine == SV_ENGINE_CHEBYSHEV)
         return SV_FAIL(context, SV_INVALID_INPUT, "the chebyshev engine cannot be used: %s",
                        reason);
+    if (reason != NULL && point->solve.engine == SV_ENGINE_RATIONAL)
+        return SV_FAIL(context, SV_INVALID_INPUT, "the rational engine cannot be used: %s", reason);
     if (reason != NULL) {
         point->solve.engine = SV_ENGINE_DENSE;
         snprintf(plan.reason, sizeof plan.reason, "dense: %s", reason);
+    } else if (point->solve.engine == SV_ENGINE_RATIONAL) {
+        status = plan_rational(context, point, sampling_error, &plan);
     } else {
         status = plan_chebyshev(context, point, sampling_error, &plan);
     }

@@ -79,9 +79,8 @@ static sv_status project(sv_context *context, const sv_case *point, const sv_sam
         if (marker->boundary != boundary)
             continue;
         needed = needed || marker->needs_projector;
-        /* A basis, and everything on the torus, is the dense engine's business. */
         if (marker->needs_occupied_basis)
-            options.engine = SV_ENGINE_DENSE;
+            options.engine = point->solve.basis_engine;
         options.occupied_basis = options.occupied_basis || marker->needs_occupied_basis;
     }
     *ret_projector = NULL;

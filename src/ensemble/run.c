@@ -172,6 +172,10 @@ static sv_status start_threads(sv_context *context, crew *c)
     for (int k = 0; k < started; k++)
         pthread_join(threads[k], NULL);
     sv_give(context, threads);
+    /* Said at the end: others may have finished theirs after the first one noticed. */
+    if (c->status == SV_INTERRUPTED)
+        return SV_FAIL(context, SV_INTERRUPTED, "stopped with %lld of %lld realisations done",
+                       (long long)c->done, (long long)c->total);
     return c->status;
 }
 

@@ -33,6 +33,12 @@ static void gather(const sv_record *records, int marker, int64_t counted, double
     double estimator = 0.0, margins = 0.0;
     int64_t n_margins = 0;
     for (int64_t k = 0; k < counted; k++) {
+        if (marker >= records[k].n_outcomes) { /* a record from elsewhere: never an index of 0 */
+            if (s->unresolved++ == 0)
+                snprintf(s->unresolved_reason, sizeof s->unresolved_reason,
+                         "the record of realisation %lld has no such marker", (long long)k);
+            continue;
+        }
         const sv_outcome *o = &records[k].outcomes[marker];
         if (o->verdict == SV_ABSENT) {
             snprintf(s->reason, sizeof s->reason, "%s", o->reason);

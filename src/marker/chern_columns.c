@@ -107,6 +107,25 @@ static double estimate(const column_work *w, int k)
 }
 
 /*
+ * What an error of P of norm η does, to first order: with v = P|r⟩ and z = P (y − y_r) v the marker
+ * is ⟨v|(x − x_r)|z⟩, so η ‖(x − x_r) v‖ ‖(y − y_r) v‖ from the projector in the middle and
+ * η ‖(x − x_r) z‖ from either of the outer ones.
+ */
+static double uniform_error(const column_work *w, int k, double eta)
+{
+    sv_index n = w->area.n;
+    const sv_complex *v = w->v + k * n, *u = w->x + k * n, *z = w->z + k * n;
+    double xv = 0.0, yv = 0.0, xz = 0.0, x0 = place_of(w, w->target[k])[0];
+    for (sv_index r = 0; r < n; r++) {
+        double x = place_of(w, r)[0] - x0;
+        xv += x * x * square(v[r]);
+        yv += square(u[r]);
+        xz += x * x * square(z[r]);
+    }
+    return eta * (sqrt(xv * yv) + 2.0 * sqrt(xz));
+}
+
+/*
  * What the cut of the part can do: the cut feels v and z through their weight next to the rim. The
  * overlap pairs v and z there with the distance to the site.
  */
@@ -220,9 +239,12 @@ static sv_status one_block(sv_context *context, column_job *job, sv_index first,
     sv_status status = set_block(context, job, first, count, w);
     if (status == SV_OK)
         status = project_twice(context, w);
+    double eta = status == SV_OK ? sv_projector_uniform_error(w->area.projector) : 0.0;
     for (int k = 0; k < count && status == SV_OK; k++) {
         job->marker[first + k] = factor * overlap(w, k);
         job->error[first + k] = factor * estimate(w, k);
+        if (eta > 0.0)
+            job->error[first + k] += factor * uniform_error(w, k, eta);
         if (job->reach > 0.0)
             job->error[first + k] += factor * rim_error(w, k, job->reach);
     }

@@ -7,6 +7,9 @@
 #include <math.h>
 #include <string.h>
 
+/* A site whose stated error is above this is left blank in a map. */
+static const double LARGEST_SITE_ERROR = 0.02;
+
 /* Work of one evaluation; rows are the sites whose marker is wanted. */
 typedef struct chern_work {
     const sv_sample *sample;
@@ -132,17 +135,22 @@ static void reduce(const chern_work *w, const bool *inside, sv_index cells, doub
                    sv_outcome *outcome)
 {
     double window = 0.0, total = 0.0;
+    bool blanked = false;
     for (sv_index k = 0; k < w->n_rows; k++) {
         sv_index row = w->rows[k];
         bool in = inside[w->sample->flake->sites[w->sample->pristine[row]].cell];
         window += in ? w->marker[k] : 0.0;
         total += w->marker[k];
+        /* Edge states lie in the gap: a polynomial need not resolve them, and the marker next to
+         * the edge then means nothing. The window is judged by its own error. */
+        bool unsure = w->error != NULL && w->error[k] > LARGEST_SITE_ERROR;
+        blanked = blanked || unsure;
         if (ret_sites != NULL)
-            ret_sites[row] = w->marker[k];
+            ret_sites[row] = unsure ? (double)NAN : w->marker[k];
     }
     outcome->value = window / (double)cells;
     outcome->window_cells = cells;
-    if (ret_sites != NULL)
+    if (ret_sites != NULL && !blanked)
         outcome->sum_over_sites = total;
 }
 
@@ -178,7 +186,7 @@ static sv_status from_basis(sv_context *context, const sv_marker_input *input, c
     sv_status status = take_blocks(context, w);
     if (status != SV_OK)
         return status;
-    if (w->basis.columns > 0) {
+    if (w->basis.columns > 0 && w->n_rows > 0) {
         position_in_basis(w, 0, w->x);
         position_in_basis(w, 1, w->y);
         evaluate(w);

@@ -147,6 +147,10 @@ static void choose_range(const sv_result *result, int marker, double range[2])
     }
     if (range[0] > range[1])
         range[0] = range[1] = 0;
+    if (result->points[0].summaries[marker].is_index) { /* a constant index is shown beside 0 */
+        widen(range, 0.0);
+        widen(range, range[0] < 0.0 ? 0.0 : 1.0);
+    }
     const double air = fmax(0.08 * (range[1] - range[0]), 0.01);
     range[0] -= air;
     range[1] += air;

@@ -63,8 +63,8 @@ static json_t *make_window_mean(sv_json *json, const sv_outcome *outcome)
     sv_json_put_real(json, object, "sum_over_sites", outcome->sum_over_sites);
     if (resolved && !isfinite(outcome->sum_over_sites))
         sv_json_put_text(json, object, "reason",
-                         "the sum over all sites needs the marker of every site, which was not "
-                         "computed");
+                         "the sum over all sites needs the marker of every site; some were not "
+                         "computed, or are left blank because their error is too large");
     return object;
 }
 

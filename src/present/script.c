@@ -59,8 +59,11 @@ void sv_script_literal(const char *text, char *literal, size_t size)
     sv_words_clean(text, clean, sizeof clean);
     literal[used++] = '\'';
     for (const char *c = clean; *c != '\0' && used + 4 < size; c++) {
-        if (*c == '\'')
-            literal[used++] = '\'';
+        if (*c == '\'') { /* the typographic one needs no quoting; 5.4 misreads quotes at a start */
+            memcpy(literal + used, "\u2019", 3);
+            used += 3;
+            continue;
+        }
         literal[used++] = *c;
     }
     literal[used++] = '\'';

@@ -25,8 +25,8 @@ static void print_window_mean(FILE *stream, const char *name, const sv_outcome *
         print_line(stream, name, text);
         return;
     }
-    snprintf(text, sizeof text, "%.6g   mean over %lld cells (numerical error %.1g)",
-             outcome->value + 0.0, (long long)outcome->window_cells, outcome->numerical_error);
+    snprintf(text, sizeof text, "%.6g   mean over %lld cells, error %.1g", outcome->value + 0.0,
+             (long long)outcome->window_cells, outcome->numerical_error);
     print_line(stream, name, text);
     if (!isfinite(outcome->sum_over_sites))
         return;
@@ -41,8 +41,8 @@ static void print_index(FILE *stream, const char *name, const sv_outcome *outcom
     snprintf(text, sizeof text, "%lld", (long long)outcome->index);
     print_line(stream, name, text);
     if (isfinite(outcome->weakest))
-        snprintf(text, sizeof text, "    %.3g rad from pi; smallest modulus %.3g",
-                 outcome->margin, outcome->weakest);
+        snprintf(text, sizeof text, "    %.3g rad from pi; smallest modulus %.3g", outcome->margin,
+                 outcome->weakest);
     else if (isfinite(outcome->kappa))
         snprintf(text, sizeof text, "    localizer gap %.3g at kappa %.3g", outcome->margin,
                  outcome->kappa);
@@ -56,6 +56,12 @@ static void print_levels(FILE *stream, const sv_outcome *outcome)
     char text[256];
     if (!isfinite(outcome->highest_occupied) || !isfinite(outcome->lowest_empty))
         return;
+    if (outcome->electrons < 0) {
+        snprintf(text, sizeof text, "Fermi energy between the levels %.6g and %.6g",
+                 outcome->highest_occupied, outcome->lowest_empty);
+        print_line(stream, "", text);
+        return;
+    }
     snprintf(text, sizeof text, "%lld states filled up to %.6g, next at %.6g",
              (long long)outcome->electrons, outcome->highest_occupied, outcome->lowest_empty);
     print_line(stream, "", text);

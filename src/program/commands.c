@@ -12,6 +12,8 @@ static const command commands[] = {
      SHEET_OPTIONS "j", 1, 1, run_check},
     {"map", "SHEET", "one realisation: the local Chern marker site by site", SHEET_OPTIONS "koVF",
      1, 1, run_map},
+    {"spectrum", "SHEET", "states below E_F, gap, states next to it, density of states",
+     SHEET_OPTIONS "koVF", 1, 1, run_spectrum},
     {"average", "SHEET -o RUN", "the ensemble and its sweep; continues an existing run",
      SHEET_OPTIONS "ojPDFT", 1, 1, run_average},
     {"report", "RUN", "figures of a finished or unfinished run", "okqvCJ", 1, 1, run_report},
@@ -48,7 +50,7 @@ int run_info(sv_context *context, const options *o)
         printf("{\"selvedge\": 1, \"command\": \"info\", \"version\": \"%s\",\n"
                " \"blas\": \"%s\", \"blas_threading\": \"%s\", \"kernel\": \"%s\",\n"
                " \"panel_kernel\": \"%s\", \"threads_safe\": %s, \"threads\": %d,\n"
-               " \"engines\": [\"dense\", \"chebyshev\"]}\n",
+               " \"engines\": [\"dense\", \"chebyshev\", \"rational\"]}\n",
                sv_version(), blas.kind, blas.threading, blas.kernel,
                sv_panel_kernel_name(sv_panel_best_kernel()), blas.threads_safe ? "true" : "false",
                cores_allowed());
@@ -59,7 +61,7 @@ int run_info(sv_context *context, const options *o)
            blas.threads_safe ? "" : " (wrong results with several threads: one is used)");
     printf("threads    %d\n", cores_allowed());
     printf("panels     %s\n", sv_panel_kernel_name(sv_panel_best_kernel()));
-    printf("engines    dense, chebyshev\n");
+    printf("engines    dense, chebyshev, rational\n");
     int count;
     const sv_marker *markers = sv_marker_table(&count);
     for (int k = 0; k < count; k++)

@@ -50,6 +50,14 @@ static void boundaries_needed(const session *s, const sv_setup *setup, bool *ope
     }
 }
 
+/* The rational engine alone; a torus needs the dense one beside it. */
+static bool is_rational(const session *s, const sv_setup *setup)
+{
+    bool open, closed;
+    boundaries_needed(s, setup, &open, &closed);
+    return !closed && strcmp(setup->engine, "rational") == 0;
+}
+
 /* Does the sheet force the dense engine, whatever the size? */
 static bool needs_dense(const session *s, const sv_setup *setup, int64_t sites)
 {
@@ -66,7 +74,11 @@ static sv_status bytes_of(session *s, const sv_setup *setup, int64_t *ret_sites,
     sv_status status = sv_flake_count(s->context, &setup->model, &setup->flake, ret_sites);
     if (status != SV_OK)
         return status;
-    if (needs_dense(s, setup, *ret_sites))
+    if (s->levels_only)
+        *ret_bytes = sv_spectrum_bytes(*ret_sites);
+    else if (is_rational(s, setup))
+        sv_projector_forecast(SV_ENGINE_RATIONAL, *ret_sites, ret_bytes, &operations);
+    else if (needs_dense(s, setup, *ret_sites))
         sv_projector_forecast(SV_ENGINE_DENSE, *ret_sites, ret_bytes, &operations);
     else
         sv_projector_forecast(SV_ENGINE_CHEBYSHEV, *ret_sites, ret_bytes, &operations);
@@ -205,6 +217,21 @@ static double chebyshev_seconds(session *s, const point *p, const calibration *c
     return c->per_step * row_elements(model) * steps + other;
 }
 
+/* Factors and solutions for every pole. A solution moves its factor through the processor once each
+ * way: its time follows the size of the factor (measured, 1,800 to 80,000 sites); speeds are taken
+ * relative to the dense trial. */
+static double rational_seconds(session *s, const point *p, const calibration *c)
+{
+    const double forecast_poles = 25.0, per_operation = 5.2e-10, per_byte = 3.6e-11;
+    const double reference = 4.2e-10; /* per_cube of the machine these were measured on */
+    const sv_case *problem = &p->problem;
+    double sites = (double)p->open.n_sites, bytes, operations;
+    double poles = sv_zolotarev_terms(0.25 / sites, 0.02 * problem->solve.accuracy);
+    sv_projector_forecast(SV_ENGINE_RATIONAL, p->open.n_sites, &bytes, &operations);
+    double work = per_operation * operations + 2.0 * window_columns(s, problem) * per_byte * bytes;
+    return c->per_cube / reference * poles / forecast_poles * work;
+}
+
 /* Dense work grows as the cube of the sites, a little faster once it leaves the cache (measured:
  * 1.0 at the calibration's 392 sites, 1.35 at 1,800). */
 static double dense_seconds(double sites, const calibration *c)
@@ -220,6 +247,8 @@ static double point_seconds(session *s, const point *p, const calibration *c)
     double sites = (double)p->open.n_sites, seconds = 0.0;
     if (open && p->problem.solve.engine == SV_ENGINE_CHEBYSHEV)
         seconds += chebyshev_seconds(s, p, c);
+    else if (open && p->problem.solve.engine == SV_ENGINE_RATIONAL)
+        seconds += rational_seconds(s, p, c);
     else if (open)
         seconds += dense_seconds(sites, c);
     /* The Bott index adds the eigenvalues of a general matrix of half the order. */

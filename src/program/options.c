@@ -51,7 +51,8 @@ static const option_row option_rows[] = {
     {OPT_TIME_LIMIT, false, "time-limit", "SECONDS", "stop cleanly after this time (exit 7)"},
     {OPT_HAMILTONIAN, false, "hamiltonian", "FILE", "write the Hamiltonian (Matrix Market)"},
     {OPT_SITES, false, "sites", "FILE", "write the sites in matrix order (CSV)"},
-    {OPT_CSV, false, "csv", "FILE", "write the marker of each site (CSV)"},
+    {OPT_CSV, false, "csv", "FILE",
+     "write the marker of each site, or the density of states (CSV)"},
     {OPT_HELP, true, "help", NULL, "this text"},
 };
 enum { N_ROWS = sizeof option_rows / sizeof option_rows[0] };

@@ -69,6 +69,7 @@ typedef struct session {
     int32_t n_points;
     int threads;
     bool add_map_marker; /* the map command always computes the local Chern marker */
+    bool levels_only;    /* the spectrum command computes no marker: other needs of memory */
 } session;
 
 /* Reads the sheet and builds all points of its sweep (`with_sweep`) or the sheet as written. */
@@ -114,6 +115,7 @@ bool signals_stop_requested(void *user);
 
 int run_check(sv_context *context, const options *o);
 int run_map(sv_context *context, const options *o);
+int run_spectrum(sv_context *context, const options *o);
 int run_average(sv_context *context, const options *o);
 int run_report(sv_context *context, const options *o);
 int run_export(sv_context *context, const options *o);

@@ -127,6 +127,7 @@ static sv_status make_point(session *s, point *p)
     p->problem.solve.accuracy = setup->accuracy;
     p->problem.solve.engine = strcmp(setup->engine, "dense") == 0       ? SV_ENGINE_DENSE
                               : strcmp(setup->engine, "chebyshev") == 0 ? SV_ENGINE_CHEBYSHEV
+                              : strcmp(setup->engine, "rational") == 0  ? SV_ENGINE_RATIONAL
                                                                         : SV_ENGINE_AUTO;
     p->problem.seed = setup->seed;
     status = set_markers(s, setup, &p->problem);

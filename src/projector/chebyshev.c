@@ -35,25 +35,6 @@ static void chebyshev_free(sv_context *context, void *state)
     sv_give(context, s);
 }
 
-static void fill_panel(double *panel, sv_index n, const sv_complex *x, sv_index columns)
-{
-    const int c = SV_PANEL_COLUMNS;
-    memset(panel, 0, (size_t)(2 * c * n) * sizeof *panel);
-    for (sv_index k = 0; k < columns; k++)
-        for (sv_index r = 0; r < n; r++) {
-            panel[2 * c * r + k] = creal(x[r + k * n]);
-            panel[2 * c * r + c + k] = cimag(x[r + k * n]);
-        }
-}
-
-static void empty_panel(const double *panel, sv_index n, sv_complex *y, sv_index columns)
-{
-    const int c = SV_PANEL_COLUMNS;
-    for (sv_index k = 0; k < columns; k++)
-        for (sv_index r = 0; r < n; r++)
-            y[r + k * n] = CMPLX(panel[2 * c * r + k], panel[2 * c * r + c + k]);
-}
-
 /* y += Σ (θ_n − p(E_n)) |n⟩⟨n|x⟩ */
 static sv_status correct(sv_context *context, const chebyshev_state *s, sv_index columns,
                          const sv_complex *x, sv_complex *y)
@@ -91,9 +72,9 @@ static sv_status chebyshev_apply(sv_context *context, void *state, sv_index colu
             width = SV_PANEL_COLUMNS;
         if (sv_cancelled(context))
             return SV_FAIL(context, SV_INTERRUPTED, "stopped during a projection");
-        fill_panel(in, n, x + first * n, width);
+        sv_columns_to_panel(in, n, x + first * n, width);
         sv_panel_polynomial(&s->packed, s->coefficients, s->degree, s->kernel, in, work, out);
-        empty_panel(out, n, y + first * n, width);
+        sv_panel_to_columns(out, n, y + first * n, width);
         sv_status status = correct(context, s, width, x + first * n, y + first * n);
         if (status != SV_OK)
             return status;
@@ -140,8 +121,11 @@ static sv_status chebyshev_restrict(sv_context *context, const sv_projector *pro
     return status;
 }
 
-static const engine_class chebyshev_class = {"chebyshev", chebyshev_free, chebyshev_apply,
-                                             chebyshev_basis, chebyshev_restrict};
+static const engine_class chebyshev_class = {.name = "chebyshev",
+                                             .free = chebyshev_free,
+                                             .apply = chebyshev_apply,
+                                             .basis = chebyshev_basis,
+                                             .restrict_to = chebyshev_restrict};
 
 /* Gap and degree in units of the half width of the spectrum about the Fermi energy. */
 static sv_status set_polynomial(sv_context *context, const sv_projector_options *options,
@@ -234,6 +218,23 @@ static sv_status set_energy(sv_context *context, const sv_sample *sample,
     return SV_OK;
 }
 
+sv_status sv_chebyshev_scale(sv_context *context, const sv_sparse *h, double energy, bool tight,
+                             double *ret_scale)
+{
+    sv_sparse square = {0};
+    /* Gershgorin holds for every sample; the margin keeps |T_k| ≤ 1 under rounding. */
+    double scale = sv_sparse_norm_bound(h) + fabs(energy);
+    sv_status status = tight ? sv_sparse_square(context, h, energy, 1.0, &square) : SV_OK;
+    if (status != SV_OK)
+        return status;
+    /* The same for (H − E)², where hops of opposite sign cancel. */
+    if (tight)
+        scale = fmin(scale, sqrt(sv_sparse_norm_bound(&square)));
+    sv_sparse_free(context, &square);
+    *ret_scale = 1.0001 * scale;
+    return SV_OK;
+}
+
 sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
                                    const sv_occupation *occupation,
                                    const sv_projector_options *options, sv_projector *projector)
@@ -249,10 +250,11 @@ sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
         return status;
     }
     levels.fermi_energy = s->energy;
-    /* Gershgorin holds for every sample; the margin keeps |T_k| ≤ 1 under rounding. */
-    s->scale = 1.0001 * (sv_sparse_norm_bound(&sample->hamiltonian) + fabs(s->energy));
     s->kernel = sv_panel_best_kernel();
-    status = set_polynomial(context, options, s->scale, s);
+    status = sv_chebyshev_scale(context, &sample->hamiltonian, s->energy, options->occupied_basis,
+                                &s->scale);
+    if (status == SV_OK)
+        status = set_polynomial(context, options, s->scale, s);
     /* Parts bring their own matrix; the whole one would only cost memory. */
     if (status == SV_OK && options->reach <= 0.0)
         status = set_matrix(context, &sample->hamiltonian, NULL, n, NULL, s);

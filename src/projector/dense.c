@@ -126,7 +126,8 @@ static sv_basis dense_basis(const void *state)
     return (sv_basis){true, s->empty_side, s->n, s->columns, s->vectors};
 }
 
-static const engine_class dense_class = {"dense", dense_free, dense_apply, dense_basis, NULL};
+static const engine_class dense_class = {
+    .name = "dense", .free = dense_free, .apply = dense_apply, .basis = dense_basis};
 
 /* Eigenvalues of an order-n matrix carry errors of a few eps·‖H‖; the factor n is cautious. */
 static double energy_resolution(const sv_sparse *h)

@@ -15,6 +15,8 @@ typedef struct engine_class {
     sv_status (*restrict_to)(sv_context *context, const sv_projector *projector,
                              const sv_index *rows, sv_index n_rows, const int32_t *place,
                              void **ret_state);
+    /* See sv_projector_uniform_error(); NULL: no such statement. */
+    double (*uniform_error)(const void *state);
 } engine_class;
 
 struct sv_projector {
@@ -26,14 +28,42 @@ struct sv_projector {
     sv_index n; /* rows: of the sample, or of the part */
 };
 
+/* A panel from up to SV_PANEL_COLUMNS columns of n values, zeros in the rest of it, and back. */
+void sv_columns_to_panel(double *panel, sv_index n, const sv_complex *x, sv_index columns);
+void sv_panel_to_columns(const double *panel, sv_index n, sv_complex *y, sv_index columns);
+
 /* Builds the Chebyshev engine; needs an occupation by energy and options->half_gap. */
 sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
                                    const sv_occupation *occupation,
                                    const sv_projector_options *options, sv_projector *projector);
 
+/* Bound of ‖H − energy‖, with a small margin; `tight` takes a product of matrices more. */
+sv_status sv_chebyshev_scale(sv_context *context, const sv_sparse *h, double energy, bool tight,
+                             double *ret_scale);
+
+/* Builds the rational engine: fills engine, state and levels. */
+sv_status sv_rational_engine_make(sv_context *context, const sv_sample *sample,
+                                  const sv_occupation *occupation,
+                                  const sv_projector_options *options, sv_projector *projector);
+
 /* Builds the dense engine: fills engine, state and levels. */
 sv_status sv_dense_engine_make(sv_context *context, const sv_sample *sample,
                                const sv_occupation *occupation, const sv_projector_options *options,
                                sv_projector *projector);
+
+/*
+ * Builds a projector that holds an orthonormal basis of the occupied space, made without
+ * eigenvectors. *ret_made is false where this way does not lead there (no or too many levels near
+ * the Fermi energy, columns that do not span the space): the dense engine does.
+ */
+sv_status sv_occupied_basis_make(sv_context *context, const sv_sample *sample,
+                                 const sv_occupation *occupation,
+                                 const sv_projector_options *options, sv_projector *projector,
+                                 bool *ret_made);
+
+/* m orthonormal vectors (n × m) out of the columns of `filter` on s ≥ m sites.
+ * SV_NUMERICAL when those span a space of another dimension. */
+sv_status sv_occupied_columns(sv_context *context, const sv_sample *sample, sv_projector *filter,
+                              sv_index m, sv_index s, sv_complex **ret_vectors);
 
 #endif

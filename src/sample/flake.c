@@ -401,7 +401,8 @@ sv_index sv_flake_site_of(const sv_flake *flake, int32_t cell, int32_t orbital)
     return -1;
 }
 
-sv_index sv_flake_nearest(const sv_flake *flake, const double at[2], double *ret_distance)
+sv_index sv_flake_nearest(const sv_flake *flake, const double at[2], int orbital,
+                          double *ret_distance)
 {
     double uv[2], best = INFINITY;
     sv_index nearest = -1;
@@ -419,7 +420,7 @@ sv_index sv_flake_nearest(const sv_flake *flake, const double at[2], double *ret
             const sv_cell *cell = &flake->cells[place.cell];
             for (sv_index s = cell->first_site; s < cell->first_site + cell->n_sites; s++) {
                 double d = hypot(flake->sites[s].at[0] - at[0], flake->sites[s].at[1] - at[1]);
-                if (d < best - 1e-9) {
+                if ((orbital < 0 || flake->sites[s].orbital == orbital) && d < best - 1e-9) {
                     best = d;
                     nearest = s;
                 }

@@ -8,7 +8,7 @@
 #include <string.h>
 
 /* These change no number of a realisation: a run may be continued with other values. */
-static const char EXEMPT_KEYS[] = "title ensemble.realisations ensemble.threads";
+static const char EXEMPT_KEYS[] = "ensemble.realisations ensemble.threads";
 static const char EXEMPT_BLOCKS[] = "ensemble.stop";
 
 static bool is_exempt(const sv_section *section, const char *key)
@@ -202,6 +202,12 @@ sv_status sv_identity_write(sv_reader *reader, const sv_setup *setup, char **ret
     for (const sv_section *s = reader->sections; s != NULL; s = s->next)
         if (strcmp(s->block->name, "sweep") != 0)
             add_section(&w, s);
+    /* A marker without keys leaves no line of its own above. */
+    for (const sv_section *s = reader->sections; s != NULL; s = s->next)
+        if (strcmp(s->block->name, "markers") == 0 && s->kind != NULL) {
+            sv_text_add(&w.line, "%s = asked for", s->path);
+            end_line(&w);
+        }
     sv_text_add(&w.line, "model.energy_unit = ");
     add_real(&w, setup->energy_unit);
     end_line(&w);

@@ -90,7 +90,7 @@ SV_TEST(titles_are_shown_and_never_run)
     CHECK(stat(inside("pwned"), &info) != 0 && stat("pwned", &info) != 0);
     size_t size;
     char *script = slurp(files.script, &size);
-    CHECK(strstr(script, "set label 1 'it''s `touch pwned` \"$(touch pwned)\" <b>&") != NULL);
+    CHECK(strstr(script, "set label 1 'it\u2019s `touch pwned` \"$(touch pwned)\" <b>&") != NULL);
     free(script);
     if (!files.drawn)
         return;

@@ -322,6 +322,55 @@ SV_TEST(measured_defects_match_sites_or_are_refused)
     sv_model_free(test_context(), &model);
 }
 
+/* Rows on one site are averaged; `on` picks among its own sites; a row by cell empties the cell. */
+SV_TEST(measured_rows_mean_what_they_say)
+{
+    sv_model model = fixture_haldane(0.2, 1.0, 0.0);
+    sv_flake_spec spec = fixture_cells(&model, 4, 4, false);
+    sv_flake flake = fixture_flake(&model, &spec);
+    sv_mark rows[3] = {{.at = {0.0, 0.0}, .orbital = -1, .energy = 1.0},
+                       {.at = {0.1, 0.0}, .orbital = -1, .energy = 2.0},
+                       {.at = {1.2, 0.1}, .orbital = -1, .energy = 5.0}};
+    sv_disorder d = {.name = "map",
+                     .type = SV_DISORDER_ONSITE,
+                     .on = -1,
+                     .has_marks = true,
+                     .marks = rows,
+                     .n_marks = 3,
+                     .tolerance = 0.75};
+    sv_sample s = drawn(&flake, &d, 1, 0);
+    CHECK_CLOSE(s.potential[0], 1.5, 1e-15); /* mean of two rows on A of cell (0, 0) */
+    CHECK_CLOSE(s.potential[1], 0.0, 0.0);
+    CHECK_CLOSE(s.potential[2 * 4], 5.0, 1e-15); /* A of cell (1, 0) */
+    CHECK_INT(s.inventory.marks_merged, 1);
+    sv_sample_free(test_context(), &s);
+    d.on = 1; /* the nearest B instead */
+    s = drawn(&flake, &d, 1, 0);
+    CHECK_CLOSE(s.potential[0], 0.0, 0.0);
+    CHECK_CLOSE(s.potential[1], 1.5, 1e-15);
+    sv_sample_free(test_context(), &s);
+    sv_mark cells[2] = {{.by_cell = true, .cell = {2, 1}, .orbital = -1, .line = 2},
+                        {.by_cell = true, .cell = {0, 3}, .orbital = 1, .line = 3}};
+    sv_disorder v = {.name = "vac",
+                     .type = SV_DISORDER_VACANCIES,
+                     .on = -1,
+                     .has_marks = true,
+                     .marks = cells,
+                     .n_marks = 2,
+                     .tolerance = 0.75};
+    s = drawn(&flake, &v, 1, 0);
+    CHECK_INT(s.inventory.vacancies, 3);
+    CHECK(!contains(&s, 2 * (4 * 2 + 1)) && !contains(&s, 2 * (4 * 2 + 1) + 1));
+    CHECK(contains(&s, 2 * 3) && !contains(&s, 2 * 3 + 1));
+    sv_sample_free(test_context(), &s);
+    v.on = 0; /* contradicts the orbital of the second row */
+    sv_table_fault fault = {0};
+    CHECK_STATUS(SV_INVALID_INPUT, sv_marks_check(test_context(), &flake, &v, &fault));
+    CHECK_INT(fault.line, 3);
+    sv_flake_free(test_context(), &flake);
+    sv_model_free(test_context(), &model);
+}
+
 /* Exports read back: the header of Matrix Market (math.nist.gov/MatrixMarket/formats.html). */
 SV_TEST(exports_are_complete)
 {

@@ -166,14 +166,14 @@ SV_TEST(nearest_site)
         double at[2] = {8.0 * sv_stream_uniform(&stream, k, 0, 0),
                         4.0 * sv_stream_uniform(&stream, k, 1, 0)};
         double found, best = INFINITY;
-        sv_index site = sv_flake_nearest(&flake, at, &found);
+        sv_index site = sv_flake_nearest(&flake, at, -1, &found);
         for (sv_index s = 0; s < flake.n_sites; s++)
             best = fmin(best, hypot(flake.sites[s].at[0] - at[0], flake.sites[s].at[1] - at[1]));
         if (best < 1.0)
             CHECK(site >= 0 && fabs(found - best) < 1e-8);
     }
     double distance;
-    CHECK_INT(sv_flake_nearest(&flake, (const double[2]){1e12, 0}, &distance), -1);
+    CHECK_INT(sv_flake_nearest(&flake, (const double[2]){1e12, 0}, -1, &distance), -1);
     sv_flake_free(test_context(), &flake);
     sv_model_free(test_context(), &model);
 }

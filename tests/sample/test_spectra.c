@@ -239,7 +239,7 @@ SV_TEST(levels_next_to_the_vacancy_mode)
     sv_flake flake = fixture_flake(&model, &spec);
     double distance;
     sv_index site = sv_flake_nearest(
-        &flake, (const double[2]){flake.centre[0], flake.centre[1] + 0.5}, &distance);
+        &flake, (const double[2]){flake.centre[0], flake.centre[1] + 0.5}, -1, &distance);
     sv_mark mark = {.at = {flake.sites[site].at[0], flake.sites[site].at[1]}, .orbital = -1};
     sv_disorder d = {.name = "vac",
                      .type = SV_DISORDER_VACANCIES,
