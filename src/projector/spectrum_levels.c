@@ -150,7 +150,8 @@ static sv_status count_at_energy(sv_context *context, spectrum_work *w, counted 
             sv_inertia_levels_near(context, c->plan, &inertia, energy, 1e-9, (double)NAN, &levels);
     if (status != SV_OK)
         return status;
-    double poor = 1e-6 * fmax(levels.above - levels.below, w->out.resolution);
+    double gap = levels.above - levels.below;
+    double poor = fmax(isfinite(gap) ? 1e-6 * gap : 0.0, 1e4 * w->out.resolution);
     c->highest = levels.error_below < poor ? levels.below : (double)NAN;
     c->lowest = levels.error_above < poor ? levels.above : (double)NAN;
     return SV_OK;
@@ -172,17 +173,23 @@ static sv_status count_electrons(sv_context *context, spectrum_work *w, counted 
     return SV_OK;
 }
 
+/* Distance to the nearer level, as far as one is known. */
+static double nearest_level(const sv_spectrum *out, const counted *c)
+{
+    double below = fabs(out->fermi_energy - c->highest),
+           above = fabs(c->lowest - out->fermi_energy);
+    double nearest = fmin(isfinite(below) ? below : DBL_MAX, isfinite(above) ? above : DBL_MAX);
+    return c->decided && nearest < DBL_MAX ? nearest : 0.0;
+}
+
 /* Half width of an interval about the Fermi energy with about the wanted number of states. */
-static sv_status widen(sv_context *context, const spectrum_work *w, const counted *c,
-                       double *ret_half_width)
+static sv_status choose_width(sv_context *context, const spectrum_work *w, const counted *c,
+                              int most, double *ret_half_width)
 {
     const sv_spectrum *out = &w->out;
     sv_inertia low, high;
     double width = out->bounds[1] - out->bounds[0], wanted = w->options->near_states;
-    double below = fabs(out->fermi_energy - c->highest),
-           above = fabs(c->lowest - out->fermi_energy);
-    double nearest = fmin(isfinite(below) ? below : width, isfinite(above) ? above : width);
-    double half = 1.05 * (c->decided ? nearest : 0.0) + 0.5 * wanted * width / (double)out->sites;
+    double half = 1.05 * nearest_level(out, c) + 0.5 * wanted * width / (double)out->sites;
     for (int k = 0; k < 40; k++) {
         sv_status status = sv_inertia_factor(context, c->plan, &w->sample->hamiltonian,
                                              out->fermi_energy - half, &low);
@@ -192,9 +199,10 @@ static sv_status widen(sv_context *context, const spectrum_work *w, const counte
         if (status != SV_OK)
             return status;
         double inside = (double)(high.negative - low.negative);
-        if (inside >= wanted || half > 2.0 * width)
+        if ((inside >= wanted && inside <= most) || half > 2.0 * width)
             break;
-        half *= fmin(2.0, fmax(1.1, wanted / fmax(inside, 0.5)));
+        half *= inside < wanted ? fmin(2.0, fmax(1.1, wanted / fmax(inside, 0.5)))
+                                : fmax(0.5, most / inside);
     }
     *ret_half_width = half;
     return SV_OK;
@@ -204,13 +212,18 @@ static sv_status widen(sv_context *context, const spectrum_work *w, const counte
 static sv_status find_near(sv_context *context, spectrum_work *w, const counted *c)
 {
     sv_near_states states = {0};
-    double half = 0.0;
+    double half = 0.0, aside = 0.0;
     int most = w->options->near_states + w->options->near_states / 2;
-    sv_status status = widen(context, w, c, &half);
-    if (status == SV_OK) /* a little aside: a level at the Fermi energy would spoil the inverse */
-        status = sv_near_states_find(context, &w->sample->hamiltonian,
-                                     w->out.fermi_energy + 0.0137 * half, half, most, &states);
-    if (status == SV_OK && states.count > 0)
+    sv_status status = choose_width(context, w, c, most, &half);
+    if (status == SV_OK) { /* a little aside: a level at the Fermi energy would spoil the inverse */
+        aside = 0.0137 * half;
+        status = sv_near_states_find(context, &w->sample->hamiltonian, w->out.fermi_energy + aside,
+                                     half, most, &states);
+    }
+    if (status == SV_OK && (states.count == 0 || states.half_width <= aside))
+        snprintf(w->out.near_reason, sizeof w->out.near_reason,
+                 "more than %d states lie at the Fermi energy", most);
+    else if (status == SV_OK)
         status =
             sv_spectrum_describe_states(context, w, states.energies, states.vectors, states.count);
     sv_near_states_free(context, &states);

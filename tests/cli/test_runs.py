@@ -197,6 +197,16 @@ def another_identity_is_refused_unless_forced():
 
 
 @test
+def a_marker_more_is_another_identity():
+    path, place, _ = new_run()
+    with_bott = re.sub(r"markers:.*", "markers: {local_chern: {}, bott: {}, localizer: {}}", read(path), count=1)
+    check(with_bott != read(path), "the sheet has no markers line to change")
+    other = write(os.path.join(folder(), "more.yaml"), with_bott)
+    result = run("average", other, "-o", place, code=4)
+    contains(result.err, "localizer", "message")
+
+
+@test
 def force_records_the_change():
     path, place, _ = new_run()
     forced = run("average", path, "-o", place, "-s", "4", "--force", code=0)

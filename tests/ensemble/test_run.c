@@ -287,6 +287,48 @@ SV_TEST(a_marker_without_a_torus_is_absent)
     release(&p);
 }
 
+/* A record that lacks a marker must never be read as an index of 0. */
+SV_TEST(records_with_too_few_outcomes_are_unresolved)
+{
+    problem p;
+    make(&p, 4, 0.0);
+    sv_ensemble e = {0};
+    sv_summary s = {0};
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 3, &e));
+    for (int k = 0; k < 3; k++)
+        set(&e, k, SV_RESOLVED, 1);
+    CHECK_OK(sv_summarise(test_context(), &e, &p.point, 0, 1, 3, &s));
+    CHECK(!s.exists && s.unresolved == 3);
+    sv_summary_free(test_context(), &s);
+    sv_ensemble_free(test_context(), &e);
+    release(&p);
+}
+
+/* A window whose sites are all vacant: a mean of 0, no call of BLAS with nothing in it. */
+SV_TEST(an_empty_window_counts_as_zero)
+{
+    problem p;
+    make(&p, 4, 0.0);
+    sv_mark marks[4];
+    for (int k = 0; k < 4; k++)
+        marks[k] = (sv_mark){.by_cell = true, .cell = {1 + k / 2, 1 + k % 2}, .orbital = -1};
+    sv_disorder hole = {.name = "hole",
+                        .type = SV_DISORDER_VACANCIES,
+                        .on = -1,
+                        .has_marks = true,
+                        .marks = marks,
+                        .n_marks = 4,
+                        .tolerance = 0.1};
+    p.point.disorder = &hole;
+    p.point.n_markers = 1;
+    p.point.occupation = (sv_occupation){.by = SV_BY_ENERGY, .fermi_energy = 0.1};
+    sv_record record;
+    CHECK_OK(sv_realise(test_context(), &p.point, 0, NULL, NULL, &record));
+    CHECK(record.outcomes[0].verdict == SV_RESOLVED && record.outcomes[0].value == 0.0);
+    CHECK_INT(record.outcomes[0].window_cells, 4);
+    release(&p);
+}
+
 /* A realisation without sites, or with fewer sites than electrons, is recorded as unresolved. */
 SV_TEST(empty_realisations_are_recorded)
 {

@@ -229,6 +229,24 @@ SV_TEST(it_is_used_when_asked_for)
     release(&b);
 }
 
+/* The forecast knows the size of the factors. */
+SV_TEST(forecast_knows_the_factors)
+{
+    bench b;
+    sv_sparse square = {0};
+    sv_definite *d = NULL;
+    double bytes, operations;
+    make(&b, 0, 30, 1.0, 0);
+    CHECK_OK(sv_sparse_square(test_context(), &b.sample.hamiltonian, 0.0, 1.0, &square));
+    CHECK_OK(sv_definite_make(test_context(), &square, 1, &d));
+    sv_projector_forecast(SV_ENGINE_RATIONAL, b.sample.n, &bytes, &operations);
+    CHECK_CLOSE(25.0 * sv_definite_bytes(d) / bytes, 1.0, 0.3);
+    CHECK(operations > 1e8);
+    sv_definite_free(test_context(), d);
+    sv_sparse_free(test_context(), &square);
+    release(&b);
+}
+
 static long allowed;
 static sv_allocator inner;
 
