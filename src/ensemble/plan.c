@@ -294,8 +294,9 @@ static sv_status plan_chebyshev(sv_context *context, sv_case *point, double samp
 }
 
 /* The rational engine finds what it must resolve by itself, sample by sample; only the sampling of
- * large windows is settled here. It is never chosen, only asked for: at 1,800 sites it costs twice
- * as much as near levels one by one and a polynomial for the others. */
+ * large windows is settled here. It is never chosen, only asked for: measured at 1,800 sites with
+ * levels filling the gap it takes 3.0 s, near levels one by one and a polynomial for the others
+ * 0.85 s, the dense engine 3.4 s; at 20,000 sites a column costs as much as degree 8,000. */
 static sv_status plan_rational(sv_context *context, sv_case *point, double sampling_error,
                                sv_plan *plan)
 {

@@ -17,103 +17,161 @@
 #include <float.h>
 #include <math.h>
 
-typedef float _Complex narrow;
-
 static const double MOST_RADIUS = 0.95;
 static const double MOST_DOUBT = 1.0; /* rad, of the 2π between two integers */
 
+/* Real and imaginary parts apart: a complex product by three real ones instead of four. */
+typedef struct split {
+    float *re, *im, *both; /* both: scratch for the sum of the parts, or NULL */
+} split;
+
 typedef struct series_work {
     int n, m;
-    narrow *psi, *turned;            /* n × m */
-    narrow *u, *v, *vu, *uv, *k, *l; /* m × m; the pairs (u, v) and (vu, uv) are used again */
-    double error;                    /* ε ≥ ‖K computed − K exact‖ */
-    double radius;                   /* ρ */
-    double sum;                      /* of the logarithm so far: its imaginary part */
+    split psi, turned;    /* n × m; afterwards the room of vu, uv and the scratch of products */
+    split u, v;           /* m × m; afterwards K and K² */
+    split vu, uv, k, l;   /* borrowed names */
+    float *product;       /* m × m */
+    float *cosine, *sine; /* n */
+    double error;         /* ε ≥ ‖K computed − K exact‖ */
+    double radius;        /* ρ */
+    double sum;           /* of the logarithm so far: its imaginary part */
 } series_work;
+
+static void free_split(sv_context *context, split *s)
+{
+    sv_give(context, s->re);
+    sv_give(context, s->im);
+    sv_give(context, s->both);
+}
 
 static void free_work(sv_context *context, series_work *w)
 {
-    sv_give(context, w->psi);
-    sv_give(context, w->turned);
-    sv_give(context, w->u);
-    sv_give(context, w->v);
-    sv_give(context, w->vu);
-    sv_give(context, w->uv);
+    split *all[] = {&w->psi, &w->turned, &w->u, &w->v};
+    for (int k = 0; k < 4; k++)
+        free_split(context, all[k]);
+    sv_give(context, w->product);
+    sv_give(context, w->cosine);
+    sv_give(context, w->sine);
+}
+
+static sv_status take_split(sv_context *context, sv_index count, bool with_both, split *s)
+{
+    sv_status status;
+    if ((status = sv_take_raw(context, count, sizeof *s->re, &s->re)) != SV_OK ||
+        (status = sv_take_raw(context, count, sizeof *s->im, &s->im)) != SV_OK)
+        return status;
+    return with_both ? sv_take_raw(context, count, sizeof *s->both, &s->both) : SV_OK;
 }
 
 static sv_status take_work(sv_context *context, const sv_basis *basis, series_work *w)
 {
     sv_index n = basis->n, m = basis->columns;
-    size_t size = sizeof(narrow);
     sv_status status;
     *w = (series_work){.n = (int)n, .m = (int)m};
     /* Seven products of matrices of norm ≤ 1: rounding errors of random sign give a few u √m, u
      * the unit roundoff; a factor of about thirty lies between that and this. */
     w->error = 64.0 * (double)FLT_EPSILON * sqrt((double)m);
-    if ((status = sv_take_raw(context, n * m, size, &w->psi)) != SV_OK ||
-        (status = sv_take_raw(context, n * m, size, &w->turned)) != SV_OK ||
-        (status = sv_take_raw(context, m * m, size, &w->u)) != SV_OK ||
-        (status = sv_take_raw(context, m * m, size, &w->v)) != SV_OK ||
-        (status = sv_take_raw(context, m * m, size, &w->vu)) != SV_OK)
+    if ((status = take_split(context, n * m, true, &w->psi)) != SV_OK ||
+        (status = take_split(context, n * m, true, &w->turned)) != SV_OK ||
+        (status = take_split(context, m * m, false, &w->u)) != SV_OK ||
+        (status = take_split(context, m * m, false, &w->v)) != SV_OK ||
+        (status = sv_take_raw(context, m * m, sizeof(float), &w->product)) != SV_OK ||
+        (status = sv_take_raw(context, n, sizeof(float), &w->cosine)) != SV_OK)
         return status;
-    return sv_take_raw(context, m * m, size, &w->uv);
+    return sv_take_raw(context, n, sizeof(float), &w->sine);
 }
 
-static void compress(series_work *w, const double (*uv)[2], int axis, narrow *result)
+/* both = re + sign·im */
+static void add_parts(const split *a, float sign, sv_index count, float *both)
 {
-    const narrow one = 1.0F, zero = 0.0F;
-    narrow *phase = w->vu; /* free until the products; n may exceed m², so in pieces */
-    sv_index room = (sv_index)w->m * w->m;
-    for (sv_index from = 0; from < w->n; from += room) {
-        sv_index to = from + room < w->n ? from + room : w->n;
-        for (sv_index r = from; r < to; r++) {
-            double angle = 2.0 * M_PI * uv[r][axis];
-            phase[r - from] = CMPLXF((float)cos(angle), (float)sin(angle));
-        }
-        for (sv_index c = 0; c < w->m; c++)
-            for (sv_index r = from; r < to; r++)
-                w->turned[r + c * w->n] = phase[r - from] * w->psi[r + c * w->n];
+    for (sv_index e = 0; e < count; e++)
+        both[e] = a->re[e] + sign * a->im[e];
+}
+
+/* c = op(a) op(b), m × m, with `inner` terms; left and right hold re ± im of a and b. At most one
+ * of them is an adjoint, for which the sign is −1 in `sign`. */
+static void three_products(const series_work *w, int inner, CBLAS_TRANSPOSE turn_a, const split *a,
+                           const float *left, CBLAS_TRANSPOSE turn_b, const split *b,
+                           const float *right, float sign, split *c)
+{
+    int m = w->m, lead_a = turn_a == CblasNoTrans ? m : inner;
+    int lead_b = turn_b == CblasNoTrans ? inner : m;
+    const float *factors[3][2] = {{a->re, b->re}, {a->im, b->im}, {left, right}};
+    float *results[3] = {c->re, w->product, c->im};
+    for (int k = 0; k < 3; k++)
+        cblas_sgemm(CblasColMajor, turn_a, turn_b, m, m, inner, 1.0F, factors[k][0], lead_a,
+                    factors[k][1], lead_b, 0.0F, results[k], m);
+    for (sv_index e = 0; e < (sv_index)m * m; e++) {
+        float first = c->re[e], second = sign * w->product[e];
+        c->re[e] = first - second;
+        c->im[e] -= first + second;
     }
-    cblas_cgemm(CblasColMajor, CblasConjTrans, CblasNoTrans, w->m, w->m, w->n, &one, w->psi, w->n,
-                w->turned, w->n, &zero, result, w->m);
 }
 
-static void multiply(const series_work *w, const narrow *a, const narrow *b, bool adjoint_b,
-                     narrow *product)
+/* Ψ† e^{2πi·coordinate} Ψ */
+static void compress(series_work *w, const double (*uv)[2], int axis, split *result)
 {
-    const narrow one = 1.0F, zero = 0.0F;
-    cblas_cgemm(CblasColMajor, CblasNoTrans, adjoint_b ? CblasConjTrans : CblasNoTrans, w->m, w->m,
-                w->m, &one, a, w->m, b, w->m, &zero, product, w->m);
+    for (sv_index r = 0; r < w->n; r++) {
+        double angle = 2.0 * M_PI * uv[r][axis];
+        w->cosine[r] = (float)cos(angle);
+        w->sine[r] = (float)sin(angle);
+    }
+    for (sv_index c = 0; c < w->m; c++)
+        for (sv_index r = 0; r < w->n; r++) {
+            float re = w->psi.re[r + c * w->n], im = w->psi.im[r + c * w->n];
+            w->turned.re[r + c * w->n] = w->cosine[r] * re - w->sine[r] * im;
+            w->turned.im[r + c * w->n] = w->cosine[r] * im + w->sine[r] * re;
+        }
+    add_parts(&w->turned, 1.0F, (sv_index)w->n * w->m, w->turned.both);
+    three_products(w, w->n, CblasTrans, &w->psi, w->psi.both, CblasNoTrans, &w->turned,
+                   w->turned.both, -1.0F, result);
+}
+
+/* c = a b, or a b† */
+static void multiply(const series_work *w, const split *a, const split *b, bool adjoint_b, split *c)
+{
+    float sign = adjoint_b ? -1.0F : 1.0F;
+    sv_index count = (sv_index)w->m * w->m;
+    add_parts(a, 1.0F, count, w->psi.both);
+    add_parts(b, sign, count, w->turned.both);
+    three_products(w, w->m, CblasNoTrans, a, w->psi.both, adjoint_b ? CblasTrans : CblasNoTrans, b,
+                   w->turned.both, sign, c);
 }
 
 /* K, in the place of u; u and v are not needed afterwards. */
 static void make_k(series_work *w, const sv_basis *basis, const double (*uv)[2])
 {
-    for (sv_index e = 0; e < (sv_index)w->n * w->m; e++)
-        w->psi[e] = (narrow)basis->vectors[e];
-    compress(w, uv, 0, w->u);
-    compress(w, uv, 1, w->v);
-    multiply(w, w->v, w->u, false, w->vu);
-    multiply(w, w->u, w->v, false, w->uv);
-    multiply(w, w->vu, w->uv, true, w->u);
+    sv_index count = (sv_index)w->n * w->m;
+    for (sv_index e = 0; e < count; e++) {
+        w->psi.re[e] = (float)creal(basis->vectors[e]);
+        w->psi.im[e] = (float)cimag(basis->vectors[e]);
+    }
+    add_parts(&w->psi, -1.0F, count, w->psi.both);
+    compress(w, uv, 0, &w->u);
+    compress(w, uv, 1, &w->v);
+    w->vu = (split){w->psi.re, w->psi.im, NULL};
+    w->uv = (split){w->turned.re, w->turned.im, NULL};
+    multiply(w, &w->v, &w->u, false, &w->vu);
+    multiply(w, &w->u, &w->v, false, &w->uv);
+    multiply(w, &w->vu, &w->uv, true, &w->u);
     for (sv_index c = 0; c < w->m; c++)
-        w->u[c + c * w->m] -= 1.0F;
+        w->u.re[c + c * w->m] -= 1.0F;
     w->k = w->u;
     w->l = w->v;
 }
 
-static double norm(const series_work *w, const narrow *a)
+static double norm(const series_work *w, const split *a)
 {
     double sum = 0.0;
     for (sv_index e = 0; e < (sv_index)w->m * w->m; e++) {
-        double re = (double)crealf(a[e]), im = (double)cimagf(a[e]);
+        double re = (double)a->re[e], im = (double)a->im[e];
         sum += re * re + im * im;
     }
     return sqrt(sum);
 }
 
 /* Im Tr AB */
-static double trace_of_product(const series_work *w, const narrow *a, const narrow *b)
+static double trace_of_product(const series_work *w, const split *a, const split *b)
 {
     const int tile = 32; /* one of the two is read along rows: keep that in cache */
     int m = w->m;
@@ -122,31 +180,33 @@ static double trace_of_product(const series_work *w, const narrow *a, const narr
         for (int r0 = 0; r0 < m; r0 += tile)
             for (int c = c0; c < m && c < c0 + tile; c++)
                 for (int r = r0; r < m && r < r0 + tile; r++) {
-                    narrow x = a[r + (sv_index)c * m], y = b[c + (sv_index)r * m];
-                    sum += (double)crealf(x) * (double)cimagf(y) +
-                           (double)cimagf(x) * (double)crealf(y);
+                    sv_index x = r + (sv_index)c * m, y = c + (sv_index)r * m;
+                    sum +=
+                        (double)a->re[x] * (double)b->im[y] + (double)a->im[x] * (double)b->re[y];
                 }
     return sum;
 }
 
-/* √(‖K‖₁ ‖K‖_∞) ≥ ‖K‖₂; `rows` has room for m numbers. */
-static double mixed_norm(const series_work *w, double *rows)
+/* √(‖K‖₁ ‖K‖_∞) ≥ ‖K‖₂ */
+static double mixed_norm(const series_work *w)
 {
+    float *rows = w->psi.both; /* sums of m numbers, far more exact than the bound is sharp */
     double one = 0.0, infinity = 0.0;
     for (int r = 0; r < w->m; r++)
-        rows[r] = 0.0;
+        rows[r] = 0.0F;
     for (int c = 0; c < w->m; c++) {
-        double column = 0.0;
+        float column = 0.0F;
         for (int r = 0; r < w->m; r++) {
-            double size = (double)cabsf(w->k[r + (sv_index)c * w->m]);
+            float re = w->k.re[r + (sv_index)c * w->m], im = w->k.im[r + (sv_index)c * w->m];
+            float size = sqrtf(re * re + im * im);
             column += size;
             rows[r] += size;
         }
-        one = fmax(one, column);
+        one = fmax(one, (double)column);
     }
     for (int r = 0; r < w->m; r++)
-        infinity = fmax(infinity, rows[r]);
-    return sqrt(one * infinity);
+        infinity = fmax(infinity, (double)rows[r]);
+    return 1.001 * sqrt(one * infinity);
 }
 
 /* Whether the sum up to j = 2k, with ‖K^k‖ given, leaves one integer. `widening` bounds the change
@@ -165,20 +225,20 @@ static bool settles(const series_work *w, int k, double norm_of_power, double wi
 /* k = 1: the terms K and K². */
 static bool first_powers(series_work *w)
 {
-    double trace = 0.0, size = norm(w, w->k);
+    double trace = 0.0, size = norm(w, &w->k);
     for (sv_index c = 0; c < w->m; c++)
-        trace += (double)cimagf(w->k[c + c * w->m]);
-    w->sum = trace - trace_of_product(w, w->k, w->k) / 2.0;
-    w->radius = fmin(size, mixed_norm(w, (double *)(void *)w->vu)) + w->error;
+        trace += (double)w->k.im[c + c * w->m];
+    w->sum = trace - trace_of_product(w, &w->k, &w->k) / 2.0;
+    w->radius = fmin(size, mixed_norm(w)) + w->error;
     return settles(w, 1, size, w->error);
 }
 
 /* k = 2: L = K² adds K³ and K⁴. ‖K‖₂ ≤ 2 since ‖U‖₂, ‖V‖₂ ≤ 1. */
 static bool second_powers(series_work *w)
 {
-    multiply(w, w->k, w->k, false, w->l);
-    double size = norm(w, w->l), widening = 4.0 * w->error + w->error * w->error;
-    w->sum += trace_of_product(w, w->k, w->l) / 3.0 - trace_of_product(w, w->l, w->l) / 4.0;
+    multiply(w, &w->k, &w->k, false, &w->l);
+    double size = norm(w, &w->l), widening = 4.0 * w->error + w->error * w->error;
+    w->sum += trace_of_product(w, &w->k, &w->l) / 3.0 - trace_of_product(w, &w->l, &w->l) / 4.0;
     w->radius = fmin(w->radius, sqrt(size + widening));
     return settles(w, 2, size, widening);
 }
@@ -186,14 +246,14 @@ static bool second_powers(series_work *w)
 /* k = 4: Q = L² and K³ add K⁵ … K⁸. */
 static bool fourth_powers(series_work *w)
 {
-    narrow *q = w->vu, *cube = w->uv;
-    multiply(w, w->l, w->l, false, q);
+    split *q = &w->vu, *cube = &w->uv;
+    multiply(w, &w->l, &w->l, false, q);
     double size = norm(w, q), widening = 40.0 * w->error;
     w->radius = fmin(w->radius, sqrt(sqrt(size + widening)));
     if (!(w->radius <= MOST_RADIUS))
         return false;
-    multiply(w, w->k, w->l, false, cube);
-    w->sum += trace_of_product(w, w->k, q) / 5.0 - trace_of_product(w, w->l, q) / 6.0 +
+    multiply(w, &w->k, &w->l, false, cube);
+    w->sum += trace_of_product(w, &w->k, q) / 5.0 - trace_of_product(w, &w->l, q) / 6.0 +
               trace_of_product(w, cube, q) / 7.0 - trace_of_product(w, q, q) / 8.0;
     return settles(w, 4, size, widening);
 }

@@ -7,7 +7,7 @@
 #include <cblas.h>
 #include <math.h>
 
-static const double POLYNOMIAL_ERROR = 1e-12;
+static const double POLYNOMIAL_ERROR = 1e-11;
 static const double LEAST_GAP = 1e-10; /* of the norm: nearer levels are the dense engine's */
 static const double MOST_DEFECT = 1e-8;
 static const double EASY_DEGREE = 400.0;

@@ -90,6 +90,11 @@ static sv_status order_sites(sv_context *context, columns_work *w)
     for (sv_index r = 0; r < w->n; r++)
         order[r] = (ranked){site_rank(w, energies, r), r};
     qsort(order, (size_t)w->n, sizeof *order, by_rank);
+    /* Chosen ones and others ascending: memory is walked in order later. */
+    for (sv_index k = 0; k < w->n; k++)
+        order[k].rank = 0.0;
+    qsort(order, (size_t)w->s, sizeof *order, by_rank);
+    qsort(order + w->s, (size_t)(w->n - w->s), sizeof *order, by_rank);
     for (sv_index k = 0; k < w->n; k++)
         w->sites[k] = order[k].site;
 out:
@@ -131,7 +136,7 @@ static bool factor_overlaps(columns_work *w, double *real_work)
 {
     lapack_int s = (lapack_int)w->s, rank = 0;
     for (sv_index c = 0; c < s; c++)
-        for (sv_index r = 0; r < s; r++)
+        for (sv_index r = 0; r <= c; r++)
             w->factor[r + c * s] = w->p[w->sites[r] + c * w->n];
     lapack_int info = LAPACKE_zpstrf_work(LAPACK_COL_MAJOR, 'U', s, w->factor, s, w->pivot, &rank,
                                           LEAST_PIVOT, real_work);
@@ -152,12 +157,15 @@ static void orthonormalise(const columns_work *w, sv_complex *rest, sv_complex *
     if (others > 0)
         cblas_ztrsm(CblasColMajor, CblasRight, CblasUpper, CblasNoTrans, CblasNonUnit, (int)others,
                     (int)m, &one, w->factor, (int)s, rest, (int)others);
-    for (sv_index c = 0; c < m; c++) {
+    for (sv_index c = 0; c < m; c++)
         for (sv_index k = 0; k < others; k++)
             vectors[w->sites[s + k] + c * n] = rest[k + c * others];
+    const sv_index tile = 16; /* R is read along its rows */
+    for (sv_index c0 = 0; c0 < m; c0 += tile)
         for (sv_index k = 0; k < s; k++)
-            vectors[w->sites[w->pivot[k] - 1] + c * n] = k < c ? 0.0 : conj(w->factor[c + k * s]);
-    }
+            for (sv_index c = c0; c < m && c < c0 + tile; c++)
+                vectors[w->sites[w->pivot[k] - 1] + c * n] =
+                    k < c ? 0.0 : conj(w->factor[c + k * s]);
 }
 
 sv_status sv_occupied_columns(sv_context *context, const sv_sample *sample, sv_projector *filter,

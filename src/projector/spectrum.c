@@ -174,9 +174,8 @@ static void leave_levels(spectrum_work *w)
     sv_spectrum *out = &w->out;
     if (w->occupation->by == SV_BY_ENERGY)
         out->fermi_energy = w->occupation->fermi_energy;
-    snprintf(out->reason, sizeof out->reason,
-             "states are counted up to %lld sites; this sample has %lld",
-             (long long)w->options->count_sites, (long long)out->sites);
+    snprintf(out->reason, sizeof out->reason, "states are counted up to %lld sites",
+             (long long)w->options->count_sites);
     snprintf(out->near_reason, sizeof out->near_reason, "%s", out->reason);
 }
 

@@ -190,7 +190,9 @@ static sv_status choose_width(sv_context *context, const spectrum_work *w, const
     sv_inertia low, high;
     double width = out->bounds[1] - out->bounds[0], wanted = w->options->near_states;
     double half = 1.05 * nearest_level(out, c) + 0.5 * wanted * width / (double)out->sites;
-    for (int k = 0; k < 40; k++) {
+    for (int k = 0; k < 16; k++) {
+        if (sv_cancelled(context))
+            return SV_FAIL(context, SV_INTERRUPTED, "stopped during a search for levels");
         sv_status status = sv_inertia_factor(context, c->plan, &w->sample->hamiltonian,
                                              out->fermi_energy - half, &low);
         if (status == SV_OK)

@@ -2,6 +2,7 @@
 /* The Bott index by every way against the definition, on random samples near and far from
  * transitions. The twin below shares nothing with the library but the sample. */
 #include "fixtures.h"
+#include "selvedge/ensemble.h"
 
 #include <stdlib.h>
 
@@ -344,9 +345,55 @@ SV_TEST(no_and_all_electrons_and_closed_gaps)
         /* m = 0 closes the gap at k = (π, 0) and (0, π): levels at the Fermi energy. */
         o = marker_with((sv_engine)e, &critical, 6, &fixture_below_zero);
         CHECK(o.verdict == SV_UNRESOLVED && o.reason[0] != '\0');
+        CHECK_TEXT(o.engine, "dense"); /* the filter leaves such samples to it */
         o = marker_with((sv_engine)e, &model, 6, &fixture_below_zero);
         CHECK(o.verdict == SV_RESOLVED && o.index == 1);
     }
     sv_model_free(test_context(), &model);
     sv_model_free(test_context(), &critical);
+}
+
+/* Large tori take the filter unless dense is asked for, with the same index and levels. */
+SV_TEST(plans_choose_the_engine_of_the_basis)
+{
+    sv_context *context = test_context();
+    sv_model model = fixture_haldane(0.2, M_PI / 2, 0.0);
+    sv_record records[3];
+    const struct {
+        int side;
+        sv_engine asked, expected;
+    } rows[] = {{18, SV_ENGINE_AUTO, SV_ENGINE_CHEBYSHEV},
+                {18, SV_ENGINE_DENSE, SV_ENGINE_DENSE},
+                {12, SV_ENGINE_AUTO, SV_ENGINE_DENSE}};
+    sv_disorder pot = {.name = "pot", .type = SV_DISORDER_ONSITE, .on = -1, .width = 1.5};
+    for (int k = 0; k < 3; k++) {
+        sv_flake_spec spec = fixture_cells(&model, rows[k].side, rows[k].side, false);
+        sv_flake open = fixture_flake(&model, &spec);
+        spec.periodic[0] = spec.periodic[1] = true;
+        sv_flake closed = fixture_flake(&model, &spec);
+        sv_case point = {.open_flake = &open,
+                         .closed_flake = &closed,
+                         .disorder = &pot,
+                         .n_disorder = 1,
+                         .occupation = fixture_below_zero,
+                         .solve = sv_projector_options_default(),
+                         .seed = 1,
+                         .markers = {{.marker = sv_marker_find("bott")}},
+                         .n_markers = 1};
+        sv_plan plan;
+        point.solve.engine = rows[k].asked;
+        CHECK_OK(sv_case_plan(context, &point, false, 0.005, &plan));
+        CHECK_INT(point.solve.basis_engine, rows[k].expected);
+        CHECK_OK(sv_realise(context, &point, 0, NULL, NULL, &records[k]));
+        const sv_outcome *o = &records[k].outcomes[0];
+        CHECK_TEXT(o->engine, rows[k].expected == SV_ENGINE_DENSE ? "dense" : "chebyshev");
+        CHECK(o->verdict == SV_RESOLVED && o->index == 1);
+        sv_flake_free(context, &open);
+        sv_flake_free(context, &closed);
+    }
+    const sv_outcome *filtered = &records[0].outcomes[0], *dense = &records[1].outcomes[0];
+    CHECK_INT(filtered->electrons, dense->electrons);
+    CHECK_CLOSE(filtered->highest_occupied, dense->highest_occupied, 1e-8);
+    CHECK_CLOSE(filtered->lowest_empty, dense->lowest_empty, 1e-8);
+    sv_model_free(context, &model);
 }

@@ -218,4 +218,5 @@ SV_TEST(the_figure_without_gap_and_levels)
     CHECK_OK(sv_figure_spectrum(test_context(), folder, "torus", &f.result, &files));
     check_files(&files, "torus");
     CHECK(holds("torus.gp", "positions covered") && !holds("torus.gp", "nan"));
+    CHECK(holds("torus.gp", "using 1:(1/$2)") && !holds("torus.gp", "using 1:3"));
 }

@@ -136,12 +136,12 @@ SV_TEST(extreme_fillings_and_levels)
     release(&b);
 }
 
-static sv_outcome window_mean(const bench *b, sv_engine engine, double accuracy, double half_gap,
-                              double fermi)
+static sv_outcome window_mean(const bench *b, sv_engine engine, double share, double accuracy,
+                              double half_gap, double fermi)
 {
     sv_outcome outcome = sv_outcome_blank();
     sv_occupation below = {.by = SV_BY_ENERGY, .fermi_energy = fermi};
-    sv_value window[16] = {{.present = true, .real = {0.5}}};
+    sv_value window[16] = {{.present = true, .real = {share}}};
     sv_projector *p = project(b, &below, engine, accuracy, half_gap);
     sv_marker_input input = {
         .sample = &b->sample, .occupation = &below, .projector = p, .values = window};
@@ -168,13 +168,13 @@ SV_TEST(stated_errors_hold)
         bench b;
         double u = sv_stream_uniform(&stream, k, 0, 0), v = sv_stream_uniform(&stream, k, 1, 0);
         double w = sv_stream_uniform(&stream, k, 2, 0), fermi = 0.0;
-        make(&b, k % 2, 6 + k % 4, 6.0 * u, k);
-        sv_outcome exact = window_mean(&b, SV_ENGINE_DENSE, 1e-6, 0.0, fermi);
+        make(&b, k % 2, 5 + k % 4, 6.0 * u, k);
+        sv_outcome exact = window_mean(&b, SV_ENGINE_DENSE, 0.5, 1e-6, 0.0, fermi);
         if (k % 5 == 0) {
             fermi = exact.highest_occupied + pow(10.0, -6.0 - 2.0 * w);
-            exact = window_mean(&b, SV_ENGINE_DENSE, 1e-6, 0.0, fermi);
+            exact = window_mean(&b, SV_ENGINE_DENSE, 0.5, 1e-6, 0.0, fermi);
         }
-        sv_outcome fast = window_mean(&b, SV_ENGINE_RATIONAL, pow(10.0, -8.0 + 7.0 * v),
+        sv_outcome fast = window_mean(&b, SV_ENGINE_RATIONAL, 0.5, pow(10.0, -8.0 + 7.0 * v),
                                       k % 3 == 1 ? pow(10.0, -4.0 + 4.0 * w) : 0.0, fermi);
         double error = fabs(fast.value - exact.value);
         double share = error / (fast.numerical_error + exact.numerical_error);
@@ -191,6 +191,35 @@ SV_TEST(stated_errors_hold)
     CHECK(worst <= FACTOR);
     CHECK(tightest < 1e-7);
     CHECK(largest > 1e-3); /* hard cases were among them */
+}
+
+/*
+ * A few cells of gapped samples at coarse accuracies, where the error is that of the approximation
+ * alone: its overshoots above 1 and below 0 can cancel in what the columns show of themselves, so
+ * the engine's own statement has to cover them. Single sites exceed what is stated without it up to
+ * ten times; over one cell the margin tells: measured, the true error is at most 0.25 times the
+ * stated one, and 0.51 times without the engine's statement.
+ */
+SV_TEST(overshoots_are_covered)
+{
+    enum { SAMPLES = 300 };
+    int exceeded = 0;
+    double worst = 0.0;
+    for (int k = 0; k < SAMPLES; k++) {
+        bench b;
+        make(&b, 1, 8, 0.5, k);
+        sv_outcome exact = window_mean(&b, SV_ENGINE_DENSE, 0.1, 1e-6, 0.0, 0.0);
+        sv_outcome fast =
+            window_mean(&b, SV_ENGINE_RATIONAL, 0.1, pow(10.0, 0.5 - 0.015 * k), 0.0, 0.0);
+        double share = fabs(fast.value - exact.value) / (fast.numerical_error + 1e-12);
+        exceeded += share > 1.0;
+        worst = fmax(worst, share);
+        release(&b);
+    }
+    printf("# true error above the stated one in %d of %d, at most %.2f times\n", exceeded, SAMPLES,
+           worst);
+    CHECK_INT(exceeded, 0);
+    CHECK(worst < 0.4);
 }
 
 static sv_case case_of(const bench *b, const sv_disorder *d)
@@ -221,7 +250,7 @@ SV_TEST(it_is_used_when_asked_for)
     CHECK(strncmp(plan.reason, "rational", 8) == 0);
     CHECK_OK(sv_realise(test_context(), &point, 0, NULL, NULL, &record));
     CHECK_TEXT(record.outcomes[0].engine, "rational");
-    sv_outcome exact = window_mean(&b, SV_ENGINE_DENSE, 1e-6, 0.0, 0.0);
+    sv_outcome exact = window_mean(&b, SV_ENGINE_DENSE, 0.5, 1e-6, 0.0, 0.0);
     CHECK_CLOSE(record.outcomes[0].value, exact.value, 1e-6);
     point = case_of(&b, &d);
     point.markers[0].marker = sv_marker_find("bott"); /* needs a basis */

@@ -79,6 +79,11 @@ SV_TEST(counted_and_exact_levels_agree)
                                 : fabs(s->near[f].edge_weight - exact.near[e].edge_weight) < 1e-6);
                 }
         CHECK(both >= 8);
+        int next_to = 0; /* the interval is about the Fermi energy */
+        for (int f = 0; f < s->n_near; f++)
+            next_to += fabs(s->near[f].energy - exact.highest_occupied) < 1e-9 ||
+                       fabs(s->near[f].energy - exact.lowest_empty) < 1e-9;
+        CHECK_INT(next_to, 2);
         sv_spectrum_free(test_context(), &exact);
         sv_give(test_context(), levels);
         release(&b);
@@ -334,4 +339,39 @@ SV_TEST(the_forecast_of_memory_follows_the_routes)
     CHECK(sv_spectrum_bytes(100000) > 81.0 * 16.0 * 1e5); /* a Lanczos basis */
     CHECK(sv_spectrum_bytes(1000000) > 512.0 * 1e6);      /* two panels */
     CHECK(sv_spectrum_bytes(1000000) < 2e9);
+}
+
+static long allowed;
+static sv_allocator inner;
+
+static void *scarce_take(size_t bytes, void *user)
+{
+    return allowed-- > 0 ? inner.take(bytes, user) : NULL;
+}
+
+/* The k-th allocation fails, k = 0, 1, 2, …: a status, nothing returned, no leak (the harness
+ * counts). */
+SV_TEST(every_allocation_may_fail)
+{
+    bench b;
+    make_flake(&b, fixture_qi_wu_zhang(-1.0), 5, 5, false);
+    draw(&b, 1.0, 0.0, 1);
+    sv_context *context = test_context();
+    inner = context->allocator;
+    context->allocator.take = scarce_take;
+    for (int exact = 0; exact < 2; exact++) {
+        sv_spectrum_options options = sv_spectrum_options_default();
+        options.exact_sites = exact ? 400 : 0;
+        sv_status status = SV_NO_MEMORY;
+        long k = 0;
+        for (; status != SV_OK && k < 1000; k++) {
+            allowed = k;
+            status = sv_spectrum_make(context, &b.sample, &at_zero, &options, &b.spectrum);
+            CHECK(status == SV_OK || (status == SV_NO_MEMORY && b.spectrum.near == NULL));
+        }
+        CHECK(status == SV_OK && k > 10);
+        sv_spectrum_free(context, &b.spectrum);
+    }
+    context->allocator = inner;
+    release(&b);
 }
