@@ -322,6 +322,14 @@ static sv_engine basis_engine(const sv_case *point)
     return large && point->solve.engine != SV_ENGINE_DENSE ? SV_ENGINE_CHEBYSHEV : SV_ENGINE_DENSE;
 }
 
+static bool needs_basis(const sv_case *point)
+{
+    for (int k = 0; k < point->n_markers; k++)
+        if (sv_marker_table(&(int){0})[point->markers[k].marker].needs_occupied_basis)
+            return point->closed_flake != NULL;
+    return false;
+}
+
 sv_status sv_case_plan(sv_context *context, sv_case *point, bool site_map, double sampling_error,
                        sv_plan *ret_plan)
 {
@@ -341,6 +349,10 @@ sv_status sv_case_plan(sv_context *context, sv_case *point, bool site_map, doubl
         status = plan_rational(context, point, sampling_error, &plan);
     } else {
         status = plan_chebyshev(context, point, sampling_error, &plan);
+    }
+    if (status == SV_OK && needs_basis(point) && point->solve.basis_engine == SV_ENGINE_CHEBYSHEV) {
+        size_t used = strlen(plan.reason);
+        snprintf(plan.reason + used, sizeof plan.reason - used, "; torus: basis by polynomials");
     }
     if (status == SV_OK)
         *ret_plan = plan;

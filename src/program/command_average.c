@@ -152,6 +152,19 @@ static sv_status judge(session *s, const sv_result *result)
     return SV_OK;
 }
 
+/* The engine was chosen on realisation 0; others may need more than it gives. */
+static void warn_of_errors(session *s, const sv_result *result)
+{
+    for (int32_t k = 0; k < result->n_points; k++)
+        for (int m = 0; m < result->points[k].n_summaries; m++) {
+            const sv_summary *summary = &result->points[k].summaries[m];
+            if (summary->exists && summary->numerical_error > s->base.accuracy)
+                sv_log(s->context, SV_LOG_NOTE,
+                       "point %d: numerical error of %s up to %.1e, solve.accuracy asks for %.1e",
+                       k, summary->marker, summary->numerical_error, s->base.accuracy);
+        }
+}
+
 static sv_status compute(session *s, sv_run *run, sv_ensemble *ensemble)
 {
     sv_context *context = s->context;
@@ -208,6 +221,8 @@ static sv_status average(session *s)
     }
     status = result_make(s, &ensemble, &stop, &result);
     result.seconds = seconds_now() - start;
+    if (status == SV_OK)
+        warn_of_errors(s, &result);
     if (status == SV_OK)
         status = write_results(s, run, &result);
     if (status == SV_OK && computed == SV_INTERRUPTED) {

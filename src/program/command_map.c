@@ -73,6 +73,9 @@ static sv_status map_one(session *s)
                             &sample, &record);
     if (status != SV_OK)
         goto out;
+    if (sample.inventory.marks_merged > 0)
+        sv_log(context, SV_LOG_NOTE, "%lld measured rows fell on a site that had one already",
+               (long long)sample.inventory.marks_merged);
     sv_map_result map = {.title = s->base.title,
                          .sample = &sample,
                          .point = problem,
