@@ -117,11 +117,14 @@ static sv_status try_near_states(sv_context *context, const pilot *p, int most,
         return SV_OK;
     if ((status = try_settings(context, p, &trial, &outcome)) != SV_OK)
         return status == SV_NOT_CONVERGED ? SV_OK : status;
-    if (outcome.verdict != SV_RESOLVED || outcome.numerical_error > o->accuracy)
+    /* A level on the Fermi energy leaves realisation 0 unresolved whatever the engine: these
+     * settings say so at once and serve the others. */
+    bool on_level = outcome.verdict == SV_UNRESOLVED;
+    if (!on_level && (outcome.verdict != SV_RESOLVED || outcome.numerical_error > o->accuracy))
         return SV_OK;
     *o = trial;
     *ret_found = true;
-    *ret_error = outcome.numerical_error;
+    *ret_error = on_level ? 0.0 : outcome.numerical_error;
     return SV_OK;
 }
 
