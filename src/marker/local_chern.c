@@ -21,6 +21,7 @@ typedef struct chern_work {
     sv_complex *picked, *px, *py; /* n_rows × m */
     double *marker;               /* n_rows */
     double *error;                /* n_rows, column by column only */
+    bool levels_known;            /* the engine resolves the levels in the gap: edge states too */
 } chern_work;
 
 static void free_work(sv_context *context, chern_work *w)
@@ -130,6 +131,20 @@ static double error_estimate(const sv_sample *sample, double defect)
     return 3.0 * 4.0 * M_PI / sv_model_cell_area(sample->flake->model) * spread * defect;
 }
 
+/* Does the flake lack a cell within three cells of this one? */
+static bool near_edge(const sv_flake *flake, int32_t cell)
+{
+    const int32_t reach = 3;
+    int64_t width = (int64_t)flake->high[1] - flake->low[1] + 1;
+    for (int32_t i = flake->cells[cell].i - reach; i <= flake->cells[cell].i + reach; i++)
+        for (int32_t j = flake->cells[cell].j - reach; j <= flake->cells[cell].j + reach; j++)
+            if (i < flake->low[0] || i > flake->high[0] || j < flake->low[1] ||
+                j > flake->high[1] ||
+                flake->cell_at[(i - flake->low[0]) * width + (j - flake->low[1])] < 0)
+                return true;
+    return false;
+}
+
 /* Window mean (and, with all rows, the sum and the site values) from the row values. */
 static void reduce(const chern_work *w, const bool *inside, sv_index cells, double *ret_sites,
                    sv_outcome *outcome)
@@ -143,7 +158,10 @@ static void reduce(const chern_work *w, const bool *inside, sv_index cells, doub
         total += w->marker[k];
         /* Edge states lie in the gap: a polynomial need not resolve them, and the marker next to
          * the edge then means nothing. The window is judged by its own error. */
-        bool unsure = w->error != NULL && w->error[k] > LARGEST_SITE_ERROR;
+        int32_t cell = w->sample->flake->sites[w->sample->pristine[row]].cell;
+        bool unsure = w->error != NULL && ret_sites != NULL &&
+                      (w->error[k] > LARGEST_SITE_ERROR ||
+                       (!w->levels_known && near_edge(w->sample->flake, cell)));
         blanked = blanked || unsure;
         if (ret_sites != NULL)
             ret_sites[row] = unsure ? (double)NAN : w->marker[k];
@@ -233,6 +251,7 @@ sv_status sv_local_chern(sv_context *context, const sv_marker_input *input, sv_o
     sv_outcome outcome = sv_outcome_start(input->projector);
     chern_work w = {.sample = input->sample, .basis = sv_projector_basis(input->projector)};
     const sv_levels *levels = sv_projector_levels(input->projector);
+    w.levels_known = levels->has_highest || levels->has_lowest;
     bool *inside = NULL;
     sv_index cells = 0;
     sv_status status = SV_OK;

@@ -114,6 +114,9 @@ static sv_status resume(sv_context *context, sv_run *run, const sv_run_identity 
             return force_sheet(context, run, identity, difference);
         status = force_identity(context, run, identity, difference);
     }
+    /* The sheet may call the same file by another name now. */
+    if (status == SV_OK)
+        status = sv_copy_inputs(context, run->folder, identity->inputs, identity->n_inputs);
     if (status == SV_OK)
         status = sv_session_begin(context, run, identity, "continue", false);
     if (status == SV_OK)
