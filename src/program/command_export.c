@@ -5,13 +5,6 @@
 #include <string.h>
 #include <unistd.h>
 
-static sv_status may_write(sv_context *context, const options *o, const char *path)
-{
-    if (path == NULL || o->force || access(path, F_OK) != 0)
-        return SV_OK;
-    return SV_FAIL(context, SV_STORAGE, "%s exists; --force overwrites it", path);
-}
-
 /* The flake with the boundary the sheet asks for, not the copy a marker would use. */
 static sv_status export_one(session *s)
 {

@@ -10,13 +10,6 @@
 /* Above this many sites a map takes the window only. */
 static const int64_t SITE_MAP_LARGEST = 200000;
 
-static sv_status refuse_existing(sv_context *context, const options *o, const char *path)
-{
-    if (path != NULL && !o->force && access(path, F_OK) == 0)
-        return SV_FAIL(context, SV_STORAGE, "%s exists; --force overwrites it", path);
-    return SV_OK;
-}
-
 static sv_status draw_figure(sv_context *context, const options *o, const sv_map_result *map)
 {
     sv_figure_files files;
@@ -66,7 +59,7 @@ static sv_status map_one(session *s)
     sv_record record;
     sv_sample sample = {0};
     double *values = NULL;
-    sv_status status = refuse_existing(context, o, o->csv);
+    sv_status status = may_write(context, o, o->csv);
     if (status == SV_OK)
         status = sv_realise(context, problem, o->realisation,
                             problem->open_flake->n_sites <= SITE_MAP_LARGEST ? &values : NULL,

@@ -7,13 +7,6 @@
 #include <sys/stat.h>
 #include <unistd.h>
 
-static sv_status refuse_existing(sv_context *context, const options *o)
-{
-    if (o->csv != NULL && !o->force && access(o->csv, F_OK) == 0)
-        return SV_FAIL(context, SV_STORAGE, "%s exists; --force overwrites it", o->csv);
-    return SV_OK;
-}
-
 static sv_status write_csv(sv_context *context, const char *path, const sv_spectrum_result *result)
 {
     char *text = NULL;
@@ -94,7 +87,7 @@ static sv_status analyse(session *s)
     sv_spectrum spectrum = {0};
     wanted.seed = setup->seed;
     wanted.realisation = s->options->realisation;
-    sv_status status = refuse_existing(context, s->options);
+    sv_status status = may_write(context, s->options, s->options->csv);
     if (status == SV_OK)
         status = sv_flake_make(context, &setup->model, &setup->flake, &flake);
     if (status == SV_OK)

@@ -106,6 +106,8 @@ sv_status result_make(session *s, const sv_ensemble *ensemble, const sv_stop_rul
 void result_free(sv_context *context, sv_result *result);
 sv_stop_rule session_stop_rule(const session *s);
 
+/* Exports never overwrite a file without --force; NULL is no export. */
+sv_status may_write(sv_context *context, const options *o, const char *path);
 bool wants_colour(const options *o, FILE *stream);
 bool wants_progress(const options *o);
 

@@ -25,6 +25,13 @@ static bool colour_allowed(FILE *stream)
     return isatty(fileno(stream)) && !refused && !dumb;
 }
 
+sv_status may_write(sv_context *context, const options *o, const char *path)
+{
+    if (path == NULL || o->force || access(path, F_OK) != 0)
+        return SV_OK;
+    return SV_FAIL(context, SV_STORAGE, "%s exists; --force overwrites it", path);
+}
+
 bool wants_colour(const options *o, FILE *stream)
 {
     return o->colour == CHOICE_ALWAYS || (o->colour == CHOICE_AUTO && colour_allowed(stream));
