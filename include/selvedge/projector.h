@@ -38,6 +38,7 @@ typedef struct sv_projector_options {
                           0: columns use the whole flake */
     sv_index sampled_cells; /**< local Chern: number of window cells to sample; 0: all */
     int threads;            /**< threads inside one realisation (huge flakes); 0 or 1: one */
+    bool trial; /**< chebyshev: do not count states to see whether a level is on the Fermi energy */
 } sv_projector_options;
 SV_API sv_projector_options sv_projector_options_default(void);
 
@@ -47,8 +48,12 @@ typedef struct sv_levels {
     bool has_highest, has_lowest;
     double highest_occupied, lowest_empty;
     double fermi_energy; /**< as given, or the middle of the gap for a filling */
+    bool by_count;       /**< a filling or a number of electrons chose it */
     bool on_level;       /**< a level coincides with the Fermi energy within `resolution` */
     double resolution;   /**< two energies closer than this cannot be told apart */
+    double resolved_from; /**< levels at least this far from the Fermi energy are occupied or empty
+                               to the accuracy asked for, nearer ones in part; 0: all */
+    bool gap_resolved;    /**< no level is known to be nearer than that: the engine occupies all */
 } sv_levels;
 
 /** The projector of one sample. Belongs to one thread. */
@@ -59,7 +64,9 @@ typedef struct sv_projector sv_projector;
  *
  * When a level coincides with the Fermi energy (or the filling cuts a degenerate level) P is not
  * unique: the call succeeds, sv_projector_levels() has on_level set, and the markers come out
- * unresolved.
+ * unresolved. Every engine notices it; chebyshev by counting states, which it does for an energy up
+ * to 50,000 sites (unless near levels are computed one by one, or `trial` is set) and for a filling
+ * always. Above, what such a level can do is part of the error of the columns.
  * @param sample   borrowed; must outlive the projector
  * @return SV_NUMERICAL, SV_NO_MEMORY, SV_INTERRUPTED; SV_UNDEFINED for more electrons than
  *         states

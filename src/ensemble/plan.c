@@ -51,16 +51,20 @@ static double half_gap_of(const pilot *p, double accuracy, int degree)
     return p->scale * (ratio - 1.0) / (ratio + 1.0);
 }
 
-/* The marker of realisation 0 with these settings on a sample of the window. */
+/* The marker of realisation 0 with these settings on a sample of the window. Whether a level sits
+ * on its Fermi energy, which is known already, is not asked again: what matters is the error. */
 static sv_status try_settings(sv_context *context, const pilot *p, const sv_projector_options *o,
                               sv_outcome *ret_outcome)
 {
     sv_projector *projector = NULL;
-    sv_status status = sv_projector_make(context, &p->sample, &p->point->occupation, o, &projector);
+    sv_occupation occupation = {.by = SV_BY_ENERGY, .fermi_energy = p->energy};
+    sv_projector_options trial = *o;
+    trial.trial = true;
+    sv_status status = sv_projector_make(context, &p->sample, &occupation, &trial, &projector);
     if (status != SV_OK)
         return status;
     sv_marker_input input = {.sample = &p->sample,
-                             .occupation = &p->point->occupation,
+                             .occupation = &occupation,
                              .projector = projector,
                              .values = p->request.values,
                              .sampled_cells = PILOT_CELLS,

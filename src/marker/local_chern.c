@@ -251,7 +251,7 @@ sv_status sv_local_chern(sv_context *context, const sv_marker_input *input, sv_o
     sv_outcome outcome = sv_outcome_start(input->projector);
     chern_work w = {.sample = input->sample, .basis = sv_projector_basis(input->projector)};
     const sv_levels *levels = sv_projector_levels(input->projector);
-    w.levels_known = levels->has_highest || levels->has_lowest;
+    w.levels_known = levels->gap_resolved;
     bool *inside = NULL;
     sv_index cells = 0;
     sv_status status = SV_OK;

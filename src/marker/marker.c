@@ -134,7 +134,13 @@ sv_outcome sv_outcome_start(const sv_projector *projector)
         outcome.highest_occupied = levels->highest_occupied;
     if (levels->has_lowest)
         outcome.lowest_empty = levels->lowest_empty;
-    if (levels->on_level)
+    if (levels->on_level && levels->by_count)
+        snprintf(
+            outcome.reason, sizeof outcome.reason,
+            "%lld electrons fill a degenerate level at %.6g only in part (levels within %.1e): "
+            "set a Fermi energy above or below it",
+            (long long)levels->occupied, levels->fermi_energy, levels->resolution);
+    else if (levels->on_level)
         snprintf(outcome.reason, sizeof outcome.reason,
                  "a level coincides with the Fermi energy %.6g (within %.1e): choose a filling, a "
                  "number of electrons or another energy",

@@ -71,8 +71,10 @@ static sv_status present(session *s, const sv_spectrum *spectrum)
     if (status == SV_OK && o->output != NULL)
         status = draw_figure(context, o, &result);
     if (status == SV_OK && spectrum->on_level)
-        status = SV_FAIL(context, SV_UNDECIDED, "%s; choose a filling or another energy",
-                         spectrum->reason);
+        status = SV_FAIL(context, SV_UNDECIDED, "%s; choose %s", spectrum->reason,
+                         s->points[0].setup.occupation.by == SV_BY_ENERGY
+                             ? "a filling or another energy"
+                             : "a Fermi energy above or below it");
     return status;
 }
 

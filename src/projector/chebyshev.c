@@ -5,9 +5,11 @@
 #include "projector_internal.h"
 
 #include <cblas.h>
-#include <float.h>
 #include <math.h>
 #include <string.h>
+
+/* Sites up to which states are counted at a given Fermi energy. */
+static const sv_index COUNTED_LARGEST = 50000;
 
 typedef struct chebyshev_state {
     sv_packed packed; /* (H − E_F)/scale; empty when only parts are used */
@@ -176,8 +178,6 @@ static sv_status set_near_states(sv_context *context, const sv_sample *sample,
 {
     /* A little off the Fermi energy, so that a level exactly there does not spoil the inverse. */
     double shift = s->energy + 0.0137 * options->half_gap;
-    double relative = fmax(1e-12, 4.0 * DBL_EPSILON * (double)sample->n);
-    levels->resolution = relative * s->scale;
     sv_status status =
         sv_near_states_find(context, &sample->hamiltonian, shift, 1.02 * options->half_gap,
                             options->near_states, &s->near);
@@ -188,34 +188,29 @@ static sv_status set_near_states(sv_context *context, const sv_sample *sample,
         s->correction[k] = (energy < s->energy ? 1.0 : 0.0) - polynomial_at(s, energy);
         note_level(levels, energy);
     }
+    levels->resolved_from = 0.0;
     return status;
 }
 
-/* A filling becomes an energy in the middle of the gap, by counting states (no eigenvalue needed).
+/*
+ * Fermi energy and what is known of the levels around it. A filling becomes an energy in the middle
+ * of the gap by counting states. With an energy the count tells whether a level sits on it, which
+ * the polynomial would not notice; near states computed one by one tell as well.
  */
-static sv_status set_energy(sv_context *context, const sv_sample *sample,
-                            const sv_occupation *occupation, chebyshev_state *s, sv_levels *levels)
+static sv_status set_levels(sv_context *context, const sv_sample *sample,
+                            const sv_occupation *occupation, const sv_projector_options *options,
+                            sv_levels *levels)
 {
-    sv_inertia_plan *plan = NULL;
-    sv_fermi_level fermi;
-    s->energy = occupation->fermi_energy;
-    if (occupation->by == SV_BY_ENERGY)
-        return SV_OK;
-    int64_t electrons = sv_occupation_electrons(occupation, sample->n);
-    sv_status status = sv_inertia_plan_make(context, &sample->hamiltonian, 1, &plan);
-    if (status == SV_OK)
-        status = sv_inertia_fermi_energy(context, plan, &sample->hamiltonian, electrons, &fermi);
-    sv_inertia_plan_free(context, plan);
-    if (status != SV_OK)
-        return status;
-    s->energy = fermi.energy;
-    levels->occupied = electrons;
-    levels->on_level = fermi.on_level;
-    levels->has_highest = isfinite(fermi.highest_occupied);
-    levels->has_lowest = isfinite(fermi.lowest_empty);
-    levels->highest_occupied = fermi.highest_occupied;
-    levels->lowest_empty = fermi.lowest_empty;
-    return SV_OK;
+    bool one_by_one = options->near_states > 0 && options->reach <= 0.0;
+    bool unknown = one_by_one || options->trial || sample->n > COUNTED_LARGEST;
+    *levels = (sv_levels){.occupied = -1,
+                          .fermi_energy = occupation->fermi_energy,
+                          .resolution = sv_levels_resolution(&sample->hamiltonian)};
+    sv_status status = SV_OK;
+    if (occupation->by != SV_BY_ENERGY || !unknown)
+        status = sv_levels_find(context, sample, occupation, 1e-3, levels);
+    levels->resolved_from = options->half_gap;
+    return status;
 }
 
 sv_status sv_chebyshev_scale(sv_context *context, const sv_sparse *h, double energy, bool tight,
@@ -242,14 +237,11 @@ sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
     chebyshev_state *s = NULL;
     sv_index n = sample->n;
     sv_status status;
-    sv_levels levels = {.occupied = -1, .resolution = options->half_gap};
-    if ((status = sv_take(context, 1, sizeof *s, &s)) != SV_OK)
+    sv_levels levels;
+    if ((status = set_levels(context, sample, occupation, options, &levels)) != SV_OK ||
+        (status = sv_take(context, 1, sizeof *s, &s)) != SV_OK)
         return status;
-    if ((status = set_energy(context, sample, occupation, s, &levels)) != SV_OK) {
-        chebyshev_free(context, s);
-        return status;
-    }
-    levels.fermi_energy = s->energy;
+    s->energy = levels.fermi_energy;
     s->kernel = sv_panel_best_kernel();
     status = sv_chebyshev_scale(context, &sample->hamiltonian, s->energy, options->occupied_basis,
                                 &s->scale);

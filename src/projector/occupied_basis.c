@@ -148,6 +148,7 @@ static sv_status make_filter(sv_context *context, const sv_sample *sample,
     o.accuracy = 100.0 * POLYNOMIAL_ERROR; /* the engine takes a hundredth */
     o.degree = 0;
     o.reach = 0.0;
+    o.trial = true; /* states are counted already */
     sv_status status = choose_gap(context, sample, levels, &o, ret_feasible);
     if (status != SV_OK || !*ret_feasible)
         return status;

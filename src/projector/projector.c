@@ -47,6 +47,11 @@ sv_status sv_projector_make(sv_context *context, const sv_sample *sample,
         sv_give(context, projector);
         return status;
     }
+    sv_levels *levels = &projector->levels;
+    levels->by_count = occupation->by != SV_BY_ENERGY;
+    levels->gap_resolved =
+        levels->resolved_from <= 0.0 || ((levels->has_highest || levels->has_lowest) &&
+                                         sv_levels_distance(levels) >= levels->resolved_from);
     *ret_projector = projector;
     return SV_OK;
 }

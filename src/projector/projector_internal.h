@@ -32,6 +32,19 @@ struct sv_projector {
 void sv_columns_to_panel(double *panel, sv_index n, const sv_complex *x, sv_index columns);
 void sv_panel_to_columns(const double *panel, sv_index n, sv_complex *y, sv_index columns);
 
+/* Two energies closer than this cannot be told apart by state counts. */
+double sv_levels_resolution(const sv_sparse *h);
+/*
+ * Fermi energy, state count and the levels next to it by inertia, the levels to `tolerance` of
+ * their distance; on_level is set by the same rule as in the dense engine. A handful of
+ * factorisations for an energy, about 40 for a filling.
+ * SV_UNDEFINED for more electrons than states.
+ */
+sv_status sv_levels_find(sv_context *context, const sv_sample *sample,
+                         const sv_occupation *occupation, double tolerance, sv_levels *ret_levels);
+/* Distance of the nearest known level from the Fermi energy; infinite when none is known. */
+double sv_levels_distance(const sv_levels *levels);
+
 /* Builds the Chebyshev engine; needs an occupation by energy and options->half_gap. */
 sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
                                    const sv_occupation *occupation,

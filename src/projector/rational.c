@@ -41,105 +41,22 @@ static const engine_class rational_class = {.name = "rational",
                                             .basis = rational_basis,
                                             .uniform_error = rational_error};
 
-/* Levels next to a given energy. Any shift between them serves; one right at the energy can make
- * leading blocks of a clean flake singular, and then another is tried. */
-static sv_status levels_at_energy(sv_context *context, sv_inertia_plan *plan, const sv_sparse *h,
-                                  double unit, sv_levels *levels)
-{
-    sv_inertia_count count;
-    sv_inertia_levels near;
-    double energy = levels->fermi_energy, shift = energy;
-    sv_status status = sv_inertia_count_below(context, plan, h, energy, &count);
-    if (status != SV_OK)
-        return status;
-    levels->occupied = count.decided ? count.below : count.low;
-    levels->on_level = !count.decided;
-    if (!count.decided)
-        shift += 0.1 * SMALLEST_GAP * unit;
-    for (int round = 1; round <= 4; round++) {
-        sv_inertia inertia;
-        if ((status = sv_inertia_factor(context, plan, h, shift, &inertia)) != SV_OK ||
-            (status = sv_inertia_levels_near(context, plan, &inertia, shift, 1e-6, (double)NAN,
-                                             &near)) != SV_OK)
-            return status;
-        double distance = fmin(shift - near.below, near.above - shift);
-        if (!count.decided || !isfinite(distance) || inertia.error < 1e-6 * distance)
-            break;
-        shift = energy + 0.03 * round * distance;
-    }
-    levels->has_highest = isfinite(near.below);
-    levels->has_lowest = isfinite(near.above);
-    levels->highest_occupied = near.below;
-    levels->lowest_empty = near.above;
-    return SV_OK;
-}
-
-static sv_status levels_at_filling(sv_context *context, sv_inertia_plan *plan, const sv_sparse *h,
-                                   int64_t electrons, sv_levels *levels)
-{
-    sv_fermi_level fermi;
-    sv_status status = sv_inertia_fermi_energy(context, plan, h, electrons, &fermi);
-    if (status != SV_OK)
-        return status;
-    levels->fermi_energy = fermi.energy;
-    levels->occupied = electrons;
-    levels->on_level = fermi.on_level;
-    levels->has_highest = isfinite(fermi.highest_occupied);
-    levels->has_lowest = isfinite(fermi.lowest_empty);
-    levels->highest_occupied = fermi.highest_occupied;
-    levels->lowest_empty = fermi.lowest_empty;
-    return SV_OK;
-}
-
-static sv_status find_levels(sv_context *context, const sv_sample *sample,
-                             const sv_occupation *occupation, sv_levels *ret_levels)
-{
-    const sv_sparse *h = &sample->hamiltonian;
-    sv_levels levels = {.fermi_energy = occupation->fermi_energy};
-    sv_inertia_plan *plan = NULL;
-    double unit = sv_sparse_norm_bound(h);
-    int64_t electrons = sv_occupation_electrons(occupation, sample->n);
-    if (occupation->by != SV_BY_ENERGY && (electrons < 0 || electrons > sample->n))
-        return SV_FAIL(context, SV_UNDEFINED, "%lld electrons do not fit into %lld states",
-                       (long long)electrons, (long long)sample->n);
-    sv_status status = sv_inertia_plan_make(context, h, 1, &plan);
-    if (status == SV_OK)
-        status = occupation->by == SV_BY_ENERGY
-                     ? levels_at_energy(context, plan, h, unit, &levels)
-                     : levels_at_filling(context, plan, h, electrons, &levels);
-    sv_inertia_plan_free(context, plan);
-    if (status == SV_OK)
-        *ret_levels = levels;
-    return status;
-}
-
-/* Distance of the nearest level from the Fermi energy. */
-static double nearest_level(const sv_levels *levels)
-{
-    double distance = (double)INFINITY;
-    if (levels->has_highest)
-        distance = fabs(levels->fermi_energy - levels->highest_occupied);
-    if (levels->has_lowest)
-        distance = fmin(distance, fabs(levels->lowest_empty - levels->fermi_energy));
-    return distance;
-}
-
 /* Scale and approximation for what was asked and what the levels need. */
 static sv_status set_sign(sv_context *context, const sv_projector_options *options,
                           sv_levels *levels, rational_state *s)
 {
-    double relative = fmax(1e-12, 4.0 * DBL_EPSILON * (double)s->h->n);
     s->energy = levels->fermi_energy;
     /* Gershgorin holds for every sample. */
     s->scale = 1.0001 * (sv_sparse_norm_bound(s->h) + fabs(s->energy));
     if (!(s->scale > 0.0)) /* a matrix of zeros */
         s->scale = 1.0;
-    levels->resolution = relative * s->scale;
-    levels->on_level = levels->on_level || nearest_level(levels) <= levels->resolution;
-    s->nearest = levels->on_level ? 0.0 : 0.5 * fmin(nearest_level(levels) / s->scale, 1.0);
+    double distance = sv_levels_distance(levels);
+    levels->on_level = levels->on_level || distance <= levels->resolution;
+    s->nearest = levels->on_level ? 0.0 : 0.5 * fmin(distance / s->scale, 1.0);
     double delta = options->half_gap > 0.0 ? options->half_gap / s->scale
                                            : fmax(SMALLEST_GAP, 0.5 * s->nearest);
     delta = fmin(delta, 0.9);
+    levels->resolved_from = delta * s->scale;
     double error = fmax(0.02 * options->accuracy, 1e-14);
     s->tolerance = fmax(0.01 * error, 1e-13);
     return sv_zolotarev_make(context, delta, sv_zolotarev_terms(delta, error), &s->sign);
@@ -194,7 +111,7 @@ sv_status sv_rational_engine_make(sv_context *context, const sv_sample *sample,
     if ((status = sv_take(context, 1, sizeof *s, &s)) != SV_OK)
         return status;
     s->h = &sample->hamiltonian;
-    if ((status = find_levels(context, sample, occupation, &levels)) != SV_OK ||
+    if ((status = sv_levels_find(context, sample, occupation, 1e-6, &levels)) != SV_OK ||
         (status = set_sign(context, options, &levels, s)) != SV_OK ||
         (status = set_factors(context, s)) != SV_OK || (status = set_work(context, s)) != SV_OK) {
         rational_free(context, s);

@@ -114,7 +114,7 @@ SV_TEST(a_cut_degenerate_level_is_said)
     sv_flake_spec torus = fixture_cells(&model, 4, 4, true);
     sv_occupation half = {.by = SV_BY_FILLING, .filling = 0.5};
     sv_outcome o = fixture_marker("bott", &model, &torus, NULL, 0, 1, &half, 0);
-    CHECK(o.verdict == SV_UNRESOLVED && strstr(o.reason, "coincides") != NULL);
+    CHECK(o.verdict == SV_UNRESOLVED && strstr(o.reason, "only in part") != NULL);
     sv_occupation none = {.by = SV_BY_ELECTRONS, .electrons = 0};
     o = fixture_marker("bott", &model, &torus, NULL, 0, 1, &none, 0);
     CHECK(o.verdict == SV_RESOLVED && o.index == 0 && strstr(o.reason, "convention") != NULL);
