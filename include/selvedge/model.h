@@ -28,6 +28,30 @@ typedef struct sv_hop {
     sv_complex amplitude;
 } sv_hop;
 
+enum {
+    SV_MODEL_FIELDS = 4,      /**< local operators a model may name */
+    SV_FIELD_TERMS = 16,      /**< terms of one of them */
+    SV_FIELD_POTENTIAL = -1,  /**< stands for the identity, which every model has */
+    SV_NO_FIELD = -2
+};
+
+/** amplitude = ⟨to|O|from⟩ of a local operator; the conjugate element follows when to ≠ from. */
+typedef struct sv_field_term {
+    int to, from; /**< orbitals at one position */
+    sv_complex amplitude;
+} sv_field_term;
+
+/**
+ * A local operator O of the model by name ("mass", "exchange"): disorder adds Σ_R δ(R) O(R) with
+ * δ an energy per position or cell.
+ */
+typedef struct sv_model_field {
+    char name[16];
+    double value; /**< its coefficient in the clean model, unit of the model */
+    sv_field_term terms[SV_FIELD_TERMS];
+    int n_terms;
+} sv_model_field;
+
 /** A clean model. Build it with sv_model_make() or sv_model_begin() … sv_model_finish(). */
 typedef struct sv_model {
     char name[32];
@@ -39,6 +63,8 @@ typedef struct sv_model {
     int n_hops;
     sv_index hop_capacity, orbital_capacity;
     int flux[2]; /**< p, q: p/q quanta per cell (0, 1: none) */
+    sv_model_field fields[SV_MODEL_FIELDS]; /**< local operators disorder may change */
+    int n_fields;
 } sv_model;
 
 /** Kinds of models: table of names, docs and keys (custom has keys of type SV_KEY_TREE). */
@@ -71,6 +97,24 @@ SV_API SV_MUST_USE sv_status sv_model_add_hop(sv_context *context, sv_model *mod
                                               sv_complex amplitude);
 /** Sets p/q flux quanta per cell. @return SV_INVALID_INPUT for q < 1 */
 SV_API SV_MUST_USE sv_status sv_model_set_flux(sv_context *context, sv_model *model, int p, int q);
+/**
+ * Names a local operator; its terms follow by sv_model_add_field_term(). The clean model's own part
+ * of it stays in on-site terms and hops.
+ * @param value  coefficient it has in the clean model
+ * @return SV_INVALID_INPUT for "potential" (every model has it), a repeated or overlong name, or more
+ *         than SV_MODEL_FIELDS of them
+ */
+SV_API SV_MUST_USE sv_status sv_model_add_field(sv_context *context, sv_model *model,
+                                                const char *name, double value);
+/**
+ * Adds a term to the local operator named last.
+ * @return SV_INVALID_INPUT when the orbitals are not there or not at one position, a diagonal term
+ *         is not real, or there are more than SV_FIELD_TERMS
+ */
+SV_API SV_MUST_USE sv_status sv_model_add_field_term(sv_context *context, sv_model *model, int to,
+                                                     int from, sv_complex amplitude);
+/** Row of a local operator, SV_FIELD_POTENTIAL for "potential", SV_NO_FIELD. */
+SV_API int sv_model_find_field(const sv_model *model, const char *name);
 /** Numbers the positions and checks invariants. Call once, last. */
 SV_API SV_MUST_USE sv_status sv_model_finish(sv_context *context, sv_model *model);
 SV_API void sv_model_free(sv_context *context, sv_model *model);

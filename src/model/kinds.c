@@ -110,6 +110,9 @@ static sv_status make_haldane(sv_context *context, const sv_value *values, sv_mo
         TRY(sv_model_add_hop(context, model, A, A, i, j, amplitude));
         TRY(sv_model_add_hop(context, model, B, B, -i, -j, amplitude));
     }
+    TRY(sv_model_add_field(context, model, "mass", mass));
+    TRY(sv_model_add_field_term(context, model, A, A, 1.0));
+    TRY(sv_model_add_field_term(context, model, B, B, -1.0));
     return SV_OK;
 }
 
@@ -131,6 +134,9 @@ static sv_status make_qi_wu_zhang(sv_context *context, const sv_value *values, s
     TRY(sv_model_add_hop(context, model, B, B, 0, 1, -0.5));
     TRY(sv_model_add_hop(context, model, A, B, 0, 1, -0.5));
     TRY(sv_model_add_hop(context, model, B, A, 0, 1, 0.5));
+    TRY(sv_model_add_field(context, model, "mass", m));
+    TRY(sv_model_add_field_term(context, model, A, A, 1.0));
+    TRY(sv_model_add_field_term(context, model, B, B, -1.0));
     return SV_OK;
 }
 
