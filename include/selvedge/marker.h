@@ -68,12 +68,23 @@ typedef struct sv_marker {
     /** Fills the outcome; an unresolved value is SV_OK with that verdict. */
     sv_status (*compute)(sv_context *context, const sv_marker_input *input,
                          sv_outcome *ret_outcome);
+    /** Rules between its keys, see sv_marker_check(); NULL: none. */
+    bool (*check)(const sv_value *values, int *ret_key, char *message, size_t size);
 } sv_marker;
 
 /** Table of all markers. */
 SV_API const sv_marker *sv_marker_table(int *ret_count);
 /** Row of a name, or -1. */
 SV_API int sv_marker_find(const char *name);
+/**
+ * Do the values of a marker's keys go together? Each is within its own range already.
+ * @param marker  row of sv_marker_table()
+ * @param values  one per key
+ * @param[out] ret_key  row of the key at fault
+ * @param[out] message  what is wrong with it, to follow its path ("needs … beside it")
+ */
+SV_API bool sv_marker_check(int marker, const sv_value *values, int *ret_key, char *message,
+                            size_t size);
 /** An outcome with every number set to "none". */
 SV_API sv_outcome sv_outcome_blank(void);
 
@@ -165,6 +176,62 @@ SV_API SV_MUST_USE sv_status sv_localizer_prepare(sv_context *context, const sv_
  */
 SV_API SV_MUST_USE sv_status sv_localizer_index(sv_context *context, const sv_marker_input *input,
                                                 sv_outcome *ret_outcome);
+
+/** The localizer at one probe point and one κ. */
+typedef struct sv_probe {
+    double at[2]; /**< Cartesian, lattice constants */
+    double kappa;
+    bool resolved; /**< by the rules of sv_localizer_index() */
+    int64_t index; /**< when resolved */
+    double gap;    /**< localizer gap, relative error 1e-7; with gap: bound its bound τ; NaN: none */
+    double certain;   /**< lower bound of the gap, by inertia; 0: none. No potential of a smaller
+                           operator norm changes the half signature */
+    char reason[120]; /**< of an unresolved one */
+} sv_probe;
+
+/** What is certain of the space between neighbouring probes of the same κ. */
+typedef struct sv_between {
+    double low, high; /**< the localizer gap lies between them everywhere; high NaN: not known */
+    bool constant;    /**< the ends are resolved and no level crosses zero in between */
+} sv_between;
+
+/** The localizer at many points, and over κ. */
+typedef struct sv_survey {
+    char reason[200]; /**< why no probe is resolved, when that has one reason for all; or empty */
+    double energy, kappa, threshold;
+    sv_index points[2];   /**< nx, ny of a grid; n, 1 of a line; 0, 0: not asked for */
+    bool line;
+    double from[2], to[2];
+    sv_probe *probes;     /**< nx·ny, x fastest */
+    sv_between *between;  /**< line: n − 1 segments; grid: (nx − 1)(ny − 1) cells, x fastest */
+    sv_index n_between;
+    sv_probe *kappas; /**< at one point, κ ascending by equal ratios */
+    sv_index n_kappas;
+    sv_index steady[2]; /**< first and last of the longest run of κ with the same resolved index; of
+                             equal ones that around κ of the sheet, else the first; −1: none */
+} sv_survey;
+
+/** Do the values of the localizer's keys ask for more than its one point? */
+SV_API bool sv_localizer_wants_survey(const sv_value *values);
+/**
+ * The localizer along a line or over a grid of probe points, and at one point against κ. Each
+ * probe has the verdict sv_localizer_index() would give there at the same κ and τ, bit by bit; all
+ * share the Fermi energy, and the probes of a thread one analysis.
+ *
+ * Between probes a, b at distance d the gap is κ-Lipschitz: with lower bounds c it is at least
+ * max(c_a − κt, c_b − κ(d − t)) at t, least of all (c_a + c_b − κd)/2; over a cell of a grid the
+ * same with four corners, evaluated on 16×16 parts with the largest distances. Where that is
+ * positive no level crosses zero. `certain` costs two factorisations more per probe.
+ * @param input  values: all keys of the localizer, after sv_localizer_prepare(); threads: several
+ *               probes at a time (one above 50,000 sites, where each would hold a large factor)
+ * @return SV_INVALID_INPUT when nothing of that is asked for; SV_INTERRUPTED, SV_NO_MEMORY,
+ *         SV_NUMERICAL
+ * Cost: five to seven factorisations of order 2N per probe.
+ */
+SV_API SV_MUST_USE sv_status sv_localizer_survey(sv_context *context, const sv_marker_input *input,
+                                                 sv_survey *ret_survey);
+/** Gives the arrays back; safe on a zeroed survey and twice in a row. */
+SV_API void sv_survey_free(sv_context *context, sv_survey *survey);
 
 /**
  * Three-sector Chern number (A. Kitaev, Ann. Phys. 321, 2 (2006), App. C) of a disc of an open

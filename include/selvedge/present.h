@@ -66,12 +66,17 @@ typedef struct sv_map_result {
     const double *site_values; /**< local Chern marker per site, or NULL */
     double lattice_constant;   /**< nm, 0: none */
     const char *note;          /**< shown under the title of the figure, or NULL */
+    const sv_survey *survey;   /**< the localizer at many points and over κ, or NULL */
 } sv_map_result;
 
 /** JSON document of one realisation (contract: `map`). */
 SV_API SV_MUST_USE sv_status sv_map_json(sv_context *context, const sv_map_result *map,
                                          char **ret_text);
 SV_API void sv_map_print(const sv_map_result *map, bool colour, FILE *stream);
+/** Probe points of a survey as CSV: x,y,kappa,index,gap,certain,resolved,reason, x fastest; the
+ *  index of an unresolved one is empty. */
+SV_API SV_MUST_USE sv_status sv_survey_csv(sv_context *context, const sv_survey *survey,
+                                           char **ret_text);
 
 /** The spectrum of one realisation. */
 typedef struct sv_spectrum_result {
@@ -115,6 +120,17 @@ SV_API SV_MUST_USE sv_status sv_figure_sweep(sv_context *context, const char *fo
 SV_API SV_MUST_USE sv_status sv_figure_spectrum(sv_context *context, const char *folder,
                                                 const char *name, const sv_spectrum_result *result,
                                                 sv_figure_files *ret_files);
+
+/** Localizer gap over a grid of probe points: shades, the boundary of each region of equal resolved
+ *  index with the index written in it, unresolved probes crossed, outline of the flake. */
+SV_API SV_MUST_USE sv_status sv_figure_probes(sv_context *context, const char *folder,
+                                              const char *name, const sv_map_result *map,
+                                              sv_figure_files *ret_files);
+/** Index and gap along a line of probe points (with the certified bound between them), or against
+ *  κ (`kappas`), as two panels. */
+SV_API SV_MUST_USE sv_status sv_figure_profile(sv_context *context, const char *folder,
+                                               const char *name, const sv_map_result *map,
+                                               bool kappas, sv_figure_files *ret_files);
 
 /* ----------------------------------------------------------------- progress */
 

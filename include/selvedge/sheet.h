@@ -56,6 +56,10 @@ typedef struct sv_sheet_options {
     int n_markers;
     bool confined; /**< refuse files named by absolute paths, `..` or links: for the sheet of a
                         run folder that came from elsewhere */
+    /** Rules between the keys of a marker (from the marker layer), or NULL: false sets the row of
+     *  the key at fault and what is wrong, to follow the key's path. */
+    bool (*check_marker)(int kind, const sv_value *values, int *ret_key, char *message,
+                         size_t size);
 } sv_sheet_options;
 
 /**

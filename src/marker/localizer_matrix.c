@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* The spectral localizer as a sparse matrix, rows in (site, component) pairs. */
-#include "marker_internal.h"
+#include "localizer_internal.h"
 
 /* Row of a site and component: the row of ±(H − E), with κ(x ∓ iy) beside the diagonal. */
 static sv_index write_row(const sv_sample *sample, sv_index site, int component, double energy,
@@ -51,4 +51,16 @@ sv_status sv_localizer_matrix(sv_context *context, const sv_sample *sample, doub
     }
     *ret_matrix = l;
     return SV_OK;
+}
+
+void sv_localizer_move(const sv_sample *sample, double kappa, const double at[2], sv_sparse *matrix)
+{
+    for (sv_index row = 0; row < matrix->n; row++) {
+        const double *r = sample->flake->sites[sample->pristine[row / 2]].at;
+        double sign = row % 2 == 0 ? 1.0 : -1.0;
+        sv_index k = matrix->row_start[row];
+        while (matrix->column[k] != (row ^ 1))
+            k++;
+        matrix->value[k] = kappa * CMPLX(r[0] - at[0], -sign * (r[1] - at[1]));
+    }
 }

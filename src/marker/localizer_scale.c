@@ -1,10 +1,9 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* κ and τ of a localizer from the clean model and the flake: one pair for a whole run. */
-#include "marker_internal.h"
+#include "localizer_internal.h"
 
 #include <math.h>
 
-enum { AT, KAPPA, THRESHOLD };
 /* Probes nearer to the edge than this (lattice constants) see no bulk. */
 static const double LEAST_RADIUS = 1.0;
 /* Gaps below this share of the bandwidth count as none. */
@@ -25,13 +24,14 @@ static bool has_orbital(const sv_flake *flake, int32_t i, int32_t j, int orbital
     return false;
 }
 
-double sv_localizer_radius(const sv_flake *flake, const double at[2])
+/* Distance from a point to the nearest missing site among the cells low … high. */
+static double nearest_missing(const sv_flake *flake, const double at[2], const int32_t low[2],
+                              const int32_t high[2])
 {
     const sv_model *model = flake->model;
-    const int32_t rim = 2;
     double nearest = INFINITY;
-    for (int32_t i = flake->low[0] - rim; i <= flake->high[0] + rim; i++)
-        for (int32_t j = flake->low[1] - rim; j <= flake->high[1] + rim; j++)
+    for (int32_t i = low[0]; i <= high[0]; i++)
+        for (int32_t j = low[1]; j <= high[1]; j++)
             for (int o = 0; o < model->n_orbitals; o++) {
                 const double *in_cell = model->orbitals[o].at;
                 double x = i * model->vectors[0][0] + j * model->vectors[1][0] + in_cell[0] - at[0];
@@ -41,6 +41,24 @@ double sv_localizer_radius(const sv_flake *flake, const double at[2])
                     nearest = d;
             }
     return nearest;
+}
+
+double sv_localizer_radius(const sv_flake *flake, const double at[2])
+{
+    const int32_t rim = 2;
+    double uv[2];
+    int32_t low[2], high[2], here[2][2];
+    sv_model_reduce(flake->model, at, uv);
+    for (int d = 0; d < 2; d++) {
+        low[d] = flake->low[d] - rim;
+        high[d] = flake->high[d] + rim;
+        double cell = fmin(fmax(floor(uv[d]), -1e9), 1e9);
+        here[0][d] = (int32_t)cell - rim;
+        here[1][d] = (int32_t)cell + rim;
+    }
+    /* Far outside the missing sites of the flake's own surroundings are not the nearest ones. */
+    return fmin(nearest_missing(flake, at, low, high),
+                nearest_missing(flake, at, here[0], here[1]));
 }
 
 /* Half width of the pristine gap that holds the Fermi energy; 0: none, or not known. */

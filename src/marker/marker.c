@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* The table of markers. */
-#include "marker_internal.h"
+#include "localizer_internal.h"
 
 #include <math.h>
 #include <string.h>
@@ -45,6 +45,36 @@ static const sv_key localizer_keys[] = {
      .choices = "value bound",
      .fallback = "value",
      .doc = "report the localizer gap itself, or only that it exceeds the threshold (faster)"},
+    {.name = "from",
+     .type = SV_KEY_REAL_PAIR,
+     .dimension = SV_DIM_LENGTH,
+     .low = -1e9,
+     .high = 1e9,
+     .doc =
+         "map: first probe point of a line; lower left corner of a grid (default: of the sites)"},
+    {.name = "to",
+     .type = SV_KEY_REAL_PAIR,
+     .dimension = SV_DIM_LENGTH,
+     .low = -1e9,
+     .high = 1e9,
+     .doc = "map: last probe point of a line; upper right corner of a grid"},
+    {.name = "points",
+     .type = SV_KEY_INTEGER_OR_PAIR,
+     .low = 2,
+     .high = 1000,
+     .doc = "map: n probe points on the line from - to, or a grid of [nx, ny], at one kappa"},
+    {.name = "kappa_range",
+     .type = SV_KEY_REAL_PAIR,
+     .dimension = SV_DIM_ENERGY,
+     .low = 0,
+     .high = 1e12,
+     .low_open = true,
+     .doc = "map: index and gap at the probe point against kappa, from and to"},
+    {.name = "kappa_points",
+     .type = SV_KEY_INTEGER,
+     .low = 2,
+     .high = 200,
+     .doc = "number of kappa in that range, equal ratios (9 when not given)"},
 };
 
 static const sv_key disc_keys[] = {
@@ -79,10 +109,11 @@ static const sv_marker table[] = {
      .needs_occupied_basis = true,
      .compute = sv_bott_index},
     {.kind = {"localizer", "spectral localizer index at a point (Loring, Schulz-Baldes 2020)",
-              localizer_keys, 4},
+              localizer_keys, N_LOCALIZER_KEYS},
      .is_index = true,
      .boundary = SV_OPEN_COPY,
-     .compute = sv_localizer_index},
+     .compute = sv_localizer_index,
+     .check = sv_localizer_check},
     {.kind = {"three_sector", "three-sector Chern number of a disc (Kitaev 2006)", disc_keys, 2},
      .is_index = false,
      .boundary = SV_OPEN_COPY,
@@ -108,6 +139,11 @@ int sv_marker_find(const char *name)
         if (strcmp(table[k].kind.name, name) == 0)
             return k;
     return -1;
+}
+
+bool sv_marker_check(int marker, const sv_value *values, int *ret_key, char *message, size_t size)
+{
+    return table[marker].check == NULL || table[marker].check(values, ret_key, message, size);
 }
 
 sv_outcome sv_outcome_blank(void)

@@ -101,8 +101,10 @@ sv_status sv_map_json(sv_context *context, const sv_map_result *map, char **ret_
         sv_json_put_text(&json, document, "reason", sv_status_text(record->status));
     for (int i = 0; i < record->n_outcomes && i < map->point->n_markers; i++) {
         const sv_marker *marker = &table[map->point->markers[i].marker];
-        sv_json_put(&json, markers, marker->kind.name,
-                    make_marker(&json, marker, &record->outcomes[i]));
+        json_t *object = make_marker(&json, marker, &record->outcomes[i]);
+        if (map->survey != NULL && marker->compute == sv_localizer_index)
+            sv_survey_put(&json, object, map->survey);
+        sv_json_put(&json, markers, marker->kind.name, object);
     }
     sv_json_put(&json, document, "markers", markers);
     return sv_json_finish(&json, document, ret_text);

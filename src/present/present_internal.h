@@ -66,6 +66,11 @@ json_t *sv_json_pair(sv_json *json, const double pair[2]);
 /* Writes and gives back the document. */
 sv_status sv_json_finish(sv_json *json, json_t *document, char **ret_text);
 
+/* -------------------------------------------------------------- survey.c */
+
+void sv_survey_put(sv_json *json, json_t *marker, const sv_survey *survey);
+void sv_survey_print(const sv_survey *survey, FILE *stream);
+
 /* ------------------------------------------------------------ terminal.c */
 
 /* One cell of a table: padded to `width` columns, then two spaces. */

@@ -10,20 +10,34 @@
 /* Above this many sites a map takes the window only. */
 static const int64_t SITE_MAP_LARGEST = 200000;
 
-static sv_status draw_figure(sv_context *context, const options *o, const sv_map_result *map)
+static void tell_figure(const session *s, const sv_figure_files *files, const char *what)
 {
+    (void)what;
+    if (s->options->json)
+        return;
+    if (files->drawn)
+        printf("figure: %s\n        %s\n        %s\n", files->svg, files->pdf, files->png);
+    else
+        printf("figure: %s (not drawn: %s)\n", files->script, files->reason);
+}
+
+static sv_status draw_figures(session *s, const sv_map_result *map)
+{
+    sv_context *context = s->context;
+    const options *o = s->options;
     sv_figure_files files;
+    sv_status status = SV_OK;
     if (mkdir(o->output, 0777) != 0 && errno != EEXIST)
         return SV_FAIL(context, SV_STORAGE, "cannot make folder %s: %s", o->output,
                        strerror(errno));
-    sv_status status = sv_figure_map(context, o->output, "marker_map", map, &files);
-    if (status != SV_OK || o->json)
-        return status;
-    if (files.drawn)
-        printf("figure: %s\n        %s\n        %s\n", files.svg, files.pdf, files.png);
-    else
-        printf("figure: %s (not drawn: %s)\n", files.script, files.reason);
-    return SV_OK;
+    if (map->site_values != NULL) {
+        status = sv_figure_map(context, o->output, "marker_map", map, &files);
+        if (status == SV_OK)
+            tell_figure(s, &files, "marker map");
+    }
+    if (status == SV_OK && map->survey != NULL)
+        status = survey_draw(s, o->output, map, tell_figure);
+    return status;
 }
 
 static sv_status print_result(sv_context *context, const options *o, const sv_map_result *map)
@@ -58,8 +72,14 @@ static sv_status map_one(session *s)
     const sv_case *problem = &s->points[0].problem;
     sv_record record;
     sv_sample sample = {0};
+    sv_survey survey = {0};
     double *values = NULL;
     sv_status status = may_write(context, o, o->csv);
+    if (status == SV_OK)
+        status = may_write(context, o, o->probes);
+    if (status == SV_OK && o->probes != NULL && !survey_wanted(problem))
+        status = SV_FAIL(context, SV_USAGE,
+                         "--probes: the sheet asks for no probe points (markers.localizer.points)");
     if (status == SV_OK)
         status = sv_realise(context, problem, o->realisation,
                             problem->open_flake->n_sites <= SITE_MAP_LARGEST ? &values : NULL,
@@ -75,19 +95,27 @@ static sv_status map_one(session *s)
                          .record = &record,
                          .site_values = values,
                          .lattice_constant = s->base.lattice_constant};
+    if (survey_wanted(problem)) {
+        if ((status = survey_compute(s, problem, &sample, &survey)) != SV_OK)
+            goto out;
+        map.survey = &survey;
+    }
     int chern = sv_marker_find("local_chern");
     for (int k = 0; k < record.n_outcomes; k++)
         if (problem->markers[k].marker == chern && record.outcomes[k].verdict != SV_RESOLVED)
             map.site_values = NULL;
     if (o->csv != NULL && map.site_values != NULL)
         status = sv_sample_write_sites(context, &sample, o->csv, "local_chern", values);
+    if (status == SV_OK && o->probes != NULL)
+        status = survey_write_csv(s, &survey, o->probes);
     if (status == SV_OK)
         status = print_result(context, o, &map);
-    if (status == SV_OK && o->output != NULL && map.site_values != NULL)
-        status = draw_figure(context, o, &map);
+    if (status == SV_OK && o->output != NULL && (map.site_values != NULL || map.survey != NULL))
+        status = draw_figures(s, &map);
     if (status == SV_OK)
         status = verdict(context, &record);
 out:
+    sv_survey_free(context, &survey);
     sv_give(context, values);
     sv_sample_free(context, &sample);
     return status;

@@ -39,6 +39,18 @@ static int32_t map_point(const session *s)
     return s->n_points > 1 ? s->n_points / 2 : 0;
 }
 
+/* "disorder.pot.width = 4, …" of a point of a sweep; empty without one. */
+static void describe_point(const point *p, char *text, size_t size)
+{
+    int used = 0;
+    text[0] = '\0';
+    for (int c = 0; c < p->n_coordinates && used >= 0 && (size_t)used < size; c++)
+        used += snprintf(text + used, size - (size_t)used, "%s%s = %g%s%s", c > 0 ? ", " : "",
+                         p->coordinates[c].path, p->coordinates[c].value,
+                         p->coordinates[c].unit ? " " : "",
+                         p->coordinates[c].unit ? p->coordinates[c].unit : "");
+}
+
 static sv_status draw_map(session *s, const char *folder)
 {
     sv_context *context = s->context;
@@ -73,21 +85,55 @@ static sv_status draw_map(session *s, const char *folder)
                              .record = &record,
                              .site_values = values,
                              .lattice_constant = s->base.lattice_constant};
-        char what[400];
-        int used = snprintf(what, sizeof what, "marker map, realisation %lld",
-                            (long long)s->options->realisation);
-        int head = used + 2;
-        for (int c = 0; c < p->n_coordinates && used > 0 && (size_t)used < sizeof what; c++)
-            used += snprintf(what + used, sizeof what - (size_t)used, ", %s = %g%s%s",
-                             p->coordinates[c].path, p->coordinates[c].value,
-                             p->coordinates[c].unit ? " " : "",
-                             p->coordinates[c].unit ? p->coordinates[c].unit : "");
-        map.note = p->n_coordinates > 0 ? what + head : NULL;
+        char where[300], what[400];
+        describe_point(p, where, sizeof where);
+        snprintf(what, sizeof what, "marker map, realisation %lld%s%s",
+                 (long long)s->options->realisation, where[0] != '\0' ? ", " : "", where);
+        map.note = where[0] != '\0' ? where : NULL;
         status = sv_figure_map(context, folder, "marker_map", &map, &files);
         if (status == SV_OK)
             name_figure(&files, what);
     }
     sv_give(context, values);
+    sv_sample_free(context, &sample);
+    return status;
+}
+
+static void tell_figure(const session *s, const sv_figure_files *files, const char *what)
+{
+    (void)s;
+    name_figure(files, what);
+}
+
+/* The localizer at many points, on the sample of the map. */
+static sv_status draw_survey(session *s, const char *folder)
+{
+    sv_context *context = s->context;
+    const point *p = &s->points[map_point(s)];
+    sv_case problem = p->problem;
+    sv_record record;
+    sv_sample sample = {0};
+    sv_survey survey = {0};
+    char where[300];
+    if (!survey_wanted(&problem))
+        return SV_OK;
+    problem.n_markers = 0; /* the sample only */
+    sv_status status =
+        sv_realise(context, &problem, s->options->realisation, NULL, &sample, &record);
+    if (status == SV_OK)
+        status = survey_compute(s, &p->problem, &sample, &survey);
+    if (status == SV_OK) {
+        describe_point(p, where, sizeof where);
+        const sv_map_result map = {.title = s->base.title,
+                                   .sample = &sample,
+                                   .point = &problem,
+                                   .record = &record,
+                                   .lattice_constant = s->base.lattice_constant,
+                                   .note = where[0] != '\0' ? where : NULL,
+                                   .survey = &survey};
+        status = survey_draw(s, folder, &map, tell_figure);
+    }
+    sv_survey_free(context, &survey);
     sv_sample_free(context, &sample);
     return status;
 }
@@ -153,6 +199,8 @@ static sv_status report(session *s, sv_run *run)
         status = draw_sweep(s, &result, folder);
     if (status == SV_OK)
         status = draw_map(s, folder);
+    if (status == SV_OK)
+        status = draw_survey(s, folder);
     result_free(context, &result);
     sv_ensemble_free(context, &ensemble);
     return status;

@@ -24,6 +24,7 @@ typedef enum option_id {
     OPT_HAMILTONIAN = 'H',
     OPT_SITES = 'L',
     OPT_CSV = 'V',
+    OPT_PROBES = 'B',
     OPT_HELP = 'h'
 } option_id;
 
@@ -53,6 +54,7 @@ static const option_row option_rows[] = {
     {OPT_SITES, false, "sites", "FILE", "write the sites in matrix order (CSV)"},
     {OPT_CSV, false, "csv", "FILE",
      "write the marker of each site, or the density of states (CSV)"},
+    {OPT_PROBES, false, "probes", "FILE", "write the probe points of the localizer (CSV)"},
     {OPT_HELP, true, "help", NULL, "this text"},
 };
 enum { N_ROWS = sizeof option_rows / sizeof option_rows[0] };
@@ -206,6 +208,9 @@ static bool apply(options *o, option_id id, const char *value)
         return is_file_name(value);
     case OPT_CSV:
         o->csv = value;
+        return is_file_name(value);
+    case OPT_PROBES:
+        o->probes = value;
         return is_file_name(value);
     case OPT_HELP:
         return true;

@@ -15,7 +15,7 @@ typedef struct options {
     const struct command *command;
     const char *files[MOST_FILES];
     int n_files;
-    const char *output, *hamiltonian, *sites, *csv;
+    const char *output, *hamiltonian, *sites, *csv, *probes;
     int64_t realisation;
     int64_t threads; /* 0: as many as the affinity mask allows */
     double time_limit;
@@ -105,6 +105,15 @@ sv_status result_make(session *s, const sv_ensemble *ensemble, const sv_stop_rul
                       sv_result *ret);
 void result_free(sv_context *context, sv_result *result);
 sv_stop_rule session_stop_rule(const session *s);
+
+/* The localizer at many points (survey.c): asked for by a sheet, computed on a sample, written,
+ * drawn. Each figure is told to the caller. */
+typedef void (*figure_teller)(const session *s, const sv_figure_files *files, const char *what);
+bool survey_wanted(const sv_case *problem);
+sv_status survey_compute(session *s, const sv_case *problem, const sv_sample *sample,
+                         sv_survey *ret);
+sv_status survey_write_csv(session *s, const sv_survey *survey, const char *path);
+sv_status survey_draw(session *s, const char *folder, const sv_map_result *map, figure_teller tell);
 
 /* Exports never overwrite a file without --force; NULL is no export. */
 sv_status may_write(sv_context *context, const options *o, const char *path);

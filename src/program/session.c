@@ -200,7 +200,8 @@ static sv_status open_sheet(session *s, const char *path, bool inside_run, bool 
                                       .n_overrides = s->options->n_overrides,
                                       .markers = s->markers,
                                       .n_markers = count,
-                                      .confined = inside_run};
+                                      .confined = inside_run,
+                                      .check_marker = sv_marker_check};
     sv_status status = sv_sheet_read(s->context, path, &sheet_options, diagnostics, &s->sheet);
     if (status == SV_OK)
         status = sv_sheet_setup(s->context, s->sheet, NULL, 0, diagnostics, &s->base);

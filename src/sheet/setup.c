@@ -61,6 +61,20 @@ static bool use_occupation(sv_reader *reader, sv_setup *setup)
     return true;
 }
 
+/* Rules between keys are the marker's own; the sheet only knows where they stand. */
+static bool check_marker(sv_reader *reader, const sv_section *section)
+{
+    char message[200] = "";
+    int key = 0;
+    if (reader->sheet->check_marker == NULL ||
+        reader->sheet->check_marker(section->kind_row, section->values, &key, message,
+                                    sizeof message))
+        return true;
+    const sv_field *field = &section->fields[key];
+    return sv_report(reader, field->node != NULL ? field->node : section->anchor, field->key->doc,
+                     "%s.%s %s", section->path, field->key->name, message);
+}
+
 static bool use_markers(sv_reader *reader, sv_setup *setup)
 {
     enum {
@@ -76,6 +90,8 @@ static bool use_markers(sv_reader *reader, sv_setup *setup)
                                     SV_FAIL(reader->context, SV_INTERNAL,
                                             "the marker %s has too many keys",
                                             section->kind->name));
+        if (!check_marker(reader, section))
+            return false;
         sv_sheet_marker *marker = &setup->markers[setup->n_markers++];
         marker->kind = section->kind_row;
         for (int i = 0; i < section->n_fields; i++)

@@ -206,6 +206,7 @@ sv_status sv_sheet_parse(sv_context *context, const char *name, const char *text
     if (status != SV_OK)
         return status;
     sheet->confined = own.confined;
+    sheet->check_marker = own.check_marker;
     sheet->markers = own.markers;
     sheet->n_markers = own.n_markers;
     status = copy_source(context, sheet, name, text, size);

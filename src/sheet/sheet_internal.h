@@ -180,7 +180,9 @@ struct sv_sheet {
     char *data;
     const char *folder;
     bool confined;
-    const sv_node *root; /* overrides applied */
+    bool (*check_marker)(int kind, const sv_value *values, int *ret_key, char *message,
+                         size_t size); /* or NULL */
+    const sv_node *root;               /* overrides applied */
     const sv_kind *markers;
     int n_markers;
     double energy_unit; /* of the sheet as written; 0: none known */

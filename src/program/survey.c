@@ -1,0 +1,75 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* The localizer at many points: what the map and report commands do with it. */
+#include "program_internal.h"
+
+#include <unistd.h>
+
+static const sv_marker_request *survey_request(const sv_case *problem)
+{
+    const int localizer = sv_marker_find("localizer");
+    for (int k = 0; k < problem->n_markers; k++)
+        if (problem->markers[k].marker == localizer &&
+            sv_localizer_wants_survey(problem->markers[k].values))
+            return &problem->markers[k];
+    return NULL;
+}
+
+bool survey_wanted(const sv_case *problem)
+{
+    return survey_request(problem) != NULL;
+}
+
+sv_status survey_compute(session *s, const sv_case *problem, const sv_sample *sample,
+                         sv_survey *ret)
+{
+    const sv_marker_input input = {.sample = sample,
+                                   .occupation = &problem->occupation,
+                                   .values = survey_request(problem)->values,
+                                   .threads = s->threads};
+    sv_context *context = s->context;
+    sv_progress_bar bar;
+    sv_progress_bar_init(&bar, stderr, isatty(fileno(stderr)));
+    if (wants_progress(s->options)) {
+        context->progress = sv_progress_bar_show;
+        context->progress_user = &bar;
+    }
+    sv_status status = sv_localizer_survey(context, &input, ret);
+    context->progress = NULL;
+    sv_progress_bar_end(&bar);
+    return status;
+}
+
+sv_status survey_write_csv(session *s, const sv_survey *survey, const char *path)
+{
+    char *text = NULL;
+    sv_output file;
+    sv_status status = sv_survey_csv(s->context, survey, &text);
+    if (status == SV_OK)
+        status = sv_output_begin(s->context, path, &file);
+    if (status == SV_OK) {
+        fputs(text, file.stream);
+        status = sv_output_commit(s->context, &file);
+    }
+    sv_give(s->context, text);
+    return status;
+}
+
+sv_status survey_draw(session *s, const char *folder, const sv_map_result *map, figure_teller tell)
+{
+    sv_context *context = s->context;
+    sv_figure_files files;
+    sv_status status = SV_OK;
+    if (map->survey->points[0] > 0) {
+        status = map->survey->line
+                     ? sv_figure_profile(context, folder, "localizer_line", map, false, &files)
+                     : sv_figure_probes(context, folder, "localizer_grid", map, &files);
+        if (status == SV_OK)
+            tell(s, &files, map->survey->line ? "localizer along a line" : "localizer gap");
+    }
+    if (status == SV_OK && map->survey->n_kappas > 0) {
+        status = sv_figure_profile(context, folder, "localizer_kappa", map, true, &files);
+        if (status == SV_OK)
+            tell(s, &files, "localizer against kappa");
+    }
+    return status;
+}
