@@ -232,7 +232,9 @@ typedef enum sv_key_type {
     SV_KEY_PLACE,        /**< the word centre (has_auto) or [x, y] → real[0..1] */
     SV_KEY_REAL_LIST,    /**< [a, b, …] → list, count */
     SV_KEY_TREE,         /**< nested block, read by code of its own */
-    SV_KEY_CHOICE_PAIR   /**< one of `choices` for both, or [a, b] → integer[0..1], row numbers */
+    SV_KEY_CHOICE_PAIR,  /**< one of `choices` for both, or [a, b] → integer[0..1], row numbers */
+    SV_KEY_POINTS,       /**< [[x, y], …] → list, count numbers */
+    SV_KEY_LOOPS         /**< [[[x, y], …], …] → list, count numbers: points of a loop, x, y, … */
 } sv_key_type;
 
 /** One row of a key table: drives validation, defaults, help, `check` and the JSON Schema. */

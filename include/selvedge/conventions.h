@@ -12,7 +12,8 @@
  *
  * **Coordinates.** Positions are Cartesian, in lattice constants; a site lies at
  * i·a1 + j·a2 + (position of its orbital in the cell). Cell indices start at 0 for shapes made of
- * n1×n2 cells and are centred on 0 for hexagon and disc.
+ * n1×n2 cells and are centred on 0 for hexagon, disc, annulus and triangle by side. An orientation
+ * turns the lattice counter-clockwise about (0, 0); shapes stay.
  *
  * **Order of sites.** Cells by i, then j, then orbitals in the order of the model; sites that are
  * gone (vacancies) have no row.

@@ -119,6 +119,9 @@ SV_API int sv_model_find_field(const sv_model *model, const char *name);
 SV_API SV_MUST_USE sv_status sv_model_finish(sv_context *context, sv_model *model);
 SV_API void sv_model_free(sv_context *context, sv_model *model);
 
+/** Turns vectors and orbital positions counter-clockwise about (0, 0). @param angle radian */
+SV_API void sv_model_turn(sv_model *model, double angle);
+
 /** Row of an orbital, or -1. */
 SV_API int sv_model_find_orbital(const sv_model *model, const char *name);
 /** Area of the cell, lattice constants squared. */

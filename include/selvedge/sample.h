@@ -19,20 +19,61 @@ typedef enum sv_shape {
     SV_SHAPE_RECTANGLE,
     SV_SHAPE_PARALLELOGRAM,
     SV_SHAPE_HEXAGON,
-    SV_SHAPE_DISC
+    SV_SHAPE_DISC,
+    SV_SHAPE_ANNULUS,
+    SV_SHAPE_TRIANGLE,
+    SV_SHAPE_RIBBON,
+    SV_SHAPE_POLYGON
 } sv_shape;
+
+/** Edges of shapes by cells on a honeycomb lattice. */
+typedef enum sv_edge { SV_EDGE_USUAL /**< zigzag */, SV_EDGE_ZIGZAG, SV_EDGE_ARMCHAIR } sv_edge;
+
+/** Closed loops of corners: the outline, then holes. Points on a loop belong to the inside. */
+typedef struct sv_polygon {
+    const double *corners;     /**< x, y of all loops, one after another; lattice constants */
+    const int32_t *loop_start; /**< n_loops + 1 corner numbers */
+    int n_loops;
+} sv_polygon;
 
 /** What the sheet's `flake` block says. Lengths in lattice constants. */
 typedef struct sv_flake_spec {
     sv_shape shape;
     bool has_cells;
-    int64_t cells[2]; /**< n1, n2; hexagon: n in cells[0] */
+    int64_t cells[2]; /**< n1, n2; hexagon, triangle: n in cells[0]; ribbon: length, width */
     bool has_size;
     double size[2]; /**< rectangle of a lattice whose vectors are not orthogonal */
     bool has_radius;
-    double radius;    /**< hexagon of other lattices (centre to corner), disc */
-    bool periodic[2]; /**< along a1 and a2 (rectangle by size: along x and y) */
+    double radius;       /**< hexagon of other lattices (centre to corner), disc */
+    double inner, outer; /**< annulus */
+    bool has_side;
+    double side;        /**< triangle of other lattices */
+    sv_edge edge;       /**< hexagon and triangle by cells, ribbon */
+    sv_polygon polygon; /**< borrowed: must outlive every flake made from it */
+    bool periodic[2];   /**< along a1 and a2 (rectangle by size: along x and y; ribbon: along its
+                             length and across) */
 } sv_flake_spec;
+
+enum { SV_POLYGON_MOST = 2000 /**< corners of all loops */ };
+
+/** Fault of a polygon: which corners, and what is wrong with them. */
+typedef struct sv_polygon_fault {
+    int loop, corner; /**< where to look, from 0 */
+    char message[200], hint[200];
+} sv_polygon_fault;
+
+/**
+ * Checks that the loops bound an area: three corners or more each, no loop crosses or touches itself
+ * or another one, holes lie inside the outline and outside each other. Either sense of rotation.
+ * @return SV_INVALID_INPUT with the fault in *ret_fault
+ * Cost: the square of the number of corners.
+ */
+SV_API SV_MUST_USE sv_status sv_polygon_check(sv_context *context, const sv_polygon *polygon,
+                                              sv_polygon_fault *ret_fault);
+/** Is a point inside the outline and outside the holes (on an edge: yes)? */
+SV_API bool sv_polygon_holds(const sv_polygon *polygon, const double at[2]);
+/** Area without the holes, and its centroid. */
+SV_API double sv_polygon_area(const sv_polygon *polygon, double ret_centroid[2]);
 
 /** Kinds of shapes with their keys (all but `boundary`, common to all). */
 SV_API const sv_kind *sv_shape_kinds(int *ret_count);
@@ -73,12 +114,20 @@ typedef struct sv_closure {
 } sv_closure;
 SV_API sv_closure sv_flake_can_close(const sv_model *model, const sv_flake_spec *spec);
 
-/** Number of sites of the pristine flake without building it (an upper estimate for discs). */
+/** Number of sites of the pristine flake without building it (an upper estimate for shapes whose
+ *  size is a length). */
 SV_API SV_MUST_USE sv_status sv_flake_count(sv_context *context, const sv_model *model,
                                             const sv_flake_spec *spec, sv_index *ret_sites);
 
 /**
- * Builds the pristine flake.
+ * Builds the pristine flake. Which cells a shape has:
+ *  - parallelogram, rectangle by cells, ribbon: n1×n2 cells from (0, 0); a ribbon with armchair edges
+ *    has n1 periods |a1 + a2| and n2 rows of dimers across;
+ *  - rectangle by size, polygon: cells whose centre lies inside, in Cartesian coordinates;
+ *  - disc, annulus, hexagon by radius, triangle by side (base along x): the same about the centre of
+ *    cell (0, 0), which is the centroid;
+ *  - hexagon and triangle by cells: sites, not cells. Zigzag: those of n hexagons a side; armchair:
+ *    those of n disjoint rings a side. 6n² and n² + 4n + 1, or 18n² − 18n + 6 and 3n² + 3n sites.
  * @return SV_INVALID_INPUT for a shape that does not suit the lattice, an empty flake, or a
  *         periodic side that does not fit the lattice or the flux
  */
@@ -89,7 +138,11 @@ SV_API void sv_flake_free(sv_context *context, sv_flake *flake);
 /**
  * Averaging window: n1×n2 cells about the centre for flakes of L1×L2 cells, n the integer of the
  * parity of L nearest to share·L (ties up); other shapes: cells whose centre (mean of the orbital
- * positions) lies in the shape scaled by `share` about its centroid.
+ * positions) lies in the shape scaled by `share` about its centroid. Annulus: the middle band of the
+ * ring, |r − (inner + outer)/2| ≤ share·(outer − inner)/2. Polygon with holes: the same rule,
+ * min(d, e) ≥ (1 − share)/2·(d + e), d and e the distances from the outline and the nearest hole.
+ * Holes never count as area. Hexagon and triangle by cells are scaled from the outline
+ * through the centres of the next, missing row of hexagons (armchair: half a row of rings outside).
  * @param share  0 < share ≤ 1
  * @param[out] ret_inside  n_cells flags, taken from the context
  * @return SV_INVALID_INPUT when no cell is inside

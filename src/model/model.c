@@ -122,6 +122,22 @@ void sv_model_free(sv_context *context, sv_model *model)
     *model = (sv_model){.flux = {0, 1}};
 }
 
+static void turn(double at[2], double c, double s)
+{
+    double x = c * at[0] - s * at[1], y = s * at[0] + c * at[1];
+    at[0] = x;
+    at[1] = y;
+}
+
+void sv_model_turn(sv_model *model, double angle)
+{
+    double c = cos(angle), s = sin(angle);
+    for (int k = 0; k < 2; k++)
+        turn(model->vectors[k], c, s);
+    for (int k = 0; k < model->n_orbitals; k++)
+        turn(model->orbitals[k].at, c, s);
+}
+
 int sv_model_find_orbital(const sv_model *model, const char *name)
 {
     for (int k = 0; k < model->n_orbitals; k++)

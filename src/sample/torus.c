@@ -65,6 +65,11 @@ static bool flux_fits(const sv_model *model, const sv_flake_spec *spec, const bo
                       char *reason, size_t size)
 {
     int q = flux_denominator(model);
+    if (spec->shape == SV_SHAPE_RIBBON && spec->edge == SV_EDGE_ARMCHAIR && q != 1) {
+        /* Its torus vectors are oblique to the gauge. */
+        snprintf(reason, size, "an armchair ribbon with flux has no torus; use edge: zigzag");
+        return false;
+    }
     if (!(periodic[0] && periodic[1]) || spec->cells[0] % q == 0 || spec->cells[1] % q == 0)
         return true;
     snprintf(reason, size, "flux %d/%d does not fit a torus of %lld×%lld cells (multiple of %d)",
@@ -73,22 +78,39 @@ static bool flux_fits(const sv_model *model, const sv_flake_spec *spec, const bo
     return false;
 }
 
+static void torus_by_cells(const sv_flake_spec *spec, const bool periodic[2],
+                           int32_t ret_period[2][2])
+{
+    int32_t n1 = (int32_t)spec->cells[0], n2 = (int32_t)spec->cells[1];
+    bool armchair = spec->shape == SV_SHAPE_RIBBON && spec->edge == SV_EDGE_ARMCHAIR;
+    if (periodic[0]) {
+        ret_period[0][0] = n1;
+        ret_period[0][1] = armchair ? n1 : 0;
+    }
+    /* Armchair: n2 rows of dimers across, half a period along where n2 is odd. */
+    if (periodic[1]) {
+        ret_period[1][0] = armchair ? -(n2 / 2) : 0;
+        ret_period[1][1] = armchair ? n2 - n2 / 2 : n2;
+    }
+}
+
 bool sv_flake_torus(const sv_model *model, const sv_flake_spec *spec, const bool periodic[2],
                     int32_t ret_period[2][2], char *reason, size_t reason_size)
 {
     memset(ret_period, 0, 4 * sizeof(int32_t));
     if (!periodic[0] && !periodic[1])
         return true;
-    if (spec->shape != SV_SHAPE_RECTANGLE && spec->shape != SV_SHAPE_PARALLELOGRAM) {
+    int64_t place[2];
+    bool box = sv_box_place(spec, 0, 0, place);
+    if (!box && spec->shape != SV_SHAPE_RECTANGLE) {
         int count;
-        snprintf(reason, reason_size, "a %s has no torus",
-                 sv_shape_kinds(&count)[spec->shape].name);
+        const char *name = sv_shape_kinds(&count)[spec->shape].name;
+        snprintf(reason, reason_size, "%s %s has no torus", name[0] == 'a' ? "an" : "a", name);
         return false;
     }
-    if (!spec->has_cells)
+    if (!box)
         return torus_by_size(model, spec, periodic, ret_period, reason, reason_size);
-    for (int k = 0; k < 2; k++)
-        ret_period[k][k] = periodic[k] ? (int32_t)spec->cells[k] : 0;
+    torus_by_cells(spec, periodic, ret_period);
     return flux_fits(model, spec, periodic, reason, reason_size);
 }
 

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* The averaging window of a flake: the rule is a convention users rely on, see sample.h. */
-#include "selvedge/sample.h"
+#include "sample_internal.h"
 
 #include <math.h>
 
@@ -24,47 +24,57 @@ static sv_index mark_box(const sv_flake *flake, double share, bool *inside)
         first[k] = (flake->spec.cells[k] - count[k]) / 2;
     }
     for (sv_index c = 0; c < flake->n_cells; c++) {
-        int64_t i = flake->cells[c].i - first[0], j = flake->cells[c].j - first[1];
+        int64_t place[2];
+        sv_box_place(&flake->spec, flake->cells[c].i, flake->cells[c].j, place);
+        int64_t i = place[0] - first[0], j = place[1] - first[1];
         inside[c] = i >= 0 && i < count[0] && j >= 0 && j < count[1];
         cells += inside[c];
     }
     return cells;
 }
 
-/* Hexagon of the flake: a corner along a lattice vector for the zigzag one, along x by radius. */
-static bool in_hexagon(const sv_flake *flake, const double d[2], double share)
+/* The middle band of the ring. */
+static bool in_band(const sv_flake_spec *spec, const double d[2], double share)
 {
-    const double half = sqrt(3.0) / 2.0;
-    double r = flake->spec.radius, x = d[0], y = d[1];
-    if (flake->spec.has_cells) {
-        const double *a1 = flake->model->vectors[0];
-        double length = hypot(a1[0], a1[1]);
-        r = (double)flake->spec.cells[0] * length;
-        x = (d[0] * a1[0] + d[1] * a1[1]) / length;
-        y = (d[1] * a1[0] - d[0] * a1[1]) / length;
-    }
-    r = share * r + 1e-9;
-    return fabs(y) <= half * r && half * fabs(x) + 0.5 * fabs(y) <= half * r;
+    double middle = 0.5 * (spec->inner + spec->outer), half = 0.5 * (spec->outer - spec->inner);
+    return fabs(hypot(d[0], d[1]) - middle) <= share * half + 1e-9;
+}
+
+/* Without holes: a point of the scaled outline is one of the outline, away from the centroid by
+ * 1/share. With holes: the ring's rule, by distances from the outline and the nearest hole. */
+static bool in_polygon(const sv_flake *flake, const double d[2], double share)
+{
+    bool on_edge;
+    const sv_polygon *p = &flake->spec.polygon;
+    const double *centre = flake->centre;
+    double at[2] = {centre[0] + d[0], centre[1] + d[1]};
+    if (p->n_loops == 1)
+        return sv_loop_holds(
+            p, 0, (const double[2]){centre[0] + d[0] / share, centre[1] + d[1] / share}, &on_edge);
+    double outside = sv_polygon_distance(p, 0, 1, at);
+    double inside = sv_polygon_distance(p, 1, p->n_loops, at);
+    return fmin(outside, inside) >= 0.5 * (1.0 - share) * (outside + inside) - 1e-9;
 }
 
 static bool in_scaled_shape(const sv_flake *flake, const double d[2], double share)
 {
     const sv_flake_spec *spec = &flake->spec;
+    sv_regular regular;
     switch (spec->shape) {
     case SV_SHAPE_DISC:
         return hypot(d[0], d[1]) <= share * spec->radius + 1e-9;
+    case SV_SHAPE_ANNULUS:
+        return in_band(spec, d, share);
     case SV_SHAPE_HEXAGON:
-        return in_hexagon(flake, d, share);
+    case SV_SHAPE_TRIANGLE:
+        regular = sv_outline_regular(flake->model, spec);
+        return sv_regular_holds(&regular, d, share);
+    case SV_SHAPE_POLYGON:
+        return in_polygon(flake, d, share);
     default:
         return fabs(d[0]) <= 0.5 * share * spec->size[0] + 1e-9 &&
                fabs(d[1]) <= 0.5 * share * spec->size[1] + 1e-9;
     }
-}
-
-static bool is_box_of_cells(const sv_flake *flake)
-{
-    return flake->spec.shape == SV_SHAPE_PARALLELOGRAM ||
-           (flake->spec.shape == SV_SHAPE_RECTANGLE && flake->spec.has_cells);
 }
 
 sv_status sv_flake_window(sv_context *context, const sv_flake *flake, double share,
@@ -75,7 +85,8 @@ sv_status sv_flake_window(sv_context *context, const sv_flake *flake, double sha
     sv_status status = sv_take(context, flake->n_cells, sizeof *inside, &inside);
     if (status != SV_OK)
         return status;
-    if (is_box_of_cells(flake)) {
+    int64_t place[2];
+    if (sv_box_place(&flake->spec, 0, 0, place)) {
         cells = mark_box(flake, share, inside);
     } else {
         for (sv_index c = 0; c < flake->n_cells; c++) {
@@ -89,7 +100,9 @@ sv_status sv_flake_window(sv_context *context, const sv_flake *flake, double sha
     }
     if (cells == 0) {
         sv_give(context, inside);
-        return SV_FAIL(context, SV_INVALID_INPUT, "no cell lies in the window of share %g", share);
+        return SV_FAIL(context, SV_INVALID_INPUT,
+                       "no cell of the flake lies in the window of share %g: take a larger window",
+                       share);
     }
     *ret_inside = inside;
     *ret_cells = cells;

@@ -103,6 +103,8 @@ static void add_value(writer *w, const sv_key *key, const sv_value *value)
         sv_text_add(&w->line, "sha256 %s", value->digest);
         break;
     case SV_KEY_REAL_LIST:
+    case SV_KEY_POINTS:
+    case SV_KEY_LOOPS:
         add_list(w, value->list, value->count);
         break;
     case SV_KEY_TEXT:

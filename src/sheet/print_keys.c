@@ -31,6 +31,10 @@ static const char *type_words(const sv_key *key)
         return "centre or [x, y]";
     case SV_KEY_REAL_LIST:
         return "[a, b, …]";
+    case SV_KEY_POINTS:
+        return "[[x, y], …]";
+    case SV_KEY_LOOPS:
+        return "[[[x, y], …], …]";
     case SV_KEY_TREE:
         return "nested";
     case SV_KEY_CHOICE_PAIR:

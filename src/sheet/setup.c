@@ -16,34 +16,6 @@ bool sv_setup_model(sv_reader *reader, sv_setup *setup)
     return status == SV_OK || sv_report_status(reader, sv_section_node(section, "name"), status);
 }
 
-bool sv_setup_flake(sv_reader *reader, sv_setup *setup)
-{
-    const sv_section *section = sv_document_find(reader, "flake", NULL);
-    const sv_value *cells = sv_section_value(section, "cells");
-    const sv_value *size = sv_section_value(section, "size");
-    const sv_value *radius = sv_section_value(section, "radius");
-    const sv_value *boundary = sv_section_value(section, "boundary");
-    sv_flake_spec *flake = &setup->flake;
-    char sizes[100] = "";
-    for (int i = 0; i < section->n_fields; i++)
-        if (sv_words_hold("cells size radius", section->fields[i].key->name))
-            snprintf(sizes + strlen(sizes), sizeof sizes - strlen(sizes), "%s%s",
-                     sizes[0] != '\0' ? " " : "", section->fields[i].key->name);
-    if (!sv_section_one_of(reader, section, sizes))
-        return false;
-    flake->shape = (sv_shape)section->kind_row;
-    flake->has_cells = cells->present;
-    flake->has_size = size->present;
-    flake->has_radius = radius->present;
-    flake->radius = radius->real[0];
-    for (int i = 0; i < 2; i++) {
-        flake->cells[i] = cells->integer[i];
-        flake->size[i] = size->real[i];
-        flake->periodic[i] = boundary->integer[i] == 1;
-    }
-    return true;
-}
-
 static bool use_occupation(sv_reader *reader, sv_setup *setup)
 {
     const sv_section *section = sv_document_find(reader, "occupation", NULL);

@@ -71,6 +71,54 @@ static bool read_list(sv_reader *reader, const sv_key *key, const char *path, co
     return good;
 }
 
+/* [[x, y], …] appended to the list. */
+static bool read_points(sv_reader *reader, const sv_key *key, const char *path, const sv_node *node,
+                        double *list, int *n)
+{
+    if (node->kind != SV_NODE_LIST || node->count == 0)
+        return sv_report(reader, node, NULL, "%s: expected a list of points [[x, y], …]", path);
+    for (sv_index i = 0; i < node->count; i++) {
+        sv_value point = {0};
+        if (!read_reals(reader, key, path, node->items[i], &point))
+            return false;
+        list[(*n)++] = point.real[0];
+        list[(*n)++] = point.real[1];
+    }
+    return true;
+}
+
+/* Nodes of a tree; `weight` does not count what an override has put in. */
+static sv_index count_nodes(const sv_node *node)
+{
+    sv_index n = 1;
+    for (sv_index i = 0; node->kind == SV_NODE_LIST && i < node->count; i++)
+        n += count_nodes(node->items[i]);
+    return n;
+}
+
+/* Points of one loop, or of several, each preceded by their number. */
+static bool read_loops(sv_reader *reader, const sv_key *key, const char *path, const sv_node *node,
+                       sv_value *value)
+{
+    double *list = sv_reader_take(reader, count_nodes(node), sizeof *list);
+    bool good = list != NULL;
+    value->list = list;
+    value->count = 0;
+    if (good && key->type == SV_KEY_POINTS)
+        return read_points(reader, key, path, node, list, &value->count);
+    if (good && node->kind != SV_NODE_LIST)
+        return sv_report(reader, node, NULL, "%s: expected a list of loops [[[x, y], …], …]", path);
+    for (sv_index i = 0; good && i < node->count; i++) {
+        const sv_node *loop = node->items[i];
+        if (loop->kind != SV_NODE_LIST || loop->count == 0 || loop->items[0]->kind != SV_NODE_LIST)
+            return sv_report(reader, loop, "one hole too is a list of holes: [[[x, y], …]]",
+                             "%s: expected a list of points [[x, y], …]", path);
+        list[value->count++] = (double)loop->count;
+        good = read_points(reader, key, path, node->items[i], list, &value->count);
+    }
+    return good;
+}
+
 static bool read_text(sv_reader *reader, const char *path, const sv_node *node, sv_value *value)
 {
     if (!sv_scalar_check(reader, path, node, "text"))
@@ -171,6 +219,9 @@ static bool read_typed(sv_reader *reader, const sv_key *key, const char *path, c
         return read_list(reader, key, path, node, value);
     case SV_KEY_CHOICE_PAIR:
         return read_choices(reader, key, path, node, value);
+    case SV_KEY_POINTS:
+    case SV_KEY_LOOPS:
+        return read_loops(reader, key, path, node, value);
     case SV_KEY_TREE:
         return true;
     }

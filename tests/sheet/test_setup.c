@@ -124,6 +124,49 @@ SV_TEST(shapes)
     reading_free(&r);
 }
 
+SV_TEST(shapes_of_loops_and_edges)
+{
+    reading r =
+        read_text(FILM "flake:\n  shape: polygon\n  orientation: 90 deg\n"
+                       "  vertices: [[0, 0], [10 nm, 0], [20, 8 nm], [0, 16]]\n"
+                       "  holes: [[[2, 2], [4, 2], [3, 4]], [[6, 6], [8, 6], [7, 4 nm]]]\n");
+    if (is_read(&r)) {
+        const sv_polygon *p = &r.setup.flake.polygon;
+        CHECK_INT(p->n_loops, 3);
+        CHECK_INT(p->loop_start[1], 4);
+        CHECK_INT(p->loop_start[3], 10);
+        CHECK_CLOSE(p->corners[2], 20.0, 1e-14);
+        CHECK_CLOSE(p->corners[5], 16.0, 1e-14);
+        CHECK_CLOSE(p->corners[2 * 9 + 1], 8.0, 1e-14);
+        CHECK_CLOSE(r.setup.model.vectors[0][1], 1.0, 1e-15);
+        CHECK(strstr(r.setup.identity, "flake.holes = [3, 2, 2, 4, 2, 3, 4, 3, 6") != NULL);
+    }
+    reading again = r;
+    if (r.status == SV_OK) {
+        again = read_text(r.setup.resolved);
+        if (is_read(&again))
+            CHECK_TEXT(again.setup.identity, r.setup.identity);
+        reading_free(&again);
+    }
+    reading_free(&r);
+    r = read_text("selvedge: 1\nmodel: {name: haldane, t2: 0.1, phi: 90 deg}\n"
+                  "flake: {shape: ribbon, cells: [6, 7], edge: armchair}\n");
+    if (is_read(&r)) {
+        CHECK_INT(r.setup.flake.edge, SV_EDGE_ARMCHAIR);
+        CHECK(r.setup.flake.periodic[0] && !r.setup.flake.periodic[1]);
+        again = read_text(r.setup.resolved);
+        if (is_read(&again))
+            CHECK_TEXT(again.setup.identity, r.setup.identity);
+        reading_free(&again);
+    }
+    reading_free(&r);
+    const char *const moved[] = {"flake.vertices.1.0=30"};
+    r = read_with(FILM "flake: {shape: polygon, vertices: [[0, 0], [10, 0], [0, 10]]}\n", moved, 1);
+    if (is_read(&r))
+        CHECK_CLOSE(r.setup.flake.polygon.corners[2], 30.0, 0.0);
+    reading_free(&r);
+}
+
 SV_TEST(energies_with_units_and_no_energy_unit)
 {
     reading r = read_text(MODEL FLAKE "occupation: {fermi_energy: 30 meV}\n"
