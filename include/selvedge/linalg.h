@@ -78,6 +78,7 @@ typedef struct sv_packed {
     sv_index *start; /**< 3n + 1 offsets */
     int32_t *column;
     double *re, *im;
+    sv_index span; /**< largest |row − column|: how far steps of a polynomial must keep apart */
 } sv_packed;
 
 /**
@@ -103,7 +104,8 @@ SV_API const char *sv_panel_kernel_name(sv_panel_kernel kernel);
  * @param coefficients degree + 1 values
  * @param work   room for two panels
  * @param[out] y a panel, not overlapping x
- * Memory must be aligned to 64 bytes (sv_take() gives that). Cost: degree matrix products.
+ * Memory must be aligned to 64 bytes (sv_take() gives that). Cost: degree matrix products, eight of
+ * them in one walk over the vectors where the rows that couple lie close together.
  */
 SV_API void sv_panel_polynomial(const sv_packed *a, const double *coefficients, int degree,
                                 sv_panel_kernel kernel, const double *x, double *work, double *y);

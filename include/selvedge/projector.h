@@ -60,6 +60,15 @@ typedef struct sv_levels {
 typedef struct sv_projector sv_projector;
 
 /**
+ * Half width of an interval about `energy` that holds the spectrum of H, by which polynomials of
+ * H − energy are scaled: from sv_spectral_bounds() up to 50,000 rows, from row sums (Gershgorin)
+ * above, with a margin of 1e-4 against rounding. Unit of the model.
+ * @return SV_NUMERICAL, SV_INTERRUPTED
+ */
+SV_API SV_MUST_USE sv_status sv_projector_scale(sv_context *context, const sv_sparse *h,
+                                                double energy, double *ret_scale);
+
+/**
  * Builds the projector.
  *
  * When a level coincides with the Fermi energy (or the filling cuts a degenerate level) P is not

@@ -210,7 +210,7 @@ static sv_status start_pilot(sv_context *context, const sv_case *point, pilot *p
     if (status == SV_OK)
         status = find_energy(context, point, p);
     if (status == SV_OK)
-        p->scale = 1.0001 * (sv_sparse_norm_bound(&p->sample.hamiltonian) + fabs(p->energy));
+        status = sv_projector_scale(context, &p->sample.hamiltonian, p->energy, &p->scale);
     sv_give(context, inside);
     return status;
 }

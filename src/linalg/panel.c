@@ -5,6 +5,10 @@
 #include <math.h>
 #include <string.h>
 
+/* Eight steps: measured best from 1,800 to 10^6 rows; more of them spill from the cache again. */
+enum { STEPS_PER_WALK = 8, LEAST_STRIDE = 64 };
+_Static_assert(STEPS_PER_WALK % 2 == 0, "the vectors of a walk come back to their places");
+
 /* Which loop suits this processor. A pure function of the machine: no state is kept. */
 static panel_step choose_step(sv_panel_kernel kernel)
 {
@@ -61,6 +65,8 @@ static void pack_row(const sv_sparse *h, const int32_t *place, sv_index row, sv_
             p->column[*used] = column;
             p->re[*used] = creal(value) / scale;
             p->im[*used] = cimag(value) / scale;
+            sv_index distance = column < to ? to - column : column - to;
+            p->span = distance > p->span ? distance : p->span;
             (*used)++;
         }
     }
@@ -90,6 +96,26 @@ sv_status sv_packed_make(sv_context *context, const sv_sparse *h, const sv_index
     return SV_OK;
 }
 
+/*
+ * Several steps in one walk over the rows: step s follows s·span rows behind the first, where all
+ * rows it reads are done and none it overwrites is still wanted. Vectors far larger than the cache
+ * then come from memory once per walk, not once per step.
+ */
+static void walk(const sv_packed *a, panel_step step, const double *weights, int steps,
+                 double *before, double *now, double *y)
+{
+    sv_index stride = a->span > LEAST_STRIDE ? a->span : LEAST_STRIDE;
+    for (sv_index base = 0; base < a->n + (steps - 1) * a->span; base += stride)
+        for (int s = 0; s < steps; s++) {
+            sv_index first = base - s * a->span, last = first + stride;
+            first = first < 0 ? 0 : first;
+            last = last > a->n ? a->n : last;
+            if (first < last)
+                step(a, first, last, s % 2 == 0 ? now : before, s % 2 == 0 ? before : now, y, 2.0,
+                     weights[s]);
+        }
+}
+
 void sv_panel_polynomial(const sv_packed *a, const double *coefficients, int degree,
                          sv_panel_kernel kernel, const double *x, double *work, double *y)
 {
@@ -105,10 +131,9 @@ void sv_panel_polynomial(const sv_packed *a, const double *coefficients, int deg
     if (degree < 1)
         return;
     step(a, 0, a->n, before, now, y, 1.0, coefficients[1]);
-    for (int k = 2; k <= degree; k++) {
-        step(a, 0, a->n, now, before, y, 2.0, coefficients[k]);
-        double *swap = before;
-        before = now;
-        now = swap;
+    for (int k = 2; k <= degree; k += STEPS_PER_WALK) {
+        int left = degree - k + 1, steps = left < STEPS_PER_WALK ? left : STEPS_PER_WALK;
+        walk(a, step, coefficients + k, steps, before, now, y);
+        /* STEPS_PER_WALK is even: after a full walk `now` is the newest again. */
     }
 }

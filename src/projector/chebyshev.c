@@ -11,6 +11,10 @@
 /* Sites up to which states are counted at a given Fermi energy. */
 static const sv_index COUNTED_LARGEST = 50000;
 
+/* Rows: above, bounding the spectrum costs more than the degrees it saves, since the columns of
+ * large flakes are sampled and work on parts. */
+static const sv_index LANCZOS_LARGEST = 50000;
+
 typedef struct chebyshev_state {
     sv_packed packed; /* (H − E_F)/scale; empty when only parts are used */
     double *coefficients;
@@ -213,20 +217,18 @@ static sv_status set_levels(sv_context *context, const sv_sample *sample,
     return status;
 }
 
-sv_status sv_chebyshev_scale(sv_context *context, const sv_sparse *h, double energy, bool tight,
+sv_status sv_projector_scale(sv_context *context, const sv_sparse *h, double energy,
                              double *ret_scale)
 {
-    sv_sparse square = {0};
-    /* Gershgorin holds for every sample; the margin keeps |T_k| ≤ 1 under rounding. */
-    double scale = sv_sparse_norm_bound(h) + fabs(energy);
-    sv_status status = tight ? sv_sparse_square(context, h, energy, 1.0, &square) : SV_OK;
-    if (status != SV_OK)
-        return status;
-    /* The same for (H − E)², where hops of opposite sign cancel. */
-    if (tight)
-        scale = fmin(scale, sqrt(sv_sparse_norm_bound(&square)));
-    sv_sparse_free(context, &square);
-    *ret_scale = 1.0001 * scale;
+    double bounds[2], scale = sv_sparse_norm_bound(h) + fabs(energy);
+    if (h->n > 0 && h->n <= LANCZOS_LARGEST) {
+        sv_status status = sv_spectral_bounds(context, h, bounds);
+        if (status != SV_OK)
+            return status;
+        scale = fmin(scale, fmax(bounds[1] - energy, energy - bounds[0]));
+    }
+    /* The margin keeps |T_k| ≤ 1 under rounding; a scale of 0 is a matrix of zeros. */
+    *ret_scale = 1.0001 * fmax(scale, DBL_MIN);
     return SV_OK;
 }
 
@@ -243,8 +245,7 @@ sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
         return status;
     s->energy = levels.fermi_energy;
     s->kernel = sv_panel_best_kernel();
-    status = sv_chebyshev_scale(context, &sample->hamiltonian, s->energy, options->occupied_basis,
-                                &s->scale);
+    status = sv_projector_scale(context, &sample->hamiltonian, s->energy, &s->scale);
     if (status == SV_OK)
         status = set_polynomial(context, options, s->scale, s);
     /* Parts bring their own matrix; the whole one would only cost memory. */

@@ -113,7 +113,7 @@ static sv_status choose_gap(sv_context *context, const sv_sample *sample, const 
     const sv_sparse *h = &sample->hamiltonian;
     double energy = levels->fermi_energy;
     double scale;
-    sv_status status = sv_chebyshev_scale(context, h, energy, true, &scale);
+    sv_status status = sv_projector_scale(context, h, energy, &scale);
     if (status != SV_OK)
         return status;
     double gap = 0.999 * fmin(energy - levels->highest_occupied, levels->lowest_empty - energy);

@@ -50,10 +50,6 @@ sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
                                    const sv_occupation *occupation,
                                    const sv_projector_options *options, sv_projector *projector);
 
-/* Bound of ‖H − energy‖, with a small margin; `tight` takes a product of matrices more. */
-sv_status sv_chebyshev_scale(sv_context *context, const sv_sparse *h, double energy, bool tight,
-                             double *ret_scale);
-
 /* Builds the rational engine: fills engine, state and levels. */
 sv_status sv_rational_engine_make(sv_context *context, const sv_sample *sample,
                                   const sv_occupation *occupation,
