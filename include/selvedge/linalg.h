@@ -67,7 +67,8 @@ SV_API SV_MUST_USE sv_status sv_dense_eigen(sv_context *context, sv_index n, sv_
 
 /* ---------------------------------------------------- polynomials of a matrix */
 
-enum { SV_PANEL_COLUMNS = 16 };
+/** Columns of a panel in double and in single precision: 256 bytes a row both. */
+enum { SV_PANEL_COLUMNS = 16, SV_PANEL_COLUMNS_SINGLE = 32 };
 
 /**
  * A sparse matrix shifted, scaled and packed for polynomials, elements of a row sorted into real,
@@ -78,6 +79,7 @@ typedef struct sv_packed {
     sv_index *start; /**< 3n + 1 offsets */
     int32_t *column;
     double *re, *im;
+    float *re_single, *im_single; /**< NULL unless added */
     sv_index span; /**< largest |row − column|: how far steps of a polynomial must keep apart */
 } sv_packed;
 
@@ -90,6 +92,8 @@ typedef struct sv_packed {
 SV_API SV_MUST_USE sv_status sv_packed_make(sv_context *context, const sv_sparse *h,
                                             const sv_index *rows, sv_index n, const int32_t *place,
                                             double shift, double scale, sv_packed *ret_packed);
+/** Adds the copy in single precision that sv_panel_polynomial_single() reads. */
+SV_API SV_MUST_USE sv_status sv_packed_add_single(sv_context *context, sv_packed *packed);
 SV_API void sv_packed_free(sv_context *context, sv_packed *packed);
 
 /** Copies of the inner loop; the plain one is the reference for the others. */
@@ -109,6 +113,15 @@ SV_API const char *sv_panel_kernel_name(sv_panel_kernel kernel);
  */
 SV_API void sv_panel_polynomial(const sv_packed *a, const double *coefficients, int degree,
                                 sv_panel_kernel kernel, const double *x, double *work, double *y);
+/**
+ * The same in single precision, for a panel of SV_PANEL_COLUMNS_SINGLE columns and a matrix with
+ * sv_packed_add_single(): about twice as many columns per second. Rounding errors of different
+ * columns and rows are independent; measured for step polynomials of degree 31 to 401 their norm is
+ * 1e-7 to 4e-7 of the norm of x.
+ */
+SV_API void sv_panel_polynomial_single(const sv_packed *a, const double *coefficients, int degree,
+                                       sv_panel_kernel kernel, const float *x, float *work,
+                                       float *y);
 
 /**
  * Chebyshev coefficients of a near-best polynomial of the occupation step: 1 on [−1, −δ], 0 on

@@ -32,6 +32,8 @@ typedef struct sv_projector_options {
     double half_gap; /**< levels at least this far from the Fermi energy are resolved, unit of the
                           model; chebyshev needs it, rational takes 0: a quarter of the
                           distance of the nearest level, at least 1e-7 of the spectrum */
+    bool single;     /**< chebyshev: polynomials in single precision, about twice as fast; their
+                          rounding enters the stated errors */
     int near_states; /**< chebyshev: levels nearer than half_gap, up to this many, are computed
                           one by one and occupied exactly; 0: left to the polynomial */
     double reach;    /**< chebyshev: radius of the parts for single columns, lattice constants;

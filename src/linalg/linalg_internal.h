@@ -6,14 +6,22 @@
 
 enum { SV_PANEL_ROW = 2 * SV_PANEL_COLUMNS }; /* doubles per site of a panel */
 
-/* Copies of the same loop for several instruction sets. */
+/* Copies of the same loops for several instruction sets, in double and in single precision. */
 typedef void (*panel_step)(const sv_packed *a, sv_index first, sv_index last, const double *x,
                            double *t, double *y, double factor, double weight);
-void sv_panel_step_plain(const sv_packed *a, sv_index first, sv_index last, const double *x,
-                         double *t, double *y, double factor, double weight);
-void sv_panel_step_avx2(const sv_packed *a, sv_index first, sv_index last, const double *x,
-                        double *t, double *y, double factor, double weight);
-void sv_panel_step_avx512(const sv_packed *a, sv_index first, sv_index last, const double *x,
-                          double *t, double *y, double factor, double weight);
+#define PANEL_COPY(isa)                                                                            \
+    void sv_panel_step_##isa(const sv_packed *a, sv_index first, sv_index last, const double *x,   \
+                             double *t, double *y, double factor, double weight);                  \
+    void sv_panel_polynomial_##isa(const sv_packed *a, const double *coefficients, int degree,     \
+                                   const double *x, double *work, double *y);                      \
+    void sv_panel_step_single_##isa(const sv_packed *a, sv_index first, sv_index last,             \
+                                    const float *x, float *t, float *y, float factor,              \
+                                    float weight);                                                 \
+    void sv_panel_single_##isa(const sv_packed *a, const double *coefficients, int degree,         \
+                               const float *x, float *work, float *y)
+PANEL_COPY(plain);
+PANEL_COPY(avx2);
+PANEL_COPY(avx512);
+#undef PANEL_COPY
 
 #endif

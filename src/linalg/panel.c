@@ -5,20 +5,6 @@
 #include <math.h>
 #include <string.h>
 
-/* Eight steps: measured best from 1,800 to 10^6 rows; more of them spill from the cache again. */
-enum { STEPS_PER_WALK = 8, LEAST_STRIDE = 64 };
-_Static_assert(STEPS_PER_WALK % 2 == 0, "the vectors of a walk come back to their places");
-
-/* Which loop suits this processor. A pure function of the machine: no state is kept. */
-static panel_step choose_step(sv_panel_kernel kernel)
-{
-    if (kernel == SV_PANEL_AVX512)
-        return sv_panel_step_avx512;
-    if (kernel == SV_PANEL_AVX2)
-        return sv_panel_step_avx2;
-    return sv_panel_step_plain;
-}
-
 sv_panel_kernel sv_panel_best_kernel(void)
 {
     if (__builtin_cpu_supports("avx512f") && __builtin_cpu_supports("fma"))
@@ -39,6 +25,8 @@ void sv_packed_free(sv_context *context, sv_packed *packed)
     sv_give(context, packed->column);
     sv_give(context, packed->re);
     sv_give(context, packed->im);
+    sv_give(context, packed->re_single);
+    sv_give(context, packed->im_single);
     *packed = (sv_packed){0};
 }
 
@@ -96,44 +84,46 @@ sv_status sv_packed_make(sv_context *context, const sv_sparse *h, const sv_index
     return SV_OK;
 }
 
-/*
- * Several steps in one walk over the rows: step s follows s·span rows behind the first, where all
- * rows it reads are done and none it overwrites is still wanted. Vectors far larger than the cache
- * then come from memory once per walk, not once per step.
- */
-static void walk(const sv_packed *a, panel_step step, const double *weights, int steps,
-                 double *before, double *now, double *y)
+sv_status sv_packed_add_single(sv_context *context, sv_packed *packed)
 {
-    sv_index stride = a->span > LEAST_STRIDE ? a->span : LEAST_STRIDE;
-    for (sv_index base = 0; base < a->n + (steps - 1) * a->span; base += stride)
-        for (int s = 0; s < steps; s++) {
-            sv_index first = base - s * a->span, last = first + stride;
-            first = first < 0 ? 0 : first;
-            last = last > a->n ? a->n : last;
-            if (first < last)
-                step(a, first, last, s % 2 == 0 ? now : before, s % 2 == 0 ? before : now, y, 2.0,
-                     weights[s]);
-        }
+    sv_index count = packed->start[3 * packed->n];
+    float *re = NULL, *im = NULL;
+    sv_status status = sv_take_raw(context, count, sizeof *re, &re);
+    if (status == SV_OK)
+        status = sv_take_raw(context, count, sizeof *im, &im);
+    if (status != SV_OK) {
+        sv_give(context, re);
+        return status;
+    }
+    for (sv_index k = 0; k < count; k++) {
+        re[k] = (float)packed->re[k];
+        im[k] = (float)packed->im[k];
+    }
+    sv_give(context, packed->re_single);
+    sv_give(context, packed->im_single);
+    packed->re_single = re;
+    packed->im_single = im;
+    return SV_OK;
 }
 
 void sv_panel_polynomial(const sv_packed *a, const double *coefficients, int degree,
                          sv_panel_kernel kernel, const double *x, double *work, double *y)
 {
-    panel_step step = choose_step(kernel);
-    size_t size = (size_t)a->n * SV_PANEL_ROW;
-    double *before = work, *now = work + size;
-    /* T_0 = 1 and T_1 = A: the same loop with factor 1 and nothing to take off. */
-    for (size_t k = 0; k < size; k++) {
-        y[k] = coefficients[0] * x[k];
-        now[k] = 0.0;
-    }
-    memcpy(before, x, size * sizeof *x);
-    if (degree < 1)
-        return;
-    step(a, 0, a->n, before, now, y, 1.0, coefficients[1]);
-    for (int k = 2; k <= degree; k += STEPS_PER_WALK) {
-        int left = degree - k + 1, steps = left < STEPS_PER_WALK ? left : STEPS_PER_WALK;
-        walk(a, step, coefficients + k, steps, before, now, y);
-        /* STEPS_PER_WALK is even: after a full walk `now` is the newest again. */
-    }
+    if (kernel == SV_PANEL_AVX512)
+        sv_panel_polynomial_avx512(a, coefficients, degree, x, work, y);
+    else if (kernel == SV_PANEL_AVX2)
+        sv_panel_polynomial_avx2(a, coefficients, degree, x, work, y);
+    else
+        sv_panel_polynomial_plain(a, coefficients, degree, x, work, y);
+}
+
+void sv_panel_polynomial_single(const sv_packed *a, const double *coefficients, int degree,
+                                sv_panel_kernel kernel, const float *x, float *work, float *y)
+{
+    if (kernel == SV_PANEL_AVX512)
+        sv_panel_single_avx512(a, coefficients, degree, x, work, y);
+    else if (kernel == SV_PANEL_AVX2)
+        sv_panel_single_avx2(a, coefficients, degree, x, work, y);
+    else
+        sv_panel_single_plain(a, coefficients, degree, x, work, y);
 }

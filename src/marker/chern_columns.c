@@ -7,7 +7,7 @@
 #include <pthread.h>
 #include <string.h>
 
-enum { BLOCK = SV_PANEL_COLUMNS };
+enum { BLOCK = SV_PANEL_COLUMNS_SINGLE };
 
 /*
  * How much larger than the estimate the error of a window mean may be. Measured against dense

@@ -22,6 +22,7 @@ typedef struct chebyshev_state {
     int degree;
     double energy, scale;
     sv_panel_kernel kernel;
+    bool single;    /* panels hold floats, twice as many columns */
     double *panels; /* four panels: x, two of work, y */
     sv_near_states near;
     double *correction; /* θ_n − p(E_n) of the near states */
@@ -64,23 +65,38 @@ static sv_status correct(sv_context *context, const chebyshev_state *s, sv_index
     return SV_OK;
 }
 
+/* y = p(H) x for at most a panel of columns. */
+static void apply_panel(chebyshev_state *s, sv_index columns, const sv_complex *x, sv_complex *y)
+{
+    sv_index n = s->packed.n;
+    if (s->single) {
+        sv_index panel = 2 * SV_PANEL_COLUMNS_SINGLE * n;
+        float *in = (float *)s->panels, *work = in + panel, *out = work + 2 * panel;
+        sv_columns_to_panel_single(in, n, x, columns);
+        sv_panel_polynomial_single(&s->packed, s->coefficients, s->degree, s->kernel, in, work,
+                                   out);
+        sv_panel_to_columns_single(out, n, y, columns);
+    } else {
+        sv_index panel = 2 * SV_PANEL_COLUMNS * n;
+        double *in = s->panels, *work = in + panel, *out = work + 2 * panel;
+        sv_columns_to_panel(in, n, x, columns);
+        sv_panel_polynomial(&s->packed, s->coefficients, s->degree, s->kernel, in, work, out);
+        sv_panel_to_columns(out, n, y, columns);
+    }
+}
+
 static sv_status chebyshev_apply(sv_context *context, void *state, sv_index columns,
                                  const sv_complex *x, sv_complex *y)
 {
     chebyshev_state *s = state;
     if (s->panels == NULL)
         return SV_FAIL(context, SV_INTERNAL, "a projector made for parts is applied whole");
-    sv_index n = s->packed.n, panel = 2 * SV_PANEL_COLUMNS * n;
-    double *in = s->panels, *work = in + panel, *out = work + 2 * panel;
-    for (sv_index first = 0; first < columns; first += SV_PANEL_COLUMNS) {
-        sv_index width = columns - first;
-        if (width > SV_PANEL_COLUMNS)
-            width = SV_PANEL_COLUMNS;
+    sv_index n = s->packed.n, most = s->single ? SV_PANEL_COLUMNS_SINGLE : SV_PANEL_COLUMNS;
+    for (sv_index first = 0; first < columns; first += most) {
+        sv_index width = columns - first < most ? columns - first : most;
         if (sv_cancelled(context))
             return SV_FAIL(context, SV_INTERRUPTED, "stopped during a projection");
-        sv_columns_to_panel(in, n, x + first * n, width);
-        sv_panel_polynomial(&s->packed, s->coefficients, s->degree, s->kernel, in, work, out);
-        sv_panel_to_columns(out, n, y + first * n, width);
+        apply_panel(s, width, x + first * n, y + first * n);
         sv_status status = correct(context, s, width, x + first * n, y + first * n);
         if (status != SV_OK)
             return status;
@@ -99,6 +115,8 @@ static sv_status set_matrix(sv_context *context, const sv_sparse *h, const sv_in
                             sv_index n, const int32_t *place, chebyshev_state *s)
 {
     sv_status status = sv_packed_make(context, h, rows, n, place, s->energy, s->scale, &s->packed);
+    if (status == SV_OK && s->single)
+        status = sv_packed_add_single(context, &s->packed);
     if (status != SV_OK)
         return status;
     return sv_take_raw(context, 8 * SV_PANEL_COLUMNS * n, sizeof *s->panels, &s->panels);
@@ -118,6 +136,7 @@ static sv_status chebyshev_restrict(sv_context *context, const sv_projector *pro
                               .degree = whole->degree,
                               .energy = whole->energy,
                               .scale = whole->scale,
+                              .single = whole->single,
                               .kernel = whole->kernel};
     status = set_matrix(context, &projector->sample->hamiltonian, rows, n_rows, place, part);
     if (status == SV_OK)
@@ -245,6 +264,7 @@ sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
         return status;
     s->energy = levels.fermi_energy;
     s->kernel = sv_panel_best_kernel();
+    s->single = options->single;
     status = sv_projector_scale(context, &sample->hamiltonian, s->energy, &s->scale);
     if (status == SV_OK)
         status = set_polynomial(context, options, s->scale, s);

@@ -31,6 +31,9 @@ struct sv_projector {
 /* A panel from up to SV_PANEL_COLUMNS columns of n values, zeros in the rest of it, and back. */
 void sv_columns_to_panel(double *panel, sv_index n, const sv_complex *x, sv_index columns);
 void sv_panel_to_columns(const double *panel, sv_index n, sv_complex *y, sv_index columns);
+/* The same for panels of SV_PANEL_COLUMNS_SINGLE columns. */
+void sv_columns_to_panel_single(float *panel, sv_index n, const sv_complex *x, sv_index columns);
+void sv_panel_to_columns_single(const float *panel, sv_index n, sv_complex *y, sv_index columns);
 
 /* Two energies closer than this cannot be told apart by state counts. */
 double sv_levels_resolution(const sv_sparse *h);

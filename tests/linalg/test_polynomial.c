@@ -39,74 +39,150 @@ SV_TEST(step_polynomials_reach_the_best_rate)
     CHECK_STATUS(SV_INVALID_INPUT, sv_step_polynomial(test_context(), 0.9, 101, none));
 }
 
-/* Every copy of the loop against T_k(A) x by repeated sparse products. */
-SV_TEST(panels_equal_repeated_products)
+/* Σ c_k T_k((H − shift)/scale) x of one column by repeated sparse products; v: room for 4 n. */
+static void repeated_products(const sv_sparse *h, const double *coefficients, int degree,
+                              double shift, double scale, const sv_complex *x, sv_complex *v,
+                              sv_complex *sum)
+{
+    sv_index n = h->n;
+    sv_complex *before = v, *now = v + n, *next = v + 2 * n;
+    memcpy(before, x, (size_t)n * sizeof *x);
+    for (int k = 0; k <= degree; k++) {
+        if (k > 0) {
+            const sv_complex *from = k == 1 ? before : now;
+            sv_sparse_apply(h, from, next);
+            for (sv_index r = 0; r < n; r++) {
+                next[r] = (next[r] - shift * from[r]) / scale;
+                if (k > 1)
+                    next[r] = 2.0 * next[r] - before[r];
+            }
+            sv_complex *oldest = k == 1 ? now : before;
+            if (k > 1)
+                before = now;
+            now = next;
+            next = oldest;
+        }
+        const sv_complex *term = k == 0 ? before : now;
+        for (sv_index r = 0; r < n; r++)
+            sum[r] = (k == 0 ? 0.0 : sum[r]) + coefficients[k] * term[r];
+    }
+}
+
+enum { DEGREE = 21 };
+
+typedef struct panels {
+    sv_sample sample;
+    sv_model model;
+    sv_flake flake;
+    sv_packed packed;
+    double coefficients[DEGREE + 1], shift, scale;
+    double *x, *y; /* double panels; y has room for work too */
+    sv_complex *v; /* 5 n */
+} panels;
+
+static void start_panels(panels *p, bool periodic)
 {
     sv_context *context = test_context();
-    sv_model model = fixture_haldane(0.2, 0.9, 0.3);
-    sv_flake_spec spec = fixture_cells(&model, 7, 5, false);
-    sv_flake flake = fixture_flake(&model, &spec);
+    *p = (panels){.model = fixture_haldane(0.2, 0.9, 0.3), .shift = 0.2, .scale = 5.0};
+    sv_flake_spec spec = fixture_cells(&p->model, 16, 6, periodic);
     sv_disorder d = {
         .name = "vac", .type = SV_DISORDER_VACANCIES, .on = -1, .has_share = true, .share = 0.1};
-    sv_sample s = {0};
-    CHECK_OK(sv_sample_draw(context, &flake, &d, 1, 1, 0, &s));
-    enum { DEGREE = 9, C = SV_PANEL_COLUMNS };
-    double coefficients[DEGREE + 1], shift = 0.2, scale = 5.0;
+    p->flake = fixture_flake(&p->model, &spec);
+    CHECK_OK(sv_sample_draw(context, &p->flake, &d, 1, 1, 0, &p->sample));
     for (int k = 0; k <= DEGREE; k++)
-        coefficients[k] = 1.0 / (1.0 + k);
-    sv_packed p = {0};
-    CHECK_OK(sv_packed_make(context, &s.hamiltonian, NULL, s.n, NULL, shift, scale, &p));
-    sv_index n = s.n, size = 2 * C * n;
-    double *x = NULL, *work = NULL, *y = NULL;
-    sv_complex *v = NULL;
-    CHECK_OK(sv_take(context, size, sizeof *x, &x));
-    CHECK_OK(sv_take(context, 2 * size, sizeof *work, &work));
-    CHECK_OK(sv_take(context, size, sizeof *y, &y));
-    CHECK_OK(sv_take(context, 4 * n, sizeof *v, &v));
-    for (sv_index k = 0; k < size; k++)
-        x[k] = sin(0.7 * (double)k);
-    for (int kernel = SV_PANEL_PLAIN; kernel <= (int)sv_panel_best_kernel(); kernel++) {
-        CHECK(strlen(sv_panel_kernel_name((sv_panel_kernel)kernel)) > 0);
-        sv_panel_polynomial(&p, coefficients, DEGREE, (sv_panel_kernel)kernel, x, work, y);
-        for (int column = 0; column < C; column += 5) {
-            sv_complex *t0 = v, *t1 = v + n, *t2 = v + 2 * n, *sum = v + 3 * n;
-            for (sv_index r = 0; r < n; r++) {
-                t0[r] = CMPLX(x[2 * C * r + column], x[2 * C * r + C + column]);
-                sum[r] = coefficients[0] * t0[r];
-            }
-            for (int k = 1; k <= DEGREE; k++) {
-                sv_complex *from = k == 1 ? t0 : t1;
-                sv_sparse_apply(&s.hamiltonian, from, t2);
+        p->coefficients[k] = k % 3 == 2 ? 0.0 : 1.0 / (1.0 + k);
+    CHECK_OK(sv_packed_make(context, &p->sample.hamiltonian, NULL, p->sample.n, NULL, p->shift,
+                            p->scale, &p->packed));
+    sv_index size = 2 * SV_PANEL_COLUMNS * p->sample.n;
+    CHECK_OK(sv_take(context, 4 * size, sizeof *p->x, &p->x));
+    CHECK_OK(sv_take(context, 5 * p->sample.n, sizeof *p->v, &p->v));
+    p->y = p->x + size;
+}
+
+static void end_panels(panels *p)
+{
+    sv_context *context = test_context();
+    sv_give(context, p->x);
+    sv_give(context, p->v);
+    sv_packed_free(context, &p->packed);
+    sv_sample_free(context, &p->sample);
+    sv_flake_free(context, &p->flake);
+    sv_model_free(context, &p->model);
+}
+
+/* Largest difference of one column from repeated products. */
+static double worst_of_column(panels *p, const sv_complex *x, const sv_complex *y)
+{
+    double worst = 0.0;
+    sv_complex *sum = p->v + 4 * p->sample.n;
+    repeated_products(&p->sample.hamiltonian, p->coefficients, DEGREE, p->shift, p->scale, x,
+                      p->v + p->sample.n, sum);
+    for (sv_index r = 0; r < p->sample.n; r++)
+        worst = fmax(worst, cabs(sum[r] - y[r]));
+    return worst;
+}
+
+/* Every copy of the loop against T_k(A) x by repeated sparse products, on flakes where steps follow
+ * each other closely and on tori, where they cannot. */
+SV_TEST(panels_equal_repeated_products)
+{
+    enum { C = SV_PANEL_COLUMNS };
+    for (int periodic = 0; periodic < 2; periodic++) {
+        panels p;
+        start_panels(&p, periodic);
+        sv_index n = p.sample.n, size = 2 * C * n;
+        sv_complex *x = NULL, *y = NULL;
+        CHECK_OK(sv_take(test_context(), 2 * n, sizeof *x, &x));
+        y = x + n;
+        CHECK((p.packed.span > n / 2) == (periodic == 1));
+        for (sv_index k = 0; k < size; k++)
+            p.x[k] = sin(0.7 * (double)k);
+        for (int kernel = SV_PANEL_PLAIN; kernel <= (int)sv_panel_best_kernel(); kernel++) {
+            CHECK(strlen(sv_panel_kernel_name((sv_panel_kernel)kernel)) > 0);
+            sv_panel_polynomial(&p.packed, p.coefficients, DEGREE, (sv_panel_kernel)kernel, p.x,
+                                p.y + size, p.y);
+            for (int column = 0; column < C; column += 5) {
                 for (sv_index r = 0; r < n; r++) {
-                    t2[r] = (t2[r] - shift * from[r]) / scale;
-                    if (k > 1)
-                        t2[r] = 2.0 * t2[r] - t0[r];
-                    sum[r] += coefficients[k] * t2[r];
+                    x[r] = CMPLX(p.x[2 * C * r + column], p.x[2 * C * r + C + column]);
+                    y[r] = CMPLX(p.y[2 * C * r + column], p.y[2 * C * r + C + column]);
                 }
-                if (k > 1) {
-                    sv_complex *swap = t0;
-                    t0 = t1;
-                    t1 = t2;
-                    t2 = swap;
-                } else {
-                    sv_complex *swap = t1;
-                    t1 = t2;
-                    t2 = swap;
-                }
+                CHECK(worst_of_column(&p, x, y) < 1e-13);
             }
-            double worst = 0.0;
-            for (sv_index r = 0; r < n; r++)
-                worst = fmax(
-                    worst, cabs(sum[r] - CMPLX(y[2 * C * r + column], y[2 * C * r + C + column])));
-            CHECK(worst < 1e-13);
         }
+        sv_give(test_context(), x);
+        end_panels(&p);
     }
-    sv_give(context, x);
-    sv_give(context, work);
-    sv_give(context, y);
-    sv_give(context, v);
-    sv_packed_free(context, &p);
-    sv_sample_free(context, &s);
-    sv_flake_free(context, &flake);
-    sv_model_free(context, &model);
+}
+
+SV_TEST(single_precision_is_as_good_as_it_can_be)
+{
+    enum { C = SV_PANEL_COLUMNS_SINGLE };
+    for (int periodic = 0; periodic < 2; periodic++) {
+        panels p;
+        start_panels(&p, periodic);
+        CHECK_OK(sv_packed_add_single(test_context(), &p.packed));
+        sv_index n = p.sample.n, size = 2 * C * n;
+        float *in = (float *)p.x, *out = (float *)p.y;
+        sv_complex *x = NULL, *y = NULL;
+        CHECK_OK(sv_take(test_context(), 2 * n, sizeof *x, &x));
+        y = x + n;
+        for (sv_index k = 0; k < size; k++)
+            in[k] = (float)sin(0.7 * (double)k);
+        for (int kernel = SV_PANEL_PLAIN; kernel <= (int)sv_panel_best_kernel(); kernel++) {
+            sv_panel_polynomial_single(&p.packed, p.coefficients, DEGREE, (sv_panel_kernel)kernel,
+                                       in, out + size, out);
+            for (int column = 0; column < C; column += 7) {
+                for (sv_index r = 0; r < n; r++) {
+                    x[r] =
+                        CMPLX((double)in[2 * C * r + column], (double)in[2 * C * r + C + column]);
+                    y[r] =
+                        CMPLX((double)out[2 * C * r + column], (double)out[2 * C * r + C + column]);
+                }
+                double worst = worst_of_column(&p, x, y);
+                CHECK(worst < 2e-6 && worst > 1e-9);
+            }
+        }
+        sv_give(test_context(), x);
+        end_panels(&p);
+    }
 }

@@ -267,3 +267,20 @@ SV_TEST(plans_are_reasoned_and_repeat)
     CHECK(strstr(plan.reason, "one by one") != NULL);
     release(&b);
 }
+
+/* The interval holds the spectrum and is hardly wider. */
+SV_TEST(scales_hold_the_spectrum)
+{
+    for (int which = 0; which < 2; which++) {
+        bench b;
+        make(&b, which, 9, 2.0, 3);
+        double *levels = fixture_spectrum(&b.sample), scale = 0.0;
+        for (double energy = -0.7; energy < 1.0; energy += 0.7) {
+            double need = fmax(fabs(levels[0] - energy), fabs(levels[b.sample.n - 1] - energy));
+            CHECK_OK(sv_projector_scale(test_context(), &b.sample.hamiltonian, energy, &scale));
+            CHECK(scale > need && scale < 1.02 * need);
+        }
+        sv_give(test_context(), levels);
+        release(&b);
+    }
+}
