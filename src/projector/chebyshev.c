@@ -5,6 +5,7 @@
 #include "projector_internal.h"
 
 #include <cblas.h>
+#include <float.h>
 #include <math.h>
 #include <string.h>
 
