@@ -97,6 +97,50 @@ SV_API sv_outcome sv_outcome_blank(void);
 SV_API SV_MUST_USE sv_status sv_local_chern(sv_context *context, const sv_marker_input *input,
                                             sv_outcome *ret_outcome);
 
+/** One block of a coarse map. NaN: does not exist. */
+typedef struct sv_block {
+    double at[2];          /**< centre, lattice constants */
+    sv_index cells;        /**< of the flake, vacant ones included; 0: outside */
+    sv_index sampled;      /**< cells computed; 0: all lie too near to the edge */
+    double left_out;       /**< share of its runs of cells that is not computed */
+    double mean;           /**< of the marker per sampled cell; none above a numerical error of 0.02 */
+    double error;          /**< standard error of sampling; none for a single run of several */
+    double numerical_error; /**< estimate, of the mean */
+} sv_block;
+
+/** The local Chern marker in square blocks. */
+typedef struct sv_coarse {
+    sv_index count[2], n_blocks; /**< blocks along x and y, and their product; x fastest */
+    double low[2], side;         /**< lower left corner, side of a block; lattice constants */
+    sv_block *blocks;
+    char engine[16];
+    char reason[160]; /**< why no block has a value, or empty */
+} sv_coarse;
+
+/** Do the values of local_chern's keys ask for a coarse map? */
+SV_API bool sv_local_chern_wants_blocks(const sv_value *values);
+/**
+ * Coarse map of the local Chern marker: the flake is cut into squares, `blocks` along its longer
+ * side; in each a stratified random sample of about `block_cells` cells, in runs of neighbouring cells
+ * that one panel of columns serves (at least two runs), is computed as in sv_local_chern(). Cells
+ * within three cells of the edge are left out. With runs m_k, error = √((1 − f) Σ(m_k − m)²/n(n−1)),
+ * f the share of the runs that is computed: where the marker varies on the scale of a block it is
+ * rather too large. The draw depends on seed, realisation and block only.
+ * @param input  projector of the sample, values of all keys of local_chern, threads, seed,
+ *               realisation
+ * @return SV_INVALID_INPUT, SV_NO_MEMORY, SV_INTERRUPTED, SV_NUMERICAL
+ * Cost: two projector applications per sampled site.
+ */
+SV_API SV_MUST_USE sv_status sv_local_chern_blocks(sv_context *context,
+                                                   const sv_marker_input *input,
+                                                   sv_coarse *ret_map);
+/** Number of the block of a point, or −1 outside. */
+SV_API sv_index sv_coarse_block(const sv_coarse *map, const double at[2]);
+/** Values per site that add up to the mean of the block over each cell: for the figure of a map. */
+SV_API SV_MUST_USE sv_status sv_coarse_site_values(sv_context *context, const sv_sample *sample,
+                                                   const sv_coarse *map, double **ret_values);
+SV_API void sv_coarse_free(sv_context *context, sv_coarse *map);
+
 /**
  * Bott index (Loring, Hastings, EPL 92, 67004 (2010)) of a torus:
  * (1/2π) Im Tr log(V U V† U†), U = Ψ† e^{2πi u} Ψ, V = Ψ† e^{2πi v} Ψ with Ψ a basis of the

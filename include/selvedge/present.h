@@ -66,6 +66,7 @@ typedef struct sv_map_result {
     const double *site_values; /**< local Chern marker per site, or NULL */
     double lattice_constant;   /**< nm, 0: none */
     const char *note;          /**< shown under the title of the figure, or NULL */
+    const sv_coarse *coarse;   /**< means over blocks, from which site_values were made, or NULL */
     const sv_survey *survey;   /**< the localizer at many points and over κ, or NULL */
 } sv_map_result;
 
@@ -73,6 +74,10 @@ typedef struct sv_map_result {
 SV_API SV_MUST_USE sv_status sv_map_json(sv_context *context, const sv_map_result *map,
                                          char **ret_text);
 SV_API void sv_map_print(const sv_map_result *map, bool colour, FILE *stream);
+/** Blocks of a coarse map as CSV: x,y,mean,error,numerical_error,cells,sampled; blocks without a
+ *  cell of the flake are left out, numbers that do not exist are empty. */
+SV_API SV_MUST_USE sv_status sv_coarse_csv(sv_context *context, const sv_coarse *map,
+                                           char **ret_text);
 /** Probe points of a survey as CSV: x,y,kappa,index,gap,certain,resolved,reason, x fastest; the
  *  index of an unresolved one is empty. */
 SV_API SV_MUST_USE sv_status sv_survey_csv(sv_context *context, const sv_survey *survey,

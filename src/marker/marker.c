@@ -13,6 +13,16 @@ static const sv_key local_chern_keys[] = {
      .low_open = true,
      .fallback = "0.5",
      .doc = "averaging window: share of the linear size about the centre"},
+    {.name = "blocks",
+     .type = SV_KEY_INTEGER,
+     .low = 1,
+     .high = 1000,
+     .doc = "map: means over square blocks instead of every site, so many along the longer side"},
+    {.name = "block_cells",
+     .type = SV_KEY_INTEGER,
+     .low = 1,
+     .high = 1e6,
+     .doc = "cells sampled in each block (32 when not given)"},
 };
 
 static const sv_key localizer_keys[] = {
@@ -97,11 +107,12 @@ static const sv_key disc_keys[] = {
 
 static const sv_marker table[] = {
     {.kind = {"local_chern", "local Chern marker, mean over a window (Bianco, Resta 2011)",
-              local_chern_keys, 1},
+              local_chern_keys, 3},
      .is_index = false,
      .boundary = SV_OPEN_COPY,
      .needs_projector = true,
-     .compute = sv_local_chern},
+     .compute = sv_local_chern,
+     .check = sv_local_chern_check},
     {.kind = {"bott", "Bott index on the torus (Loring, Hastings 2010)", NULL, 0},
      .is_index = true,
      .boundary = SV_CLOSED_COPY,

@@ -33,4 +33,8 @@ sv_status sv_window_choose(sv_context *context, const sv_flake *flake, const boo
 /* Standard error of the mean over the chosen runs: differences of neighbouring strata. */
 double sv_window_error(const window_choice *choice, const double *sums, const sv_index *cells);
 
+/* Rows of the keys of local_chern, and what they ask of each other. */
+enum { CHERN_WINDOW, CHERN_BLOCKS, CHERN_BLOCK_CELLS };
+bool sv_local_chern_check(const sv_value *values, int *ret_key, char *message, size_t size);
+
 #endif

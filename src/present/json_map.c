@@ -102,6 +102,8 @@ sv_status sv_map_json(sv_context *context, const sv_map_result *map, char **ret_
     for (int i = 0; i < record->n_outcomes && i < map->point->n_markers; i++) {
         const sv_marker *marker = &table[map->point->markers[i].marker];
         json_t *object = make_marker(&json, marker, &record->outcomes[i]);
+        if (map->coarse != NULL && marker->compute == sv_local_chern)
+            sv_coarse_put(&json, object, map->coarse);
         if (map->survey != NULL && marker->compute == sv_localizer_index)
             sv_survey_put(&json, object, map->survey);
         sv_json_put(&json, markers, marker->kind.name, object);

@@ -71,6 +71,11 @@ sv_status sv_json_finish(sv_json *json, json_t *document, char **ret_text);
 void sv_survey_put(sv_json *json, json_t *marker, const sv_survey *survey);
 void sv_survey_print(const sv_survey *survey, FILE *stream);
 
+/* -------------------------------------------------------------- coarse.c */
+
+void sv_coarse_put(sv_json *json, json_t *marker, const sv_coarse *map);
+void sv_coarse_print(const sv_coarse *map, FILE *stream);
+
 /* ------------------------------------------------------------ terminal.c */
 
 /* One cell of a table: padded to `width` columns, then two spaces. */

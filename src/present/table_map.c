@@ -97,6 +97,8 @@ void sv_map_print(const sv_map_result *map, bool colour, FILE *stream)
         fprintf(stream, "  failed: %s\n", sv_status_text(record->status));
     for (int i = 0; i < record->n_outcomes && i < map->point->n_markers; i++)
         print_outcome(stream, &table[map->point->markers[i].marker], &record->outcomes[i]);
+    if (map->coarse != NULL)
+        sv_coarse_print(map->coarse, stream);
     if (map->survey != NULL)
         sv_survey_print(map->survey, stream);
 }

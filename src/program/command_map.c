@@ -65,6 +65,33 @@ static sv_status verdict(sv_context *context, const sv_record *record)
     return SV_OK;
 }
 
+static bool wants_every_site(const sv_case *problem)
+{
+    return problem->open_flake->n_sites <= SITE_MAP_LARGEST && !coarse_wanted(problem);
+}
+
+/* Exports that the sheet has nothing for, and files that are there already. */
+static sv_status check_exports(sv_context *context, const options *o, const sv_case *problem)
+{
+    const char *const files[] = {o->csv, o->probes, o->blocks};
+    for (int k = 0; k < 3; k++) {
+        sv_status status = may_write(context, o, files[k]);
+        if (status != SV_OK)
+            return status;
+    }
+    if (o->probes != NULL && !survey_wanted(problem))
+        return SV_FAIL(context, SV_USAGE,
+                       "--probes: the sheet asks for no probe points (markers.localizer.points)");
+    if (o->blocks != NULL && !coarse_wanted(problem))
+        return SV_FAIL(context, SV_USAGE,
+                       "--blocks: the sheet asks for no blocks (markers.local_chern.blocks)");
+    if (o->csv != NULL && coarse_wanted(problem))
+        return SV_FAIL(context, SV_USAGE,
+                       "--csv: with markers.local_chern.blocks there is no marker of single sites; "
+                       "--blocks writes the blocks");
+    return SV_OK;
+}
+
 static sv_status map_one(session *s)
 {
     sv_context *context = s->context;
@@ -73,17 +100,12 @@ static sv_status map_one(session *s)
     sv_record record;
     sv_sample sample = {0};
     sv_survey survey = {0};
+    sv_coarse coarse = {0};
     double *values = NULL;
-    sv_status status = may_write(context, o, o->csv);
-    if (status == SV_OK)
-        status = may_write(context, o, o->probes);
-    if (status == SV_OK && o->probes != NULL && !survey_wanted(problem))
-        status = SV_FAIL(context, SV_USAGE,
-                         "--probes: the sheet asks for no probe points (markers.localizer.points)");
+    sv_status status = check_exports(context, o, problem);
     if (status == SV_OK)
         status = sv_realise(context, problem, o->realisation,
-                            problem->open_flake->n_sites <= SITE_MAP_LARGEST ? &values : NULL,
-                            &sample, &record);
+                            wants_every_site(problem) ? &values : NULL, &sample, &record);
     if (status != SV_OK)
         goto out;
     if (sample.inventory.marks_merged > 0)
@@ -95,6 +117,14 @@ static sv_status map_one(session *s)
                          .record = &record,
                          .site_values = values,
                          .lattice_constant = s->base.lattice_constant};
+    if (coarse_wanted(problem)) {
+        if ((status = coarse_compute(s, problem, &sample, o->realisation, &coarse)) != SV_OK ||
+            (status = sv_coarse_site_values(context, &sample, &coarse, &values)) != SV_OK)
+            goto out;
+        map.coarse = &coarse;
+        map.site_values = values;
+        map.note = "means over blocks of cells, sampled";
+    }
     if (survey_wanted(problem)) {
         if ((status = survey_compute(s, problem, &sample, &survey)) != SV_OK)
             goto out;
@@ -106,6 +136,8 @@ static sv_status map_one(session *s)
             map.site_values = NULL;
     if (o->csv != NULL && map.site_values != NULL)
         status = sv_sample_write_sites(context, &sample, o->csv, "local_chern", values);
+    if (status == SV_OK && o->blocks != NULL)
+        status = coarse_write_csv(s, &coarse, o->blocks);
     if (status == SV_OK && o->probes != NULL)
         status = survey_write_csv(s, &survey, o->probes);
     if (status == SV_OK)
@@ -115,6 +147,7 @@ static sv_status map_one(session *s)
     if (status == SV_OK)
         status = verdict(context, &record);
 out:
+    sv_coarse_free(context, &coarse);
     sv_survey_free(context, &survey);
     sv_give(context, values);
     sv_sample_free(context, &sample);
@@ -126,7 +159,7 @@ int run_map(sv_context *context, const options *o)
     session s = {.add_map_marker = true};
     sv_status status = session_open(context, o, o->files[0], false, false, &s);
     if (status == SV_OK)
-        status = session_plan(&s, s.points[0].open.n_sites <= SITE_MAP_LARGEST);
+        status = session_plan(&s, wants_every_site(&s.points[0].problem));
     if (status == SV_OK)
         status = map_one(&s);
     session_close(&s);

@@ -70,12 +70,18 @@ static sv_status draw_map(session *s, const char *folder)
     problem.markers[0] = problem.markers[k];
     problem.n_markers = 1;
     problem.solve.engine = SV_ENGINE_AUTO;
+    const bool blocks = coarse_wanted(&problem);
+    sv_coarse coarse = {0};
     sv_plan plan;
-    sv_status planned = sv_case_plan(context, &problem, true, s->base.sampling_error, &plan);
+    sv_status planned = sv_case_plan(context, &problem, !blocks, s->base.sampling_error, &plan);
     if (planned != SV_OK)
         return planned;
-    sv_status status =
-        sv_realise(context, &problem, s->options->realisation, &values, &sample, &record);
+    sv_status status = sv_realise(context, &problem, s->options->realisation,
+                                  blocks ? NULL : &values, &sample, &record);
+    if (status == SV_OK && blocks)
+        status = coarse_compute(s, &problem, &sample, s->options->realisation, &coarse);
+    if (status == SV_OK && blocks)
+        status = sv_coarse_site_values(context, &sample, &coarse, &values);
     if (status == SV_OK && record.outcomes[0].verdict != SV_RESOLVED) {
         printf("marker map not drawn: %s\n", record.outcomes[0].reason);
     } else if (status == SV_OK) {
@@ -89,11 +95,12 @@ static sv_status draw_map(session *s, const char *folder)
         describe_point(p, where, sizeof where);
         snprintf(what, sizeof what, "marker map, realisation %lld%s%s",
                  (long long)s->options->realisation, where[0] != '\0' ? ", " : "", where);
-        map.note = where[0] != '\0' ? where : NULL;
+        map.note = where[0] != '\0' ? where : blocks ? "means over blocks of cells, sampled" : NULL;
         status = sv_figure_map(context, folder, "marker_map", &map, &files);
         if (status == SV_OK)
             name_figure(&files, what);
     }
+    sv_coarse_free(context, &coarse);
     sv_give(context, values);
     sv_sample_free(context, &sample);
     return status;

@@ -11,7 +11,7 @@ static const command commands[] = {
     {"check", "SHEET", "validates a sheet, prints it resolved, forecasts time and memory",
      SHEET_OPTIONS "j", 1, 1, run_check},
     {"map", "SHEET", "one realisation: the local Chern marker site by site",
-     SHEET_OPTIONS "kojVBPF", 1, 1, run_map},
+     SHEET_OPTIONS "kojVBMPF", 1, 1, run_map},
     {"spectrum", "SHEET", "states below E_F, gap, states next to it, density of states",
      SHEET_OPTIONS "koVF", 1, 1, run_spectrum},
     {"average", "SHEET -o RUN", "the ensemble and its sweep; continues an existing run",

@@ -15,7 +15,7 @@ typedef struct options {
     const struct command *command;
     const char *files[MOST_FILES];
     int n_files;
-    const char *output, *hamiltonian, *sites, *csv, *probes;
+    const char *output, *hamiltonian, *sites, *csv, *probes, *blocks;
     int64_t realisation;
     int64_t threads; /* 0: as many as the affinity mask allows */
     double time_limit;
@@ -114,6 +114,14 @@ sv_status survey_compute(session *s, const sv_case *problem, const sv_sample *sa
                          sv_survey *ret);
 sv_status survey_write_csv(session *s, const sv_survey *survey, const char *path);
 sv_status survey_draw(session *s, const char *folder, const sv_map_result *map, figure_teller tell);
+
+/* The coarse map of the local Chern marker (coarse.c). */
+bool coarse_wanted(const sv_case *problem);
+sv_status coarse_compute(session *s, const sv_case *problem, const sv_sample *sample,
+                         sv_index realisation, sv_coarse *ret);
+sv_status coarse_write_csv(session *s, const sv_coarse *map, const char *path);
+/* A text into a file that appears only when it is complete. */
+sv_status write_csv_text(sv_context *context, const char *path, const char *text);
 
 /* Exports never overwrite a file without --force; NULL is no export. */
 sv_status may_write(sv_context *context, const options *o, const char *path);

@@ -42,14 +42,9 @@ sv_status survey_compute(session *s, const sv_case *problem, const sv_sample *sa
 sv_status survey_write_csv(session *s, const sv_survey *survey, const char *path)
 {
     char *text = NULL;
-    sv_output file;
     sv_status status = sv_survey_csv(s->context, survey, &text);
     if (status == SV_OK)
-        status = sv_output_begin(s->context, path, &file);
-    if (status == SV_OK) {
-        fputs(text, file.stream);
-        status = sv_output_commit(s->context, &file);
-    }
+        status = write_csv_text(s->context, path, text);
     sv_give(s->context, text);
     return status;
 }

@@ -114,3 +114,22 @@ SV_TEST(a_line_and_kappa_are_drawn_as_profiles)
                  sv_figure_probes(test_context(), folder, "x", &f.map.map, &files));
     map_fixture_free(&f.map);
 }
+
+SV_TEST(blocks_as_csv)
+{
+    sv_block blocks[3] = {
+        {.at = {0.5, 1.5},
+         .cells = 9,
+         .sampled = 4,
+         .mean = 0.75,
+         .error = 0.01,
+         .numerical_error = 1e-6},
+        {.at = {3.5, 1.5}, .cells = 0, .mean = NAN},
+        {.at = {6.5, 1.5}, .cells = 3, .mean = NAN, .error = NAN, .numerical_error = NAN}};
+    const sv_coarse map = {.count = {3, 1}, .n_blocks = 3, .side = 3, .blocks = blocks};
+    char *text = NULL;
+    CHECK_OK(sv_coarse_csv(test_context(), &map, &text));
+    CHECK_TEXT(text, "x,y,mean,error,numerical_error,cells,sampled\n"
+                     "0.5,1.5,0.75,0.01,1e-06,9,4\n6.5,1.5,,,,3,0\n");
+    sv_give(test_context(), text);
+}
