@@ -7,41 +7,12 @@
 /* Columns eliminated together; pivoting stays inside their diagonal block, so wider is safer. */
 enum { SV_PIVOT_WIDTH = 16 };
 
-/* A diagonal block, P M Pᵀ = L D L†, with steps of one or two columns. */
-typedef struct sv_pivot_block {
-    int width;
-    int order[SV_PIVOT_WIDTH];                     /* column taken k-th */
-    bool pair[SV_PIVOT_WIDTH];                     /* columns k and k + 1 form one step */
-    double d[SV_PIVOT_WIDTH];                      /* diagonal of D */
-    sv_complex e[SV_PIVOT_WIDTH];                  /* D(k + 1, k) of a pair */
-    sv_complex l[SV_PIVOT_WIDTH * SV_PIVOT_WIDTH]; /* unit lower, leading dimension `width` */
-} sv_pivot_block;
-
 /* What the pivots amounted to. */
 typedef struct sv_pivot_tally {
     sv_index negative, positive, replaced;
     double smallest; /* least |eigenvalue| of a step */
     double grown;    /* Σ_i (|L| |D| |L|†)_ii */
 } sv_pivot_tally;
-
-/*
- * Factors a Hermitian block, width ≤ SV_PIVOT_WIDTH, lower triangle of `a` (leading dimension
- * `lead`). Pivots of size below `tiny` become `tiny` and are counted as replaced.
- */
-void sv_pivot_factor(const sv_complex *a, sv_index lead, int width, double tiny,
-                     sv_pivot_block *ret_block, sv_pivot_tally *tally);
-/* x := M⁻¹ x in three stages. */
-void sv_pivot_forward(const sv_pivot_block *block, sv_complex *x);
-void sv_pivot_middle(const sv_pivot_block *block, sv_complex *x);
-void sv_pivot_backward(const sv_pivot_block *block, sv_complex *x);
-/* g := Pᵀ L^{−†}, so that A21 g = W and A21 M⁻¹ A21† = W D⁻¹ W†. @param g width², column-major */
-void sv_pivot_divider(const sv_pivot_block *block, sv_complex *g);
-/*
- * l := w D⁻¹ for `rows` rows of w; both column-major, `width` columns.
- * @return Σ |l| |w|, the part of these rows in the trace of |L| |D| |L|†
- */
-double sv_pivot_divide(const sv_pivot_block *block, sv_index rows, const sv_complex *w,
-                       sv_index w_lead, sv_complex *l, sv_index l_lead);
 
 /*
  * Rows come in groups of `block` that stay together; everything symbolic counts groups.
@@ -62,14 +33,24 @@ struct sv_inertia_plan {
     sv_index *panel_start;          /* n_nodes + 1: offsets of the columns of L, elements */
     sv_index *block_start;          /* n_nodes + 1: numbers of the pivot blocks */
     sv_index stack_size, work_size; /* elements */
-    /* of the latest factorisation */
-    sv_complex *panel;
-    sv_pivot_block *pivots;
-    bool factored;
+    /* of the latest factorisation; elements are complex numbers of its precision */
+    void *panel, *pivots;
+    bool factored, single;
     double norm;
     /* work space */
-    sv_complex *stack, *work, *vector;
+    void *stack, *work, *vector;
     int32_t *slot, *pending;
 };
+
+/* Bytes of a pivot block in double precision. */
+size_t sv_inertia_pivot_size(void);
+/* The factorisation proper, and x := (H − shift)⁻¹ x with its result; compiled for both precisions.
+ * @param tiny  pivots of size below this are replaced */
+sv_status sv_inertia_fronts(sv_context *context, sv_inertia_plan *plan, const sv_sparse *h,
+                            double shift, double tiny, sv_pivot_tally *tally);
+sv_status sv_inertia_fronts_single(sv_context *context, sv_inertia_plan *plan, const sv_sparse *h,
+                                   double shift, double tiny, sv_pivot_tally *tally);
+void sv_inertia_sweep(const sv_inertia_plan *plan, sv_complex *x);
+void sv_inertia_sweep_single(const sv_inertia_plan *plan, sv_complex *x);
 
 #endif

@@ -161,12 +161,12 @@ static sv_status take_numeric(sv_context *context, sv_inertia_plan *p)
 {
     sv_status status;
     sv_index elements = p->panel_start[p->n_nodes], blocks = p->block_start[p->n_nodes];
-    if ((status = sv_take_raw(context, elements, sizeof *p->panel, &p->panel)) != SV_OK ||
-        (status = sv_take_raw(context, blocks, sizeof *p->pivots, &p->pivots)) != SV_OK ||
-        (status = sv_take_raw(context, p->stack_size, sizeof *p->stack, &p->stack)) != SV_OK ||
-        (status = sv_take_raw(context, p->work_size, sizeof *p->work, &p->work)) != SV_OK)
+    if ((status = sv_take_raw(context, elements, sizeof(sv_complex), &p->panel)) != SV_OK ||
+        (status = sv_take_raw(context, blocks, sv_inertia_pivot_size(), &p->pivots)) != SV_OK ||
+        (status = sv_take_raw(context, p->stack_size, sizeof(sv_complex), &p->stack)) != SV_OK ||
+        (status = sv_take_raw(context, p->work_size, sizeof(sv_complex), &p->work)) != SV_OK)
         return status;
-    return sv_take_raw(context, p->order, sizeof *p->vector, &p->vector);
+    return sv_take_raw(context, p->order, sizeof(sv_complex), &p->vector);
 }
 
 static sv_status analyse(sv_context *context, const sv_sparse *pattern, cholmod_common *common,
