@@ -165,6 +165,13 @@ typedef struct sv_inertia {
  */
 SV_API SV_MUST_USE sv_status sv_inertia_plan_make(sv_context *context, const sv_sparse *pattern,
                                                   int block, sv_inertia_plan **ret_plan);
+/**
+ * Makes a plan fit for matrices with another number of rows per group, all elements of a group and
+ * of coupled groups within the pattern: from H, block 1, to a localizer of H, block 2. Takes new
+ * memory for numbers; the analysis stays. On failure the plan is as it was.
+ */
+SV_API SV_MUST_USE sv_status sv_inertia_plan_regroup(sv_context *context, sv_inertia_plan *plan,
+                                                     int block);
 SV_API void sv_inertia_plan_free(sv_context *context, sv_inertia_plan *plan);
 
 /**
@@ -191,6 +198,15 @@ SV_API SV_MUST_USE sv_status sv_inertia_factor_single(sv_context *context, sv_in
  */
 SV_API SV_MUST_USE sv_status sv_inertia_solve(sv_context *context, sv_inertia_plan *plan,
                                               sv_complex *x);
+
+/**
+ * Estimates the distance of the eigenvalue nearest to the shift of the latest factorisation by
+ * inverse iterations: 1/‖(H − shift)⁻¹ x‖ for a unit x. Never too small (but for the error of that
+ * factorisation); for a random x too large by a factor θ with probability below order·θ^{−2·steps}
+ * (from the share of one direction in a random complex unit vector). The start is fixed.
+ */
+SV_API SV_MUST_USE sv_status sv_inertia_distance(sv_context *context, sv_inertia_plan *plan,
+                                                 int steps, double *ret_distance);
 
 /** How a count was reached. */
 typedef enum sv_counted {

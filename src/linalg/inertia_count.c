@@ -23,8 +23,8 @@ static double normalise(sv_complex *x, sv_index n)
     return norm;
 }
 
-/* Three inverse iterations: 1/‖(H − shift)⁻¹ x‖ for a unit x, at least the distance. */
-static sv_status estimate_distance(sv_context *context, sv_inertia_plan *plan, double *ret_distance)
+sv_status sv_inertia_distance(sv_context *context, sv_inertia_plan *plan, int steps,
+                              double *ret_distance)
 {
     sv_index n = plan->order;
     sv_complex *x = NULL;
@@ -37,7 +37,7 @@ static sv_status estimate_distance(sv_context *context, sv_inertia_plan *plan, d
         x[k] = CMPLX(sv_stream_normal(&stream, (int32_t)k, 0, 0),
                      sv_stream_normal(&stream, (int32_t)k, 0, 1));
     normalise(x, n);
-    for (int step = 0; step < 3 && status == SV_OK; step++) {
+    for (int step = 0; step < steps && status == SV_OK; step++) {
         status = sv_inertia_solve(context, plan, x);
         grown = normalise(x, n);
     }
@@ -114,7 +114,8 @@ sv_status sv_inertia_count_below(sv_context *context, sv_inertia_plan *plan, con
 {
     sv_inertia_count count = {.how = SV_COUNTED_ONCE};
     sv_status status = sv_inertia_factor(context, plan, h, shift, &count.factor);
-    if (status != SV_OK || (status = estimate_distance(context, plan, &count.distance)) != SV_OK)
+    if (status != SV_OK ||
+        (status = sv_inertia_distance(context, plan, 3, &count.distance)) != SV_OK)
         return status;
     count.low = count.high = count.factor.negative;
     count.width = count.factor.error;

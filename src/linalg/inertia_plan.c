@@ -22,16 +22,21 @@ static void release_symbolic(sv_context *context, sv_inertia_plan *p)
     sv_give(context, p->block_start);
 }
 
+static void release_numeric(sv_context *context, sv_inertia_plan *p)
+{
+    sv_give(context, p->panel);
+    sv_give(context, p->pivots);
+    sv_give(context, p->stack);
+    sv_give(context, p->work);
+    sv_give(context, p->vector);
+}
+
 void sv_inertia_plan_free(sv_context *context, sv_inertia_plan *plan)
 {
     if (plan == NULL)
         return;
     release_symbolic(context, plan);
-    sv_give(context, plan->panel);
-    sv_give(context, plan->pivots);
-    sv_give(context, plan->stack);
-    sv_give(context, plan->work);
-    sv_give(context, plan->vector);
+    release_numeric(context, plan);
     sv_give(context, plan->slot);
     sv_give(context, plan->pending);
     sv_give(context, plan);
@@ -134,6 +139,7 @@ static void lay_out(sv_inertia_plan *p)
 {
     sv_index b = p->block, top = 0, n_pending = 0;
     p->panel_start[0] = p->block_start[0] = 0;
+    p->work_size = p->stack_size = 0;
     for (sv_index s = 0; s < p->n_nodes; s++) {
         sv_index columns = (p->first[s + 1] - p->first[s]) * b;
         sv_index rows = (p->row_start[s + 1] - p->row_start[s]) * b, below = rows - columns;
@@ -221,5 +227,25 @@ sv_status sv_inertia_plan_make(sv_context *context, const sv_sparse *pattern, in
         *ret_plan = plan;
     else
         sv_inertia_plan_free(context, plan);
+    return status;
+}
+
+sv_status sv_inertia_plan_regroup(sv_context *context, sv_inertia_plan *plan, int block)
+{
+    sv_inertia_plan old = *plan;
+    if (block < 1 || plan->groups * block > INT32_MAX)
+        return SV_FAIL(context, SV_INVALID_INPUT, "%lld groups of %d rows", (long long)plan->groups,
+                       block);
+    plan->block = block;
+    plan->order = plan->groups * block;
+    plan->factored = false;
+    plan->panel = plan->pivots = plan->stack = plan->work = plan->vector = NULL;
+    lay_out(plan);
+    sv_status status = take_numeric(context, plan);
+    release_numeric(context, status == SV_OK ? &old : plan);
+    if (status != SV_OK) {
+        *plan = old;
+        lay_out(plan);
+    }
     return status;
 }

@@ -39,21 +39,20 @@ static sv_status place_energy(sv_context *context, const sv_marker_input *input,
 {
     const sv_sparse *h = &input->sample->hamiltonian;
     const sv_occupation *occupation = input->occupation;
-    sv_inertia_plan *plan = NULL;
     sv_inertia_count count;
     sv_fermi_level fermi;
-    sv_status status = sv_inertia_plan_make(context, h, 1, &plan);
+    sv_status status = sv_inertia_plan_make(context, h, 1, &w->plan);
     if (status != SV_OK)
         return status;
     *ret_degenerate = false;
     if (occupation->by == SV_BY_ENERGY) {
         w->energy = occupation->fermi_energy;
-        status = sv_inertia_count_below(context, plan, h, w->energy, &count);
+        status = sv_inertia_count_below(context, w->plan, h, w->energy, &count);
         if (status == SV_OK)
             outcome->electrons = count.below;
     } else {
         outcome->electrons = electrons_of(occupation, h->n);
-        status = sv_inertia_fermi_energy(context, plan, h, outcome->electrons, &fermi);
+        status = sv_inertia_fermi_energy(context, w->plan, h, outcome->electrons, &fermi);
         if (status == SV_OK) {
             w->energy = fermi.energy;
             *ret_degenerate = fermi.on_level;
@@ -61,7 +60,6 @@ static sv_status place_energy(sv_context *context, const sv_marker_input *input,
             outcome->lowest_empty = fermi.lowest_empty;
         }
     }
-    sv_inertia_plan_free(context, plan);
     return status;
 }
 
@@ -94,8 +92,10 @@ sv_status sv_localizer_begin(sv_context *context, const sv_marker_input *input, 
     *outcome = sv_outcome_blank();
     snprintf(outcome->engine, sizeof outcome->engine, "inertia");
     if ((status = read_settings(context, input, w)) != SV_OK ||
-        (status = place_energy(context, input, w, &degenerate, outcome)) != SV_OK)
+        (status = place_energy(context, input, w, &degenerate, outcome)) != SV_OK) {
+        sv_localizer_end(context, w);
         return status;
+    }
     outcome->kappa = w->kappa > 0.0 ? w->kappa : (double)NAN;
     outcome->numerical_error = 0.0;
     if (degenerate)
@@ -105,7 +105,7 @@ sv_status sv_localizer_begin(sv_context *context, const sv_marker_input *input, 
         return SV_OK;
     status = sv_localizer_matrix(context, w->sample, w->energy, w->kappa, w->at, &w->matrix);
     if (status == SV_OK)
-        status = sv_inertia_plan_make(context, &w->matrix, 2, &w->plan);
+        status = sv_inertia_plan_regroup(context, w->plan, 2);
     if (status != SV_OK)
         sv_localizer_end(context, w);
     return status;

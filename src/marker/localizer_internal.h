@@ -14,10 +14,11 @@ typedef struct localizer_work {
     double at[2], energy, kappa, threshold;
     double gap; /* of the pristine torus, from its Fermi energy; 0: none */
     bool want_value;
-    sv_inertia_plan *plan;
+    sv_inertia_plan *plan; /* of H, then of the localizer: the same graph of sites */
     sv_sparse matrix;
     sv_index negative;      /* of the localizer */
     double certain, lowest; /* its gap is at least / is */
+    double reach;           /* a level lies this near to 0; 0: not known */
 } localizer_work;
 
 #define UNRESOLVED(outcome, ...) snprintf((outcome)->reason, sizeof(outcome)->reason, __VA_ARGS__)
