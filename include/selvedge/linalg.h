@@ -172,6 +172,8 @@ SV_API SV_MUST_USE sv_status sv_inertia_plan_make(sv_context *context, const sv_
  */
 SV_API SV_MUST_USE sv_status sv_inertia_plan_regroup(sv_context *context, sv_inertia_plan *plan,
                                                      int block);
+/** Copy of the inner product; a plan is made with sv_panel_best_kernel(), and needs no better. */
+SV_API void sv_inertia_plan_use(sv_inertia_plan *plan, sv_panel_kernel kernel);
 SV_API void sv_inertia_plan_free(sv_context *context, sv_inertia_plan *plan);
 
 /**

@@ -10,8 +10,14 @@
 
 #include <string.h>
 
-/* Columns of an update computed at a time: only the lower triangle is wanted. */
-static const sv_index UPDATE_WIDTH = 48;
+/* In the order of sv_panel_kernel. */
+static front_update *const UPDATES[] = {
+#ifdef SV_INERTIA_SINGLE
+    sv_front_update_single_plain, sv_front_update_single_avx2, sv_front_update_single_avx512
+#else
+    sv_front_update_double_plain, sv_front_update_double_avx2, sv_front_update_double_avx512
+#endif
+};
 
 /* The front being built. */
 typedef struct front {
@@ -85,7 +91,7 @@ static void absorb(const sv_inertia_plan *p, sv_index child, const number *updat
 static void eliminate(sv_inertia_plan *p, const front *f, sv_index start, int width, real tiny,
                       sv_pivot_block *block, sv_pivot_tally *tally)
 {
-    const number one = 1.0, minus = -1.0, zero = 0.0;
+    const number one = 1.0, zero = 0.0;
     number g[SV_PIVOT_WIDTH * SV_PIVOT_WIDTH];
     sv_index lead = f->rows, next = start + width, below = lead - next;
     number *l = f->panel + next + start * lead, *w = (number *)p->work + next + start * lead;
@@ -97,22 +103,8 @@ static void eliminate(sv_inertia_plan *p, const front *f, sv_index start, int wi
          width, &zero, w, (int)lead);
     tally->grown += sv_pivot_divide(block, below, w, lead, l, lead);
     if (next < f->columns)
-        GEMM(CblasColMajor, CblasNoTrans, CblasConjTrans, (int)below, (int)(f->columns - next),
-             width, &minus, l, (int)lead, w, (int)lead, &one, f->panel + next + next * lead,
-             (int)lead);
-}
-
-/* update := −L W†, lower triangle by blocks of columns. */
-static void update_below(const sv_inertia_plan *p, const front *f)
-{
-    const number minus = -1.0, zero = 0.0;
-    const number *l = f->panel + f->columns, *w = (number *)p->work + f->columns;
-    for (sv_index c = 0; c < f->below; c += UPDATE_WIDTH) {
-        sv_index width = f->below - c < UPDATE_WIDTH ? f->below - c : UPDATE_WIDTH;
-        GEMM(CblasColMajor, CblasNoTrans, CblasConjTrans, (int)(f->below - c), (int)width,
-             (int)f->columns, &minus, l + c, (int)f->rows, w + c, (int)f->rows, &zero,
-             f->update + c + c * f->below, (int)f->below);
-    }
+        UPDATES[p->kernel](l, w, lead, below, f->columns - next, width, false,
+                           f->panel + next + next * lead, lead);
 }
 
 static void factor_front(sv_inertia_plan *p, const front *f, real tiny, sv_pivot_tally *tally)
@@ -124,7 +116,8 @@ static void factor_front(sv_inertia_plan *p, const front *f, real tiny, sv_pivot
                   tally);
     }
     if (f->below > 0)
-        update_below(p, f);
+        UPDATES[p->kernel](f->panel + f->columns, (number *)p->work + f->columns, f->rows, f->below,
+                           f->below, f->columns, true, f->update, f->below);
 }
 
 static sv_index update_side(const sv_inertia_plan *p, sv_index s)

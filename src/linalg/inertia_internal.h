@@ -21,6 +21,7 @@ typedef struct sv_pivot_tally {
  */
 struct sv_inertia_plan {
     sv_index groups, order;
+    sv_panel_kernel kernel;
     int block;
     sv_index n_nodes;
     int32_t *place;      /* group → position in the elimination */

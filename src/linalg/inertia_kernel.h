@@ -45,6 +45,20 @@ typedef sv_complex number;
 #define GEMV         cblas_zgemv
 #endif
 
+/*
+ * c := c − l w†, or −l w† if fresh, on and below the diagonal (and on some elements above it);
+ * l and w rows × terms with leading dimension `lead`, c rows × columns.
+ */
+typedef void front_update(const number *l, const number *w, sv_index lead, sv_index rows,
+                          sv_index columns, sv_index terms, bool fresh, number *c, sv_index c_lead);
+#ifdef SV_INERTIA_SINGLE
+front_update sv_front_update_single_plain, sv_front_update_single_avx2,
+    sv_front_update_single_avx512;
+#else
+front_update sv_front_update_double_plain, sv_front_update_double_avx2,
+    sv_front_update_double_avx512;
+#endif
+
 /* A diagonal block, P M Pᵀ = L D L†, with steps of one or two columns. */
 typedef struct sv_pivot_block {
     int width;

@@ -22,6 +22,11 @@ static void release_symbolic(sv_context *context, sv_inertia_plan *p)
     sv_give(context, p->block_start);
 }
 
+void sv_inertia_plan_use(sv_inertia_plan *plan, sv_panel_kernel kernel)
+{
+    plan->kernel = kernel;
+}
+
 static void release_numeric(sv_context *context, sv_inertia_plan *p)
 {
     sv_give(context, p->panel);
@@ -215,6 +220,7 @@ sv_status sv_inertia_plan_make(sv_context *context, const sv_sparse *pattern, in
         return status;
     plan->block = block;
     plan->order = pattern->n;
+    plan->kernel = sv_panel_best_kernel();
     cholmod_l_start(&common);
     common.print = 0;
     common.nmethods = 1;

@@ -18,6 +18,8 @@
 #include <math.h>
 
 static const double MOST_RADIUS = 0.95;
+/* Columns for which sums stop at the same row. */
+static const int STRIPE = 128;
 static const double MOST_DOUBT = 1.0; /* rad, of the 2π between two integers */
 
 /* Real and imaginary parts apart: a complex product by three real ones instead of four. */
@@ -32,6 +34,8 @@ typedef struct series_work {
     split vu, uv, k, l;   /* borrowed names */
     float *product;       /* m × m */
     float *cosine, *sine; /* n */
+    sv_index *order;      /* n: rows of Ψ as they stand in psi; n more of work space */
+    sv_index *depth;      /* m + 1: from row depth[c] on columns c and after are zero */
     double error;         /* ε ≥ ‖K computed − K exact‖ */
     double radius;        /* ρ */
     double sum;           /* of the logarithm so far: its imaginary part */
@@ -52,6 +56,8 @@ static void free_work(sv_context *context, series_work *w)
     sv_give(context, w->product);
     sv_give(context, w->cosine);
     sv_give(context, w->sine);
+    sv_give(context, w->order);
+    sv_give(context, w->depth);
 }
 
 static sv_status take_split(sv_context *context, sv_index count, bool with_both, split *s)
@@ -76,7 +82,9 @@ static sv_status take_work(sv_context *context, const sv_basis *basis, series_wo
         (status = take_split(context, m * m, false, &w->u)) != SV_OK ||
         (status = take_split(context, m * m, false, &w->v)) != SV_OK ||
         (status = sv_take_raw(context, m * m, sizeof(float), &w->product)) != SV_OK ||
-        (status = sv_take_raw(context, n, sizeof(float), &w->cosine)) != SV_OK)
+        (status = sv_take_raw(context, n, sizeof(float), &w->cosine)) != SV_OK ||
+        (status = sv_take_raw(context, 2 * n, sizeof(sv_index), &w->order)) != SV_OK ||
+        (status = sv_take(context, m + 1, sizeof(sv_index), &w->depth)) != SV_OK)
         return status;
     return sv_take_raw(context, n, sizeof(float), &w->sine);
 }
@@ -88,31 +96,71 @@ static void add_parts(const split *a, float sign, sv_index count, float *both)
         both[e] = a->re[e] + sign * a->im[e];
 }
 
-/* c = op(a) op(b), m × m, with `inner` terms; left and right hold re ± im of a and b. At most one
- * of them is an adjoint, for which the sign is −1 in `sign`. */
-static void three_products(const series_work *w, int inner, CBLAS_TRANSPOSE turn_a, const split *a,
-                           const float *left, CBLAS_TRANSPOSE turn_b, const split *b,
-                           const float *right, float sign, split *c)
+/* Part of a product, and the number of terms of its sums. */
+typedef struct part {
+    int row, rows, column, columns, inner;
+} part;
+
+/* One factor: leading dimension, and re ± im beside its parts. */
+typedef struct factor {
+    CBLAS_TRANSPOSE turn;
+    int lead;
+    const split *parts;
+    const float *sum;
+} factor;
+
+/* The part of c = op(a) op(b), m × m. At most one of them is an adjoint, for which the sign is −1
+ * in `sign`. */
+static void three_products(const series_work *w, part p, factor a, factor b, float sign, split *c)
 {
-    int m = w->m, lead_a = turn_a == CblasNoTrans ? m : inner;
-    int lead_b = turn_b == CblasNoTrans ? inner : m;
-    const float *factors[3][2] = {{a->re, b->re}, {a->im, b->im}, {left, right}};
+    sv_index m = w->m, at_c = p.row + p.column * m;
+    sv_index at_a = a.turn == CblasNoTrans ? p.row : (sv_index)p.row * a.lead;
+    sv_index at_b = b.turn == CblasNoTrans ? (sv_index)p.column * b.lead : p.column;
+    const float *factors[3][2] = {
+        {a.parts->re, b.parts->re}, {a.parts->im, b.parts->im}, {a.sum, b.sum}};
     float *results[3] = {c->re, w->product, c->im};
     for (int k = 0; k < 3; k++)
-        cblas_sgemm(CblasColMajor, turn_a, turn_b, m, m, inner, 1.0F, factors[k][0], lead_a,
-                    factors[k][1], lead_b, 0.0F, results[k], m);
-    for (sv_index e = 0; e < (sv_index)m * m; e++) {
-        float first = c->re[e], second = sign * w->product[e];
-        c->re[e] = first - second;
-        c->im[e] -= first + second;
-    }
+        cblas_sgemm(CblasColMajor, a.turn, b.turn, p.rows, p.columns, p.inner, 1.0F,
+                    factors[k][0] + at_a, a.lead, factors[k][1] + at_b, b.lead, 0.0F,
+                    results[k] + at_c, w->m);
+    for (sv_index column = 0; column < p.columns; column++)
+        for (sv_index e = at_c + column * m; e < at_c + column * m + p.rows; e++) {
+            float first = c->re[e], second = sign * w->product[e];
+            c->re[e] = first - second;
+            c->im[e] -= first + second;
+        }
+}
+
+/*
+ * A basis orthonormalised by a triangular factor has rows that end in zeros. With such rows last,
+ * the products over rows may stop early: the fewer terms, the further right a column is.
+ */
+static void order_rows(series_work *w, const sv_basis *basis)
+{
+    sv_index n = w->n, m = w->m, *last = w->order + n;
+    for (sv_index r = 0; r < n; r++)
+        last[r] = 0;
+    for (sv_index c = 0; c < m; c++)
+        for (sv_index r = 0; r < n; r++)
+            if (basis->vectors[r + c * n] != 0.0)
+                last[r] = c;
+    for (sv_index r = 0; r < n; r++)
+        w->depth[last[r]]++;
+    for (sv_index c = m - 1; c >= 0; c--)
+        w->depth[c] += w->depth[c + 1];
+    /* depth[c] rows reach column c or further; those that end there fill up to it from below. */
+    for (sv_index r = n - 1; r >= 0; r--)
+        w->order[--w->depth[last[r]]] = r;
+    for (sv_index c = m; c > 0; c--) /* filled: each stands where the next did */
+        w->depth[c] = w->depth[c - 1];
+    w->depth[0] = n;
 }
 
 /* Ψ† e^{2πi·coordinate} Ψ */
 static void compress(series_work *w, const double (*uv)[2], int axis, split *result)
 {
     for (sv_index r = 0; r < w->n; r++) {
-        double angle = 2.0 * M_PI * uv[r][axis];
+        double angle = 2.0 * M_PI * uv[w->order[r]][axis];
         w->cosine[r] = (float)cos(angle);
         w->sine[r] = (float)sin(angle);
     }
@@ -123,8 +171,14 @@ static void compress(series_work *w, const double (*uv)[2], int axis, split *res
             w->turned.im[r + c * w->n] = w->cosine[r] * im + w->sine[r] * re;
         }
     add_parts(&w->turned, 1.0F, (sv_index)w->n * w->m, w->turned.both);
-    three_products(w, w->n, CblasTrans, &w->psi, w->psi.both, CblasNoTrans, &w->turned,
-                   w->turned.both, -1.0F, result);
+    factor a = {CblasTrans, w->n, &w->psi, w->psi.both};
+    factor b = {CblasNoTrans, w->n, &w->turned, w->turned.both};
+    for (int start = 0; start < w->m; start += STRIPE) {
+        int width = w->m - start < STRIPE ? w->m - start : STRIPE, inner = (int)w->depth[start];
+        three_products(w, (part){0, start + width, start, width, inner}, a, b, -1.0F, result);
+        if (start > 0)
+            three_products(w, (part){start, width, 0, start, inner}, a, b, -1.0F, result);
+    }
 }
 
 /* c = a b, or a b† */
@@ -134,18 +188,22 @@ static void multiply(const series_work *w, const split *a, const split *b, bool 
     sv_index count = (sv_index)w->m * w->m;
     add_parts(a, 1.0F, count, w->psi.both);
     add_parts(b, sign, count, w->turned.both);
-    three_products(w, w->m, CblasNoTrans, a, w->psi.both, adjoint_b ? CblasTrans : CblasNoTrans, b,
-                   w->turned.both, sign, c);
+    three_products(w, (part){0, w->m, 0, w->m, w->m}, (factor){CblasNoTrans, w->m, a, w->psi.both},
+                   (factor){adjoint_b ? CblasTrans : CblasNoTrans, w->m, b, w->turned.both}, sign,
+                   c);
 }
 
 /* K, in the place of u; u and v are not needed afterwards. */
 static void make_k(series_work *w, const sv_basis *basis, const double (*uv)[2])
 {
     sv_index count = (sv_index)w->n * w->m;
-    for (sv_index e = 0; e < count; e++) {
-        w->psi.re[e] = (float)creal(basis->vectors[e]);
-        w->psi.im[e] = (float)cimag(basis->vectors[e]);
-    }
+    order_rows(w, basis);
+    for (sv_index c = 0; c < w->m; c++)
+        for (sv_index r = 0; r < w->n; r++) {
+            sv_complex value = basis->vectors[w->order[r] + c * w->n];
+            w->psi.re[r + c * w->n] = (float)creal(value);
+            w->psi.im[r + c * w->n] = (float)cimag(value);
+        }
     add_parts(&w->psi, -1.0F, count, w->psi.both);
     compress(w, uv, 0, &w->u);
     compress(w, uv, 1, &w->v);

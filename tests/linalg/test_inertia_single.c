@@ -150,3 +150,35 @@ SV_TEST(plans_change_their_groups)
     sv_inertia_plan_free(test_context(), fresh);
     release(&s);
 }
+
+/* Every copy of the inner product, in both precisions; fronts of all sizes up to 2 × 4 × 21 rows.
+ */
+SV_TEST(kernels_agree)
+{
+    for (int n = 3; n <= 21; n += 6) {
+        subject s;
+        sv_inertia_plan *plan = NULL;
+        sv_sparse l = {0};
+        make(&s, n, n > 3, 1.0, 8);
+        CHECK_OK(sv_localizer_matrix(test_context(), &s.sample, 0.1, 0.3, s.flake.centre, &l));
+        CHECK_OK(sv_inertia_plan_make(test_context(), &l, 2, &plan));
+        for (int at = 0; at < 4; at++) {
+            sv_inertia plain, one;
+            double shift = 0.13 + 0.31 * at;
+            sv_inertia_plan_use(plan, SV_PANEL_PLAIN);
+            CHECK_OK(sv_inertia_factor(test_context(), plan, &l, shift, &plain));
+            for (int kernel = 0; kernel <= (int)sv_panel_best_kernel(); kernel++) {
+                sv_inertia_plan_use(plan, (sv_panel_kernel)kernel);
+                CHECK_OK(sv_inertia_factor(test_context(), plan, &l, shift, &one));
+                CHECK(one.negative == plain.negative && one.replaced == 0);
+                CHECK_CLOSE(one.growth, plain.growth, 1e-6 * plain.growth);
+                CHECK(backward_error(plan, &l, shift) <= one.error);
+                CHECK_OK(sv_inertia_factor_single(test_context(), plan, &l, shift, &one));
+                CHECK(one.replaced > 0 || backward_error(plan, &l, shift) <= one.error);
+            }
+        }
+        sv_inertia_plan_free(test_context(), plan);
+        sv_sparse_free(test_context(), &l);
+        release(&s);
+    }
+}
