@@ -165,7 +165,9 @@ typedef enum sv_dimension {
     SV_DIM_LENGTH,     /**< inside: nanometre when written with a unit */
     SV_DIM_DENSITY,    /**< per area; inside: nm^-2 when written with a unit */
     SV_DIM_ANGLE,      /**< inside: radian */
-    SV_DIM_TEMPERATURE /**< inside: kelvin */
+    SV_DIM_TEMPERATURE, /**< inside: kelvin */
+    SV_DIM_ENERGY_LENGTH, /**< ħ times a velocity; inside: eV nm, in a model: energy unit × nm */
+    SV_DIM_ENERGY_AREA    /**< inside: eV nm², in a model: energy unit × nm² */
 } sv_dimension;
 
 /** One row of the table of units: value_in_base = factor · value. */
@@ -274,6 +276,73 @@ typedef struct sv_kind {
 
 /** Row number of a key in a kind, or -1. */
 SV_API int sv_kind_find_key(const sv_kind *kind, const char *name);
+
+/* ------------------------------------------------------------------ tables */
+
+/** What is wrong with a file, and where. */
+typedef struct sv_table_fault {
+    int line, column; /**< from 1 */
+    char message[256];
+    char hint[256];
+    char text[256]; /**< the offending line */
+} sv_table_fault;
+
+enum { SV_TABLE_COLUMNS = 16, SV_TABLE_FIELDS = 64 };
+
+/** A column a table may have. */
+typedef struct sv_table_column {
+    const char *name;
+    sv_dimension dimension;
+    bool required;
+} sv_table_column;
+
+typedef struct sv_table_field {
+    char text[200];
+    int column; /**< where it starts in its line, from 1 */
+} sv_table_field;
+
+/** A comma-separated table being read; fill with sv_table_begin(). Borrows text and columns. */
+typedef struct sv_table {
+    const sv_table_column *columns;
+    int n_columns;
+    int place[SV_TABLE_COLUMNS]; /**< field of a column, −1: absent */
+    const sv_unit *unit[SV_TABLE_COLUMNS]; /**< from the header, or NULL */
+    const char *at, *end; /**< what is not read yet */
+    const char *line_text;
+    int line, line_length; /**< line from 1 */
+    int header_fields, n_fields;
+    sv_table_field fields[SV_TABLE_FIELDS];
+    sv_table_fault fault; /**< set by whatever fails */
+} sv_table;
+
+/**
+ * Starts a table and reads its first row, which names the columns; a unit may follow the name in
+ * brackets, `re [meV]`. Columns that are not asked for are skipped, so are blank lines and those
+ * that begin with #.
+ * @param example a hint for a first row that is not good
+ * @return SV_INVALID_INPUT with ret_table->fault filled
+ */
+SV_API SV_MUST_USE sv_status sv_table_begin(sv_context *context, const char *text, size_t size,
+                                            const sv_table_column *columns, int n_columns,
+                                            const char *example, sv_table *ret_table);
+/** The next row. @param[out] ret_more false at the end. @return SV_INVALID_INPUT, fault filled */
+SV_API SV_MUST_USE sv_status sv_table_next(sv_context *context, sv_table *table, bool *ret_more);
+/** Text of a column in this row; empty when the table has no such column. */
+SV_API const char *sv_table_text(const sv_table *table, int column);
+/**
+ * A number of a column, with its own unit or the header's, in the base unit of its dimension.
+ * @param[out] ret_has_unit false: bare
+ * @return SV_INVALID_INPUT, fault filled
+ */
+SV_API SV_MUST_USE sv_status sv_table_real(sv_context *context, sv_table *table, int column,
+                                           double *ret_value, bool *ret_has_unit);
+/** A whole number of a column. @return SV_INVALID_INPUT, fault filled */
+SV_API SV_MUST_USE sv_status sv_table_integer(sv_context *context, sv_table *table, int column,
+                                              int64_t *ret_value);
+/** Fills the fault for a column of this row (−1: the row). @param hint or NULL. @return SV_INVALID_INPUT */
+SV_API SV_MUST_USE sv_status sv_table_fail(sv_context *context, sv_table *table, int column,
+                                           const char *hint, const char *format, ...)
+    SV_PRINTF(5, 6);
 
 /* ---------------------------------------------------------- random streams */
 

@@ -12,7 +12,7 @@
 extern "C" {
 #endif
 
-enum { SV_MAX_MARKERS = 8, SV_MAX_KEYS = 16, SV_MAX_AXES = 2 };
+enum { SV_MAX_MARKERS = 16, SV_MAX_KEYS = 16, SV_MAX_AXES = 2 };
 
 /** A marker asked for, with the values of its keys. */
 typedef struct sv_marker_request {

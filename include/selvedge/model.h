@@ -15,10 +15,12 @@ extern "C" {
 
 /** An orbital of the cell. Several orbitals may share one position. */
 typedef struct sv_orbital {
-    char name[32]; /**< case-sensitive */
-    double at[2];  /**< Cartesian position in the cell, lattice constants */
-    double onsite; /**< diagonal energy, unit of the model */
-    int position;  /**< number of its position among the distinct positions of the cell */
+    char name[32];  /**< case-sensitive */
+    double at[2];   /**< Cartesian position in the cell, lattice constants */
+    double onsite;  /**< diagonal energy, unit of the model */
+    int position;   /**< number of its position among the distinct positions of the cell */
+    int spin;       /**< +1: up, −1: down, 0: no spin is stated */
+    double coupled; /**< sum of the |amplitude| of the hops that end here */
 } sv_orbital;
 
 /** amplitude = ⟨to, cell R + shift|H|from, cell R⟩; the conjugate element follows. */
@@ -29,9 +31,9 @@ typedef struct sv_hop {
 } sv_hop;
 
 enum {
-    SV_MODEL_FIELDS = 4,      /**< local operators a model may name */
-    SV_FIELD_TERMS = 16,      /**< terms of one of them */
-    SV_FIELD_POTENTIAL = -1,  /**< stands for the identity, which every model has */
+    SV_MODEL_FIELDS = 4,     /**< local operators a model may name */
+    SV_FIELD_TERMS = 16,     /**< terms of one of them */
+    SV_FIELD_POTENTIAL = -1, /**< stands for the identity, which every model has */
     SV_NO_FIELD = -2
 };
 
@@ -62,9 +64,13 @@ typedef struct sv_model {
     sv_hop *hops;
     int n_hops;
     sv_index hop_capacity, orbital_capacity;
-    int flux[2]; /**< p, q: p/q quanta per cell (0, 1: none) */
+    int flux[2];                            /**< p, q: p/q quanta per cell (0, 1: none) */
     sv_model_field fields[SV_MODEL_FIELDS]; /**< local operators disorder may change */
     int n_fields;
+    double velocity; /**< ħv of light states, energy × lattice constant; 0: the model has none. With
+                          the gap Δ it gives the length ξ = ħv/Δ a film must exceed. */
+    int32_t *hop_slots; /**< for finding hops; hop number + 1 or 0, power of two */
+    sv_index n_hop_slots;
 } sv_model;
 
 /** Kinds of models: table of names, docs and keys (custom has keys of type SV_KEY_TREE). */
@@ -95,14 +101,36 @@ SV_API SV_MUST_USE sv_status sv_model_add_orbital(sv_context *context, sv_model 
 SV_API SV_MUST_USE sv_status sv_model_add_hop(sv_context *context, sv_model *model, int from,
                                               int to, int shift_i, int shift_j,
                                               sv_complex amplitude);
+/** States the spin of an orbital. @param spin +1 (up) or −1 (down). @return SV_INVALID_INPUT for
+ * other numbers or no such orbital */
+SV_API SV_MUST_USE sv_status sv_model_set_spin(sv_context *context, sv_model *model, int orbital,
+                                               int spin);
+/** True when every orbital states its spin. */
+SV_API bool sv_model_has_spin(const sv_model *model);
+/** Number of the hop between two orbitals, in either direction, or -1. */
+SV_API int sv_model_find_hop(const sv_model *model, int from, int to, int shift_i, int shift_j);
+/**
+ * Adds hops and on-site energies from a table, such as one fitted to first-principles bands:
+ * columns from, to (orbital names), shift_i, shift_j (cells), re, im (⟨to, R + shift|H|from, R⟩; a
+ * unit of energy may follow the name in brackets). A row from an orbital to itself without shift is
+ * its on-site energy. A hop may be listed in one direction or in both; both must be conjugate to
+ * within 1e-6 of the largest amplitude, and the first then counts.
+ * @param energy_unit  eV per unit of the model; 0: energies with a unit are taken in eV
+ * @param[out] ret_has_unit  some energy had a unit
+ * @return SV_INVALID_INPUT with *ret_fault filled: missing column, not a number, unknown orbital, a
+ *         hop or energy that is there already, one that breaks hermiticity
+ */
+SV_API SV_MUST_USE sv_status sv_model_read_hops(sv_context *context, sv_model *model,
+                                                const char *text, size_t size, double energy_unit,
+                                                bool *ret_has_unit, sv_table_fault *ret_fault);
 /** Sets p/q flux quanta per cell. @return SV_INVALID_INPUT for q < 1 */
 SV_API SV_MUST_USE sv_status sv_model_set_flux(sv_context *context, sv_model *model, int p, int q);
 /**
  * Names a local operator; its terms follow by sv_model_add_field_term(). The clean model's own part
  * of it stays in on-site terms and hops.
  * @param value  coefficient it has in the clean model
- * @return SV_INVALID_INPUT for "potential" (every model has it), a repeated or overlong name, or more
- *         than SV_MODEL_FIELDS of them
+ * @return SV_INVALID_INPUT for "potential" (every model has it), a repeated or overlong name, or
+ * more than SV_MODEL_FIELDS of them
  */
 SV_API SV_MUST_USE sv_status sv_model_add_field(sv_context *context, sv_model *model,
                                                 const char *name, double value);

@@ -199,14 +199,6 @@ typedef struct sv_disorder {
 SV_API const sv_kind *sv_disorder_kinds(int *ret_count);
 SV_API void sv_disorder_free(sv_context *context, sv_disorder *disorder);
 
-/** Fault of a measured file found by sv_read_marks(): where and what. */
-typedef struct sv_table_fault {
-    int line, column; /**< from 1 */
-    char message[256];
-    char hint[256];
-    char text[256]; /**< the offending line */
-} sv_table_fault;
-
 /**
  * Reads a CSV of measured defects (x, y) or site energies (x, y, energy or
  * cell_i, cell_j[, orbital], energy). The first row names the columns; a unit may follow the name

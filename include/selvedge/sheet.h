@@ -111,7 +111,7 @@ typedef struct sv_setup {
     sv_disorder *disorder;
     int n_disorder;
     sv_occupation occupation;
-    sv_sheet_marker markers[8];
+    sv_sheet_marker markers[16];
     int n_markers;
     int64_t realisations;
     uint64_t seed;
@@ -167,6 +167,34 @@ SV_API SV_MUST_USE sv_status sv_sheet_resolved_relocated(sv_context *context,
                                                          const sv_sheet *sheet,
                                                          const char *const *names, int n_names,
                                                          char **ret_text);
+
+/** A value of a preset, as a sheet would have it, and where it comes from. */
+typedef struct sv_preset_value {
+    const char *key, *value, *source;
+} sv_preset_value;
+
+/** A material: values for the keys of `model`, each with its source and how certain that is. */
+typedef struct sv_preset {
+    const char *name, *title;
+    const sv_preset_value *values;
+    int n_values;
+    const char *const *notes;
+    int n_notes;
+} sv_preset;
+
+/** All presets of this build (data/presets.yaml). */
+typedef struct sv_presets {
+    sv_preset *items;
+    int count;
+    struct sv_arena_chunk *memory;
+} sv_presets;
+SV_API SV_MUST_USE sv_status sv_presets_read(sv_context *context, sv_presets *ret_presets);
+/** Gives the memory back; safe on a zeroed struct and twice in a row. */
+SV_API void sv_presets_free(sv_context *context, sv_presets *presets);
+/** Name of the preset the sheet's model builds on, or NULL. Belongs to the sheet. */
+SV_API const char *sv_sheet_preset(const sv_sheet *sheet);
+/** Does the value of a key of `model` come from the preset? */
+SV_API bool sv_sheet_is_preset_value(const sv_sheet *sheet, const char *key);
 
 /** Prints every key with type, unit, range, default and doc line, from the parser's own tables. */
 SV_API void sv_sheet_print_keys(const sv_kind *markers, int n_markers, FILE *stream);

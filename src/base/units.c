@@ -40,6 +40,14 @@ static const sv_unit unit_rows[] = {
     {"pi", SV_DIM_ANGLE, 3.14159265358979323846},
     {"K", SV_DIM_TEMPERATURE, 1.0},
     {"mK", SV_DIM_TEMPERATURE, 1e-3},
+    {"eV nm", SV_DIM_ENERGY_LENGTH, 1.0},
+    {"meV nm", SV_DIM_ENERGY_LENGTH, 1e-3},
+    {"eV angstrom", SV_DIM_ENERGY_LENGTH, 0.1},
+    {"eV Å", SV_DIM_ENERGY_LENGTH, 0.1},
+    {"eV nm^2", SV_DIM_ENERGY_AREA, 1.0},
+    {"meV nm^2", SV_DIM_ENERGY_AREA, 1e-3},
+    {"eV angstrom^2", SV_DIM_ENERGY_AREA, 1e-2},
+    {"eV Å^2", SV_DIM_ENERGY_AREA, 1e-2},
 };
 enum { N_UNITS = sizeof unit_rows / sizeof unit_rows[0] };
 
@@ -72,6 +80,10 @@ const char *sv_dimension_name(sv_dimension dimension)
         return "an angle";
     case SV_DIM_TEMPERATURE:
         return "a temperature";
+    case SV_DIM_ENERGY_LENGTH:
+        return "an energy times a length";
+    case SV_DIM_ENERGY_AREA:
+        return "an energy times an area";
     }
     return "a quantity";
 }
@@ -79,11 +91,13 @@ const char *sv_dimension_name(sv_dimension dimension)
 void sv_unit_list(sv_dimension dimension, char *text, size_t size)
 {
     size_t used = 0;
+    bool spaced = dimension == SV_DIM_ENERGY_LENGTH || dimension == SV_DIM_ENERGY_AREA;
+    const char *join = spaced ? ", " : " ";
     text[0] = '\0';
     for (size_t i = 0; i < N_UNITS; i++) {
         if (unit_rows[i].dimension != dimension)
             continue;
-        int n = snprintf(text + used, size - used, "%s%s", used ? " " : "", unit_rows[i].symbol);
+        int n = snprintf(text + used, size - used, "%s%s", used ? join : "", unit_rows[i].symbol);
         if (n < 0 || (size_t)n >= size - used)
             return;
         used += (size_t)n;

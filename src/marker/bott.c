@@ -8,8 +8,7 @@
 /* Up to this many states eigenvalues take a tenth of a second and give exact margins. */
 static const sv_index EIGENVALUES_UP_TO = 256;
 
-/* Coordinates along the torus vectors, in turns: x/L is wrong on oblique cells. */
-static void torus_coordinates(const sv_sample *sample, double (*uv)[2])
+void sv_torus_coordinates(const sv_sample *sample, double (*uv)[2])
 {
     const sv_flake *flake = sample->flake;
     const int32_t(*t)[2] = flake->period;
@@ -66,7 +65,7 @@ sv_status sv_bott_index(sv_context *context, const sv_marker_input *input, sv_ou
     if ((status = sv_projector_occupied_basis(context, input->projector, &basis)) != SV_OK ||
         (status = sv_take_raw(context, input->sample->n, sizeof *uv, &uv)) != SV_OK)
         goto out;
-    torus_coordinates(input->sample, uv);
+    sv_torus_coordinates(input->sample, uv);
     status =
         sv_bott_of_basis(context, &basis, (const double(*)[2])uv, SV_BOTT_AUTO, &outcome, &used);
     if (status != SV_OK)

@@ -5,6 +5,9 @@
 
 #include "selvedge/marker.h"
 
+/* Coordinates along the torus vectors, in turns: x/L is wrong on oblique cells. */
+void sv_torus_coordinates(const sv_sample *sample, double (*uv)[2]);
+
 /* The index by a truncated logarithm in single precision, where bounds prove it to be right.
  * *ret_certified is false, and the outcome untouched, where they do not. */
 sv_status sv_bott_by_series(sv_context *context, const sv_basis *basis, const double (*uv)[2],

@@ -1,9 +1,8 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Local Chern marker of the sites of a window: from a basis of the occupied or empty space, or
- * column by column (chern_columns.c). */
+/* Local Chern marker of the sites of a window: from a basis of the occupied or empty space
+ * (chern_basis.c), or column by column (chern_columns.c). */
 #include "marker_internal.h"
 
-#include <cblas.h>
 #include <math.h>
 #include <string.h>
 
@@ -16,41 +15,17 @@ typedef struct chern_work {
     sv_basis basis;
     window_choice choice; /* unit NULL: every cell of the window */
     sv_index *rows, n_rows;
-    sv_complex *scaled;           /* n × m */
-    sv_complex *x, *y;            /* m × m, position in the basis */
-    sv_complex *picked, *px, *py; /* n_rows × m */
-    double *marker;               /* n_rows */
-    double *error;                /* n_rows, column by column only */
-    bool levels_known;            /* the engine resolves the levels in the gap: edge states too */
+    double *marker;    /* n_rows */
+    double *error;     /* n_rows, column by column only */
+    bool levels_known; /* the engine resolves the levels in the gap: edge states too */
 } chern_work;
 
 static void free_work(sv_context *context, chern_work *w)
 {
     sv_give(context, w->rows);
     sv_give(context, w->choice.unit);
-    sv_give(context, w->scaled);
-    sv_give(context, w->x);
-    sv_give(context, w->y);
-    sv_give(context, w->picked);
-    sv_give(context, w->px);
-    sv_give(context, w->py);
     sv_give(context, w->marker);
     sv_give(context, w->error);
-}
-
-static sv_status take_blocks(sv_context *context, chern_work *w)
-{
-    sv_index n = w->sample->n, m = w->basis.columns;
-    size_t size = sizeof(sv_complex);
-    sv_status status;
-    if ((status = sv_take_raw(context, n * m, size, &w->scaled)) != SV_OK ||
-        (status = sv_take(context, m * m, size, &w->x)) != SV_OK ||
-        (status = sv_take(context, m * m, size, &w->y)) != SV_OK ||
-        (status = sv_take_raw(context, w->n_rows * m, size, &w->picked)) != SV_OK ||
-        (status = sv_take_raw(context, w->n_rows * m, size, &w->px)) != SV_OK ||
-        (status = sv_take_raw(context, w->n_rows * m, size, &w->py)) != SV_OK)
-        return status;
-    return sv_take(context, w->n_rows, sizeof *w->marker, &w->marker);
 }
 
 /* Sites of the window cells (of the chosen ones when sampling), or all sites. */
@@ -66,69 +41,6 @@ static sv_status pick_rows(sv_context *context, chern_work *w, const bool *insid
             w->rows[w->n_rows++] = r;
     }
     return SV_OK;
-}
-
-static double coordinate(const sv_sample *sample, sv_index row, int axis)
-{
-    return sample->flake->sites[sample->pristine[row]].at[axis];
-}
-
-/*
- * B† x B. The coordinate is shifted to be positive so that it has a root: a rank-k update of
- * √x B costs half of a general product. A constant shift changes no marker (⟨r|PxPyP|r⟩
- * has the same imaginary part).
- */
-static void position_in_basis(chern_work *w, int axis, sv_complex *result)
-{
-    sv_index n = w->sample->n, m = w->basis.columns;
-    double low = INFINITY;
-    for (sv_index r = 0; r < n; r++)
-        low = fmin(low, coordinate(w->sample, r, axis));
-    for (sv_index c = 0; c < m; c++)
-        for (sv_index r = 0; r < n; r++)
-            w->scaled[r + c * n] =
-                sqrt(coordinate(w->sample, r, axis) - low) * w->basis.vectors[r + c * n];
-    cblas_zherk(CblasColMajor, CblasLower, CblasConjTrans, (int)m, (int)n, 1.0, w->scaled, (int)n,
-                0.0, result, (int)m);
-}
-
-/* (4π/A) Im Σ_n (B X)_{rn} conj((B Y)_{rn}); the empty side has the opposite sign. */
-static void evaluate(chern_work *w)
-{
-    int k = (int)w->n_rows, m = (int)w->basis.columns;
-    const sv_complex one = 1.0, zero = 0.0;
-    for (int c = 0; c < m; c++)
-        for (int r = 0; r < k; r++)
-            w->picked[r + (sv_index)c * k] = w->basis.vectors[w->rows[r] + c * w->sample->n];
-    cblas_zhemm(CblasColMajor, CblasRight, CblasLower, k, m, &one, w->x, m, w->picked, k, &zero,
-                w->px, k);
-    cblas_zhemm(CblasColMajor, CblasRight, CblasLower, k, m, &one, w->y, m, w->picked, k, &zero,
-                w->py, k);
-    double area = sv_model_cell_area(w->sample->flake->model);
-    double factor = (w->basis.empty_side ? -4.0 : 4.0) * M_PI / area;
-    for (int c = 0; c < m; c++)
-        for (int r = 0; r < k; r++) {
-            sv_complex a = w->px[r + (sv_index)c * k], b = w->py[r + (sv_index)c * k];
-            w->marker[r] += cimag(a) * creal(b) - creal(a) * cimag(b);
-        }
-    for (int r = 0; r < k; r++)
-        w->marker[r] *= factor;
-}
-
-/*
- * First-order effect of an error δ of P on one value: P enters three times, and positions relative
- * to the site matter only over the extent of the flake.
- */
-static double error_estimate(const sv_sample *sample, double defect)
-{
-    double low[2] = {INFINITY, INFINITY}, high[2] = {-INFINITY, -INFINITY};
-    for (sv_index r = 0; r < sample->n; r++)
-        for (int k = 0; k < 2; k++) {
-            low[k] = fmin(low[k], coordinate(sample, r, k));
-            high[k] = fmax(high[k], coordinate(sample, r, k));
-        }
-    double spread = 0.25 * fmax(1.0, (high[0] - low[0]) * (high[1] - low[1]));
-    return 3.0 * 4.0 * M_PI / sv_model_cell_area(sample->flake->model) * spread * defect;
 }
 
 /* Does the flake lack a cell within three cells of this one? */
@@ -201,16 +113,13 @@ static sv_status from_basis(sv_context *context, const sv_marker_input *input, c
                             sv_outcome *outcome)
 {
     double defect = 0.0;
-    sv_status status = take_blocks(context, w);
+    sv_status status = sv_take(context, w->n_rows, sizeof *w->marker, &w->marker);
+    if (status == SV_OK)
+        status = sv_chern_of_basis(context, w->sample, &w->basis, w->rows, w->n_rows, w->marker);
     if (status != SV_OK)
         return status;
-    if (w->basis.columns > 0 && w->n_rows > 0) {
-        position_in_basis(w, 0, w->x);
-        position_in_basis(w, 1, w->y);
-        evaluate(w);
-    }
     status = sv_projector_defect(context, input->projector, &defect);
-    outcome->numerical_error = error_estimate(w->sample, defect);
+    outcome->numerical_error = sv_chern_error(w->sample, defect);
     return status;
 }
 

@@ -105,6 +105,23 @@ static const sv_key disc_keys[] = {
      .doc = "radius of the disc summed; auto: half the distance to the edge"},
 };
 
+static const sv_key spin_chern_keys[] = {
+    {.name = "window",
+     .type = SV_KEY_REAL,
+     .low = 0,
+     .high = 1,
+     .low_open = true,
+     .fallback = "0.5",
+     .doc = "averaging window: share of the linear size about the centre"},
+    {.name = "threshold",
+     .type = SV_KEY_REAL,
+     .low = 0,
+     .high = 2,
+     .low_open = true,
+     .fallback = "0.25",
+     .doc = "least gap of P sz P about zero of a resolved value; 2 with conserved spin"},
+};
+
 static const sv_marker table[] = {
     {.kind = {"local_chern", "local Chern marker, mean over a window (Bianco, Resta 2011)",
               local_chern_keys, 3},
@@ -136,6 +153,20 @@ static const sv_marker table[] = {
      .boundary = SV_OPEN_COPY,
      .needs_projector = true,
      .compute = sv_crosshair},
+    {.kind = {"spin_chern", "spin Chern number, local: mean over a window (Prodan 2009)",
+              spin_chern_keys, 2},
+     .is_index = false,
+     .boundary = SV_OPEN_COPY,
+     .needs_projector = true,
+     .needs_occupied_basis = true,
+     .compute = sv_spin_chern},
+    {.kind = {"spin_bott", "spin Bott index on the torus (Huang, Liu 2018)", &spin_chern_keys[1],
+              1},
+     .is_index = true,
+     .boundary = SV_CLOSED_COPY,
+     .needs_projector = true,
+     .needs_occupied_basis = true,
+     .compute = sv_spin_bott},
 };
 
 const sv_marker *sv_marker_table(int *ret_count)

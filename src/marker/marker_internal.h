@@ -9,6 +9,13 @@
 /* A blank outcome with engine and levels filled in; says so when the projector is ambiguous. */
 sv_outcome sv_outcome_start(const sv_projector *projector);
 
+/* Local Chern marker of some rows from a basis of the occupied or empty space; an empty one gives 0. */
+sv_status sv_chern_of_basis(sv_context *context, const sv_sample *sample, const sv_basis *basis,
+                            const sv_index *rows, sv_index n_rows, double *ret_marker);
+/* First-order effect of an error `defect` of P on one value: P enters three times, and positions
+ * relative to the site matter only over the extent of the flake. */
+double sv_chern_error(const sv_sample *sample, double defect);
+
 /*
  * Local Chern marker of some rows by two projector applications each: v = P|r⟩, then
  * (4π/A) Im⟨x v|P|y v⟩ with positions relative to the site.

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* Published models by name: one key table and one builder each. */
-#include "selvedge/model.h"
+#include "model_internal.h"
 
 #include <math.h>
 #include <string.h>
@@ -39,6 +39,53 @@ static const sv_key hofstadter_keys[] = {
      .doc = "[p, q]: p/q flux quanta per cell"},
 };
 
+static const sv_key kagome_keys[] = {
+    ENERGY_KEY("t", "1", false, "nearest-neighbour hop"),
+    {.name = "phi",
+     .type = SV_KEY_REAL,
+     .dimension = SV_DIM_ANGLE,
+     .low = -1e3,
+     .high = 1e3,
+     .required = true,
+     .doc = "phase exp(+i phi) of the hops that go counter-clockwise around a triangle"},
+};
+
+static const sv_key kane_mele_keys[] = {
+    ENERGY_KEY("t1", "1", false, "nearest-neighbour hop"),
+    ENERGY_KEY("so", NULL, true,
+               "intrinsic spin-orbit hop to second neighbours: clockwise +i for spin up, -i down"),
+    ENERGY_KEY("rashba", "0", false, "Rashba hop i rashba (s x d)_z, d the unit vector of the hop"),
+    ENERGY_KEY("mass", "0", false, "on-site energy +mass on A, -mass on B"),
+};
+
+static const sv_key magnetic_film_keys[] = {
+    {.name = "grid",
+     .type = SV_KEY_REAL,
+     .dimension = SV_DIM_LENGTH,
+     .low = 0,
+     .low_open = true,
+     .high = 1e9,
+     .required = true,
+     .doc = "spacing of the square grid, bare in nm; it is the lattice constant of this model"},
+    {.name = "velocity",
+     .type = SV_KEY_REAL,
+     .dimension = SV_DIM_ENERGY_LENGTH,
+     .low = 0,
+     .low_open = true,
+     .high = 1e12,
+     .required = true,
+     .doc = "hbar v of the surface states, bare in energy units x nm"},
+    ENERGY_KEY("m0", NULL, true, "hybridisation of the two surfaces: m(k) = m0 + m1 k^2"),
+    {.name = "m1",
+     .type = SV_KEY_REAL,
+     .dimension = SV_DIM_ENERGY_AREA,
+     .low = -1e12,
+     .high = 1e12,
+     .required = true,
+     .doc = "its curvature, bare in energy units x nm^2"},
+    ENERGY_KEY("exchange", NULL, true, "exchange energy g of the magnetic order: g sz"),
+};
+
 static const sv_key custom_keys[] = {
     {.name = "vectors",
      .type = SV_KEY_TREE,
@@ -47,11 +94,15 @@ static const sv_key custom_keys[] = {
     {.name = "orbitals",
      .type = SV_KEY_TREE,
      .required = true,
-     .doc = "[{name: a, at: [x, y]}, …]: orbitals of the cell"},
+     .doc = "[{name: a, at: [x, y], spin: up}, …]: orbitals of the cell; spin may be left out"},
     {.name = "onsite", .type = SV_KEY_TREE, .doc = "{a: 0.5, …}: on-site energies (default 0)"},
     {.name = "hops",
      .type = SV_KEY_TREE,
      .doc = "[{from: a, to: b, shift: [i, j], amplitude: [re, im]}, …]; each once"},
+    {.name = "hops_file",
+     .type = SV_KEY_FILE,
+     .doc =
+         "CSV table of hops: from,to,shift_i,shift_j,re,im, as re [meV] with a unit; also on-site"},
     {.name = "flux",
      .type = SV_KEY_INTEGER_PAIR,
      .low = -1e6,
@@ -70,6 +121,18 @@ static const sv_kind kinds[] = {
     KIND("qi_wu_zhang", "square, two orbitals (Qi, Wu, Zhang 2006)", qi_wu_zhang_keys),
     KIND("hofstadter", "square, one orbital, p/q flux quanta per cell (Hofstadter 1976)",
          hofstadter_keys),
+    KIND("kagome",
+         "kagome lattice, complex nearest hops; C = +1 for 0 < phi < pi/3 and t > 0, at "
+         "filling 1/3 and 2/3",
+         kagome_keys),
+    KIND("kane_mele",
+         "honeycomb with spin (Kane, Mele 2005); spin Chern number +1 for so > 0 inside "
+         "the lobe",
+         kane_mele_keys),
+    KIND("magnetic_film",
+         "thin film of a magnetic topological insulator (Yu et al. 2010); C = "
+         "sign(exchange) when |exchange| > |m0|",
+         magnetic_film_keys),
     KIND("custom", "own vectors, orbitals, on-site terms, hops and flux", custom_keys),
 };
 
@@ -79,86 +142,13 @@ const sv_kind *sv_model_kinds(int *ret_count)
     return kinds;
 }
 
-/* Passes a failure on; keeps the builders readable. */
-#define TRY(call)                                                                                  \
-    do {                                                                                           \
-        sv_status try_status = (call);                                                             \
-        if (try_status != SV_OK)                                                                   \
-            return try_status;                                                                     \
-    } while (0)
-
-/* F. D. M. Haldane, Phys. Rev. Lett. 61, 2015 (1988). */
-static sv_status make_haldane(sv_context *context, const sv_value *values, sv_model *model)
-{
-    const double a1[2] = {1.0, 0.0}, a2[2] = {0.5, sqrt(3.0) / 2.0};
-    double t1 = values[0].real[0], t2 = values[1].real[0];
-    double phi = values[2].real[0], mass = values[3].real[0];
-    enum { A, B };
-    TRY(sv_model_begin(context, "haldane", a1, a2, model));
-    TRY(sv_model_add_orbital(context, model, "A", 0.0, 0.0, mass));
-    TRY(sv_model_add_orbital(context, model, "B", (a1[0] + a2[0]) / 3.0, (a1[1] + a2[1]) / 3.0,
-                             -mass));
-    TRY(sv_model_add_hop(context, model, A, B, 0, 0, t1));
-    TRY(sv_model_add_hop(context, model, A, B, -1, 0, t1));
-    TRY(sv_model_add_hop(context, model, A, B, 0, -1, t1));
-    /* A → A' over their common B turns right (clockwise) for these shifts; on B for the opposite
-     * ones. */
-    const int clockwise[3][2] = {{1, 0}, {-1, 1}, {0, -1}};
-    sv_complex amplitude = CMPLX(t2 * cos(phi), t2 * sin(phi));
-    for (int k = 0; k < 3; k++) {
-        int i = clockwise[k][0], j = clockwise[k][1];
-        TRY(sv_model_add_hop(context, model, A, A, i, j, amplitude));
-        TRY(sv_model_add_hop(context, model, B, B, -i, -j, amplitude));
-    }
-    TRY(sv_model_add_field(context, model, "mass", mass));
-    TRY(sv_model_add_field_term(context, model, A, A, 1.0));
-    TRY(sv_model_add_field_term(context, model, B, B, -1.0));
-    return SV_OK;
-}
-
-/* X.-L. Qi, Y.-S. Wu, S.-C. Zhang, Phys. Rev. B 74, 085308 (2006). */
-static sv_status make_qi_wu_zhang(sv_context *context, const sv_value *values, sv_model *model)
-{
-    const double a1[2] = {1.0, 0.0}, a2[2] = {0.0, 1.0};
-    double m = values[0].real[0];
-    enum { A, B };
-    TRY(sv_model_begin(context, "qi_wu_zhang", a1, a2, model));
-    TRY(sv_model_add_orbital(context, model, "a", 0.0, 0.0, m));
-    TRY(sv_model_add_orbital(context, model, "b", 0.0, 0.0, -m));
-    /* ⟨R+x|H|R⟩ = (sz + i sx)/2, ⟨R+y|H|R⟩ = (sz + i sy)/2 */
-    TRY(sv_model_add_hop(context, model, A, A, 1, 0, 0.5));
-    TRY(sv_model_add_hop(context, model, B, B, 1, 0, -0.5));
-    TRY(sv_model_add_hop(context, model, A, B, 1, 0, CMPLX(0.0, 0.5)));
-    TRY(sv_model_add_hop(context, model, B, A, 1, 0, CMPLX(0.0, 0.5)));
-    TRY(sv_model_add_hop(context, model, A, A, 0, 1, 0.5));
-    TRY(sv_model_add_hop(context, model, B, B, 0, 1, -0.5));
-    TRY(sv_model_add_hop(context, model, A, B, 0, 1, -0.5));
-    TRY(sv_model_add_hop(context, model, B, A, 0, 1, 0.5));
-    TRY(sv_model_add_field(context, model, "mass", m));
-    TRY(sv_model_add_field_term(context, model, A, A, 1.0));
-    TRY(sv_model_add_field_term(context, model, B, B, -1.0));
-    return SV_OK;
-}
-
-/* D. R. Hofstadter, Phys. Rev. B 14, 2239 (1976). */
-static sv_status make_hofstadter(sv_context *context, const sv_value *values, sv_model *model)
-{
-    const double a1[2] = {1.0, 0.0}, a2[2] = {0.0, 1.0};
-    TRY(sv_model_begin(context, "hofstadter", a1, a2, model));
-    TRY(sv_model_add_orbital(context, model, "a", 0.0, 0.0, 0.0));
-    TRY(sv_model_add_hop(context, model, 0, 0, 1, 0, -1.0));
-    TRY(sv_model_add_hop(context, model, 0, 0, 0, 1, -1.0));
-    TRY(sv_model_set_flux(context, model, (int)values[0].integer[0], (int)values[0].integer[1]));
-    return SV_OK;
-}
-
 static const struct {
     const char *name;
     sv_status (*make)(sv_context *context, const sv_value *values, sv_model *model);
 } builders[] = {
-    {"haldane", make_haldane},
-    {"qi_wu_zhang", make_qi_wu_zhang},
-    {"hofstadter", make_hofstadter},
+    {"haldane", sv_make_haldane},       {"qi_wu_zhang", sv_make_qi_wu_zhang},
+    {"hofstadter", sv_make_hofstadter}, {"kagome", sv_make_kagome},
+    {"kane_mele", sv_make_kane_mele},   {"magnetic_film", sv_make_magnetic_film},
 };
 
 sv_status sv_model_make(sv_context *context, const sv_kind *kind, const sv_value *values,

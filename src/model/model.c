@@ -6,6 +6,8 @@
 #include <stdio.h>
 #include <string.h>
 
+enum { MOST_ORBITALS = 10000, MOST_HOPS = 4000000, FARTHEST_CELL = 1000 };
+
 /* Orbitals nearer than this share a position (lattice constants). */
 static const double SAME_POSITION = 1e-9;
 
@@ -41,8 +43,8 @@ sv_status sv_model_add_orbital(sv_context *context, sv_model *model, const char 
         return SV_FAIL(context, SV_INVALID_INPUT, "\"any\" stands for all orbitals");
     if (sv_model_find_orbital(model, name) >= 0)
         return SV_FAIL(context, SV_INVALID_INPUT, "two orbitals are named \"%s\"", name);
-    if (model->n_orbitals >= 1000)
-        return SV_FAIL(context, SV_INVALID_INPUT, "more than 1000 orbitals in a cell");
+    if (model->n_orbitals >= MOST_ORBITALS)
+        return SV_FAIL(context, SV_INVALID_INPUT, "more than %d orbitals in a cell", MOST_ORBITALS);
     sv_status status = sv_reserve(context, &model->orbitals, &model->orbital_capacity,
                                   model->n_orbitals + 1, sizeof *model->orbitals);
     if (status != SV_OK)
@@ -53,6 +55,25 @@ sv_status sv_model_add_orbital(sv_context *context, sv_model *model, const char 
     return SV_OK;
 }
 
+sv_status sv_model_set_spin(sv_context *context, sv_model *model, int orbital, int spin)
+{
+    if (orbital < 0 || orbital >= model->n_orbitals || (spin != 1 && spin != -1))
+        return SV_FAIL(context, SV_INVALID_INPUT, "spin %d of orbital %d: expected 1 or -1", spin,
+                       orbital);
+    model->orbitals[orbital].spin = spin;
+    return SV_OK;
+}
+
+bool sv_model_has_spin(const sv_model *model)
+{
+    for (int k = 0; k < model->n_orbitals; k++)
+        if (model->orbitals[k].spin == 0)
+            return false;
+    return model->n_orbitals > 0;
+}
+
+/* ------------------------------------------------------------------- hops */
+
 static bool same_hop(const sv_hop *hop, int from, int to, int i, int j)
 {
     bool forward = hop->from == from && hop->to == to && hop->shift[0] == i && hop->shift[1] == j;
@@ -61,28 +82,99 @@ static bool same_hop(const sv_hop *hop, int from, int to, int i, int j)
     return forward || backward;
 }
 
+/* One number for a hop and its conjugate, well mixed (finaliser of MurmurHash3, public domain). */
+static uint64_t hop_hash(int from, int to, int i, int j)
+{
+    bool turned = from > to || (from == to && (i < 0 || (i == 0 && j < 0)));
+    uint64_t key = (uint64_t)(turned ? to : from) * MOST_ORBITALS + (uint64_t)(turned ? from : to);
+    key = key * 4096 + (uint64_t)((turned ? -i : i) + 2048);
+    key = key * 4096 + (uint64_t)((turned ? -j : j) + 2048);
+    key = (key ^ (key >> 33)) * 0xff51afd7ed558ccdULL;
+    key = (key ^ (key >> 33)) * 0xc4ceb9fe1a85ec53ULL;
+    return key ^ (key >> 33);
+}
+
+/* Slot that holds the hop, or the empty one where it would go. */
+static sv_index find_slot(const sv_model *model, int from, int to, int i, int j)
+{
+    sv_index mask = model->n_hop_slots - 1;
+    sv_index slot = (sv_index)(hop_hash(from, to, i, j) & (uint64_t)mask);
+    while (model->hop_slots[slot] != 0 &&
+           !same_hop(&model->hops[model->hop_slots[slot] - 1], from, to, i, j))
+        slot = (slot + 1) & mask;
+    return slot;
+}
+
+int sv_model_find_hop(const sv_model *model, int from, int to, int shift_i, int shift_j)
+{
+    if (model->n_hop_slots == 0)
+        return -1;
+    return model->hop_slots[find_slot(model, from, to, shift_i, shift_j)] - 1;
+}
+
+/* Keeps at least half of the slots empty. */
+static sv_status grow_slots(sv_context *context, sv_model *model)
+{
+    if (2 * ((sv_index)model->n_hops + 1) <= model->n_hop_slots)
+        return SV_OK;
+    sv_index n = model->n_hop_slots == 0 ? 64 : 2 * model->n_hop_slots;
+    int32_t *slots = NULL;
+    sv_status status = sv_take(context, n, sizeof *slots, &slots);
+    if (status != SV_OK)
+        return status;
+    sv_give(context, model->hop_slots);
+    model->hop_slots = slots;
+    model->n_hop_slots = n;
+    for (int h = 0; h < model->n_hops; h++) {
+        const sv_hop *hop = &model->hops[h];
+        slots[find_slot(model, hop->from, hop->to, hop->shift[0], hop->shift[1])] = h + 1;
+    }
+    return SV_OK;
+}
+
+static sv_status check_hop(sv_context *context, const sv_model *model, const sv_hop *hop)
+{
+    const int far = FARTHEST_CELL, *shift = hop->shift;
+    if (hop->from < 0 || hop->to < 0 || hop->from >= model->n_orbitals ||
+        hop->to >= model->n_orbitals)
+        return SV_FAIL(context, SV_INVALID_INPUT, "a hop names an orbital that is not there");
+    if (shift[0] < -far || shift[0] > far || shift[1] < -far || shift[1] > far)
+        return SV_FAIL(context, SV_INVALID_INPUT, "a hop reaches farther than %d cells", far);
+    if (hop->from == hop->to && shift[0] == 0 && shift[1] == 0)
+        return SV_FAIL(context, SV_INVALID_INPUT,
+                       "a hop from an orbital to itself is an on-site energy; put it there");
+    if (sv_model_find_hop(model, hop->from, hop->to, shift[0], shift[1]) >= 0)
+        return SV_FAIL(context, SV_INVALID_INPUT,
+                       "the hop %s → %s, shift [%d, %d], is listed twice (its conjugate "
+                       "follows by itself)",
+                       model->orbitals[hop->from].name, model->orbitals[hop->to].name, shift[0],
+                       shift[1]);
+    if (model->n_hops >= MOST_HOPS)
+        return SV_FAIL(context, SV_INVALID_INPUT, "more than %d hops", MOST_HOPS);
+    return SV_OK;
+}
+
 sv_status sv_model_add_hop(sv_context *context, sv_model *model, int from, int to, int shift_i,
                            int shift_j, sv_complex amplitude)
 {
-    const int far = 1000;
-    if (from < 0 || to < 0 || from >= model->n_orbitals || to >= model->n_orbitals)
-        return SV_FAIL(context, SV_INVALID_INPUT, "a hop names an orbital that is not there");
-    if (shift_i < -far || shift_i > far || shift_j < -far || shift_j > far)
-        return SV_FAIL(context, SV_INVALID_INPUT, "a hop reaches farther than %d cells", far);
-    if (from == to && shift_i == 0 && shift_j == 0)
-        return SV_FAIL(context, SV_INVALID_INPUT,
-                       "a hop from an orbital to itself is an on-site energy; put it there");
-    for (int k = 0; k < model->n_hops; k++)
-        if (same_hop(&model->hops[k], from, to, shift_i, shift_j))
-            return SV_FAIL(context, SV_INVALID_INPUT,
-                           "the hop %s → %s, shift [%d, %d], is listed twice (its conjugate "
-                           "follows by itself)",
-                           model->orbitals[from].name, model->orbitals[to].name, shift_i, shift_j);
-    sv_status status = sv_reserve(context, &model->hops, &model->hop_capacity, model->n_hops + 1,
-                                  sizeof *model->hops);
+    const sv_hop hop = {from, to, {shift_i, shift_j}, amplitude};
+    sv_status status = check_hop(context, model, &hop);
+    if (status == SV_OK)
+        status = grow_slots(context, model);
+    if (status == SV_OK)
+        status = sv_reserve(context, &model->hops, &model->hop_capacity, model->n_hops + 1,
+                            sizeof *model->hops);
     if (status != SV_OK)
         return status;
-    model->hops[model->n_hops++] = (sv_hop){from, to, {shift_i, shift_j}, amplitude};
+    model->hop_slots[find_slot(model, from, to, shift_i, shift_j)] = model->n_hops + 1;
+    model->hops[model->n_hops++] = hop;
+    double size = cabs(amplitude);
+    if (from == to) {
+        model->orbitals[from].coupled += size + size;
+    } else {
+        model->orbitals[from].coupled += size;
+        model->orbitals[to].coupled += size;
+    }
     return SV_OK;
 }
 
@@ -119,6 +211,7 @@ void sv_model_free(sv_context *context, sv_model *model)
 {
     sv_give(context, model->orbitals);
     sv_give(context, model->hops);
+    sv_give(context, model->hop_slots);
     *model = (sv_model){.flux = {0, 1}};
 }
 
@@ -161,14 +254,8 @@ void sv_model_reduce(const sv_model *model, const double at[2], double ret_uv[2]
 double sv_model_norm_bound(const sv_model *model)
 {
     double bound = 0.0;
-    for (int k = 0; k < model->n_orbitals; k++) {
-        double sum = fabs(model->orbitals[k].onsite);
-        for (int h = 0; h < model->n_hops; h++) {
-            double size = cabs(model->hops[h].amplitude);
-            sum += (model->hops[h].from == k ? size : 0.0) + (model->hops[h].to == k ? size : 0.0);
-        }
-        bound = fmax(bound, sum);
-    }
+    for (int k = 0; k < model->n_orbitals; k++)
+        bound = fmax(bound, fabs(model->orbitals[k].onsite) + model->orbitals[k].coupled);
     return bound;
 }
 

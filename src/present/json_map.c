@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* One realisation as JSON. */
 #include <math.h>
+#include <string.h>
 
 #include "present_internal.h"
 
@@ -53,13 +54,17 @@ static json_t *make_value(sv_json *json, const sv_outcome *outcome)
     return object;
 }
 
-static json_t *make_window_mean(sv_json *json, const sv_outcome *outcome)
+static json_t *make_window_mean(sv_json *json, const char *name, const sv_outcome *outcome)
 {
     json_t *object = json_object();
     const bool resolved = outcome->verdict == SV_RESOLVED;
     sv_json_put_real(json, object, "window_mean", resolved ? outcome->value : (double)NAN);
     sv_json_put(json, object, "resolved", json_boolean(resolved));
     sv_json_put_integer(json, object, "window_cells", outcome->window_cells);
+    if (strcmp(name, "local_chern") != 0) {
+        put_known(json, object, sv_words_margin(name), outcome->margin);
+        return object;
+    }
     sv_json_put_real(json, object, "sum_over_sites", outcome->sum_over_sites);
     if (resolved && !isfinite(outcome->sum_over_sites))
         sv_json_put_text(json, object, "reason",
@@ -70,9 +75,10 @@ static json_t *make_window_mean(sv_json *json, const sv_outcome *outcome)
 
 static json_t *make_marker(sv_json *json, const sv_marker *marker, const sv_outcome *outcome)
 {
-    json_t *object = marker->is_index            ? make_index(json, marker->kind.name, outcome)
-                     : outcome->window_cells > 0 ? make_window_mean(json, outcome)
-                                                 : make_value(json, outcome);
+    json_t *object = marker->is_index ? make_index(json, marker->kind.name, outcome)
+                     : outcome->window_cells > 0
+                         ? make_window_mean(json, marker->kind.name, outcome)
+                         : make_value(json, outcome);
     if (outcome->verdict != SV_RESOLVED)
         sv_json_put_text(json, object, "reason", outcome->reason);
     if (outcome->verdict == SV_ABSENT || outcome->verdict == SV_FAILED)

@@ -14,6 +14,8 @@ static const struct {
     {"localizer", "localizer index", "gap", NULL},
     {"three_sector", "three-sector number", NULL, NULL},
     {"crosshair", "crosshair marker", NULL, NULL},
+    {"spin_chern", "spin Chern number", "spin_gap", NULL},
+    {"spin_bott", "spin Bott index", "spin_gap", "smallest_modulus"},
 };
 
 static int find_marker(const char *name)

@@ -2,6 +2,7 @@
 /* One realisation on a terminal. */
 #include <math.h>
 #include <stdio.h>
+#include <string.h>
 
 #include "present_internal.h"
 
@@ -35,11 +36,27 @@ static void print_window_mean(FILE *stream, const char *name, const sv_outcome *
     print_line(stream, "", text);
 }
 
-static void print_index(FILE *stream, const char *name, const sv_outcome *outcome)
+/* What the verdict of a marker of the spin hangs on. */
+static void print_spin_gap(FILE *stream, const sv_outcome *outcome)
+{
+    char text[100];
+    snprintf(text, sizeof text, "    P sz P has a gap of %.3g about zero", outcome->margin);
+    print_line(stream, "", text);
+}
+
+static bool is_of_spin(const sv_marker *marker)
+{
+    const char *margin = sv_words_margin(marker->kind.name);
+    return margin != NULL && strcmp(margin, "spin_gap") == 0;
+}
+
+static void print_index(FILE *stream, const char *name, const sv_outcome *outcome, bool of_spin)
 {
     char text[256];
     snprintf(text, sizeof text, "%lld", (long long)outcome->index);
     print_line(stream, name, text);
+    if (of_spin)
+        return;
     if (isfinite(outcome->weakest))
         snprintf(text, sizeof text, "    %.3g rad from pi; smallest modulus %.3g", outcome->margin,
                  outcome->weakest);
@@ -77,10 +94,12 @@ static void print_outcome(FILE *stream, const sv_marker *marker, const sv_outcom
         snprintf(text, sizeof text, "%s", outcome->reason);
         print_line(stream, "", text);
     } else if (marker->is_index) {
-        print_index(stream, name, outcome);
+        print_index(stream, name, outcome, is_of_spin(marker));
     } else {
         print_window_mean(stream, name, outcome);
     }
+    if (outcome->verdict == SV_RESOLVED && is_of_spin(marker) && isfinite(outcome->margin))
+        print_spin_gap(stream, outcome);
     if (outcome->verdict == SV_RESOLVED || outcome->verdict == SV_UNRESOLVED)
         print_levels(stream, outcome);
 }

@@ -7,7 +7,21 @@
 
 #include <jansson.h>
 
-static int print_json(session *s, const forecast *f)
+/* null where the model has no length. */
+static json_t *film_json(const film_length *film)
+{
+    if (!film->known)
+        return json_null();
+    json_t *object = json_pack("{s:f, s:f, s:f, s:b}", "hbar_velocity_ev_nm", film->velocity,
+                               "gap_ev", film->gap, "size_nm", film->size, "enough", film->enough);
+    if (object != NULL && film->gap > 0.0) {
+        json_object_set_new(object, "xi_nm", json_real(film->length));
+        json_object_set_new(object, "size_in_xi", json_real(film->lengths));
+    }
+    return object;
+}
+
+static int print_json(session *s, const forecast *f, const film_length *film)
 {
     json_t *root = json_pack(
         "{s:i, s:s, s:s, s:s, s:{s:I, s:i, s:I, s:s, s:f, s:f, s:i, s:f, s:f}}", "selvedge", 1,
@@ -18,6 +32,10 @@ static int print_json(session *s, const forecast *f)
         "seconds_per_realisation", f->seconds_per_realisation, "seconds", f->seconds);
     if (root == NULL)
         return sv_status_exit_code(SV_NO_MEMORY);
+    json_t *preset = NULL;
+    if (presets_json(s->context, s->sheet, &preset) == SV_OK)
+        json_object_set_new(root, "preset", preset);
+    json_object_set_new(root, "film", film_json(film));
     json_dumpf(root, stdout, JSON_INDENT(1));
     fputc('\n', stdout);
     json_decref(root);
@@ -46,16 +64,19 @@ int run_check(sv_context *context, const options *o)
 {
     session s = {0};
     forecast f;
+    film_length film = {0};
     int code = 0;
     sv_status status = session_open(context, o, o->files[0], false, true, &s);
     if (status == SV_OK)
         status = session_plan(&s, false);
     if (status == SV_OK)
         status = session_forecast(&s, true, &f);
+    if (status == SV_OK)
+        status = film_measure(&s, &film);
     if (status != SV_OK) {
         code = fail_exit(context, status);
     } else if (o->json) {
-        code = print_json(&s, &f);
+        code = print_json(&s, &f, &film);
     } else {
         fputs(s.base.resolved, stdout);
         char *plans = NULL;
@@ -65,7 +86,11 @@ int run_check(sv_context *context, const options *o)
         printf("#\n# forecast\n");
         print_forecast(&f, &s, "#   ", stdout);
         print_film(&s);
+        film_print(&film, s.n_points, stdout);
+        status = presets_print_sources(context, s.sheet, stdout);
+        code = status == SV_OK ? code : fail_exit(context, status);
     }
+    film_warn(context, &film);
     session_close(&s);
     return code;
 }

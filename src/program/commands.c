@@ -20,7 +20,7 @@ static const command commands[] = {
     {"export", "SHEET", "writes the Hamiltonian and the sites of one realisation",
      SHEET_OPTIONS "kHLF", 1, 1, run_export},
     {"info", "", "versions, BLAS, arithmetic kernel, threads", "J", 0, 0, run_info},
-    {"help", "[COMMAND|keys]", "help on a command, or on the keys of a sheet", "", 0, 1, run_help},
+    {"help", "[COMMAND|keys|presets]", "help on a command, the keys of a sheet, or material presets", "", 0, 1, run_help},
 };
 
 const command *command_table(int *ret_count)
@@ -71,7 +71,6 @@ int run_info(sv_context *context, const options *o)
 
 int run_help(sv_context *context, const options *o)
 {
-    (void)context;
     int count;
     if (o->n_files == 0) {
         print_help(NULL, stdout);
@@ -84,6 +83,10 @@ int run_help(sv_context *context, const options *o)
             kinds[k] = markers[k].kind;
         sv_sheet_print_keys(kinds, count, stdout);
         return 0;
+    }
+    if (strcmp(o->files[0], "presets") == 0) {
+        sv_status status = presets_print(context);
+        return status == SV_OK ? 0 : fail_exit(context, status);
     }
     const command *table = command_table(&count);
     for (int k = 0; k < count; k++) {

@@ -50,12 +50,25 @@ static void boundaries_needed(const session *s, const sv_setup *setup, bool *ope
     }
 }
 
+/* Does a marker of the open flake need a basis of the occupied space? */
+static bool needs_open_basis(const sv_setup *setup)
+{
+    int count;
+    const sv_marker *table = sv_marker_table(&count);
+    for (int k = 0; k < setup->n_markers; k++) {
+        const sv_marker *marker = &table[setup->markers[k].kind];
+        if (marker->boundary == SV_OPEN_COPY && marker->needs_occupied_basis)
+            return true;
+    }
+    return false;
+}
+
 /* The rational engine alone; a torus needs the dense one beside it. */
 static bool is_rational(const session *s, const sv_setup *setup)
 {
     bool open, closed;
     boundaries_needed(s, setup, &open, &closed);
-    return !closed && strcmp(setup->engine, "rational") == 0;
+    return !closed && !needs_open_basis(setup) && strcmp(setup->engine, "rational") == 0;
 }
 
 /* Does the sheet force the dense engine, whatever the size? */
@@ -64,7 +77,8 @@ static bool needs_dense(const session *s, const sv_setup *setup, int64_t sites)
     const int64_t dense_by_choice = 12000;
     bool open, closed;
     boundaries_needed(s, setup, &open, &closed);
-    return closed || setup->occupation.by != SV_BY_ENERGY || strcmp(setup->engine, "dense") == 0 ||
+    return closed || needs_open_basis(setup) || setup->occupation.by != SV_BY_ENERGY ||
+           strcmp(setup->engine, "dense") == 0 ||
            (strcmp(setup->engine, "auto") == 0 && sites <= dense_by_choice);
 }
 
@@ -245,7 +259,9 @@ static double point_seconds(session *s, const point *p, const calibration *c)
     bool open, closed;
     boundaries_needed(s, &p->setup, &open, &closed);
     double sites = (double)p->open.n_sites, seconds = 0.0;
-    if (open && p->problem.solve.engine == SV_ENGINE_CHEBYSHEV)
+    if (open && needs_open_basis(&p->setup)) /* the split by spin costs as much again */
+        seconds += 2.0 * dense_seconds(sites, c);
+    else if (open && p->problem.solve.engine == SV_ENGINE_CHEBYSHEV)
         seconds += chebyshev_seconds(s, p, c);
     else if (open && p->problem.solve.engine == SV_ENGINE_RATIONAL)
         seconds += rational_seconds(s, p, c);

@@ -3,6 +3,8 @@
 #ifndef SELVEDGE_PROGRAM_INTERNAL_H
 #define SELVEDGE_PROGRAM_INTERNAL_H
 
+#include <jansson.h>
+
 #include <selvedge/present.h>
 #include <selvedge/sheet.h>
 
@@ -140,5 +142,29 @@ int run_report(sv_context *context, const options *o);
 int run_export(sv_context *context, const options *o);
 int run_info(sv_context *context, const options *o);
 int run_help(sv_context *context, const options *o);
+
+/* ------------------------------------------------------------- film.c */
+
+/* Length of a model with light states; eV and nm. */
+typedef struct film_length {
+    bool known;    /* false: the model has no velocity */
+    int32_t point; /* of the sweep: the one with the fewest lengths */
+    double velocity, gap, length, size;
+    double lengths; /* size / length */
+    bool enough;
+} film_length;
+
+sv_status film_measure(session *s, film_length *ret);
+void film_print(const film_length *film, int32_t n_points, FILE *stream);
+void film_warn(sv_context *context, const film_length *film);
+
+/* ---------------------------------------------------------- presets.c */
+
+/* The list for `help presets`. */
+sv_status presets_print(sv_context *context);
+/* Comment lines that say where the values of the sheet's preset come from; none without one. */
+sv_status presets_print_sources(sv_context *context, const sv_sheet *sheet, FILE *stream);
+/* The same as JSON; null without a preset. */
+sv_status presets_json(sv_context *context, const sv_sheet *sheet, json_t **ret_object);
 
 #endif

@@ -15,6 +15,7 @@ static const sv_key orbital_keys[] = {
      .high = 1e6,
      .required = true,
      .doc = "[x, y] in the cell"},
+    {.name = "spin", .type = SV_KEY_CHOICE, .choices = "up down", .doc = "for markers of the spin"},
 };
 static const sv_key hop_keys[] = {
     {.name = "from", .type = SV_KEY_TEXT, .required = true, .doc = "orbital"},
@@ -30,7 +31,7 @@ static const sv_key hop_keys[] = {
      .required = true,
      .doc = "[re, im] or a number: <to, R + shift|H|from, R>"},
 };
-static const sv_block orbital_block = {.name = "orbital", .keys = orbital_keys, .n_keys = 2};
+static const sv_block orbital_block = {.name = "orbital", .keys = orbital_keys, .n_keys = 3};
 static const sv_block hop_block = {.name = "hop", .keys = hop_keys, .n_keys = 4};
 enum { MAX_HOPS = 20000 };
 static const sv_key vector_key = {.name = "vectors",
@@ -82,7 +83,11 @@ static bool add_orbital(sv_reader *reader, const sv_node *item, sv_index number,
     const sv_node *node = sv_node_get(onsite, name, NULL);
     if (node != NULL && !sv_real_read(reader, &energy_key, "model.onsite", node, &energy))
         return false;
+    const char *spin = section.values[2].text;
     sv_status status = sv_model_add_orbital(reader->context, model, name, at[0], at[1], energy);
+    if (status == SV_OK && spin != NULL)
+        status = sv_model_set_spin(reader->context, model, model->n_orbitals - 1,
+                                   strcmp(spin, "up") == 0 ? 1 : -1);
     return status == SV_OK || sv_report_status(reader, sv_section_node(&section, "name"), status);
 }
 
@@ -164,18 +169,48 @@ static bool add_hops(sv_reader *reader, const sv_section *section, sv_model *mod
     bool good = true;
     if (list->kind != SV_NODE_LIST)
         return sv_node_is_null(list) ||
-               sv_report(reader, list, NULL, "model.hops: expected a list of hops");
+               sv_report(reader, list, "a table of hops is named by hops_file",
+                         "model.hops: expected a list of hops");
     if (list->count > MAX_HOPS)
-        return sv_report(reader, list, NULL, "model.hops has more than %d entries", MAX_HOPS);
+        return sv_report(reader, list, "put them into a table and name it by hops_file",
+                         "model.hops has more than %d entries", MAX_HOPS);
     for (sv_index i = 0; i < list->count && reader->status == SV_OK; i++)
         good = add_hop(reader, list->items[i], i, model) && good;
     return good;
+}
+
+/* The table of hops; a fault is shown in the file. */
+static bool read_hops_file(sv_reader *reader, const sv_section *section, sv_model *model)
+{
+    const sv_value *value = sv_section_value(section, "hops_file");
+    bool has_unit = false;
+    sv_table_fault fault = {0};
+    if (!value->present)
+        return true;
+    const sv_node *node = sv_section_node(section, "hops_file");
+    const sv_cached_file *file = sv_file_find(reader->sheet, value->text);
+    if (file == NULL)
+        return sv_report_status(
+            reader, node, SV_FAIL(reader->context, SV_INTERNAL, "%s is not loaded", value->text));
+    sv_status status =
+        sv_model_read_hops(reader->context, model, file->source.text, file->source.size,
+                           reader->energy_unit, &has_unit, &fault);
+    if (has_unit && reader->first_energy == NULL)
+        reader->first_energy = node;
+    if (status != SV_INVALID_INPUT || fault.line == 0)
+        return status == SV_OK || sv_report_status(reader, node, status);
+    sv_place place = {&file->source, fault.line, fault.column, 1};
+    return sv_report_at(reader, &place, fault.hint[0] != '\0' ? fault.hint : NULL, "%s",
+                        fault.message);
 }
 
 bool sv_custom_read(sv_reader *reader, const sv_section *section, sv_model *model)
 {
     if (!begin(reader, section, model) || !add_orbitals(reader, section, model) ||
         !add_hops(reader, section, model))
+        return false;
+    reader->listed_hops = model->n_hops;
+    if (!read_hops_file(reader, section, model))
         return false;
     const int64_t *flux = sv_section_value(section, "flux")->integer;
     sv_status status = sv_model_set_flux(reader->context, model, (int)flux[0], (int)flux[1]);

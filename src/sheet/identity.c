@@ -7,8 +7,9 @@
 #include <stdlib.h>
 #include <string.h>
 
-/* These change no number of a realisation: a run may be continued with other values. */
-static const char EXEMPT_KEYS[] = "ensemble.realisations ensemble.threads";
+/* These change no number of a realisation: a run may be continued with other values. What a preset
+ * gives counts by its values. */
+static const char EXEMPT_KEYS[] = "ensemble.realisations ensemble.threads model.preset";
 static const char EXEMPT_BLOCKS[] = "ensemble.stop";
 
 static bool is_exempt(const sv_section *section, const char *key)
@@ -147,7 +148,7 @@ static void add_axis(writer *w, const sv_sweep_axis *axis, int number)
     end_line(w);
 }
 
-/* The model as built says what the trees of a custom one say. */
+/* The model as built says what the trees of a custom one say; a table of hops counts by its digest. */
 static void add_custom(writer *w, const sv_model *model)
 {
     for (int i = 0; i < 2; i++) {
@@ -163,9 +164,11 @@ static void add_custom(writer *w, const sv_model *model)
         add_pair(w, orbital->at);
         sv_text_add(&w->line, " ");
         add_real(w, orbital->onsite);
+        if (orbital->spin != 0)
+            sv_text_add(&w->line, orbital->spin > 0 ? " up" : " down");
         end_line(w);
     }
-    for (int i = 0; i < model->n_hops; i++) {
+    for (int i = 0; i < w->reader->listed_hops; i++) {
         const sv_hop *hop = &model->hops[i];
         double parts[2] = {creal(hop->amplitude), cimag(hop->amplitude)};
         sv_text_add(&w->line, "model.hops.%05d = %d %d [%d, %d] ", i, hop->from, hop->to,

@@ -50,13 +50,14 @@ static bool convert(sv_reader *reader, const sv_quantity *quantity, const char *
         return sv_report(
             reader, node, "give model.lattice_constant, as in `lattice_constant: 0.43 nm`",
             "%s: %s with a unit needs the lattice constant", path, sv_dimension_name(dimension));
-    if (dimension == SV_DIM_ENERGY && reader->first_energy == NULL)
+    bool is_energy = dimension == SV_DIM_ENERGY || dimension == SV_DIM_ENERGY_LENGTH ||
+                     dimension == SV_DIM_ENERGY_AREA;
+    if (is_energy && reader->first_energy == NULL)
         reader->first_energy = node;
-    *ret_value = dimension == SV_DIM_LENGTH    ? quantity->value / a
-                 : dimension == SV_DIM_DENSITY ? quantity->value * a * a
-                 : dimension == SV_DIM_ENERGY && reader->energy_unit > 0.0
-                     ? quantity->value / reader->energy_unit
-                     : quantity->value;
+    *ret_value = dimension == SV_DIM_LENGTH               ? quantity->value / a
+                 : dimension == SV_DIM_DENSITY            ? quantity->value * a * a
+                 : is_energy && reader->energy_unit > 0.0 ? quantity->value / reader->energy_unit
+                                                          : quantity->value;
     return true;
 }
 
@@ -80,7 +81,8 @@ bool sv_number_read(sv_reader *reader, sv_dimension dimension, const char *path,
     return true;
 }
 
-/* The lattice constant and the energy unit give the scale: in nm and eV, never bare. */
+/* The lattice constant and the energy unit give the scale: in nm and eV, never bare; a grid may be,
+ * since its model is in nm. */
 static bool read_scale(sv_reader *reader, const sv_key *key, const char *path, const sv_node *node,
                        double *ret_value)
 {
@@ -93,7 +95,7 @@ static bool read_scale(sv_reader *reader, const sv_key *key, const char *path, c
         return report_quantity(reader, key->dimension, path, node, result, &quantity);
     sv_unit_list(key->dimension, units, sizeof units);
     snprintf(hint, sizeof hint, "add one of: %s", units);
-    if (!quantity.has_unit)
+    if (!quantity.has_unit && !sv_schema_is_grid(key))
         return sv_report(reader, node, hint, "%s needs a unit, got %.60s", path, node->text);
     *ret_value = quantity.value;
     return true;

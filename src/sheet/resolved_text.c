@@ -34,6 +34,10 @@ static const char *unit_words(sv_dimension dimension)
         return " rad";
     case SV_DIM_TEMPERATURE:
         return " K";
+    case SV_DIM_ENERGY_LENGTH:
+        return " energy units x nm";
+    case SV_DIM_ENERGY_AREA:
+        return " energy units x nm^2";
     case SV_DIM_NONE:
         break;
     }
@@ -148,6 +152,12 @@ static bool is_implied_unit(const writer *w, const sv_section *section, int i)
            !section->values[i].present && w->setup->energy_unit > 0.0;
 }
 
+/* Its values are written out, so that a later version of the preset changes nothing. */
+static bool is_preset(const sv_key *key)
+{
+    return key->type == SV_KEY_TEXT && strcmp(key->name, "preset") == 0;
+}
+
 static void add_field(writer *w, const sv_section *section, int i, int depth, bool *first)
 {
     bool implied = is_implied_unit(w, section, i);
@@ -157,9 +167,15 @@ static void add_field(writer *w, const sv_section *section, int i, int depth, bo
     bool dash = *first && section->entry >= 0;
     *first = false;
     add_indent(w, dash ? depth - 1 : depth);
+    if (is_preset(section->fields[i].key)) {
+        sv_text_add(&w->text, "# preset: %s\n", section->values[i].text);
+        return;
+    }
     sv_text_add(&w->text, "%s%s:", dash ? "- " : "", section->fields[i].key->name);
     if (implied)
-        sv_text_add(&w->text, " 1 eV  # since energies carry units");
+        sv_text_add(&w->text, " 1 eV  # %s",
+                    w->setup->model.velocity > 0.0 ? "of this model"
+                                                   : "since energies carry units");
     else
         add_value(w, section, i, depth);
     add_comment(w, section, i);

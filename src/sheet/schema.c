@@ -33,6 +33,9 @@ static const sv_key model_keys[] = {
      .low_open = true,
      .high = DBL_MAX,
      .doc = "with a unit: what a bare 1 is worth (1 eV once any energy carries a unit)"},
+    {.name = "preset",
+     .type = SV_KEY_TEXT,
+     .doc = "a material that gives the keys not written here: selvedge help presets"},
 };
 
 static const sv_key flake_keys[] = {
@@ -216,5 +219,10 @@ const sv_block *sv_schema_child(const sv_block *parent, const sv_block *previous
 
 bool sv_schema_is_scale(const sv_key *key)
 {
-    return key == &model_keys[1] || key == &model_keys[2];
+    return key == &model_keys[1] || key == &model_keys[2] || sv_schema_is_grid(key);
+}
+
+bool sv_schema_is_grid(const sv_key *key)
+{
+    return key->dimension == SV_DIM_LENGTH && strcmp(key->name, "grid") == 0;
 }

@@ -253,9 +253,12 @@ static void note_scale(sv_reader *reader, const sv_section *section, int i)
     const sv_key *key = section->fields[i].key;
     if (!section->values[i].present || !sv_schema_is_scale(key))
         return;
-    if (key->dimension == SV_DIM_LENGTH)
+    if (key->dimension == SV_DIM_LENGTH) {
         reader->lattice_constant = section->values[i].real[0];
-    else
+        /* A model on a grid is in eV and nm. */
+        if (sv_schema_is_grid(key) && reader->energy_unit <= 0.0)
+            reader->energy_unit = 1.0;
+    } else
         reader->energy_unit = section->values[i].real[0];
 }
 

@@ -13,7 +13,9 @@ bool sv_setup_model(sv_reader *reader, sv_setup *setup)
         return sv_custom_read(reader, section, &setup->model);
     sv_status status =
         sv_model_make(reader->context, section->kind, section->values + n_common, &setup->model);
-    return status == SV_OK || sv_report_status(reader, sv_section_node(section, "name"), status);
+    /* What the sheet itself says is shown, not the text of its preset. */
+    const char *place = sv_section_value(section, "preset")->present ? "preset" : "name";
+    return status == SV_OK || sv_report_status(reader, sv_section_node(section, place), status);
 }
 
 static bool use_occupation(sv_reader *reader, sv_setup *setup)

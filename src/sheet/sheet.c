@@ -68,6 +68,8 @@ static sv_status read_tree(sv_context *context, sv_sheet *sheet, const sv_sheet_
     sv_reader reader = start_reader(context, sheet, &sheet->arena, diagnostics);
     for (int i = 0; i < options->n_overrides && reader.status == SV_OK; i++)
         sv_override_apply(&reader, options->overrides[i], &sheet->root);
+    if (sv_reader_good(&reader))
+        sv_preset_expand(&reader, &sheet->root);
     return finish_reader(&reader);
 }
 

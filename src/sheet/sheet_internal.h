@@ -162,6 +162,8 @@ const sv_block *sv_schema_find(const char *name);
 const sv_block *sv_schema_child(const sv_block *parent, const sv_block *previous);
 /* Keys that give the scales themselves: a unit is required and kept. */
 bool sv_schema_is_scale(const sv_key *key);
+/* The spacing of a model on a grid of its own: its lattice constant, in nm with or without a unit. */
+bool sv_schema_is_grid(const sv_key *key);
 
 /* ------------------------------------------------------------ reader.c */
 
@@ -227,6 +229,7 @@ typedef struct sv_reader {
     bool geometry;       /* build the flake to check it */
     double lattice_constant, energy_unit;
     const sv_node *first_energy; /* the first energy written with a unit */
+    int listed_hops;             /* hops of a custom model that the sheet itself lists */
     sv_section *sections, *last_section;
     struct sv_setup *setup; /* receives the files as they are met */
 } sv_reader;
@@ -335,6 +338,12 @@ bool sv_path_matches(const sv_section *section, const char *key, const char *pat
 
 /* Sets `path=value` in *root. */
 bool sv_override_apply(sv_reader *reader, const char *text, const sv_node **root);
+
+/* ----------------------------------------------------------- presets.c */
+
+extern const char sv_presets_text[]; /* data/presets.yaml, made at build time */
+/* Fills the model of *root with what its preset says; nothing without one. */
+bool sv_preset_expand(sv_reader *reader, const sv_node **root);
 
 /* ------------------------------------------------------------- sweep.c */
 

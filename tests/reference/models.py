@@ -181,7 +181,131 @@ def hofstadter_bloch(k1, k2, p, q):
     return matrix
 
 
+# ------------------------------------------------------------------------- kagome
+
+KAGOME_ORBITALS = np.array([[0.0, 0.0], HONEYCOMB[0] / 2.0, HONEYCOMB[1] / 2.0])
+
+
+def translations(n1, n2, vectors, periodic):
+    """The lattice translations of a torus that can bring a neighbour near, or only the identity."""
+    if not periodic:
+        return [(0.0, 0.0)]
+    return [p * n1 * vectors[0] + q * n2 * vectors[1]
+            for p, q in itertools.product((-1, 0, 1), repeat=2)]
+
+
+def kagome(n1, n2, t=1.0, phi=0.0, periodic=False):
+    """Parallelogram of n1×n2 cells, from positions: ⟨r'|H|r⟩ = t e^{iφ} when the third corner of the
+    triangle of the hop lies to its left (counter-clockwise), t e^{−iφ} when it lies to its right."""
+    sites = site_table(rectangle(n1, n2), KAGOME_ORBITALS, HONEYCOMB)
+    points = np.stack([sites["x"], sites["y"]], axis=1)
+    hamiltonian = np.zeros((len(sites), len(sites)), dtype=complex)
+    # Sites lie at half lattice vectors, all but those at odd multiples along both.
+    for image in translations(n1, n2, HONEYCOMB, periodic):
+        step = points[None, :, :] + np.asarray(image) - points[:, None, :]
+        for origin, target in np.argwhere(np.abs(np.hypot(*step.transpose(2, 0, 1)) - 0.5) < 1e-6):
+            across = points[origin] + rotate(step[origin, target], 60.0)
+            u, v = np.linalg.solve(HONEYCOMB.T, across)
+            left = not (round(2 * u) % 2 == 1 and round(2 * v) % 2 == 1)
+            hamiltonian[target, origin] += t * np.exp(1j * phi * (1 if left else -1))
+    return hamiltonian, sites
+
+
+def kagome_bloch(k1, k2, t=1.0, phi=0.0):
+    """a → b → c → a within a cell and over the cells next to it."""
+    hop = t * np.exp(1j * phi)
+    matrix = np.zeros((3, 3), dtype=complex)
+    matrix[1, 0] = hop * (1.0 + np.exp(1j * k1))
+    matrix[2, 1] = hop * (1.0 + np.exp(-1j * (k1 - k2)))
+    matrix[0, 2] = hop * (1.0 + np.exp(-1j * k2))
+    return matrix + matrix.conj().T
+
+
+# ---------------------------------------------------------------------- Kane, Mele
+
+def with_spin(sites):
+    """Every site twice: up, then down."""
+    doubled = np.repeat(sites, 2)
+    doubled["orbital"] = 2 * doubled["orbital"] + np.arange(len(doubled)) % 2
+    return doubled
+
+
+def kane_mele(n1, n2, t1=1.0, so=0.1, rashba=0.0, mass=0.0, periodic=False):
+    """Haldane models of opposite phase for the two spins, and ⟨r'|H|r⟩ = iλ (sx dy − sy dx) between
+    nearest neighbours, d the unit vector of the hop (Kane, Mele, PRL 95, 226801 (2005))."""
+    sites = site_table(rectangle(n1, n2), HONEYCOMB_ORBITALS, HONEYCOMB)
+    images = translations(n1, n2, HONEYCOMB, periodic)
+    up, down = (haldane_from_sites(sites, t1, so, sign * np.pi / 2.0, mass, images)
+                for sign in (1.0, -1.0))
+    hamiltonian = np.kron(up, np.diag([1.0, 0.0])) + np.kron(down, np.diag([0.0, 1.0]))
+    points = np.stack([sites["x"], sites["y"]], axis=1)
+    for image in images:
+        step = points[None, :, :] + np.asarray(image) - points[:, None, :]
+        near = np.abs(np.hypot(*step.transpose(2, 0, 1)) - 1.0 / np.sqrt(3.0)) < 1e-6
+        for origin, target in np.argwhere(near):
+            dx, dy = step[origin, target] * np.sqrt(3.0)
+            block = 1j * rashba * (PAULI_X * dy - PAULI_Y * dx)
+            hamiltonian[2 * target:2 * target + 2, 2 * origin:2 * origin + 2] += block
+    return hamiltonian, with_spin(sites)
+
+
+def kane_mele_bloch(k1, k2, t1=1.0, so=0.1, rashba=0.0, mass=0.0):
+    """Orbitals A_up, A_down, B_up, B_down."""
+    up = haldane_bloch(k1, k2, t1, so, np.pi / 2.0, mass)
+    down = haldane_bloch(k1, k2, t1, so, -np.pi / 2.0, mass)
+    matrix = np.kron(up, np.diag([1.0, 0.0])) + np.kron(down, np.diag([0.0, 1.0]))
+    nearest = HONEYCOMB_ORBITALS[1] * np.sqrt(3.0)
+    for phase, angle in ((1.0, 0.0), (np.exp(1j * k1), 120.0), (np.exp(1j * k2), 240.0)):
+        dx, dy = rotate(nearest, angle)
+        block = 1j * rashba * (PAULI_X * dy - PAULI_Y * dx) * phase
+        matrix[2:, :2] += block
+        matrix[:2, 2:] += block.conj().T
+    return matrix
+
+
+# ------------------------------------------------------------------- magnetic film
+
+def magnetic_film_bloch(k1, k2, grid, velocity, m0, m1, exchange):
+    """H = (v/d) (sin ky σx − sin kx σy) τz + m τx + g σz with σ inner (top_up, top_down, bottom_up,
+    bottom_down), m = m0 + m1 K/d² + w K²/16, K = 4 − 2 cos kx − 2 cos ky: R. Yu et al., Science 329,
+    61 (2010) on a grid of spacing d; w lifts the corners of the zone to v/d where m1 does not."""
+    missing = max(0.0, velocity / grid - 4.0 * abs(m1) / grid**2)
+    lattice = 4.0 - 2.0 * np.cos(k1) - 2.0 * np.cos(k2)
+    mass = m0 + m1 / grid**2 * lattice + (-missing if m1 < 0 else missing) * lattice**2 / 16.0
+    kinetic = velocity / grid * (np.sin(k2) * PAULI_X - np.sin(k1) * PAULI_Y)
+    return (np.kron(PAULI_Z, kinetic) + mass * np.kron(PAULI_X, np.eye(2))
+            + exchange * np.kron(np.eye(2), PAULI_Z))
+
+
+def magnetic_film(n1, n2, grid, velocity, m0, m1, exchange, periodic=False):
+    """Flake of n1×n2 points; the hops are the Fourier coefficients of the Bloch matrix."""
+    sites = site_table(rectangle(n1, n2), np.zeros((4, 2)), SQUARE)
+    angles = 2.0 * np.pi * np.arange(8) / 8
+    shifts = list(itertools.product(range(-2, 3), repeat=2))
+    blocks = {s: sum(magnetic_film_bloch(a, b, grid, velocity, m0, m1, exchange)
+                     * np.exp(1j * (a * s[0] + b * s[1])) for a in angles for b in angles) / 64.0
+              for s in shifts}
+    hamiltonian = np.zeros((4 * n1 * n2, 4 * n1 * n2), dtype=complex)
+    for (i, j), shift in itertools.product(rectangle(n1, n2), shifts):
+        to_i, to_j = i + shift[0], j + shift[1]
+        if not periodic and not (0 <= to_i < n1 and 0 <= to_j < n2):
+            continue
+        here, there = 4 * (i * n2 + j), 4 * ((to_i % n1) * n2 + to_j % n2)
+        hamiltonian[there:there + 4, here:here + 4] += blocks[shift]
+    return hamiltonian, sites
+
+
 # ------------------------------------------------------------------- Chern number
+
+def spin_part(bloch, occupied, spins, sign):
+    """k → the occupied states of one sign of P sz P as the lowest levels of a matrix."""
+    def matrix(k1, k2):
+        states = np.linalg.eigh(bloch(k1, k2))[1][:, :occupied]
+        values, vectors = np.linalg.eigh(states.conj().T @ (spins[:, None] * states))
+        half = states @ vectors[:, sign * values > 0.0]
+        return -half @ half.conj().T
+    return matrix
+
 
 def chern_by_links(bloch, occupied, grid=24):
     """Chern number of the lowest `occupied` bands from link variables.

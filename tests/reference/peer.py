@@ -103,6 +103,15 @@ def bott_without_log(states, x, y, torus):
     return np.imag(np.trace(v @ u @ v.conj().T @ u.conj().T)) / (2.0 * np.pi)
 
 
+def spin_halves(states, spins):
+    """Bases of the halves of the occupied space with positive and negative P sz P, and its gap about
+    zero (E. Prodan, PRB 80, 125327 (2009))."""
+    values, vectors = np.linalg.eigh(states.conj().T @ (spins[:, None] * states))
+    down = np.count_nonzero(values < 0.0)
+    halves = states @ vectors[:, down:], states @ vectors[:, :down]
+    return halves, values[down] - values[down - 1]
+
+
 def main():
     parser = argparse.ArgumentParser()
     parser.add_argument("matrix")
