@@ -31,6 +31,11 @@ static const table_row rows[] = {
     {"haldane", {1.0, 0.2, M_PI / 2, 0.2}, 1, 14, false},
     {"haldane", {1.0, 0.2, -1.3, 0.0}, 1, 14, false},
     {"haldane", {1.0, 0.1, M_PI / 2, 1.6}, 1, 14, true},
+    {"kagome", {1.0, 0.5}, 1, 12, false},
+    {"kagome", {1.0, -0.5}, 1, 12, false},
+    {"kane_mele", {1.0, 0.15, 0.1, 0.2}, 2, 10, true},
+    {"magnetic_film", {1.0, 1.0, 0.0, 0.5, 1.0}, 2, 12, false},
+    {"magnetic_film", {1.0, 1.0, 0.0, 0.5, -1.0}, 2, 12, false},
     {"hofstadter", {1, 4}, 1, 20, false},
     {"hofstadter", {1, 3}, 2, 21, false},
 };
