@@ -161,8 +161,34 @@ SV_API sv_index sv_flake_nearest(const sv_flake *flake, const double at[2], int 
 
 /* ---------------------------------------------------------------- disorder */
 
-typedef enum sv_disorder_type { SV_DISORDER_VACANCIES, SV_DISORDER_ONSITE } sv_disorder_type;
-typedef enum sv_distribution { SV_BOX, SV_GAUSSIAN, SV_BINARY } sv_distribution;
+typedef enum sv_disorder_type {
+    SV_DISORDER_VACANCIES,
+    SV_DISORDER_ONSITE,
+    SV_DISORDER_MASS,
+    SV_DISORDER_HOPPING,
+    SV_DISORDER_FLUX,
+    SV_DISORDER_ADATOMS,
+    SV_DISORDER_CRACKS,
+    SV_DISORDER_DOMAINS,
+    SV_DISORDER_ROUGHNESS,
+    SV_DISORDER_STEPS
+} sv_disorder_type;
+enum { SV_DISORDER_MOST = 64 /**< entries of a sheet */ };
+
+/** Law of an energy, a strength or a phase. */
+typedef enum sv_distribution {
+    SV_BOX,
+    SV_GAUSSIAN,
+    SV_BINARY,
+    SV_CORRELATED, /**< gaussian, with a correlation length */
+    SV_PUDDLES     /**< potential of screened charges */
+} sv_distribution;
+
+/** Covariance C(r) of a correlated field of variance 1 and length l. */
+typedef enum sv_covariance {
+    SV_COVARIANCE_GAUSSIAN,   /**< exp(−r²/(2 l²)) to 1e-7 */
+    SV_COVARIANCE_EXPONENTIAL /**< exp(−r/l) to 3e-4, by gaussians of many lengths */
+} sv_covariance;
 
 /** A defect position or site energy read from a measured file. */
 typedef struct sv_mark {
@@ -174,19 +200,53 @@ typedef struct sv_mark {
     int line;          /**< line in the file, for messages */
 } sv_mark;
 
-/** One entry of the sheet's `disorder` list. */
+/**
+ * One entry of the sheet's `disorder` list. Lengths in lattice constants, energies in the unit of the
+ * model, densities per lattice constant squared, angles in radian. What a kind does not name is 0.
+ *
+ * Every random number belongs to a cell of the lattice, or to a node of a grid in the plane, and never
+ * to the flake: a larger flake, an open and a closed copy see the same defects and the same fields.
+ */
 typedef struct sv_disorder {
     char name[64]; /**< names its random stream */
     sv_disorder_type type;
     int on; /**< orbital row, −1: any */
-    /* vacancies */
+    /* how many: vacancies and adatoms by share or count, points of other kinds by density */
     bool has_share, has_count;
-    double share;  /**< probability per position */
-    int64_t count; /**< exact number of positions */
-    /* on-site */
+    double share;   /**< probability per position (adatoms: per site; domains: of being changed) */
+    int64_t count;  /**< exact number of positions */
+    double density; /**< of impurities, local defects, cracks */
+    /* vacancies */
+    double cluster_size, cluster_radius; /**< size > 0: clustered */
+    double distance;                     /**< > 0: no two of them as near as this or nearer */
+    double charge;                       /**< elementary charges of each defect, for messages and as a source */
+    /* energies, strengths, phases */
     sv_distribution distribution;
-    double width; /**< box: full width; gaussian: standard deviation; binary: full splitting */
+    double width; /**< box: full width; gaussian, correlated: standard deviation; binary: splitting */
     bool per_cell;
+    sv_covariance covariance;
+    double length; /**< correlation length, mean domain size, mean length of cracks */
+    int term;      /**< mass, domains, steps: row of the model's local operators or SV_FIELD_POTENTIAL */
+    double strength; /**< puddles: energy right below a charge; mass: energy × area of one defect */
+    double phase;    /**< hopping: width of the phase */
+    bool nearest;    /**< hopping: only the shortest bonds */
+    bool independent; /**< flux: independent cells rather than the balanced field */
+    /* puddles */
+    double depth, screening; /**< distance of the charges from the plane, screening length */
+    char source[64];         /**< vacancies whose charges act; empty: random charges */
+    bool same_sign;
+    /* adatoms */
+    double energy, coupling;
+    /* lines */
+    bool has_line;
+    double from[2], to[2]; /**< cracks: ends; steps: `from` lies on the first step */
+    bool has_angle;        /**< cracks: one direction rather than all */
+    double angle;          /**< direction of step edges and cracks */
+    double spacing;        /**< steps: width of the terraces, 0: one step */
+    double jump;           /**< steps: change per step; domains: change in a changed domain */
+    double amplitude;      /**< roughness: deepest notch; steps: standard deviation of the meander */
+    double wall;           /**< domains: width of the walls, 0: sharp */
+    bool exponential;      /**< cracks: exponential lengths rather than equal ones */
     /* measured */
     bool has_marks;
     sv_mark *marks; /**< owned */
@@ -198,6 +258,24 @@ typedef struct sv_disorder {
 /** Kinds of disorder with their keys (all but `name` and `kind`). */
 SV_API const sv_kind *sv_disorder_kinds(int *ret_count);
 SV_API void sv_disorder_free(sv_context *context, sv_disorder *disorder);
+/**
+ * Largest share of positions that vacancies with a minimum distance can have. They are thinned by
+ * marks: of two candidates nearer than that, the one with the larger random number goes, whether or
+ * not the other stays (B. Matérn's second kind, value recalled from memory; Stoyan, Kendall, Mecke,
+ * Stochastic Geometry and its Applications, ch. 5). With n other positions within reach a share p of
+ * candidates leaves (1 − (1 − p)^(n+1))/(n+1), at most 1/(n + 1). 1 without a distance.
+ */
+SV_API double sv_disorder_share_limit(const sv_model *model, const sv_disorder *disorder);
+/**
+ * Standard deviation of the potential of random charges, 2π n U² h² exp(2h/λ) E1(2h/λ) under the
+ * root (Campbell's theorem): density n, strength U, depth h, screening λ of an onsite entry.
+ */
+SV_API double sv_disorder_puddle_deviation(const sv_disorder *disorder);
+/**
+ * Can a flake with this disorder be closed to a torus with the same defects, or why not?
+ * @param n number of entries
+ */
+SV_API sv_closure sv_disorder_can_close(const sv_disorder *disorder, int n);
 
 /**
  * Reads a CSV of measured defects (x, y) or site energies (x, y, energy or
@@ -243,14 +321,18 @@ SV_API int64_t sv_occupation_electrons(const sv_occupation *occupation, sv_index
 typedef struct sv_inventory {
     sv_index pristine_sites, sites, vacancies /**< positions */, vacant_sites;
     sv_index marks_merged; /**< measured defects that fell on a site already taken */
+    sv_index adatoms;      /**< rows that are adatoms; they count as sites */
+    sv_index placed[SV_DISORDER_MOST]; /**< per entry: positions emptied, adatoms, points, cracks */
 } sv_inventory;
 
 /** One realisation: the sites that are left, their on-site disorder, and the Hamiltonian. */
 typedef struct sv_sample {
     const sv_flake *flake; /**< borrowed */
     sv_index n;            /**< sites left = order of the Hamiltonian */
-    sv_index *pristine;    /**< n pristine site numbers, ascending */
-    double *potential;     /**< n on-site disorder energies */
+    sv_index *pristine;    /**< n pristine site numbers, in ascending order, repeated for adatoms */
+    int16_t *adatom;       /**< per row: entry of the adatom it is, −1 for a site; its `pristine` is then
+                                the host, whose row stands before it. NULL: no adatoms */
+    double *potential;     /**< n on-site disorder energies (adatoms: their energy) */
     sv_sparse hamiltonian;
     sv_inventory inventory;
 } sv_sample;
@@ -268,6 +350,8 @@ SV_API SV_MUST_USE sv_status sv_sample_draw(sv_context *context, const sv_flake 
                                             uint64_t seed, sv_index index, sv_sample *ret_sample);
 SV_API void sv_sample_free(sv_context *context, sv_sample *sample);
 
+/** Name of the orbital of a row; "adatom" for an adatom. */
+SV_API const char *sv_sample_orbital_name(const sv_sample *sample, sv_index row);
 /** Writes the Hamiltonian as Matrix Market, coordinate complex hermitian (lower triangle). */
 SV_API SV_MUST_USE sv_status sv_sample_write_matrix(sv_context *context, const sv_sample *sample,
                                                     const char *path);

@@ -35,6 +35,9 @@ static const sv_unit unit_rows[] = {
     {"cm^-2", SV_DIM_DENSITY, 1e-14},
     {"um^-2", SV_DIM_DENSITY, 1e-6},
     {"m^-2", SV_DIM_DENSITY, 1e-18},
+    {"nm^-3", SV_DIM_VOLUME_DENSITY, 1.0},
+    {"cm^-3", SV_DIM_VOLUME_DENSITY, 1e-21},
+    {"m^-3", SV_DIM_VOLUME_DENSITY, 1e-27},
     {"rad", SV_DIM_ANGLE, 1.0},
     {"deg", SV_DIM_ANGLE, 3.14159265358979323846 / 180.0},
     {"pi", SV_DIM_ANGLE, 3.14159265358979323846},
@@ -76,6 +79,8 @@ const char *sv_dimension_name(sv_dimension dimension)
         return "a length";
     case SV_DIM_DENSITY:
         return "a density per area";
+    case SV_DIM_VOLUME_DENSITY:
+        return "a density per volume";
     case SV_DIM_ANGLE:
         return "an angle";
     case SV_DIM_TEMPERATURE:

@@ -40,7 +40,7 @@ typedef struct column_job {
     const sv_index *rows;
     sv_index n_rows, next;
     double reach;
-    int32_t *row_of_site; /* pristine site → row or −1, for parts */
+    int32_t *row_of_site; /* pristine site → its first row or −1, for parts */
     double *marker, *error;
     sv_context *context;
     sv_status status;
@@ -145,6 +145,21 @@ static double rim_error(const column_work *w, int k, double reach)
     return 2.0 * reach * (sqrt(vv * zz) + reach * vv);
 }
 
+/* The rows of a site: its own and those of adatoms on it. */
+static sv_status add_rows_of(sv_context *context, const column_job *job, sv_index site, part *area)
+{
+    const sv_sample *sample = job->sample;
+    for (sv_index r = job->row_of_site[site];
+         r >= 0 && r < sample->n && sample->pristine[r] == site; r++) {
+        sv_status status =
+            sv_reserve(context, &area->rows, &area->room, area->n + 1, sizeof *area->rows);
+        if (status != SV_OK)
+            return status;
+        area->rows[area->n++] = r;
+    }
+    return SV_OK;
+}
+
 /* Rows within reach of the block's middle, ascending. */
 static sv_status gather_part(sv_context *context, const column_job *job, const double middle[2],
                              double radius, part *area)
@@ -167,14 +182,14 @@ static sv_status gather_part(sv_context *context, const column_job *job, const d
             if (c < 0)
                 continue;
             const sv_cell *at = &flake->cells[c];
-            sv_status status = sv_reserve(context, &area->rows, &area->room, area->n + at->n_sites,
-                                          sizeof *area->rows);
-            if (status != SV_OK)
-                return status;
-            for (sv_index s = at->first_site; s < at->first_site + at->n_sites; s++)
-                if (job->row_of_site[s] >= 0 && hypot(flake->sites[s].at[0] - middle[0],
-                                                      flake->sites[s].at[1] - middle[1]) <= radius)
-                    area->rows[area->n++] = job->row_of_site[s];
+            for (sv_index s = at->first_site; s < at->first_site + at->n_sites; s++) {
+                if (hypot(flake->sites[s].at[0] - middle[0], flake->sites[s].at[1] - middle[1]) >
+                    radius)
+                    continue;
+                sv_status status = add_rows_of(context, job, s, area);
+                if (status != SV_OK)
+                    return status;
+            }
         }
     return SV_OK;
 }
@@ -347,7 +362,8 @@ sv_status sv_chern_columns(sv_context *context, const sv_sample *sample, sv_proj
             return status;
         memset(job.row_of_site, 0xff, (size_t)sites * sizeof *job.row_of_site);
         for (sv_index r = 0; r < sample->n; r++)
-            job.row_of_site[sample->pristine[r]] = (int32_t)r;
+            if (job.row_of_site[sample->pristine[r]] < 0)
+                job.row_of_site[sample->pristine[r]] = (int32_t)r;
     }
     status = run_threads(context, &job, threads);
     sv_give(context, job.row_of_site);

@@ -51,6 +51,13 @@ static const struct {
     {"share", "share of positions removed (%s)"},
     {"count", "number of defects (%s)"},
     {"density", "defect density (%s)"},
+    {"volume_density", "defect density per volume (%s)"},
+    {"cluster_size", "mean number of defects per cluster (%s)"},
+    {"cluster_radius", "radius of the clusters (%s)"},
+    {"distance", "distance (%s)"},
+    {"correlation_length", "correlation length (%s)"},
+    {"screening_length", "screening length (%s)"},
+    {"strength", "strength (%s)"},
     {"width", "disorder width (%s; box: full width)"},
 };
 

@@ -42,7 +42,8 @@ static void boundaries_needed(const session *s, const sv_setup *setup, bool *ope
     const sv_marker *table = sv_marker_table(&count);
     *open = s->add_map_marker;
     *closed = false;
-    bool torus = sv_flake_can_close(&setup->model, &setup->flake).possible;
+    bool torus = sv_flake_can_close(&setup->model, &setup->flake).possible &&
+                 sv_disorder_can_close(setup->disorder, setup->n_disorder).possible;
     for (int k = 0; k < setup->n_markers; k++) {
         bool on_torus = table[setup->markers[k].kind].boundary == SV_CLOSED_COPY;
         *open = *open || !on_torus;

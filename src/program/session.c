@@ -92,6 +92,8 @@ static sv_status make_flakes(session *s, point *p)
 {
     sv_flake_spec spec = p->setup.flake;
     sv_closure closure = sv_flake_can_close(&p->setup.model, &spec);
+    if (closure.possible)
+        closure = sv_disorder_can_close(p->setup.disorder, p->setup.n_disorder);
     spec.periodic[0] = spec.periodic[1] = false;
     sv_status status = sv_flake_make(s->context, &p->setup.model, &spec, &p->open);
     if (status != SV_OK)

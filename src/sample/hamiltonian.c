@@ -14,30 +14,34 @@ typedef struct entry {
 typedef struct builder {
     const sv_flake *flake;
     const sv_sample *sample;
+    const sv_drawing *drawing;
     const int32_t *row_of_site;
     double (*orbital_uv)[2]; /* reduced positions of the orbitals */
     double flux;             /* quanta per cell */
 } builder;
 
 /*
- * ⟨to|H|from⟩ of a hop that starts in cell (i, j) of the flake and whose end, before wrapping,
- * lies in cell (i, j) + shift; `torus` was taken off that end.
+ * ⟨to|H|from⟩ of a hop that starts in cell `start` of the flake and whose end, before wrapping,
+ * lies in start + shift; `torus` was taken off that end.
  *
  * Gauge A = φ u dv: the straight hop carries exp(−2πi φ ū Δv). On a torus states obey
  * ψ(r + T) = exp(−2πi φ T_u v) ψ(r), which keeps the Hamiltonian periodic; an end that wraps by T
  * picks up exp(+2πi φ T_u v) with v the wrapped coordinate.
  */
-static sv_complex element(const builder *b, const sv_hop *hop, int32_t i, int32_t j,
+static sv_complex element(const builder *b, int number, const sv_cell *start,
                           const int32_t torus[2])
 {
+    const sv_hop *hop = &b->flake->model->hops[number];
+    sv_complex amplitude = hop->amplitude * sv_bond_factor(b->drawing, number, start);
+    int32_t i = start->i, j = start->j;
     if (b->flux == 0.0)
-        return hop->amplitude;
+        return amplitude;
     const double *from = b->orbital_uv[hop->from], *to = b->orbital_uv[hop->to];
     double u0 = i + from[0], v0 = j + from[1];
     double u1 = i + hop->shift[0] + to[0], v1 = j + hop->shift[1] + to[1];
     double turns = -b->flux * 0.5 * (u0 + u1) * (v1 - v0) + b->flux * torus[0] * (v1 - torus[1]);
     double angle = 2.0 * M_PI * (turns - floor(turns));
-    return hop->amplitude * CMPLX(cos(angle), sin(angle));
+    return amplitude * CMPLX(cos(angle), sin(angle));
 }
 
 /* Row number of an orbital in the cell where (i, j) lands, or −1. */
@@ -65,14 +69,61 @@ static int add_entry(entry *row, int n, int32_t column, sv_complex value)
     return n + 1;
 }
 
-/* Gathers one row; `row` has room for 2·n_hops + 1 entries. */
+/* Changed local operators that join this orbital to others of its position. */
+static int add_local(const builder *b, sv_index s, entry *row, int n)
+{
+    const sv_model *model = b->flake->model;
+    const sv_site *site = &b->flake->sites[s];
+    for (int f = 0; f < model->n_fields; f++) {
+        const sv_model_field *field = &model->fields[f];
+        for (int t = 0; b->drawing->field[f] != NULL && t < field->n_terms; t++) {
+            const sv_field_term *term = &field->terms[t];
+            if (term->to == term->from ||
+                (term->to != site->orbital && term->from != site->orbital))
+                continue;
+            bool ends_here = term->to == site->orbital;
+            sv_index other =
+                sv_flake_site_of(b->flake, site->cell, ends_here ? term->from : term->to);
+            int32_t column = other < 0 ? -1 : b->row_of_site[other];
+            sv_complex amplitude = ends_here ? term->amplitude : conj(term->amplitude);
+            if (column >= 0)
+                n = add_entry(row, n, column, amplitude * b->drawing->field[f][s]);
+        }
+    }
+    return n;
+}
+
+/* Row of an adatom: its energy and the hop to its host, whose row stands before. */
+static int gather_adatom(const builder *b, sv_index r, entry *row)
+{
+    const sv_sample *sample = b->sample;
+    int n = add_entry(row, 0, (int32_t)r, sample->potential[r]);
+    return add_entry(row, n, b->row_of_site[sample->pristine[r]],
+                     b->drawing->disorder[sample->adatom[r]].coupling);
+}
+
+/* Hops of a site to the adatoms on it, whose rows follow. */
+static int add_adatoms(const builder *b, sv_index r, entry *row, int n)
+{
+    const sv_sample *sample = b->sample;
+    for (sv_index k = r + 1;
+         sample->adatom != NULL && k < sample->n && sample->pristine[k] == sample->pristine[r]; k++)
+        n = add_entry(row, n, (int32_t)k, b->drawing->disorder[sample->adatom[k]].coupling);
+    return n;
+}
+
+/* Gathers one row; `row` has room for 2·n_hops + 1 entries and those of the local operators. */
 static int gather_row(const builder *b, sv_index r, entry *row)
 {
     const sv_site *site = &b->flake->sites[b->sample->pristine[r]];
     const sv_cell *cell = &b->flake->cells[site->cell];
     const sv_model *model = b->flake->model;
+    if (b->sample->adatom != NULL && b->sample->adatom[r] >= 0)
+        return gather_adatom(b, r, row);
     int n = add_entry(row, 0, (int32_t)r,
                       model->orbitals[site->orbital].onsite + b->sample->potential[r]);
+    n = add_local(b, b->sample->pristine[r], row, n);
+    n = add_adatoms(b, r, row, n);
     for (int h = 0; h < model->n_hops; h++) {
         const sv_hop *hop = &model->hops[h];
         landing place;
@@ -80,17 +131,17 @@ static int gather_row(const builder *b, sv_index r, entry *row)
             /* The hop starts in the cell where (this cell − shift) lands and ends here. */
             int32_t column = row_at(b, (int64_t)cell->i - hop->shift[0],
                                     (int64_t)cell->j - hop->shift[1], hop->from, &place);
-            if (column >= 0) {
-                const sv_cell *start = &b->flake->cells[place.cell];
+            const sv_cell *start = &b->flake->cells[place.cell < 0 ? 0 : place.cell];
+            if (column >= 0 && !sv_bond_is_cut(b->drawing, h, start)) {
                 const int32_t torus[2] = {-place.torus[0], -place.torus[1]};
-                n = add_entry(row, n, column, element(b, hop, start->i, start->j, torus));
+                n = add_entry(row, n, column, element(b, h, start, torus));
             }
         }
         if (hop->from == site->orbital) {
             int32_t column = row_at(b, (int64_t)cell->i + hop->shift[0],
                                     (int64_t)cell->j + hop->shift[1], hop->to, &place);
-            if (column >= 0)
-                n = add_entry(row, n, column, conj(element(b, hop, cell->i, cell->j, place.torus)));
+            if (column >= 0 && !sv_bond_is_cut(b->drawing, h, cell))
+                n = add_entry(row, n, column, conj(element(b, h, cell, place.torus)));
         }
     }
     return n;
@@ -107,13 +158,28 @@ static sv_status take_matrix(sv_context *context, sv_sparse *matrix, sv_index n,
     return sv_take_raw(context, room, sizeof *matrix->value, &matrix->value);
 }
 
+/* Most entries that changed local operators can add to a row. */
+static sv_index room_of_fields(const sv_drawing *d)
+{
+    const sv_model *model = d->flake->model;
+    sv_index room = 0;
+    for (int f = 0; f < model->n_fields; f++)
+        for (int t = 0; d->field[f] != NULL && t < model->fields[f].n_terms; t++)
+            room += model->fields[f].terms[t].to != model->fields[f].terms[t].from;
+    return room;
+}
+
 /* Most entries a row of this orbital can have; the sum over rows sizes the matrix. */
-static sv_index room_needed(const sv_sample *sample)
+static sv_index room_needed(const sv_sample *sample, const sv_drawing *d)
 {
     const sv_model *model = sample->flake->model;
-    sv_index room = 0;
+    sv_index room = sample->n * room_of_fields(d) + d->inventory.adatoms;
     for (sv_index r = 0; r < sample->n; r++) {
         int orbital = sample->flake->sites[sample->pristine[r]].orbital;
+        if (sample->adatom != NULL && sample->adatom[r] >= 0) {
+            room += 2;
+            continue;
+        }
         room++;
         for (int h = 0; h < model->n_hops; h++)
             room += (model->hops[h].from == orbital) + (model->hops[h].to == orbital);
@@ -121,21 +187,24 @@ static sv_index room_needed(const sv_sample *sample)
     return room;
 }
 
-sv_status sv_sample_build_hamiltonian(sv_context *context, sv_sample *sample,
+sv_status sv_sample_build_hamiltonian(sv_context *context, sv_sample *sample, const sv_drawing *d,
                                       const int32_t *row_of_site)
 {
     const sv_model *model = sample->flake->model;
     sv_sparse *matrix = &sample->hamiltonian;
     builder b = {.flake = sample->flake,
                  .sample = sample,
+                 .drawing = d,
                  .row_of_site = row_of_site,
                  .flux = (double)model->flux[0] / model->flux[1]};
     entry *row = NULL;
     sv_status status;
-    if ((status = sv_take(context, 2 * (sv_index)model->n_hops + 2, sizeof *row, &row)) != SV_OK ||
+    if ((status = sv_take(context,
+                          2 * (sv_index)model->n_hops + 2 + room_of_fields(d) + SV_DISORDER_MOST,
+                          sizeof *row, &row)) != SV_OK ||
         (status = sv_take(context, model->n_orbitals, sizeof *b.orbital_uv, &b.orbital_uv)) !=
             SV_OK ||
-        (status = take_matrix(context, matrix, sample->n, room_needed(sample))) != SV_OK)
+        (status = take_matrix(context, matrix, sample->n, room_needed(sample, d))) != SV_OK)
         goto out;
     for (int k = 0; k < model->n_orbitals; k++)
         sv_model_reduce(model, model->orbitals[k].at, b.orbital_uv[k]);

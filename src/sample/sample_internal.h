@@ -69,7 +69,164 @@ bool sv_model_is_honeycomb(const sv_model *model, double ret_centre[2]);
 bool sv_flake_torus(const sv_model *model, const sv_flake_spec *spec, const bool periodic[2],
                     int32_t ret_period[2][2], char *reason, size_t reason_size);
 
-sv_status sv_sample_build_hamiltonian(sv_context *context, sv_sample *sample,
+/* Cell number at (i, j) without wrapping, or −1. */
+int32_t sv_flake_look_up(const sv_flake *flake, int64_t i, int64_t j);
+
+/* ------------------------------------------------------------- positions.c */
+
+/* A straight cut: hops that cross it are gone. */
+typedef struct sv_cut {
+    double from[2], to[2];
+} sv_cut;
+
+/* What changes hops: see bonds.c, flux.c, cracks.c. */
+typedef struct sv_bonds {
+    struct sv_bond_class *classes; /* per hop of the model */
+    double *edges[2];              /* flux: line integrals along a1 and a2; NULL: none */
+    int32_t edge_low[2], edge_count[2];
+    sv_cut *cuts;
+    sv_index n_cuts, cut_capacity;
+    sv_index *cut_start; /* per cell of the flake, one more than cells: its cuts in cut_list */
+    int32_t *cut_list;
+} sv_bonds;
+
+/* The realisation while it is being drawn, by pristine site. */
+typedef struct sv_drawing {
+    const sv_flake *flake;
+    const sv_disorder *disorder; /* all entries, for those that name another */
+    int n_disorder;
+    uint64_t seed;
+    sv_index realisation;
+    int entry; /* being drawn */
+    bool *gone;
+    int16_t *taken_by;              /* entry that emptied a site, −1: none */
+    double *potential;              /* energies on the diagonal */
+    double *field[SV_MODEL_FIELDS]; /* changes of the model's local operators; NULL: none */
+    uint64_t *adatoms; /* entries with an adatom on the site, one bit each; NULL: none */
+    sv_bonds bonds;
+    sv_inventory inventory;
+} sv_drawing;
+
+int sv_position_of(const sv_flake *flake, sv_index site);
+/* Does any orbital at this position match `on`? */
+bool sv_position_matches(const sv_model *model, int position, int on);
+/* The first site of each position stands for the position. */
+bool sv_is_first_at_position(const sv_flake *flake, sv_index site);
+/* Empties a position; counted as a vacancy of the entry being drawn. */
+void sv_vacate(sv_drawing *d, sv_index site);
+/* May this entry empty a position here? */
+bool sv_is_candidate(const sv_drawing *d, const sv_disorder *disorder, sv_index site);
+/* Number of a position of the plane. */
+double sv_position_uniform(const sv_stream *stream, int32_t i, int32_t j, int position);
+/* Adds an energy to a local operator (or the potential) at a site. */
+sv_status sv_add_term(sv_context *context, sv_drawing *d, int term, sv_index site, double energy);
+/* An orbital at a position. */
+int sv_orbital_at(const sv_model *model, int position);
+/* Shortest distance between two positions of the lattice. */
+double sv_shortest_distance(const sv_model *model);
+
+/* Cell indices, both ends included. */
+typedef struct sv_patch {
+    int32_t low[2], high[2];
+} sv_patch;
+
+/* Cells of the plane whose sites may lie within `reach` of a box (both corners given). */
+sv_patch sv_patch_around(const sv_model *model, const double low[2], const double high[2],
+                         double reach);
+/* As above about a point, and within the flake's box of cells. */
+sv_patch sv_flake_patch(const sv_flake *flake, const double at[2], double reach);
+
+/* ------------------------------------------------------ smooth.c, points.c */
+
+enum { SV_SMOOTH_SCALES = 40 };
+
+/* One gaussian component: white noise on the nodes of a square grid, `step` apart. */
+typedef struct sv_smooth_scale {
+    double length, step, weight;
+    int64_t low[2], count[2];
+    double *noise; /* NULL: too many nodes, drawn as they are met */
+} sv_smooth_scale;
+
+/* A gaussian random field of the plane with mean 0 and variance 1. */
+typedef struct sv_smooth {
+    sv_stream stream;
+    sv_smooth_scale scales[SV_SMOOTH_SCALES];
+    int n_scales;
+    double nugget; /* weight of what is shorter than the lattice: independent per position */
+} sv_smooth;
+
+/* @param low, high  corners of the box in which it will be asked for */
+sv_status sv_smooth_make(sv_context *context, const sv_model *model, const sv_stream *stream,
+                         double length, sv_covariance covariance, const double low[2],
+                         const double high[2], sv_smooth *ret_smooth);
+/* Value at a point; cell and position name the number of its shortest part. */
+double sv_smooth_at(const sv_smooth *smooth, const double at[2], int32_t i, int32_t j,
+                    int position);
+void sv_smooth_free(sv_context *context, sv_smooth *smooth);
+/* Box of the sites of a flake. */
+void sv_flake_box(const sv_flake *flake, double ret_low[2], double ret_high[2]);
+
+/* A point of a Poisson process of the plane and the numbers that are its own. */
+typedef struct sv_point {
+    double at[2];
+    int32_t cell[2];
+    uint32_t slot; /* first of 8 slots free for its user */
+} sv_point;
+
+/* Points with a mean number per area, in all cells within `reach` of the flake, in order of cells.
+ */
+sv_status sv_points_draw(sv_context *context, const sv_flake *flake, const sv_stream *stream,
+                         double density, double reach, sv_point **ret_points, sv_index *ret_count);
+/* Smallest k with P(X ≤ k) > u: Poisson by inversion, so that a larger mean keeps what there is. */
+int sv_poisson(double mean, double u);
+
+/* -------------------------------------------------------- one per family */
+
+/* Slots of a cell's stream, apart from those of its orbitals (from 0). */
+enum { SV_SLOT_POINTS = 0x20000000, SV_SLOT_SMOOTH = 0x40000000, SV_SLOT_BONDS = 0x60000000 };
+
+sv_status sv_draw_vacancies(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                            const sv_stream *stream);
+sv_status sv_draw_spaced(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                         const sv_stream *stream);
+sv_status sv_draw_clustered(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                            const sv_stream *stream);
+/* Takes the `count` positions with the smallest numbers, among those marked (NULL: all). */
+sv_status sv_draw_count(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                        const sv_stream *stream, const bool *kept,
+                        void (*take)(sv_drawing *, sv_index));
+sv_status sv_draw_adatoms(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                          const sv_stream *stream);
+sv_status sv_draw_hopping(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                          const sv_stream *stream);
+sv_status sv_draw_flux(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                       const sv_stream *stream);
+sv_status sv_draw_cracks(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                         const sv_stream *stream);
+sv_status sv_draw_domains(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                          const sv_stream *stream);
+sv_status sv_draw_roughness(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                            const sv_stream *stream);
+sv_status sv_draw_steps(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                        const sv_stream *stream);
+/* Sorts the cuts into cells, once all entries are drawn. */
+sv_status sv_bonds_finish(sv_context *context, sv_drawing *d);
+void sv_bonds_free(sv_context *context, sv_bonds *bonds);
+/* What a hop of the model that starts in a cell of the flake is multiplied by; 0: cut. */
+sv_complex sv_bond_factor(const sv_drawing *d, int hop, const sv_cell *start);
+bool sv_bond_is_cut(const sv_drawing *d, int hop, const sv_cell *start);
+/* ∫ A·dl of the random flux along a straight line, in radian; ends in units of the vectors. */
+double sv_flux_along(const sv_bonds *bonds, const double from[2], const double to[2]);
+sv_status sv_draw_onsite(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                         const sv_stream *stream);
+sv_status sv_draw_puddles(sv_context *context, sv_drawing *d, const sv_disorder *disorder,
+                          const sv_stream *stream);
+/* The standardised field: width 1 of each law. */
+double sv_standard_value(sv_distribution law, double u);
+void sv_vacate_marks(sv_drawing *d, const sv_disorder *disorder);
+sv_status sv_add_marks(sv_context *context, sv_drawing *d, const sv_disorder *disorder);
+
+sv_status sv_sample_build_hamiltonian(sv_context *context, sv_sample *sample, const sv_drawing *d,
                                       const int32_t *row_of_site);
 
 #endif

@@ -123,7 +123,7 @@ sv_closure sv_flake_can_close(const sv_model *model, const sv_flake_spec *spec)
     return closure;
 }
 
-static int32_t look_up(const sv_flake *flake, int64_t i, int64_t j)
+int32_t sv_flake_look_up(const sv_flake *flake, int64_t i, int64_t j)
 {
     if (i < flake->low[0] || i > flake->high[0] || j < flake->low[1] || j > flake->high[1])
         return -1;
@@ -151,7 +151,7 @@ static void whole_turns(const sv_flake *flake, double i, double j, int64_t ret_t
 
 landing sv_flake_land(const sv_flake *flake, int64_t i, int64_t j)
 {
-    landing result = {.cell = look_up(flake, i, j)};
+    landing result = {.cell = sv_flake_look_up(flake, i, j)};
     if (result.cell >= 0 || !(flake->periodic[0] || flake->periodic[1]))
         return result;
     int64_t turns[2];
@@ -163,7 +163,7 @@ landing sv_flake_land(const sv_flake *flake, int64_t i, int64_t j)
             int64_t a = turns[0] + da, b = turns[1] + db;
             int64_t ti = a * flake->period[0][0] + b * flake->period[1][0];
             int64_t tj = a * flake->period[0][1] + b * flake->period[1][1];
-            int32_t cell = look_up(flake, i - ti, j - tj);
+            int32_t cell = sv_flake_look_up(flake, i - ti, j - tj);
             if (cell >= 0)
                 return (landing){cell, {(int32_t)ti, (int32_t)tj}};
         }

@@ -30,6 +30,14 @@ sv_status sv_sample_write_matrix(sv_context *context, const sv_sample *sample, c
     return sv_output_commit(context, &output);
 }
 
+const char *sv_sample_orbital_name(const sv_sample *sample, sv_index row)
+{
+    const sv_flake *flake = sample->flake;
+    if (sample->adatom != NULL && sample->adatom[row] >= 0)
+        return "adatom";
+    return flake->model->orbitals[flake->sites[sample->pristine[row]].orbital].name;
+}
+
 sv_status sv_sample_write_sites(sv_context *context, const sv_sample *sample, const char *path,
                                 const char *extra_name, const double *extra)
 {
@@ -47,7 +55,7 @@ sv_status sv_sample_write_sites(sv_context *context, const sv_sample *sample, co
         sv_format_real(site->at[0], x, sizeof x);
         sv_format_real(site->at[1], y, sizeof y);
         fprintf(output.stream, "%lld,%d,%d,%s,%s,%s", (long long)r, cell->i, cell->j,
-                flake->model->orbitals[site->orbital].name, x, y);
+                sv_sample_orbital_name(sample, r), x, y);
         if (extra_name != NULL) {
             sv_format_real(extra[r], value, sizeof value);
             fprintf(output.stream, ",%s", value);

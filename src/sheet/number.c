@@ -44,7 +44,8 @@ static bool convert(sv_reader *reader, const sv_quantity *quantity, const char *
                     const sv_node *node, double *ret_value)
 {
     sv_dimension dimension = quantity->unit->dimension;
-    bool needs_length = dimension == SV_DIM_LENGTH || dimension == SV_DIM_DENSITY;
+    bool needs_length = dimension == SV_DIM_LENGTH || dimension == SV_DIM_DENSITY ||
+                        dimension == SV_DIM_VOLUME_DENSITY;
     double a = reader->lattice_constant;
     if (needs_length && a <= 0.0)
         return sv_report(
@@ -56,6 +57,7 @@ static bool convert(sv_reader *reader, const sv_quantity *quantity, const char *
         reader->first_energy = node;
     *ret_value = dimension == SV_DIM_LENGTH               ? quantity->value / a
                  : dimension == SV_DIM_DENSITY            ? quantity->value * a * a
+                 : dimension == SV_DIM_VOLUME_DENSITY     ? quantity->value * a * a * a
                  : is_energy && reader->energy_unit > 0.0 ? quantity->value / reader->energy_unit
                                                           : quantity->value;
     return true;

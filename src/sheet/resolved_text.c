@@ -30,6 +30,8 @@ static const char *unit_words(sv_dimension dimension)
         return " lattice constants";
     case SV_DIM_DENSITY:
         return " per lattice constant squared";
+    case SV_DIM_VOLUME_DENSITY:
+        return " per lattice constant cubed";
     case SV_DIM_ANGLE:
         return " rad";
     case SV_DIM_TEMPERATURE:
@@ -96,8 +98,8 @@ static void add_comment(writer *w, const sv_section *section, int i)
         add_real(&w->text, value->real[0] / 2);
         sv_text_add(&w->text, "]");
     }
-    if (strcmp(field->key->name, "density") == 0 && section->entry >= 0 &&
-        section->entry < w->setup->n_disorder) {
+    if (sv_words_hold("density volume_density", field->key->name) && section->entry >= 0 &&
+        section->entry < w->setup->n_disorder && w->setup->disorder[section->entry].has_share) {
         sv_text_add(&w->text, "%sshare ", w->text.length > before ? "; " : "  # ");
         add_real(&w->text, w->setup->disorder[section->entry].share);
     }

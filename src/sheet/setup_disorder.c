@@ -8,7 +8,7 @@
 static bool find_on(sv_reader *reader, const sv_section *section, const sv_model *model,
                     sv_disorder *disorder)
 {
-    const char *on = sv_section_value(section, "on")->text;
+    const char *on = sv_section_value(section, "on")->text; /* NULL: a kind without it */
     char hint[400];
     disorder->on = -1;
     if (on == NULL || strcmp(on, "any") == 0)
@@ -25,79 +25,13 @@ static bool find_on(sv_reader *reader, const sv_section *section, const sv_model
                      "%s.on: the model has no orbital %.60s", section->path, on);
 }
 
-/* Defaults that mean nothing here do not show in the resolved sheet. */
-static void drop_defaults(const sv_section *section, const char *keys)
-{
-    for (int i = 0; i < section->n_fields; i++)
-        if (!section->values[i].written && sv_words_hold(keys, section->fields[i].key->name))
-            section->values[i].present = false;
-}
-
-/* Defects per area → probability per position that can hold one. */
-static bool use_density(sv_reader *reader, const sv_section *section, const sv_model *model,
-                        sv_disorder *disorder)
-{
-    double density = sv_section_value(section, "density")->real[0];
-    double positions = disorder->on < 0 ? (double)model->n_positions : 1.0;
-    double per_area = positions / sv_model_cell_area(model);
-    double a = reader->lattice_constant;
-    char hint[200];
-    disorder->share = density / per_area;
-    if (disorder->share <= 1.0)
-        return true;
-    if (a > 0.0)
-        snprintf(hint, sizeof hint, "there are %.4g positions per cm^2", per_area / (a * a) * 1e14);
-    else
-        snprintf(hint, sizeof hint, "there are %.4g positions per lattice constant squared",
-                 per_area);
-    return sv_report(reader, sv_section_node(section, "density"), hint,
-                     "%s.density: %.4g defects per position, more than one", section->path,
-                     disorder->share);
-}
-
-static bool use_vacancies(sv_reader *reader, const sv_section *section, const sv_model *model,
-                          sv_disorder *disorder)
-{
-    if (!sv_section_one_of(reader, section, "share density count file"))
-        return false;
-    disorder->has_count = sv_section_value(section, "count")->present;
-    disorder->count = sv_section_value(section, "count")->integer[0];
-    disorder->has_share = sv_section_written(section, "share density") > 0;
-    disorder->share = sv_section_value(section, "share")->real[0];
-    return sv_section_written(section, "density") == 0 ||
-           use_density(reader, section, model, disorder);
-}
-
-static bool use_onsite(sv_reader *reader, const sv_section *section, const sv_model *model,
-                       sv_disorder *disorder)
-{
-    static const char *const words[] = {
-        [SV_BOX] = "box", [SV_GAUSSIAN] = "gaussian", [SV_BINARY] = "binary"};
-    (void)model;
-    if (!sv_section_one_of(reader, section, "distribution file"))
-        return false;
-    if (sv_section_written(section, "file") > 0) {
-        drop_defaults(section, "per");
-        return sv_section_none_of(reader, section, "width per", "has no meaning beside file");
-    }
-    if (sv_section_written(section, "width") == 0)
-        return sv_report(reader, section->anchor,
-                         "box: the full width; gaussian: the standard "
-                         "deviation; binary: the splitting",
-                         "%s.width is missing", section->path);
-    const char *word = sv_section_value(section, "distribution")->text;
-    for (int i = 0; i < 3; i++)
-        if (strcmp(words[i], word) == 0)
-            disorder->distribution = (sv_distribution)i;
-    disorder->width = sv_section_value(section, "width")->real[0];
-    disorder->per_cell = strcmp(sv_section_value(section, "per")->text, "cell") == 0;
-    return true;
-}
-
 /* One row per kind, in the order of sv_disorder_kinds(). */
 static bool (*const uses[])(sv_reader *, const sv_section *, const sv_model *, sv_disorder *) = {
-    [SV_DISORDER_VACANCIES] = use_vacancies,
-    [SV_DISORDER_ONSITE] = use_onsite,
+    [SV_DISORDER_VACANCIES] = sv_use_vacancies, [SV_DISORDER_ONSITE] = sv_use_onsite,
+    [SV_DISORDER_MASS] = sv_use_mass,           [SV_DISORDER_HOPPING] = sv_use_hopping,
+    [SV_DISORDER_FLUX] = sv_use_flux,           [SV_DISORDER_ADATOMS] = sv_use_adatoms,
+    [SV_DISORDER_CRACKS] = sv_use_cracks,       [SV_DISORDER_DOMAINS] = sv_use_domains,
+    [SV_DISORDER_ROUGHNESS] = sv_use_roughness, [SV_DISORDER_STEPS] = sv_use_steps,
 };
 
 static bool report_table(sv_reader *reader, const sv_cached_file *file, const sv_table_fault *fault)
@@ -110,18 +44,21 @@ static bool report_table(sv_reader *reader, const sv_cached_file *file, const sv
 static bool use_file(sv_reader *reader, const sv_section *section, const sv_model *model,
                      sv_disorder *disorder)
 {
+    if (sv_section_find(section, "file") < 0)
+        return true;
     if (sv_section_written(section, "file") == 0) {
-        drop_defaults(section, "origin tolerance");
+        sv_section_drop_defaults(section, "origin tolerance");
         return sv_section_none_of(reader, section, "origin tolerance",
                                   "has no meaning without file");
     }
     const sv_value *value = sv_section_value(section, "file");
     const sv_cached_file *file = sv_file_find(reader->sheet, value->text);
     sv_table_fault fault = {0};
-    sv_status status = sv_read_marks(
-        reader->context, model, file->source.text, file->source.size,
-        disorder->type == SV_DISORDER_ONSITE, reader->lattice_constant, reader->setup->energy_unit,
-        sv_section_value(section, "origin")->real, &disorder->marks, &disorder->n_marks, &fault);
+    sv_status status =
+        sv_read_marks(reader->context, model, file->source.text, file->source.size,
+                      disorder->type != SV_DISORDER_VACANCIES, reader->lattice_constant,
+                      reader->setup->energy_unit, sv_section_value(section, "origin")->real,
+                      &disorder->marks, &disorder->n_marks, &fault);
     if (status == SV_INVALID_INPUT)
         return report_table(reader, file, &fault);
     if (status != SV_OK)
@@ -132,6 +69,28 @@ static bool use_file(sv_reader *reader, const sv_section *section, const sv_mode
     return true;
 }
 
+/* Charges of an earlier entry: it must be there and have some. */
+static bool find_source(sv_reader *reader, const sv_section *section, const sv_setup *setup,
+                        const sv_disorder *disorder)
+{
+    char hint[400];
+    if (disorder->source[0] == '\0')
+        return true;
+    sv_suggestion suggestion = sv_suggest_start(disorder->source);
+    for (int k = 0; k < setup->n_disorder - 1; k++) {
+        const sv_disorder *other = &setup->disorder[k];
+        if (other->type != SV_DISORDER_VACANCIES || other->charge == 0.0)
+            continue;
+        if (strcmp(other->name, disorder->source) == 0)
+            return true;
+        sv_suggest_name(&suggestion, other->name);
+    }
+    sv_suggest_hint(&suggestion, hint, sizeof hint);
+    return sv_report(reader, sv_section_node(section, "source"), hint,
+                     "%s.source: no vacancies called %.60s with a charge stand before it",
+                     section->path, disorder->source);
+}
+
 static bool use_section(sv_reader *reader, const sv_section *section, const sv_model *model,
                         sv_disorder *disorder)
 {
@@ -139,6 +98,7 @@ static bool use_section(sv_reader *reader, const sv_section *section, const sv_m
     disorder->type = (sv_disorder_type)section->kind_row;
     return find_on(reader, section, model, disorder) &&
            uses[section->kind_row](reader, section, model, disorder) &&
+           find_source(reader, section, reader->setup, disorder) &&
            use_file(reader, section, model, disorder);
 }
 

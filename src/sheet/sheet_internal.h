@@ -365,6 +365,43 @@ bool sv_setup_build(sv_reader *reader, sv_setup *setup);
 bool sv_setup_model(sv_reader *reader, sv_setup *setup);
 bool sv_setup_flake(sv_reader *reader, sv_setup *setup);
 bool sv_setup_disorder(sv_reader *reader, sv_setup *setup);
+/* setup_defects.c, setup_lines.c: one per kind of disorder, and what they share. */
+bool sv_use_vacancies(sv_reader *reader, const sv_section *section, const sv_model *model,
+                      sv_disorder *disorder);
+bool sv_use_onsite(sv_reader *reader, const sv_section *section, const sv_model *model,
+                   sv_disorder *disorder);
+bool sv_use_mass(sv_reader *reader, const sv_section *section, const sv_model *model,
+                 sv_disorder *disorder);
+bool sv_use_hopping(sv_reader *reader, const sv_section *section, const sv_model *model,
+                    sv_disorder *disorder);
+bool sv_use_flux(sv_reader *reader, const sv_section *section, const sv_model *model,
+                 sv_disorder *disorder);
+bool sv_use_adatoms(sv_reader *reader, const sv_section *section, const sv_model *model,
+                    sv_disorder *disorder);
+bool sv_use_cracks(sv_reader *reader, const sv_section *section, const sv_model *model,
+                   sv_disorder *disorder);
+bool sv_use_domains(sv_reader *reader, const sv_section *section, const sv_model *model,
+                    sv_disorder *disorder);
+bool sv_use_roughness(sv_reader *reader, const sv_section *section, const sv_model *model,
+                      sv_disorder *disorder);
+bool sv_use_steps(sv_reader *reader, const sv_section *section, const sv_model *model,
+                  sv_disorder *disorder);
+/* Share, density or count of the section. */
+bool sv_use_amount(sv_reader *reader, const sv_section *section, const sv_model *model,
+                   sv_disorder *disorder);
+/* The local operator that `term` names. */
+bool sv_use_term(sv_reader *reader, const sv_section *section, const sv_model *model,
+                 sv_disorder *disorder);
+/* Defaults that mean nothing here do not show in the resolved sheet. */
+void sv_section_drop_defaults(const sv_section *section, const char *keys);
+/* All of the keys must have a value. */
+bool sv_section_needs(sv_reader *reader, const sv_section *section, const char *keys);
+/* None of them may be written, and their defaults fall away. */
+bool sv_section_rejects(sv_reader *reader, const sv_section *section, const char *keys,
+                        const char *why);
+double sv_section_real(const sv_section *section, const char *key);
+/* Number of the word of a key among n words. */
+int sv_section_choice(const sv_section *section, const char *key, const char *const *words, int n);
 bool sv_setup_ensemble(sv_reader *reader, sv_setup *setup);
 /* Builds the flake, when it is not too large, to see that it exists and holds the defects. */
 bool sv_setup_geometry(sv_reader *reader, const sv_setup *setup);

@@ -252,13 +252,14 @@ static void set_unit(const sv_reader *reader, const sv_section *section, const t
     double unit = reader->energy_unit > 0.0 ? reader->energy_unit : 1.0;
     sv_dimension dimension = aim->key->dimension;
     bool scale = sv_schema_is_scale(aim->key); /* stays in nm or eV */
-    double base = scale                               ? 1.0
-                  : dimension == SV_DIM_LENGTH        ? a
-                  : dimension == SV_DIM_DENSITY       ? 1.0 / (a * a)
-                  : dimension == SV_DIM_ENERGY        ? unit
-                  : dimension == SV_DIM_ENERGY_LENGTH ? unit
-                  : dimension == SV_DIM_ENERGY_AREA   ? unit
-                                                      : 1.0;
+    double base = scale                                ? 1.0
+                  : dimension == SV_DIM_LENGTH         ? a
+                  : dimension == SV_DIM_DENSITY        ? 1.0 / (a * a)
+                  : dimension == SV_DIM_VOLUME_DENSITY ? 1.0 / (a * a * a)
+                  : dimension == SV_DIM_ENERGY         ? unit
+                  : dimension == SV_DIM_ENERGY_LENGTH  ? unit
+                  : dimension == SV_DIM_ENERGY_AREA    ? unit
+                                                       : 1.0;
     axis->unit_scale = 1.0;
     for (sv_index i = 0; i < count && axis->unit == NULL; i++) {
         sv_quantity quantity = {0};

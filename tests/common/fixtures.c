@@ -130,6 +130,29 @@ double *fixture_spectrum(const sv_sample *sample)
     return values;
 }
 
+sv_index fixture_largest_piece(const sv_sample *sample)
+{
+    const sv_sparse *h = &sample->hamiltonian;
+    sv_index *next = malloc((size_t)sample->n * sizeof *next), largest = 0;
+    bool *seen = calloc((size_t)sample->n, sizeof *seen);
+    for (sv_index start = 0; start < sample->n; start++) {
+        sv_index met = 0, done = 0;
+        if (!seen[start])
+            next[met++] = start;
+        seen[start] = true;
+        for (; done < met; done++)
+            for (sv_index k = h->row_start[next[done]]; k < h->row_start[next[done] + 1]; k++)
+                if (!seen[h->column[k]] && h->value[k] != 0.0) {
+                    seen[h->column[k]] = true;
+                    next[met++] = h->column[k];
+                }
+        largest = met > largest ? met : largest;
+    }
+    free(next);
+    free(seen);
+    return largest;
+}
+
 /* ---- link variables on the Brillouin zone ---- */
 
 /* The model of q cells along a1 that a flux p/q makes periodic, in the gauge of conventions.h. */

@@ -28,6 +28,9 @@ double *fixture_site_markers(const sv_flake *flake, const sv_disorder *disorder,
 /* Eigenvalues, ascending; give back with sv_give(). */
 double *fixture_spectrum(const sv_sample *sample);
 
+/* Rows of the largest piece that nonzero elements connect. */
+sv_index fixture_largest_piece(const sv_sample *sample);
+
 /* Occupation below E = 0. */
 extern const sv_occupation fixture_below_zero;
 
