@@ -271,6 +271,13 @@ static const sv_key mass_keys[] = {
     WIDTH,
     PER,
     CORRELATION_KEYS,
+    {.name = "strength",
+     .type = SV_KEY_REAL,
+     .dimension = SV_DIM_ENERGY_AREA,
+     .low = -1e9,
+     .high = 1e9,
+     .doc = "instead of a distribution: energy x area of one point defect, spread over its cell"},
+    DENSITY("point defects per area; a cell may hold several"),
     FILE_KEYS,
 };
 

@@ -263,7 +263,7 @@ bool sv_use_mass(sv_reader *reader, const sv_section *section, const sv_model *m
                  sv_disorder *disorder)
 {
     if (!sv_use_term(reader, section, model, disorder) ||
-        !sv_section_one_of(reader, section, "distribution file"))
+        !sv_section_one_of(reader, section, "distribution strength file"))
         return false;
     if (sv_section_written(section, "file") > 0)
         return sv_section_rejects(reader, section, LAW_KEYS, "has no meaning beside file") &&

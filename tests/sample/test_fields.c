@@ -223,6 +223,9 @@ SV_TEST(local_operators_move_their_parameter)
 {
     check_term("haldane", (const double[]){1.0, 0.2, 0.9, 0.3}, 4, 3, "mass");
     check_term("qi_wu_zhang", (const double[]){-0.8}, 1, 0, "mass");
+    check_term("kane_mele", (const double[]){1.0, 0.2, 0.1, 0.3}, 4, 3, "mass");
+    check_term("magnetic_film", (const double[]){1.0, 0.25, -0.1, 0.3, 0.2}, 5, 2, "mass");
+    check_term("magnetic_film", (const double[]){1.0, 0.25, -0.1, 0.3, 0.2}, 5, 4, "exchange");
 }
 
 /* Poisson numbers of defects per cell, several in a cell at real densities; strength/area each. */

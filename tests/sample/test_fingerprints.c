@@ -92,3 +92,47 @@ SV_TEST(energies_keep_their_numbers)
               .name = "m", .type = SV_DISORDER_MASS, .on = -1, .strength = 0.3, .density = 0.7},
           1, 0xe96acd40e33b202d);
 }
+
+SV_TEST(hops_and_regions_keep_their_numbers)
+{
+    const sv_disorder rows[] = {
+        {.name = "hop", .type = SV_DISORDER_HOPPING, .on = -1, .width = 0.3, .phase = 0.4},
+        {.name = "flux", .type = SV_DISORDER_FLUX, .on = -1, .width = 0.3},
+        {.name = "flux", .type = SV_DISORDER_FLUX, .on = -1, .width = 0.3, .independent = true},
+        {.name = "ad",
+         .type = SV_DISORDER_ADATOMS,
+         .on = -1,
+         .has_share = true,
+         .share = 0.1,
+         .energy = 0.2,
+         .coupling = 1.1},
+        {.name = "crack",
+         .type = SV_DISORDER_CRACKS,
+         .on = -1,
+         .density = 0.02,
+         .length = 4,
+         .exponential = true},
+        {.name = "dom",
+         .type = SV_DISORDER_DOMAINS,
+         .on = -1,
+         .share = 0.5,
+         .length = 5,
+         .jump = 1,
+         .wall = 1},
+        {.name = "rim", .type = SV_DISORDER_ROUGHNESS, .on = -1, .amplitude = 3, .length = 2},
+        {.name = "step",
+         .type = SV_DISORDER_STEPS,
+         .on = -1,
+         .from = {5, 5},
+         .angle = 0.3,
+         .jump = 0.4,
+         .spacing = 3,
+         .amplitude = 1,
+         .length = 2},
+    };
+    static const uint64_t wanted[] = {0xef802b13b0513fce, 0x04f677aa1fd1f4f6, 0x8663fc5d59268843,
+                                      0xe84def2bde048715, 0x32822f2651701999, 0xf402b8cf20706400,
+                                      0x1e4127340a694987, 0xaf5763fde1c2de5e};
+    for (int k = 0; k < 8; k++)
+        check(rows[k].name, haldane, &rows[k], 1, wanted[k]);
+}
