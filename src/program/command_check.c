@@ -51,13 +51,6 @@ static void print_film(const session *s)
         return;
     printf("#\n# film: one cell is %.4g nm^2; %.4g positions per cm^2\n", area * a * a,
            s->base.model.n_positions / (area * a * a) * 1e14);
-    for (int k = 0; k < s->base.n_disorder; k++) {
-        const sv_disorder *d = &s->base.disorder[k];
-        double positions = s->base.model.n_positions / (area * a * a);
-        if (d->type == SV_DISORDER_VACANCIES && d->has_share && d->share > 0.0)
-            printf("# %s: share %.4g is %.4g cm^-2, mean distance %.3g nm\n", d->name, d->share,
-                   d->share * positions * 1e14, 0.5 / sqrt(d->share * positions));
-    }
 }
 
 int run_check(sv_context *context, const options *o)
@@ -86,6 +79,7 @@ int run_check(sv_context *context, const options *o)
         printf("#\n# forecast\n");
         print_forecast(&f, &s, "#   ", stdout);
         print_film(&s);
+        defects_print(&s.base, stdout);
         film_print(&film, s.n_points, stdout);
         status = presets_print_sources(context, s.sheet, stdout);
         code = status == SV_OK ? code : fail_exit(context, status);

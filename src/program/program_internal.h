@@ -143,6 +143,11 @@ int run_export(sv_context *context, const options *o);
 int run_info(sv_context *context, const options *o);
 int run_help(sv_context *context, const options *o);
 
+/* ---------------------------------------------------------- defects.c */
+
+/* One comment line per thing worth knowing about the disorder of a sheet. */
+void defects_print(const sv_setup *setup, FILE *stream);
+
 /* ------------------------------------------------------------- film.c */
 
 /* Length of a model with light states; eV and nm. */

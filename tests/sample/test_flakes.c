@@ -40,7 +40,7 @@ SV_TEST(kinds_have_keys_and_docs)
     for (int k = 0; k < count; k++)
         CHECK(shapes[k].n_keys > 0 && strlen(shapes[k].doc) > 0);
     const sv_kind *disorders = sv_disorder_kinds(&count);
-    CHECK_INT(count, SV_DISORDER_ONSITE + 1);
+    CHECK_INT(count, SV_DISORDER_STEPS + 1);
     CHECK_TEXT(disorders[SV_DISORDER_VACANCIES].name, "vacancies");
     CHECK(sv_kind_find_key(&disorders[SV_DISORDER_ONSITE], "width") >= 0);
 }
