@@ -28,6 +28,7 @@ typedef struct sv_point_result {
     sv_coordinate coordinates[SV_MAX_AXES];
     int n_coordinates;
     int64_t realisations;
+    double mean_sites, mean_vacancies; /**< over the realisations counted; NaN without any */
     sv_summary summaries[SV_MAX_MARKERS];
     int n_summaries;
 } sv_point_result;
@@ -56,6 +57,13 @@ SV_API SV_MUST_USE sv_status sv_result_csv(sv_context *context, const sv_result 
                                            char **ret_text);
 /** Table for a terminal, at most 80 columns. */
 SV_API void sv_result_print(const sv_result *result, bool colour, FILE *stream);
+
+/**
+ * The pieces of a sample in one line: "2 pieces (largest: 840 sites), 3 dangling, …".
+ * @param[out] ret_text taken from the context
+ */
+SV_API SV_MUST_USE sv_status sv_inventory_text(sv_context *context, const sv_sample *sample,
+                                               char **ret_text);
 
 /** One realisation seen site by site. */
 typedef struct sv_map_result {
@@ -88,6 +96,7 @@ typedef struct sv_spectrum_result {
     const char *title;
     int64_t realisation;
     const sv_spectrum *spectrum; /**< borrowed */
+    const sv_sample *sample;     /**< borrowed, for the inventory, or NULL */
 } sv_spectrum_result;
 
 /** JSON document of a spectrum (contract: `spectrum`). */
@@ -117,6 +126,30 @@ typedef struct sv_figure_files {
 SV_API SV_MUST_USE sv_status sv_figure_map(sv_context *context, const char *folder,
                                            const char *name, const sv_map_result *map,
                                            sv_figure_files *ret_files);
+/** One realisation of a sample as it is, before any marker. */
+typedef struct sv_sample_result {
+    const char *title;
+    const sv_sample *sample; /**< borrowed */
+    const sv_sample *whole;  /**< borrowed: the same before pieces were dropped, or NULL */
+    int64_t realisation;
+    double lattice_constant; /**< nm, 0: none */
+    double energy_unit;      /**< eV per unit of the model, 0: none known */
+} sv_sample_result;
+
+/** JSON document of a sample: its inventory. */
+SV_API SV_MUST_USE sv_status sv_sample_json(sv_context *context, const sv_sample_result *result,
+                                            char **ret_text);
+/**
+ * The flake as a figure: up to 3,000 positions as symbols with their bonds, larger ones as pixels
+ * (each shows the site nearest to its middle); vacancies, removed pieces, dangling and isolated
+ * positions as symbols of their own, the on-site disorder as colour, the edge, a scale bar. Hops
+ * around a torus are dashed stubs.
+ * @param ending "svg", "pdf" or "png" for one picture only, NULL for all three
+ */
+SV_API SV_MUST_USE sv_status sv_figure_sample(sv_context *context, const char *folder,
+                                              const char *name, const char *ending,
+                                              const sv_sample_result *result,
+                                              sv_figure_files *ret_files);
 /** Sweep curve with error bars and the quantised values marked. Needs one axis. */
 SV_API SV_MUST_USE sv_status sv_figure_sweep(sv_context *context, const char *folder,
                                              const char *name, const sv_result *result,

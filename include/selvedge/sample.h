@@ -52,6 +52,7 @@ typedef struct sv_flake_spec {
     sv_polygon polygon; /**< borrowed: must outlive every flake made from it */
     bool periodic[2];   /**< along a1 and a2 (rectangle by size: along x and y; ribbon: along its
                              length and across) */
+    bool keep_largest; /**< a sample keeps its largest connected piece only */
 } sv_flake_spec;
 
 enum { SV_POLYGON_MOST = 2000 /**< corners of all loops */ };
@@ -321,6 +322,13 @@ SV_API int64_t sv_occupation_electrons(const sv_occupation *occupation, sv_index
 typedef struct sv_inventory {
     sv_index pristine_sites, sites, vacancies /**< positions */, vacant_sites;
     sv_index marks_merged; /**< measured defects that fell on a site already taken */
+    /* Of what is left; positions are neighbours when a nonzero hop links any of their orbitals. */
+    sv_index pieces;        /**< connected pieces */
+    sv_index largest_piece; /**< sites of the largest */
+    sv_index isolated;      /**< positions without a neighbour */
+    sv_index dangling;      /**< positions with exactly one */
+    sv_index removed_sites; /**< in pieces that flake.keep has dropped, not counted as vacant */
+    sv_index imbalance; /**< largest minus smallest number of sites of one orbital of the model */
     sv_index adatoms;      /**< rows that are adatoms; they count as sites */
     sv_index placed[SV_DISORDER_MOST]; /**< per entry: positions emptied, adatoms, points, cracks */
 } sv_inventory;
@@ -349,6 +357,22 @@ SV_API SV_MUST_USE sv_status sv_sample_draw(sv_context *context, const sv_flake 
                                             const sv_disorder *disorder, int n_disorder,
                                             uint64_t seed, sv_index index, sv_sample *ret_sample);
 SV_API void sv_sample_free(sv_context *context, sv_sample *sample);
+
+/**
+ * Connected pieces of a sample, into its inventory (pieces … dangling, imbalance).
+ *
+ * Pieces are of positions, not of single orbitals, so that spins that do not mix do not count as
+ * two films. A torus counts with its hops around. Cost: one pass over the matrix.
+ * @param[out] piece_of_row  n piece numbers, from 0 in the order of their first row, or NULL
+ */
+SV_API SV_MUST_USE sv_status sv_sample_pieces(sv_context *context, sv_sample *sample,
+                                              int32_t *piece_of_row);
+/**
+ * Drops every piece but the largest (of equals the one with the first row) as if it had never
+ * been there: no row is left of it. Pieces are judged by the hops that do not go around, so that
+ * the open and the closed copy of a flake keep the same sites.
+ */
+SV_API SV_MUST_USE sv_status sv_sample_keep_largest(sv_context *context, sv_sample *sample);
 
 /** Name of the orbital of a row; "adatom" for an adatom. */
 SV_API const char *sv_sample_orbital_name(const sv_sample *sample, sv_index row);

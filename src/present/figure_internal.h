@@ -31,6 +31,35 @@ typedef struct sv_map_figure {
     sv_headline headline;
 } sv_map_figure;
 
+/* Everything the parts of a drawing share. */
+typedef struct sv_draw_figure {
+    sv_figure figure;
+    const sv_sample_result *result;
+    sv_raster raster;
+    bool by_site;                  /* sites and bonds one by one, else pixels */
+    double *site_energy;           /* per row: mean potential of its cell, or of itself */
+    double range;                  /* largest |potential|, energy unit of `unit`; 0: none */
+    double energy_factor;          /* what is shown = factor · model unit */
+    const char *unit;              /* of the bar */
+    sv_index vacant, removed, hanging, lone; /* symbols drawn */
+    sv_index bonds[3];             /* near, far, around the torus: lines written */
+    double shortest;               /* bond, lattice constants; 0: no bonds */
+    double low[2], high[2];
+    double left_cm, low_cm, scale;
+    double head_cm, foot_cm;
+    sv_headline headline;
+} sv_draw_figure;
+
+/* figure_draw_data.c: bonds, sites and defects of a small flake */
+sv_status sv_draw_write_sites(sv_draw_figure *f, sv_draft *text);
+/* figure_draw_script.c */
+void sv_draw_choose_layout(sv_draw_figure *f);
+void sv_draw_add_script(sv_draw_figure *f);
+/* 1, 2 or 5 times a power of ten, at most `longest`. */
+double sv_round_length(double longest);
+/* The colours −1 … 1 as a palette. */
+void sv_script_palette(sv_draft *script);
+
 /* figure_map_script.c */
 void sv_map_choose_layout(sv_map_figure *f);
 void sv_map_add_script(sv_map_figure *f);

@@ -26,27 +26,6 @@ static sv_status find_marker(sv_context *context, sv_map_figure *f)
     return SV_OK;
 }
 
-/* The pixels of the flake with a little air around. */
-static void choose_frame(sv_map_figure *f)
-{
-    const sv_raster *r = &f->raster;
-    int low[2] = {r->nx, r->ny}, high[2] = {0, 0};
-    for (int y = 0; y < r->ny; y++)
-        for (int x = 0; x < r->nx; x++) {
-            if (r->inside[(sv_index)y * r->nx + x] == 0)
-                continue;
-            low[0] = x < low[0] ? x : low[0];
-            high[0] = x > high[0] ? x : high[0];
-            low[1] = y < low[1] ? y : low[1];
-            high[1] = y > high[1] ? y : high[1];
-        }
-    const double air = 0.012 * fmax(high[0] - low[0], high[1] - low[1]);
-    for (int d = 0; d < 2; d++) {
-        f->low[d] = r->low[d] + (low[d] - 0.5 - air) * r->step;
-        f->high[d] = r->low[d] + (high[d] + 0.5 + air) * r->step;
-    }
-}
-
 static sv_status write_data(sv_map_figure *f, sv_figure_files *files)
 {
     sv_draft text = {.context = f->figure.context};
@@ -99,7 +78,7 @@ static sv_status prepare(sv_map_figure *f)
     sv_context *context = f->figure.context;
     sv_status status = find_marker(context, f);
     if (status == SV_OK)
-        status = sv_raster_make(context, f->map, f->window, &f->raster);
+        status = sv_raster_make(context, f->map, f->window, 0, &f->raster);
     if (status == SV_OK)
         status = sv_places_vacant(context, f->map->sample, &f->vacancies);
     return status;
@@ -125,7 +104,7 @@ sv_status sv_figure_map(sv_context *context, const char *folder, const char *nam
         f.figure.title = map->title;
         f.figure.description = note;
         f.range = choose_range(&f);
-        choose_frame(&f);
+        sv_raster_frame(&f.raster, f.low, f.high);
         sv_map_choose_layout(&f);
         status = write_data(&f, &files);
     }

@@ -22,7 +22,7 @@ void sv_map_choose_layout(sv_map_figure *f)
         f->low_cm += 0.5 * (2.2 - f->scale * y);
 }
 
-static void add_palette(sv_draft *script)
+void sv_script_palette(sv_draft *script)
 {
     sv_draft_add(script, "set palette maxcolors 0\nset palette defined (");
     for (int k = 0; k < PALETTE_STOPS; k++) {
@@ -81,8 +81,7 @@ static void add_bar(sv_map_figure *f)
                  (x + width + 0.02) / w, (low - 0.6 * tip) / h);
 }
 
-/* 1, 2 or 5 times a power of ten, at most `longest`. */
-static double round_length(double longest)
+double sv_round_length(double longest)
 {
     const double power = pow(10, floor(log10(longest)));
     const double leading = longest / power;
@@ -93,7 +92,7 @@ static void add_scale_bar(sv_map_figure *f)
 {
     const double constant = f->map->lattice_constant, w = f->figure.width_cm;
     const double unit = constant > 0 ? constant : 1;
-    const double length = round_length(0.3 * (f->high[0] - f->low[0]) * unit);
+    const double length = sv_round_length(0.3 * (f->high[0] - f->low[0]) * unit);
     const double cm = length / unit * f->scale, h = f->figure.height_cm, y = 0.36;
     sv_draft *script = &f->figure.script;
     sv_draft_add(script,
@@ -184,7 +183,7 @@ void sv_map_add_script(sv_map_figure *f)
                  f->left_cm / w, (f->left_cm + f->scale * x) / w, f->low_cm / h,
                  (f->low_cm + f->scale * y) / h, f->low[0], f->high[0], f->low[1], f->high[1]);
     sv_headline_add(&f->headline, &f->figure);
-    add_palette(script);
+    sv_script_palette(script);
     add_bar(f);
     add_scale_bar(f);
     add_legend(f);

@@ -286,7 +286,7 @@ sv_status sv_figure_probes(sv_context *context, const char *folder, const char *
     outline.site_values = NULL;
     sv_status status = sv_figure_begin(&f.figure, &files);
     if (status == SV_OK)
-        status = sv_raster_make(context, &outline, NULL, &f.raster);
+        status = sv_raster_make(context, &outline, NULL, 0, &f.raster);
     if (status == SV_OK) {
         choose_words(&f, note);
         choose_frame(&f);

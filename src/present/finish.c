@@ -117,18 +117,23 @@ static sv_status finish_svg(sv_figure *figure, sv_figure_files *files)
     return status;
 }
 
+/* The pictures that were asked for have a path. */
 sv_status sv_picture_finish(sv_figure *figure, sv_figure_files *files)
 {
     char *data = NULL;
     size_t size = 0;
     sv_status status = SV_OK;
-    if (!read_picture(figure, files, files->png, "IEND", &data, &size))
-        return SV_OK;
-    sv_give(figure->context, data);
-    if (!read_picture(figure, files, files->pdf, "%%EOF", &data, &size))
-        return SV_OK;
-    blank_date(data, size);
-    status = sv_write_file(figure->context, files->pdf, data, size);
-    sv_give(figure->context, data);
-    return status == SV_OK ? finish_svg(figure, files) : status;
+    if (files->png[0] != '\0') {
+        if (!read_picture(figure, files, files->png, "IEND", &data, &size))
+            return SV_OK;
+        sv_give(figure->context, data);
+    }
+    if (files->pdf[0] != '\0') {
+        if (!read_picture(figure, files, files->pdf, "%%EOF", &data, &size))
+            return SV_OK;
+        blank_date(data, size);
+        status = sv_write_file(figure->context, files->pdf, data, size);
+        sv_give(figure->context, data);
+    }
+    return status == SV_OK && files->svg[0] != '\0' ? finish_svg(figure, files) : status;
 }

@@ -122,10 +122,13 @@ static void put_units(sv_json *json, json_t *object, const sv_point_result *poin
 
 static json_t *make_point(sv_json *json, const sv_point_result *point)
 {
-    json_t *object = json_object(), *markers = json_object();
+    json_t *object = json_object(), *markers = json_object(), *inventory = json_object();
     sv_json_put(json, object, "parameters", make_parameters(json, point));
     put_units(json, object, point);
     sv_json_put_integer(json, object, "realisations", point->realisations);
+    sv_json_put_real(json, inventory, "sites", point->mean_sites);
+    sv_json_put_real(json, inventory, "vacancies", point->mean_vacancies);
+    sv_json_put(json, object, "inventory", inventory);
     for (int i = 0; i < point->n_summaries; i++)
         sv_json_put(json, markers, point->summaries[i].marker,
                     make_marker(json, &point->summaries[i]));

@@ -103,6 +103,8 @@ sv_status sv_map_json(sv_context *context, const sv_map_result *map, char **ret_
     sv_json_put_integer(&json, document, "realisation", record->realisation);
     sv_json_put_integer(&json, document, "sites", record->sites);
     sv_json_put_integer(&json, document, "vacancies", record->vacancies);
+    if (map->sample != NULL)
+        sv_json_put(&json, document, "inventory", sv_json_inventory(&json, map->sample));
     if (record->status != SV_OK)
         sv_json_put_text(&json, document, "reason", sv_status_text(record->status));
     for (int i = 0; i < record->n_outcomes && i < map->point->n_markers; i++) {

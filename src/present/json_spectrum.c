@@ -67,6 +67,8 @@ sv_status sv_spectrum_json(sv_context *context, const sv_spectrum_result *result
     sv_json_put_text(&json, document, "title", result->title);
     sv_json_put_integer(&json, document, "realisation", result->realisation);
     sv_json_put_integer(&json, document, "sites", s->sites);
+    if (result->sample != NULL)
+        sv_json_put(&json, document, "inventory", sv_json_inventory(&json, result->sample));
     put_count(&json, document, "states_below_fermi", s->states_below);
     sv_json_put_real(&json, document, "highest_occupied", s->highest_occupied);
     sv_json_put_real(&json, document, "lowest_empty", s->lowest_empty);

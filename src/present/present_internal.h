@@ -71,6 +71,11 @@ sv_status sv_json_finish(sv_json *json, json_t *document, char **ret_text);
 void sv_survey_put(sv_json *json, json_t *marker, const sv_survey *survey);
 void sv_survey_print(const sv_survey *survey, FILE *stream);
 
+/* ----------------------------------------------------------- inventory.c */
+
+json_t *sv_json_inventory(sv_json *json, const sv_sample *sample);
+/* "2 pieces (largest: 840 sites), 3 dangling, …" @param[out] text at least 300 bytes */
+void sv_inventory_words(const sv_sample *sample, char *text, size_t size);
 /* -------------------------------------------------------------- coarse.c */
 
 void sv_coarse_put(sv_json *json, json_t *marker, const sv_coarse *map);
@@ -99,9 +104,11 @@ typedef struct sv_places {
     sv_index count;
 } sv_places;
 
-/* `window`: one flag per cell, or NULL. */
+/* `window`: one flag per cell, or NULL; `most`: pixels along the longer side, 0: fit for a map. */
 sv_status sv_raster_make(sv_context *context, const sv_map_result *map, const bool *window,
-                         sv_raster *ret_raster);
+                         int most, sv_raster *ret_raster);
+/* The pixels of the flake with a little air around, lattice constants. */
+void sv_raster_frame(const sv_raster *raster, double ret_low[2], double ret_high[2]);
 void sv_raster_free(sv_context *context, sv_raster *raster);
 sv_status sv_places_vacant(sv_context *context, const sv_sample *sample, sv_places *ret_places);
 
@@ -120,6 +127,7 @@ typedef struct sv_figure {
     const char *folder, *name;
     double width_cm, height_cm;
     const char *title, *description; /* of the SVG, for readers that cannot see it */
+    const char *only;                /* the one ending to draw, "svg" …, or NULL for all three */
     sv_draft script;
 } sv_figure;
 

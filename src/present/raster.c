@@ -134,7 +134,7 @@ static void paint_pixel(const painter *p, const double point[2], float *value, u
 }
 
 /* Frame around all sites, half a cell wide, in square pixels. */
-static void choose_grid(const sv_flake *flake, sv_raster *raster)
+static void choose_grid(const sv_flake *flake, int most, sv_raster *raster)
 {
     const double(*a)[2] = flake->model->vectors;
     const double margin = 0.6 * (hypot(a[0][0], a[0][1]) + hypot(a[1][0], a[1][1]));
@@ -146,7 +146,8 @@ static void choose_grid(const sv_flake *flake, sv_raster *raster)
         }
     const double size = fmax(high[0] - low[0], high[1] - low[1]);
     const double cells = size / sqrt(sv_model_cell_area(flake->model));
-    const double pixels = fmin(fmax(PIXELS_PER_CELL * cells, LEAST_PIXELS), MOST_PIXELS);
+    const double fit = fmin(fmax(PIXELS_PER_CELL * cells, LEAST_PIXELS), MOST_PIXELS);
+    const double pixels = most > 0 ? fmin(fit, most) : fit;
     raster->step = size / pixels;
     raster->nx = (int)ceil((high[0] - low[0]) / raster->step);
     raster->ny = (int)ceil((high[1] - low[1]) / raster->step);
@@ -155,11 +156,11 @@ static void choose_grid(const sv_flake *flake, sv_raster *raster)
 }
 
 sv_status sv_raster_make(sv_context *context, const sv_map_result *map, const bool *window,
-                         sv_raster *ret_raster)
+                         int most, sv_raster *ret_raster)
 {
     painter p;
     sv_raster raster = {0};
-    choose_grid(map->sample->flake, &raster);
+    choose_grid(map->sample->flake, most, &raster);
     const sv_index count = (sv_index)raster.nx * raster.ny;
     sv_status status = make_painter(context, map, window, &p);
     if (status == SV_OK)
@@ -182,6 +183,25 @@ sv_status sv_raster_make(sv_context *context, const sv_map_result *map, const bo
     else
         sv_raster_free(context, &raster);
     return status;
+}
+
+void sv_raster_frame(const sv_raster *r, double ret_low[2], double ret_high[2])
+{
+    int low[2] = {r->nx, r->ny}, high[2] = {0, 0};
+    for (int y = 0; y < r->ny; y++)
+        for (int x = 0; x < r->nx; x++) {
+            if (r->inside[(sv_index)y * r->nx + x] == 0)
+                continue;
+            low[0] = x < low[0] ? x : low[0];
+            high[0] = x > high[0] ? x : high[0];
+            low[1] = y < low[1] ? y : low[1];
+            high[1] = y > high[1] ? y : high[1];
+        }
+    const double air = 0.012 * fmax(high[0] - low[0], high[1] - low[1]);
+    for (int d = 0; d < 2; d++) {
+        ret_low[d] = r->low[d] + (low[d] - 0.5 - air) * r->step;
+        ret_high[d] = r->low[d] + (high[d] + 0.5 + air) * r->step;
+    }
 }
 
 void sv_raster_free(sv_context *context, sv_raster *raster)

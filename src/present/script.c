@@ -70,6 +70,23 @@ void sv_script_literal(const char *text, char *literal, size_t size)
     literal[used] = '\0';
 }
 
+/* Terminals by number; all of them unless the figure wants one. */
+static const char *const endings[] = {"svg", "pdf", "png"};
+
+static bool wants(const sv_figure *figure, const char *ending)
+{
+    return figure->only == NULL || strcmp(figure->only, ending) == 0;
+}
+
+static void add_loop(sv_figure *figure)
+{
+    int first = 1, last = 3;
+    for (int k = 0; k < 3 && figure->only != NULL; k++)
+        if (strcmp(figure->only, endings[k]) == 0)
+            first = last = k + 1;
+    sv_draft_add(&figure->script, "do for [k = %d:%d] {\n", first, last);
+}
+
 /*
  * One drawing, three files: every terminal is laid out at the size of the paper column, the SVG
  * in points, the preview in pixels with all sizes scaled along.
@@ -77,10 +94,11 @@ void sv_script_literal(const char *text, char *literal, size_t size)
 void sv_script_terminals(sv_figure *figure)
 {
     const double w = figure->width_cm, h = figure->height_cm, scale = preview_scale(w);
+    sv_draft_add(&figure->script, "set encoding utf8\nset decimalsign '.'\n"
+                                  "set datafile missing 'NaN'\n\n");
+    add_loop(figure);
     sv_draft_add(
         &figure->script,
-        "set encoding utf8\nset decimalsign '.'\nset datafile missing 'NaN'\n\n"
-        "do for [k = 1:3] {\n"
         "if (k == 1) {\n"
         "    set terminal svg size %.6g,%.6g dynamic rounded noenhanced font 'Helvetica,8' "
         "background '#ffffff'\n    set output '%s.svg'\n}\n",
@@ -110,18 +128,21 @@ sv_status sv_figure_write(sv_figure *figure, const char *suffix, const void *byt
 
 static void remove_pictures(const sv_figure_files *files)
 {
-    remove(files->svg);
-    remove(files->pdf);
-    remove(files->png);
+    const char *const paths[] = {files->svg, files->pdf, files->png};
+    for (int k = 0; k < 3; k++)
+        if (paths[k][0] != '\0')
+            remove(paths[k]);
 }
 
 /* Old pictures go first: a link could point anywhere, and a stale file would look like success. */
 static sv_status clear_pictures(sv_figure *figure, sv_figure_files *files)
 {
-    sv_status status = file_path(figure, ".svg", files->svg);
-    if (status == SV_OK)
+    sv_status status = SV_OK;
+    if (wants(figure, "svg"))
+        status = file_path(figure, ".svg", files->svg);
+    if (status == SV_OK && wants(figure, "pdf"))
         status = file_path(figure, ".pdf", files->pdf);
-    if (status == SV_OK)
+    if (status == SV_OK && wants(figure, "png"))
         status = file_path(figure, ".png", files->png);
     if (status == SV_OK)
         remove_pictures(files);

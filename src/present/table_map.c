@@ -110,8 +110,14 @@ void sv_map_print(const sv_map_result *map, bool colour, FILE *stream)
     const sv_marker *table = sv_marker_table(&count);
     const sv_record *record = map->record;
     sv_table_heading(stream, map->title[0] != '\0' ? map->title : "(no title)", colour);
-    fprintf(stream, "  realisation %lld: %lld sites, %lld vacancies\n\n",
+    fprintf(stream, "  realisation %lld: %lld sites, %lld vacancies\n",
             (long long)record->realisation, (long long)record->sites, (long long)record->vacancies);
+    if (map->sample != NULL) {
+        char words[300];
+        sv_inventory_words(map->sample, words, sizeof words);
+        fprintf(stream, "  %s\n", words);
+    }
+    fputc('\n', stream);
     if (record->status != SV_OK)
         fprintf(stream, "  failed: %s\n", sv_status_text(record->status));
     for (int i = 0; i < record->n_outcomes && i < map->point->n_markers; i++)

@@ -98,8 +98,14 @@ void sv_spectrum_print(const sv_spectrum_result *result, bool colour, FILE *stre
 {
     const sv_spectrum *s = result->spectrum;
     sv_table_heading(stream, result->title[0] != '\0' ? result->title : "(no title)", colour);
-    fprintf(stream, "  realisation %lld: %lld sites\n\n", (long long)result->realisation,
+    fprintf(stream, "  realisation %lld: %lld sites\n", (long long)result->realisation,
             (long long)s->sites);
+    if (result->sample != NULL) {
+        char words[300];
+        sv_inventory_words(result->sample, words, sizeof words);
+        fprintf(stream, "  %s\n", words);
+    }
+    fputc('\n', stream);
     print_levels(s, stream);
     print_statistics(s, stream);
     print_near(s, stream);

@@ -7,6 +7,9 @@
 
 #include <jansson.h>
 
+/* `check` draws no sample above this many sites. */
+static const sv_index SAMPLE_LARGEST = 200000;
+
 /* null where the model has no length. */
 static json_t *film_json(const film_length *film)
 {
@@ -53,6 +56,27 @@ static void print_film(const session *s)
            s->base.model.n_positions / (area * a * a) * 1e14);
 }
 
+/* The pieces of realisation 0 on the sheet's own boundary, when that is quick. */
+static void print_sample(session *s)
+{
+    sv_context *context = s->context;
+    const sv_setup *setup = &s->base;
+    sv_flake flake = {0};
+    sv_sample sample = {0};
+    char *words = NULL;
+    if (s->points[0].open.n_sites > SAMPLE_LARGEST)
+        return;
+    if (sv_flake_make(context, &setup->model, &setup->flake, &flake) == SV_OK &&
+        sv_sample_draw(context, &flake, setup->disorder, setup->n_disorder, setup->seed, 0,
+                       &sample) == SV_OK &&
+        sv_inventory_text(context, &sample, &words) == SV_OK)
+        printf("#\n# realisation 0 of the sheet as written: %lld sites, %lld vacancies\n# %s\n",
+               (long long)sample.n, (long long)sample.inventory.vacancies, words);
+    sv_give(context, words);
+    sv_sample_free(context, &sample);
+    sv_flake_free(context, &flake);
+}
+
 int run_check(sv_context *context, const options *o)
 {
     session s = {0};
@@ -80,6 +104,7 @@ int run_check(sv_context *context, const options *o)
         print_forecast(&f, &s, "#   ", stdout);
         print_film(&s);
         defects_print(&s.base, stdout);
+        print_sample(&s);
         film_print(&film, s.n_points, stdout);
         status = presets_print_sources(context, s.sheet, stdout);
         code = status == SV_OK ? code : fail_exit(context, status);

@@ -57,12 +57,14 @@ static sv_status print_result(sv_context *context, const options *o,
 
 /* Everything that was asked for; then the verdict: an occupation that arithmetic could not decide
  * ends the command with 1. */
-static sv_status present(session *s, const sv_spectrum *spectrum)
+static sv_status present(session *s, const sv_spectrum *spectrum, const sv_sample *sample)
 {
     sv_context *context = s->context;
     const options *o = s->options;
-    sv_spectrum_result result = {
-        .title = s->base.title, .realisation = o->realisation, .spectrum = spectrum};
+    sv_spectrum_result result = {.title = s->base.title,
+                                 .realisation = o->realisation,
+                                 .spectrum = spectrum,
+                                 .sample = sample};
     sv_status status = SV_OK;
     if (o->csv != NULL)
         status = write_csv(context, o->csv, &result);
@@ -98,7 +100,7 @@ static sv_status analyse(session *s)
     if (status == SV_OK)
         status = sv_spectrum_make(context, &sample, &setup->occupation, &wanted, &spectrum);
     if (status == SV_OK)
-        status = present(s, &spectrum);
+        status = present(s, &spectrum, &sample);
     sv_spectrum_free(context, &spectrum);
     sv_sample_free(context, &sample);
     sv_flake_free(context, &flake);

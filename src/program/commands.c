@@ -10,6 +10,8 @@
 static const command commands[] = {
     {"check", "SHEET", "validates a sheet, prints it resolved, forecasts time and memory",
      SHEET_OPTIONS "j", 1, 1, run_check},
+    {"draw", "SHEET -o FIGURE", "one realisation of the sample as a figure, and its inventory",
+     SHEET_OPTIONS "ko", 1, 1, run_draw},
     {"map", "SHEET", "one realisation: the local Chern marker site by site",
      SHEET_OPTIONS "kojVBMPF", 1, 1, run_map},
     {"spectrum", "SHEET", "states below E_F, gap, states next to it, density of states",

@@ -135,6 +135,7 @@ void signals_install(void);
 bool signals_stop_requested(void *user);
 
 int run_check(sv_context *context, const options *o);
+int run_draw(sv_context *context, const options *o);
 int run_map(sv_context *context, const options *o);
 int run_spectrum(sv_context *context, const options *o);
 int run_average(sv_context *context, const options *o);

@@ -2,7 +2,22 @@
 /* Summaries of all points of a run, in the form tables and figures take. */
 #include "program_internal.h"
 
+#include <math.h>
 #include <string.h>
+
+/* Sites and vacancies of the samples that count. */
+static void mean_inventory(const sv_ensemble *ensemble, int32_t number, sv_point_result *ret)
+{
+    const sv_record *records = &ensemble->records[number * ensemble->realisations];
+    double sites = 0.0, vacancies = 0.0;
+    for (int64_t k = 0; k < ret->realisations; k++) {
+        sites += (double)records[k].sites;
+        vacancies += (double)records[k].vacancies;
+    }
+    ret->mean_sites = ret->realisations > 0 ? sites / (double)ret->realisations : (double)NAN;
+    ret->mean_vacancies =
+        ret->realisations > 0 ? vacancies / (double)ret->realisations : (double)NAN;
+}
 
 static sv_status fill_point(session *s, const sv_ensemble *ensemble, const sv_stop_rule *stop,
                             int32_t number, sv_point_result *ret, bool *complete)
@@ -13,6 +28,7 @@ static sv_status fill_point(session *s, const sv_ensemble *ensemble, const sv_st
     memcpy(ret->coordinates, p->coordinates, sizeof ret->coordinates);
     ret->realisations = sv_ensemble_counted(ensemble, number, stop, &settled);
     *complete = *complete && settled;
+    mean_inventory(ensemble, number, ret);
     for (int m = 0; m < p->problem.n_markers; m++) {
         sv_status status = sv_summarise(s->context, ensemble, &p->problem, number, m,
                                         ret->realisations, &ret->summaries[m]);

@@ -146,7 +146,10 @@ sv_status sv_sample_draw(sv_context *context, const sv_flake *flake, const sv_di
         goto out;
     d.inventory.sites = sample.n;
     sample.inventory = d.inventory;
-    if ((status = sv_sample_build_hamiltonian(context, &sample, &d, row_of_site)) != SV_OK)
+    if ((status = sv_sample_build_hamiltonian(context, &sample, &d, row_of_site)) != SV_OK ||
+        (flake->spec.keep_largest &&
+         (status = sv_sample_keep_largest(context, &sample)) != SV_OK) ||
+        (status = sv_sample_pieces(context, &sample, NULL)) != SV_OK)
         goto out;
     *ret_sample = sample;
     sample = (sv_sample){0};

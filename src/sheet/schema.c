@@ -45,6 +45,11 @@ static const sv_key flake_keys[] = {
      .choices = "open periodic",
      .fallback = "open",
      .doc = "of both directions, or [along the first, along the second]"},
+    {.name = "keep",
+     .type = SV_KEY_CHOICE,
+     .choices = "all largest",
+     .fallback = "all",
+     .doc = "all connected pieces, or only the largest of each sample"},
 };
 
 static const sv_key disorder_keys[] = {

@@ -118,6 +118,7 @@ bool sv_setup_flake(sv_reader *reader, sv_setup *setup)
     flake->has_size = size->present;
     flake->has_radius = radius->present;
     flake->has_side = side->present;
+    flake->keep_largest = strcmp(sv_section_value(section, "keep")->text, "largest") == 0;
     flake->radius = radius->real[0];
     flake->side = side->real[0];
     flake->inner = sv_section_value(section, "inner")->real[0];

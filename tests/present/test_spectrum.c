@@ -39,7 +39,7 @@ static void invent(invented *f)
                                 .density_resolution = 0.0125,
                                 .density_error = 0.003,
                                 .method = "Chebyshev moments, random phases"};
-    f->result = (sv_spectrum_result){"Invented spectrum", 3, &f->spectrum};
+    f->result = (sv_spectrum_result){"Invented spectrum", 3, &f->spectrum, NULL};
 }
 
 static void make_unknown(invented *f)
