@@ -10,7 +10,8 @@ enum { NONE = -1, SEVERAL = -2 };
 /* What stands at a position (cell by cell, then by position in the cell). */
 typedef struct place {
     double at[2], energy;
-    int32_t rows;      /* orbitals left */
+    int32_t rows; /* orbitals left */
+    int32_t adatoms;
     int32_t neighbour; /* the only one, NONE or SEVERAL */
     bool pristine, whole;
 } place;
@@ -70,6 +71,10 @@ static sv_status fill_places(sv_draw_figure *f, places *p)
         p->at[place_of(whole, r)].whole = true;
     for (sv_index r = 0; r < sample->n; r++) {
         place *at = &p->at[place_of(sample, r)];
+        if (sample->adatom != NULL && sample->adatom[r] >= 0) {
+            at->adatoms++;
+            continue;
+        }
         at->rows++;
         at->energy += f->energy_factor * sample->potential[r];
     }
@@ -182,7 +187,13 @@ static void find_shortest(sv_draw_figure *f, const places *p)
     f->shortest = isfinite(shortest) ? shortest : 0;
 }
 
-typedef enum place_kind { PLACE_VACANT, PLACE_REMOVED, PLACE_HANGING, PLACE_LONE } place_kind;
+typedef enum place_kind {
+    PLACE_VACANT,
+    PLACE_REMOVED,
+    PLACE_HANGING,
+    PLACE_LONE,
+    PLACE_ADATOM
+} place_kind;
 
 static bool is_kind(const place *at, place_kind kind)
 {
@@ -193,6 +204,8 @@ static bool is_kind(const place *at, place_kind kind)
         return at->rows == 0 && at->whole;
     case PLACE_HANGING:
         return at->rows > 0 && at->neighbour >= 0;
+    case PLACE_ADATOM:
+        return at->adatoms > 0;
     case PLACE_LONE:
         return at->rows > 0 && at->neighbour == NONE;
     }
@@ -223,6 +236,7 @@ sv_status sv_draw_write_sites(sv_draw_figure *f, sv_draft *text)
     f->removed = write_places(&p, PLACE_REMOVED, "removed", text);
     f->hanging = write_places(&p, PLACE_HANGING, "dangling", text);
     f->lone = write_places(&p, PLACE_LONE, "isolated", text);
+    f->adatoms = write_places(&p, PLACE_ADATOM, "adatoms", text);
     for (int kind = BOND_NEAR; kind <= BOND_AROUND && f->by_site; kind++) {
         sv_draft_add(text, "\n\n# %s\n", bonds[kind]);
         write_bonds(f, &p, (bond_kind)kind, text);

@@ -11,7 +11,8 @@ void sv_draw_choose_layout(sv_draw_figure *f)
 {
     const double room = width_cm - 2 * side_cm - (f->range > 0 ? bar_room_cm - side_cm : 0);
     const double x = f->high[0] - f->low[0], y = f->high[1] - f->low[1], tallest = 11, least = 2.2;
-    const int kinds = (f->vacant > 0) + (f->removed > 0) + (f->hanging > 0) + (f->lone > 0);
+    const int kinds =
+        (f->vacant > 0) + (f->removed > 0) + (f->hanging > 0) + (f->lone > 0) + (f->adatoms > 0);
     f->foot_cm = 0.7 + (kinds > 0 ? line_cm * ((kinds + 1) / 2) : 0);
     f->scale = fmin(room / x, tallest / y);
     f->left_cm = side_cm + 0.5 * (room - f->scale * x);
@@ -59,7 +60,14 @@ static void add_scale_bar(sv_draw_figure *f)
         (side_cm + cm + 0.15) / w, y / h);
 }
 
-enum { POINT_VACANT = 6, POINT_DARK = 5, POINT_REMOVED = 2, POINT_HANGING = 8, POINT_LONE = 12 };
+enum {
+    POINT_VACANT = 6,
+    POINT_DARK = 5,
+    POINT_REMOVED = 2,
+    POINT_HANGING = 8,
+    POINT_LONE = 12,
+    POINT_ADATOM = 1
+};
 
 /* Pixels would drown in more symbols than this. */
 static sv_index most_symbols(const sv_draw_figure *f, int point)
@@ -94,6 +102,7 @@ static void add_legend(sv_draw_figure *f)
     add_entry(f, &number, POINT_VACANT, f->vacant, "vacancy", "vacancies");
     add_entry(f, &number, POINT_REMOVED, f->removed, "removed position", "removed positions");
     add_entry(f, &number, POINT_HANGING, f->hanging, "dangling position", "dangling positions");
+    add_entry(f, &number, POINT_ADATOM, f->adatoms, "site with an adatom", "sites with adatoms");
     add_entry(f, &number, POINT_LONE, f->lone, "isolated position", "isolated positions");
 }
 
@@ -181,6 +190,7 @@ static void add_plot(sv_draw_figure *f)
     add_symbols(f, "vacancies", POINT_VACANT, f->vacant, size);
     add_symbols(f, "removed", POINT_REMOVED, f->removed, size);
     add_symbols(f, "dangling", POINT_HANGING, f->hanging, 1.5 * size);
+    add_symbols(f, "adatoms", POINT_ADATOM, f->adatoms, size);
     add_symbols(f, "isolated", POINT_LONE, f->lone, 1.5 * size);
     sv_draft_add(&f->figure.script,
                  "  '%s.dat' index 'outline' using 1:2 with lines lc rgb '#000000' lw 0.7 "

@@ -41,7 +41,7 @@ typedef struct sv_draw_figure {
     double range;                  /* largest |potential|, energy unit of `unit`; 0: none */
     double energy_factor;          /* what is shown = factor · model unit */
     const char *unit;              /* of the bar */
-    sv_index vacant, removed, hanging, lone; /* symbols drawn */
+    sv_index vacant, removed, hanging, lone, adatoms; /* symbols drawn */
     sv_index bonds[3];             /* near, far, around the torus: lines written */
     double shortest;               /* bond, lattice constants; 0: no bonds */
     double low[2], high[2];

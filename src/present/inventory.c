@@ -9,7 +9,8 @@ static sv_index count_orbital(const sv_sample *sample, int orbital)
 {
     sv_index count = 0;
     for (sv_index r = 0; r < sample->n; r++)
-        count += sample->flake->sites[sample->pristine[r]].orbital == orbital;
+        count += sample->flake->sites[sample->pristine[r]].orbital == orbital &&
+                 (sample->adatom == NULL || sample->adatom[r] < 0);
     return count;
 }
 
@@ -32,6 +33,7 @@ json_t *sv_json_inventory(sv_json *json, const sv_sample *sample)
     sv_json_put_integer(json, object, "imbalance", inventory->imbalance);
     sv_json_put_integer(json, object, "vacancies", inventory->vacancies);
     sv_json_put_integer(json, object, "vacant_sites", inventory->vacant_sites);
+    sv_json_put_integer(json, object, "adatoms", inventory->adatoms);
     sv_json_put_integer(json, object, "removed_sites", inventory->removed_sites);
     sv_json_put_integer(json, object, "pieces", inventory->pieces);
     sv_json_put_integer(json, object, "largest_piece", inventory->largest_piece);

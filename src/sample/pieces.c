@@ -148,7 +148,8 @@ static sv_status count_imbalance(sv_context *context, sv_sample *sample)
     if (status != SV_OK)
         return status;
     for (sv_index r = 0; r < sample->n; r++)
-        count[sample->flake->sites[sample->pristine[r]].orbital]++;
+        if (sample->adatom == NULL || sample->adatom[r] < 0)
+            count[sample->flake->sites[sample->pristine[r]].orbital]++;
     sv_index low = count[0], high = count[0];
     for (int k = 1; k < model->n_orbitals; k++) {
         low = count[k] < low ? count[k] : low;
@@ -211,6 +212,8 @@ static void compress(sv_sample *sample, const int32_t *new_row)
         h->row_start[kept] = used;
         sample->pristine[kept] = sample->pristine[r];
         sample->potential[kept] = sample->potential[r];
+        if (sample->adatom != NULL)
+            sample->adatom[kept] = sample->adatom[r];
         for (sv_index k = first; k < last; k++) {
             if (new_row[h->column[k]] < 0)
                 continue;
@@ -222,6 +225,9 @@ static void compress(sv_sample *sample, const int32_t *new_row)
     h->row_start[kept] = used;
     h->n = kept;
     sample->n = kept;
+    sample->inventory.adatoms = 0;
+    for (sv_index r = 0; sample->adatom != NULL && r < kept; r++)
+        sample->inventory.adatoms += sample->adatom[r] >= 0;
 }
 
 sv_status sv_sample_keep_largest(sv_context *context, sv_sample *sample)
