@@ -191,6 +191,36 @@ typedef enum sv_covariance {
     SV_COVARIANCE_EXPONENTIAL /**< exp(−r/l) to 3e-4, by gaussians of many lengths */
 } sv_covariance;
 
+/** Grey values of an image, 0 black … 1 white, as stored (no gamma); row 0 is the lowest. */
+typedef struct sv_grey {
+    int width, height;
+    float *value;
+} sv_grey;
+
+/** Does the file begin like a PNG or a TIFF image? */
+SV_API bool sv_image_is(const void *data, size_t size);
+SV_API void sv_grey_free(sv_context *context, sv_grey *grey);
+
+/** Values on a regular raster of the plane. Lengths in lattice constants. */
+typedef struct sv_grid {
+    sv_index nx, ny;
+    double step[2], first[2]; /**< of value (0, 0) in the map's own coordinates */
+    double origin[2];         /**< where the map's (0, 0) lies in the flake */
+    double rotation;          /**< of the map about its (0, 0), counter-clockwise, radian */
+    double *value;            /**< nx·ny, x fastest; owned. NULL: taken from an image */
+    const float *grey;        /**< borrowed */
+    double black, white;      /**< what the ends of the grey scale mean */
+} sv_grid;
+
+/** The grid of an image: its lower left corner is (0, 0), values stand for the pixels' middles. */
+SV_API sv_grid sv_grid_of_grey(const sv_grey *grey, double pixel, double black, double white);
+/**
+ * Value at a point of the flake, bilinear between the four values around it, constant over the outer
+ * half step. @return false outside
+ */
+SV_API bool sv_grid_at(const sv_grid *grid, const double at[2], double *ret_value);
+SV_API void sv_grid_free(sv_context *context, sv_grid *grid);
+
 /** A defect position or site energy read from a measured file. */
 typedef struct sv_mark {
     bool by_cell;      /**< cell, orbital given instead of a position */
@@ -252,6 +282,11 @@ typedef struct sv_disorder {
     bool has_marks;
     sv_mark *marks; /**< owned */
     sv_index n_marks;
+    bool has_grid;
+    sv_grid grid;          /**< energies, or grey shares of an image of defects */
+    bool darker;           /**< vacancies: below the threshold, else above */
+    double threshold;      /**< grey share, 0 … 1 */
+    bool keep_unmatched;   /**< rows and sites without a partner are left out, not refused */
     double tolerance;   /**< largest distance of a mark from its site, lattice constants */
     char file[256];     /**< name for messages */
 } sv_disorder;
@@ -278,6 +313,27 @@ SV_API double sv_disorder_puddle_deviation(const sv_disorder *disorder);
  */
 SV_API sv_closure sv_disorder_can_close(const sv_disorder *disorder, int n);
 
+/**
+ * Reads a grey-scale image: PNG (1 to 16 bits; palettes and colours when every pixel is grey, alpha
+ * when every pixel is opaque) or TIFF (one page, 8 or 16 bits, strips or tiles, without compression
+ * or with LZW, Deflate or PackBits). At most 2^25 pixels, judged before memory is taken.
+ * @return SV_INVALID_INPUT with *ret_fault filled: byte of the file where known; no line
+ */
+SV_API SV_MUST_USE sv_status sv_image_read(sv_context *context, const void *data, size_t size,
+                                           sv_grey *ret_grey, sv_table_fault *ret_fault);
+/**
+ * Rows on a regular raster as a grid: every node once, steps even to a thousandth.
+ * @return SV_INVALID_INPUT with the line that breaks it in *ret_fault
+ */
+SV_API SV_MUST_USE sv_status sv_grid_from_marks(sv_context *context, const sv_mark *marks,
+                                                sv_index n, sv_grid *ret_grid,
+                                                sv_table_fault *ret_fault);
+/**
+ * What of a measured file has no partner: the next row that falls on no site or, for maps, the next
+ * site of the flake outside the map, from number `from` on; −1: none.
+ */
+SV_API sv_index sv_measured_unmatched(const sv_flake *flake, const sv_disorder *disorder,
+                                      sv_index from);
 /**
  * Reads a CSV of measured defects (x, y) or site energies (x, y, energy or
  * cell_i, cell_j[, orbital], energy). The first row names the columns; a unit may follow the name
@@ -321,6 +377,7 @@ SV_API int64_t sv_occupation_electrons(const sv_occupation *occupation, sv_index
 /** How many of what. */
 typedef struct sv_inventory {
     sv_index pristine_sites, sites, vacancies /**< positions */, vacant_sites;
+    sv_index marks_matched, marks_unmatched; /**< rows of measured files */
     sv_index marks_merged; /**< measured defects that fell on a site already taken */
     /* Of what is left; positions are neighbours when a nonzero hop links any of their orbitals. */
     sv_index pieces;        /**< connected pieces */

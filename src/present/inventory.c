@@ -39,6 +39,8 @@ json_t *sv_json_inventory(sv_json *json, const sv_sample *sample)
     sv_json_put_integer(json, object, "largest_piece", inventory->largest_piece);
     sv_json_put_integer(json, object, "isolated", inventory->isolated);
     sv_json_put_integer(json, object, "dangling", inventory->dangling);
+    sv_json_put_integer(json, object, "marks_matched", inventory->marks_matched);
+    sv_json_put_integer(json, object, "marks_unmatched", inventory->marks_unmatched);
     sv_json_put_integer(json, object, "marks_merged", inventory->marks_merged);
     return object;
 }

@@ -172,6 +172,7 @@ void sv_sample_free(sv_context *context, sv_sample *sample)
 void sv_disorder_free(sv_context *context, sv_disorder *disorder)
 {
     sv_give(context, disorder->marks);
+    sv_grid_free(context, &disorder->grid);
     *disorder = (sv_disorder){0};
 }
 

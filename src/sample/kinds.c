@@ -147,18 +147,59 @@ const sv_kind *sv_shape_kinds(int *ret_count)
         .name = "on", .type = SV_KEY_TEXT, .fallback = "any", .doc = doc_                          \
     }
 #define FILE_KEYS                                                                                  \
-    {.name = "file", .type = SV_KEY_FILE, .doc = "measured values, CSV beside the sheet"},         \
+    {.name = "file",                                                                               \
+     .type = SV_KEY_FILE,                                                                          \
+     .doc = "measured values beside the sheet: CSV, or a grey-scale image (PNG, TIFF)"},           \
         {.name = "origin",                                                                         \
          .type = SV_KEY_REAL_PAIR,                                                                 \
          .dimension = SV_DIM_LENGTH,                                                               \
          .low = -1e6,                                                                              \
          .high = 1e6,                                                                              \
          .fallback = "[0, 0]",                                                                     \
-         .doc = "where the file's (0, 0) lies in the flake"},                                      \
+         .doc = "where the file's (0, 0) lies in the flake; images: their lower left corner"},     \
+        {.name = "rotation",                                                                       \
+         .type = SV_KEY_REAL,                                                                      \
+         .dimension = SV_DIM_ANGLE,                                                                \
+         .low = -1e3,                                                                              \
+         .high = 1e3,                                                                              \
+         .fallback = "0",                                                                          \
+         .doc = "of the file about its (0, 0), counter-clockwise"},                                \
+        {.name = "tolerance",                                                                      \
+         .type = SV_KEY_REAL,                                                                      \
+         .dimension = SV_DIM_LENGTH,                                                               \
+         .low = 0,                                                                                 \
+         .high = 1e3,                                                                              \
+         .fallback = "0.75",                                                                       \
+         .doc = "largest distance of a measured position from its site"},                          \
+        {.name = "unmatched",                                                                      \
+         .type = SV_KEY_CHOICE,                                                                    \
+         .choices = "refuse skip list",                                                            \
+         .fallback = "refuse",                                                                     \
+         .doc = "rows that fall on no site, sites outside a map: an error, left out with a note, " \
+                "or left out with a note each"},                                                   \
+        LENGTH("pixel", "images: side of a pixel"),                                                \
+        LENGTH("image_width", "images: width of the whole image, instead of pixel")
+#define ENERGY_FILE_KEYS                                                                           \
+    FILE_KEYS,                                                                                     \
+        {.name = "between",                                                                        \
+         .type = SV_KEY_CHOICE,                                                                    \
+         .choices = "nearest bilinear",                                                            \
+         .fallback = "nearest",                                                                    \
+         .doc = "CSV: each row falls on the site next to it (mean of several), or rows are a "     \
+                "regular raster and sites take the value interpolated between"},                   \
+        {.name = "black",                                                                          \
+         .type = SV_KEY_REAL,                                                                      \
+         .dimension = SV_DIM_ENERGY,                                                               \
+         .low = -1e9,                                                                              \
+         .high = 1e9,                                                                              \
+         .doc = "images: what black means"},                                                       \
     {                                                                                              \
-        .name = "tolerance", .type = SV_KEY_REAL, .dimension = SV_DIM_LENGTH, .low = 0,            \
-        .high = 1e3, .fallback = "0.75",                                                           \
-        .doc = "largest distance of a measured position from its site"                             \
+        .name = "white", .type = SV_KEY_REAL, .dimension = SV_DIM_ENERGY, .low = -1e9,             \
+        .high = 1e9, .doc = "images: what white means"                                             \
+    }
+#define GREY(name_, doc_)                                                                          \
+    {                                                                                              \
+        .name = name_, .type = SV_KEY_REAL, .low = 0, .high = 1, .doc = doc_                       \
     }
 #define SHARE(doc_)                                                                                \
     {                                                                                              \
@@ -224,6 +265,8 @@ static const sv_key vacancy_keys[] = {
      .doc = "elementary charges of each, for onsite puddles that name this entry as source"},
     ON("any, or the name of an orbital (case-sensitive)"),
     FILE_KEYS,
+    GREY("darker_than", "images: vacant where the grey (0 black, 1 white) is below this"),
+    GREY("brighter_than", "images: vacant where the grey is above this"),
 };
 static const sv_key onsite_keys[] = {
     {.name = "distribution",
@@ -257,7 +300,7 @@ static const sv_key onsite_keys[] = {
      .fallback = "random",
      .doc = "puddles: of the charges; same: all repel, and the mean is taken off"},
     ON("any, or the name of an orbital (case-sensitive)"),
-    FILE_KEYS,
+    ENERGY_FILE_KEYS,
 };
 static const sv_key mass_keys[] = {
     {.name = "term",
@@ -278,7 +321,7 @@ static const sv_key mass_keys[] = {
      .high = 1e9,
      .doc = "instead of a distribution: energy x area of one point defect, spread over its cell"},
     DENSITY("point defects per area; a cell may hold several"),
-    FILE_KEYS,
+    ENERGY_FILE_KEYS,
 };
 
 #define LAW                                                                                        \

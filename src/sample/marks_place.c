@@ -5,6 +5,7 @@
 
 #include <math.h>
 #include <stdio.h>
+#include <string.h>
 
 /* Orbital a mark means: its own, else the disorder's `on`; −1: any, −2: the two contradict. */
 static int orbital_of_mark(const sv_mark *mark, int on)
@@ -33,6 +34,32 @@ static sv_index site_of_mark(const sv_flake *flake, const sv_disorder *disorder,
                        : sv_flake_site_of(flake, place.cell, orbital);
 }
 
+sv_index sv_measured_unmatched(const sv_flake *flake, const sv_disorder *disorder, sv_index from)
+{
+    double distance;
+    if (disorder->has_grid)
+        return sv_grid_uncovered(flake, disorder, from);
+    for (sv_index m = from; m < disorder->n_marks; m++)
+        if (site_of_mark(flake, disorder, &disorder->marks[m], &distance) < 0)
+            return m;
+    return -1;
+}
+
+/* ", 3 more rows (lines 5, 9, …)" for what lies outside beside the row named. */
+static void count_others(const sv_flake *flake, const sv_disorder *disorder, sv_index first,
+                         char *text, size_t size)
+{
+    sv_index count = 0;
+    char lines[60] = "";
+    for (sv_index m = first; (m = sv_measured_unmatched(flake, disorder, m + 1)) >= 0; count++)
+        if (count < 3)
+            snprintf(lines + strlen(lines), sizeof lines - strlen(lines), "%s%d",
+                     count > 0 ? ", " : "", disorder->marks[m].line);
+    if (count > 0)
+        snprintf(text, size, "; so %s %lld more (line%s %s%s)", count > 1 ? "are" : "is",
+                 (long long)count, count > 1 ? "s" : "", lines, count > 3 ? ", …" : "");
+}
+
 sv_status sv_marks_check(sv_context *context, const sv_flake *flake, const sv_disorder *disorder,
                          sv_table_fault *ret_fault)
 {
@@ -57,9 +84,11 @@ sv_status sv_marks_check(sv_context *context, const sv_flake *flake, const sv_di
             snprintf(fault.message, sizeof fault.message,
                      "position (%g, %g) lattice constants is outside the film", mark->at[0],
                      mark->at[1]);
+        const size_t used = strlen(fault.message);
+        count_others(flake, disorder, m, fault.message + used, sizeof fault.message - used);
         snprintf(fault.hint, sizeof fault.hint,
-                 "the film's cell (0, 0) lies at (0, 0); `origin` moves the file, `tolerance` "
-                 "widens the match");
+                 "the film's cell (0, 0) lies at (0, 0); `origin` and `rotation` move the file, "
+                 "`tolerance` widens the match, `unmatched: skip` leaves such rows out");
         *ret_fault = fault;
         return SV_FAIL(context, SV_INVALID_INPUT, "%s:%d: %s", disorder->file, mark->line,
                        fault.message);
@@ -82,6 +111,8 @@ void sv_vacate_marks(sv_drawing *d, const sv_disorder *disorder)
         const sv_mark *mark = &disorder->marks[m];
         double distance;
         sv_index site = site_of_mark(d->flake, disorder, mark, &distance);
+        d->inventory.marks_matched += site >= 0;
+        d->inventory.marks_unmatched += site < 0;
         if (site < 0)
             continue;
         if (!mark->by_cell || orbital_of_mark(mark, disorder->on) >= 0) {
@@ -120,6 +151,8 @@ sv_status sv_add_marks(sv_context *context, sv_drawing *d, const sv_disorder *di
         const sv_mark *mark = &disorder->marks[m];
         double distance;
         sv_index site = site_of_mark(d->flake, disorder, mark, &distance);
+        d->inventory.marks_matched += site >= 0;
+        d->inventory.marks_unmatched += site < 0;
         if (site < 0)
             continue;
         const sv_cell *cell = &d->flake->cells[d->flake->sites[site].cell];

@@ -113,6 +113,8 @@ sv_status sv_draw_onsite(sv_context *context, sv_drawing *d, const sv_disorder *
 {
     if (disorder->has_marks)
         return sv_add_marks(context, d, disorder);
+    if (disorder->has_grid)
+        return sv_add_grid(context, d, disorder);
     if (disorder->type == SV_DISORDER_MASS && disorder->strength != 0.0)
         return draw_defects(context, d, disorder, stream);
     if (disorder->distribution == SV_PUDDLES)

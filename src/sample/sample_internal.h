@@ -223,6 +223,10 @@ sv_status sv_draw_puddles(sv_context *context, sv_drawing *d, const sv_disorder 
                           const sv_stream *stream);
 /* The standardised field: width 1 of each law. */
 double sv_standard_value(sv_distribution law, double u);
+/* grid_place.c */
+sv_status sv_add_grid(sv_context *context, sv_drawing *d, const sv_disorder *disorder);
+void sv_vacate_grid(sv_drawing *d, const sv_disorder *disorder);
+sv_index sv_grid_uncovered(const sv_flake *flake, const sv_disorder *disorder, sv_index from);
 void sv_vacate_marks(sv_drawing *d, const sv_disorder *disorder);
 sv_status sv_add_marks(sv_context *context, sv_drawing *d, const sv_disorder *disorder);
 

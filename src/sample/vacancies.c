@@ -182,6 +182,8 @@ sv_status sv_draw_vacancies(sv_context *context, sv_drawing *d, const sv_disorde
 {
     if (disorder->has_marks)
         sv_vacate_marks(d, disorder);
+    if (disorder->has_grid)
+        sv_vacate_grid(d, disorder);
     if (disorder->distance > 0.0)
         return sv_draw_spaced(context, d, disorder, stream);
     if (disorder->cluster_size > 0.0)

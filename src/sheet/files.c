@@ -34,6 +34,18 @@ const sv_cached_file *sv_file_find(const sv_sheet *sheet, const char *path)
     return file;
 }
 
+/* Images are decoded once; every point of a sweep looks at the same pixels. */
+static bool decode(sv_reader *reader, const sv_node *node, const char *key, sv_cached_file *file)
+{
+    sv_table_fault fault = {0};
+    sv_status status =
+        sv_image_read(reader->context, file->data, file->source.size, &file->grey, &fault);
+    if (status == SV_INVALID_INPUT)
+        return sv_report(reader, node, fault.hint[0] != '\0' ? fault.hint : NULL, "%s: %.300s: %s",
+                         key, file->path, fault.message);
+    return status == SV_OK || sv_report_status(reader, node, status);
+}
+
 /* Reads the file into the sheet; it is given back with the sheet. */
 static bool load(sv_reader *reader, const sv_node *node, const char *key, const char *path)
 {
@@ -61,7 +73,7 @@ static bool load(sv_reader *reader, const sv_node *node, const char *key, const 
     sv_digest(file->data, file->source.size, file->digest);
     file->next = sheet->files;
     sheet->files = file;
-    return true;
+    return !sv_image_is(file->data, file->source.size) || decode(reader, node, key, file);
 }
 
 /* Adds the file to the list of the setup. */

@@ -8,7 +8,7 @@ enum { BUILD_LIMIT = 2000000, MARKS_LIMIT = 20000000 }; /* sites */
 static bool has_marks(const sv_setup *setup)
 {
     for (int i = 0; i < setup->n_disorder; i++)
-        if (setup->disorder[i].has_marks)
+        if (setup->disorder[i].has_marks || setup->disorder[i].has_grid)
             return true;
     return false;
 }
@@ -35,22 +35,6 @@ static sv_index count_positions(const sv_flake *flake, int on)
     return n;
 }
 
-static bool check_marks(sv_reader *reader, const sv_flake *flake, const sv_disorder *disorder,
-                        const sv_section *section)
-{
-    sv_table_fault fault = {0};
-    sv_status status = sv_marks_check(reader->context, flake, disorder, &fault);
-    if (status == SV_OK)
-        return true;
-    if (status != SV_INVALID_INPUT)
-        return sv_report_status(reader, section->anchor, status);
-    const sv_cached_file *file =
-        sv_file_find(reader->sheet, sv_section_value(section, "file")->text);
-    sv_place place = {&file->source, fault.line, fault.column > 0 ? fault.column : 1, 1};
-    return sv_report_at(reader, &place, fault.hint[0] != '\0' ? fault.hint : NULL, "%s",
-                        fault.message);
-}
-
 static bool check_disorder(sv_reader *reader, const sv_setup *setup, const sv_flake *flake)
 {
     const sv_section *section = NULL;
@@ -58,8 +42,8 @@ static bool check_disorder(sv_reader *reader, const sv_setup *setup, const sv_fl
     for (int i = 0; i < setup->n_disorder; i++) {
         const sv_disorder *disorder = &setup->disorder[i];
         section = sv_document_find(reader, "disorder", section);
-        if (disorder->has_marks)
-            good = check_marks(reader, flake, disorder, section) && good;
+        if (disorder->has_marks || disorder->has_grid)
+            good = sv_check_measured(reader, flake, disorder, section) && good;
         sv_index positions = disorder->has_count ? count_positions(flake, disorder->on) : 0;
         if (disorder->has_count && disorder->count > positions)
             good = sv_report(reader, sv_section_node(section, "count"), NULL,

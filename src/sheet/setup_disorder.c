@@ -34,41 +34,6 @@ static bool (*const uses[])(sv_reader *, const sv_section *, const sv_model *, s
     [SV_DISORDER_ROUGHNESS] = sv_use_roughness, [SV_DISORDER_STEPS] = sv_use_steps,
 };
 
-static bool report_table(sv_reader *reader, const sv_cached_file *file, const sv_table_fault *fault)
-{
-    sv_place place = {&file->source, fault->line, fault->column, 1};
-    return sv_report_at(reader, &place, fault->hint[0] != '\0' ? fault->hint : NULL, "%s",
-                        fault->message);
-}
-
-static bool use_file(sv_reader *reader, const sv_section *section, const sv_model *model,
-                     sv_disorder *disorder)
-{
-    if (sv_section_find(section, "file") < 0)
-        return true;
-    if (sv_section_written(section, "file") == 0) {
-        sv_section_drop_defaults(section, "origin tolerance");
-        return sv_section_none_of(reader, section, "origin tolerance",
-                                  "has no meaning without file");
-    }
-    const sv_value *value = sv_section_value(section, "file");
-    const sv_cached_file *file = sv_file_find(reader->sheet, value->text);
-    sv_table_fault fault = {0};
-    sv_status status =
-        sv_read_marks(reader->context, model, file->source.text, file->source.size,
-                      disorder->type != SV_DISORDER_VACANCIES, reader->lattice_constant,
-                      reader->setup->energy_unit, sv_section_value(section, "origin")->real,
-                      &disorder->marks, &disorder->n_marks, &fault);
-    if (status == SV_INVALID_INPUT)
-        return report_table(reader, file, &fault);
-    if (status != SV_OK)
-        return sv_report_status(reader, section->anchor, status);
-    disorder->has_marks = true;
-    disorder->tolerance = sv_section_value(section, "tolerance")->real[0];
-    snprintf(disorder->file, sizeof disorder->file, "%s", value->text);
-    return true;
-}
-
 /* Charges of an earlier entry: it must be there and have some. */
 static bool find_source(sv_reader *reader, const sv_section *section, const sv_setup *setup,
                         const sv_disorder *disorder)
@@ -99,7 +64,7 @@ static bool use_section(sv_reader *reader, const sv_section *section, const sv_m
     return find_on(reader, section, model, disorder) &&
            uses[section->kind_row](reader, section, model, disorder) &&
            find_source(reader, section, reader->setup, disorder) &&
-           use_file(reader, section, model, disorder);
+           sv_use_file(reader, section, model, disorder);
 }
 
 bool sv_setup_disorder(sv_reader *reader, sv_setup *setup)

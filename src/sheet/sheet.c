@@ -229,7 +229,7 @@ void sv_sheet_free(sv_context *context, sv_sheet *sheet)
     if (sheet == NULL)
         return;
     for (sv_cached_file *file = sheet->files; file != NULL; file = file->next)
-        sv_give(context, file->data);
+        sv_give(context, file->data), sv_grey_free(context, &file->grey);
     sv_give(context, sheet->data);
     sv_arena_free(context, &sheet->arena);
     sv_give(context, sheet);

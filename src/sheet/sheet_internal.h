@@ -174,6 +174,7 @@ typedef struct sv_cached_file {
     sv_source source;
     char *data;
     char digest[65];
+    sv_grey grey; /* of an image; value NULL: something else */
 } sv_cached_file;
 
 struct sv_sheet {
@@ -402,6 +403,11 @@ bool sv_section_rejects(sv_reader *reader, const sv_section *section, const char
 double sv_section_real(const sv_section *section, const char *key);
 /* Number of the word of a key among n words. */
 int sv_section_choice(const sv_section *section, const char *key, const char *const *words, int n);
+/* setup_measured.c: the `file` of a disorder entry, and what of it has no partner */
+bool sv_use_file(sv_reader *reader, const sv_section *section, const sv_model *model,
+                 sv_disorder *disorder);
+bool sv_check_measured(sv_reader *reader, const sv_flake *flake, const sv_disorder *disorder,
+                       const sv_section *section);
 bool sv_setup_ensemble(sv_reader *reader, sv_setup *setup);
 /* Builds the flake, when it is not too large, to see that it exists and holds the defects. */
 bool sv_setup_geometry(sv_reader *reader, const sv_setup *setup);
