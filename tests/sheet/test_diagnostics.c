@@ -38,7 +38,7 @@ SV_TEST(caret_counts_characters_not_bytes)
                   "sheet.yaml:3:42: error: unknown key größe in flake (rectangle)\n"
                   "  flake: {shape: rectangle, cells: [6, 4], \"größe\": 1}\n"
                   "                                           ^~~~~~~\n"
-                  "hint: known: shape, boundary, cells, size, orientation\n");
+                  "hint: known: shape, boundary, keep, cells, size, orientation\n");
 }
 
 SV_TEST(user_text_cannot_drive_the_terminal)
