@@ -6,6 +6,8 @@
 #include <math.h>
 #include <string.h>
 
+/* Cells of the rim of a sampled window whose numerical error is looked at besides. */
+static const sv_index RIM_CELLS = 16;
 /* A site whose stated error is above this is left blank in a map. */
 static const double LARGEST_SITE_ERROR = 0.02;
 
@@ -84,24 +86,26 @@ static void reduce(const chern_work *w, const bool *inside, sv_index cells, doub
         outcome->sum_over_sites = total;
 }
 
-/* Error of the sampled mean from the means of the chosen runs. */
-static sv_status estimator_error(sv_context *context, const chern_work *w, sv_outcome *outcome)
+/* Standard error of the mean over the sampled cells of a number per row. */
+static sv_status sampling_error(sv_context *context, const chern_work *w, const double *values,
+                                double *ret_error)
 {
     const sv_flake *flake = w->sample->flake;
     double *sums = NULL;
     sv_index *cells = NULL;
     sv_status status;
+    *ret_error = 0.0;
     if (w->choice.unit == NULL)
         return SV_OK;
     if ((status = sv_take(context, w->choice.n_units, sizeof *sums, &sums)) != SV_OK ||
         (status = sv_take(context, w->choice.n_units, sizeof *cells, &cells)) != SV_OK)
         goto out;
     for (sv_index k = 0; k < w->n_rows; k++)
-        sums[w->choice.unit[flake->sites[w->sample->pristine[w->rows[k]]].cell]] += w->marker[k];
+        sums[w->choice.unit[flake->sites[w->sample->pristine[w->rows[k]]].cell]] += values[k];
     for (sv_index c = 0; c < flake->n_cells; c++)
         if (w->choice.unit[c] >= 0)
             cells[w->choice.unit[c]]++;
-    outcome->estimator_error = sv_window_error(&w->choice, sums, cells);
+    *ret_error = sv_window_error(&w->choice, sums, cells);
 out:
     sv_give(context, sums);
     sv_give(context, cells);
@@ -123,6 +127,40 @@ static sv_status from_basis(sv_context *context, const sv_marker_input *input, c
     return status;
 }
 
+/*
+ * Edge states reach the outermost cells of a wide window and make most of its error there; a sample
+ * of all cells has too few of them. Their mean error enters with the share of such cells.
+ */
+static sv_status weigh_rim(sv_context *context, const sv_marker_input *input, const bool *inside,
+                           sv_index window_cells, double *error)
+{
+    const sv_sample *sample = input->sample;
+    bool *chosen = NULL;
+    sv_index rim_cells = 0, chosen_cells = 0, *rows = NULL, n_rows = 0;
+    double *work = NULL, sum = 0.0;
+    sv_status status;
+    if ((status = sv_window_rim(context, sample->flake, inside, RIM_CELLS, &chosen, &rim_cells,
+                                &chosen_cells)) != SV_OK ||
+        (status = sv_take_raw(context, sample->n, sizeof *rows, &rows)) != SV_OK)
+        goto out;
+    for (sv_index r = 0; r < sample->n; r++)
+        if (chosen[sample->flake->sites[sample->pristine[r]].cell])
+            rows[n_rows++] = r;
+    if ((status = sv_take(context, 2 * n_rows, sizeof *work, &work)) != SV_OK ||
+        (status = sv_chern_columns(context, sample, input->projector, input->threads, rows, n_rows,
+                                   work, work + n_rows)) != SV_OK)
+        goto out;
+    for (sv_index k = 0; k < n_rows; k++)
+        sum += work[n_rows + k];
+    double share = (double)rim_cells / (double)window_cells;
+    *error = (1.0 - share) * *error + share * sum / (double)chosen_cells;
+out:
+    sv_give(context, chosen);
+    sv_give(context, rows);
+    sv_give(context, work);
+    return status;
+}
+
 /* Row by row through P · columns, for engines without a basis. */
 static sv_status from_columns(sv_context *context, const sv_marker_input *input, chern_work *w,
                               const bool *inside, sv_index cells, sv_outcome *outcome)
@@ -137,8 +175,15 @@ static sv_status from_columns(sv_context *context, const sv_marker_input *input,
     for (sv_index k = 0; k < w->n_rows; k++)
         if (inside[w->sample->flake->sites[w->sample->pristine[w->rows[k]]].cell])
             sum += w->error[k];
-    outcome->numerical_error = sum / (double)cells;
-    return SV_OK;
+    double error = sum / (double)cells, spread;
+    if ((status = sampling_error(context, w, w->error, &spread)) != SV_OK)
+        return status;
+    error += 2.0 * spread;
+    /* outcome->window_cells still counts the whole window here. */
+    if (w->choice.unit != NULL)
+        status = weigh_rim(context, input, inside, outcome->window_cells, &error);
+    outcome->numerical_error = error;
+    return status;
 }
 
 /* Sampling replaces the window by a random choice of its cells; site maps need them all. */
@@ -178,7 +223,7 @@ sv_status sv_local_chern(sv_context *context, const sv_marker_input *input, sv_o
     if (status != SV_OK)
         goto out;
     reduce(&w, inside, cells, input->ret_site_values, &outcome);
-    if ((status = estimator_error(context, &w, &outcome)) != SV_OK)
+    if ((status = sampling_error(context, &w, w.marker, &outcome.estimator_error)) != SV_OK)
         goto out;
     outcome.margin = levels->has_highest && levels->has_lowest
                          ? levels->lowest_empty - levels->highest_occupied

@@ -19,7 +19,8 @@ double sv_chern_error(const sv_sample *sample, double defect);
 /*
  * Local Chern marker of some rows by two projector applications each: v = P|r⟩, then
  * (4π/A) Im⟨x v|P|y v⟩ with positions relative to the site.
- * ret_error receives an estimate of the numerical error of each row.
+ * ret_error receives an estimate of the numerical error of each row; their sum is an estimate of a
+ * bound of the error of the sum.
  */
 sv_status sv_chern_columns(sv_context *context, const sv_sample *sample, sv_projector *projector,
                            int threads, const sv_index *rows, sv_index n_rows, double *ret_marker,
@@ -37,6 +38,11 @@ typedef struct window_choice {
 sv_status sv_window_choose(sv_context *context, const sv_flake *flake, const bool *inside,
                            sv_index wanted, uint64_t seed, sv_index realisation,
                            window_choice *ret_choice);
+/* About `wanted` cells spread evenly over the outermost ones of a window, those with a neighbour
+ * outside it: a flag per cell of the flake, and how many such cells there are and are chosen. */
+sv_status sv_window_rim(sv_context *context, const sv_flake *flake, const bool *inside,
+                        sv_index wanted, bool **ret_chosen, sv_index *ret_cells,
+                        sv_index *ret_chosen_cells);
 /* Standard error of the mean over the chosen runs: differences of neighbouring strata. */
 double sv_window_error(const window_choice *choice, const double *sums, const sv_index *cells);
 

@@ -69,6 +69,50 @@ sv_status sv_window_choose(sv_context *context, const sv_flake *flake, const boo
     return SV_OK;
 }
 
+/* Has the cell a neighbour outside the window? */
+static bool on_rim(const sv_flake *flake, const bool *inside, sv_index cell)
+{
+    const sv_cell *at = &flake->cells[cell];
+    int64_t width = (int64_t)flake->high[1] - flake->low[1] + 1;
+    for (int k = 0; k < 9; k++) {
+        int32_t i = at->i + k / 3 - 1, j = at->j + k % 3 - 1, other = -1;
+        if (i >= flake->low[0] && i <= flake->high[0] && j >= flake->low[1] && j <= flake->high[1])
+            other = flake->cell_at[(i - flake->low[0]) * width + (j - flake->low[1])];
+        if (other < 0 || !inside[other])
+            return true;
+    }
+    return false;
+}
+
+sv_status sv_window_rim(sv_context *context, const sv_flake *flake, const bool *inside,
+                        sv_index wanted, bool **ret_chosen, sv_index *ret_cells,
+                        sv_index *ret_chosen_cells)
+{
+    bool *rim = NULL;
+    sv_index cells = 0, passed = 0, chosen = 0;
+    sv_status status = sv_take(context, flake->n_cells, sizeof *rim, &rim);
+    if (status != SV_OK)
+        return status;
+    for (sv_index c = 0; c < flake->n_cells; c++) {
+        rim[c] = inside[c] && on_rim(flake, inside, c);
+        cells += rim[c];
+    }
+    if (wanted > cells)
+        wanted = cells;
+    for (sv_index c = 0; c < flake->n_cells; c++) {
+        if (!rim[c])
+            continue;
+        /* The middle of each of `wanted` equal stretches. */
+        rim[c] = passed == (2 * chosen + 1) * cells / (2 * wanted) && chosen < wanted;
+        chosen += rim[c];
+        passed++;
+    }
+    *ret_chosen = rim;
+    *ret_cells = cells;
+    *ret_chosen_cells = chosen;
+    return SV_OK;
+}
+
 double sv_window_error(const window_choice *choice, const double *sums, const sv_index *cells)
 {
     double squares = 0.0;

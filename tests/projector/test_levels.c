@@ -200,7 +200,7 @@ SV_TEST(averages_agree_on_what_is_unresolved)
                 first = *o;
             CHECK_INT(o->verdict, first.verdict);
             if (o->verdict == SV_RESOLVED)
-                CHECK_CLOSE(o->value, first.value, 3.0 * o->numerical_error + 1e-9);
+                CHECK_CLOSE(o->value, first.value, o->numerical_error + 1e-9);
         }
     }
     release(&b);
