@@ -93,7 +93,8 @@ static sv_status check_columns(sv_context *context, const column_job *job, doubl
             chosen[found++] = job->rows[k];
     for (int first = 0; first < found; first += SV_PANEL_COLUMNS_SINGLE) {
         double bounds[SV_PANEL_COLUMNS_SINGLE], bases[SV_PANEL_COLUMNS_SINGLE];
-        int count = found - first < SV_PANEL_COLUMNS_SINGLE ? found - first : SV_PANEL_COLUMNS_SINGLE;
+        int count =
+            found - first < SV_PANEL_COLUMNS_SINGLE ? found - first : SV_PANEL_COLUMNS_SINGLE;
         sv_status status = look_at(context, job, chosen + first, count,
                                    first / SV_PANEL_COLUMNS_SINGLE % 2, w, bounds, bases);
         if (status != SV_OK)
@@ -116,7 +117,8 @@ static sv_status check_blocks(sv_context *context, const column_job *job, double
             sum += job->base[first + k];
         if (!(mark < sum))
             continue;
-        double bounds[SV_PANEL_COLUMNS_SINGLE], bases[SV_PANEL_COLUMNS_SINGLE], of_bounds = 0.0, of_bases = 0.0;
+        double bounds[SV_PANEL_COLUMNS_SINGLE], bases[SV_PANEL_COLUMNS_SINGLE], of_bounds = 0.0,
+                                                                                of_bases = 0.0;
         sv_status status =
             look_at(context, job, job->rows + first, count, t->count % 2, w, bounds, bases);
         if (status != SV_OK)
