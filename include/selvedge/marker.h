@@ -33,7 +33,8 @@ typedef struct sv_outcome {
                       Chern: level spacing at the Fermi energy; localizer: its gap, unit of the
                       model; NaN: none */
     double weakest; /**< Bott: smallest modulus of an eigenvalue of V U V† U†, which is 0 when U or
-                         V is singular (or a lower bound, as for the margin); NaN: none */
+                         V is singular (or a lower bound, as for the margin); spectral flow: least share of a level
+                         found again; density response: largest movement of a level next to the Fermi energy; NaN: none */
     double sum_over_sites;                 /**< local Chern, when asked for; NaN otherwise */
     int64_t window_cells;                  /**< local Chern */
     double kappa;                          /**< localizer: energy per lattice constant; NaN: none */
@@ -336,6 +337,39 @@ SV_API SV_MUST_USE sv_status sv_spin_chern(sv_context *context, const sv_marker_
  */
 SV_API SV_MUST_USE sv_status sv_spin_bott(sv_context *context, const sv_marker_input *input,
                                           sv_outcome *ret_outcome);
+
+/**
+ * Density response of a torus to flux (P. Streda, J. Phys. C 15, L717 (1982)): N(Φ) − N(0) states
+ * below the Fermi energy per flux quantum through the whole torus, which is +C exactly in a gap.
+ * Counts by inertia on the same sample with one and two quanta of either sign; a filling is turned
+ * into a Fermi energy without the flux, and that energy is kept. Resolved when all four agree
+ * and the level nearest to the Fermi energy is farther away than the flux moves the two levels next
+ * to it: localised levels that cross it are no response. Margin: distance of the nearest level over
+ * all counts; weakest: that movement. No keys. Cost: one analysis, about twelve factorisations.
+ */
+SV_API SV_MUST_USE sv_status sv_density_response(sv_context *context, const sv_marker_input *input,
+                                                 sv_outcome *ret_outcome);
+
+/**
+ * Spectral flow of an open flake with exactly one hole (annulus, polygon with one hole; R. B. Laughlin,
+ * Phys. Rev. B 23, 5632 (1981); B. I. Halperin, Phys. Rev. B 25, 2185 (1982)): while one flux quantum
+ * is put through the hole, C levels rise through the Fermi energy at the hole and C fall at the
+ * outline. The index is the net number that rise at the hole, which is +C; sign of the flux as in
+ * conventions.h.
+ *
+ * Levels next to the Fermi energy are split by edge and followed by overlaps; a step is halved until
+ * every level that could reach the Fermi energy in it is found again to 0.8 and the crossings are
+ * whole numbers to 0.2. Resolved when both edges together count 0 and each crossing level has 0.75 of
+ * its weight on its side of the ring, and is coupled to levels of the other edge by at most 0.15 of
+ * the level spacing: narrow rings have no two edges (annulus: about the middle radius; polygon: nearer to the hole
+ * or to the outline). A level on the Fermi energy without flux leaves it unresolved; a filling is
+ * turned into a Fermi energy without flux, and that energy is kept. Margin: least weight of a
+ * crossing level on its side (1: none crossed); weakest: least share of a level found again.
+ * Keys: steps, energy_window. Cost: one analysis and five to eight factorisations per flux, 16 to
+ * some hundred fluxes.
+ */
+SV_API SV_MUST_USE sv_status sv_spectral_flow(sv_context *context, const sv_marker_input *input,
+                                              sv_outcome *ret_outcome);
 
 #ifdef __cplusplus
 }

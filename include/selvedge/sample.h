@@ -52,7 +52,7 @@ typedef struct sv_flake_spec {
     sv_polygon polygon; /**< borrowed: must outlive every flake made from it */
     bool periodic[2];   /**< along a1 and a2 (rectangle by size: along x and y; ribbon: along its
                              length and across) */
-    bool keep_largest; /**< a sample keeps its largest connected piece only */
+    bool keep_largest;  /**< a sample keeps its largest connected piece only */
 } sv_flake_spec;
 
 enum { SV_POLYGON_MOST = 2000 /**< corners of all loops */ };
@@ -64,8 +64,9 @@ typedef struct sv_polygon_fault {
 } sv_polygon_fault;
 
 /**
- * Checks that the loops bound an area: three corners or more each, no loop crosses or touches itself
- * or another one, holes lie inside the outline and outside each other. Either sense of rotation.
+ * Checks that the loops bound an area: three corners or more each, no loop crosses or touches
+ * itself or another one, holes lie inside the outline and outside each other. Either sense of
+ * rotation.
  * @return SV_INVALID_INPUT with the fault in *ret_fault
  * Cost: the square of the number of corners.
  */
@@ -101,7 +102,7 @@ typedef struct sv_flake {
     sv_index n_cells;
     sv_site *sites;
     sv_index n_sites;
-    double centre[2]; /**< centroid of the shape, Cartesian */
+    double centre[2];        /**< centroid of the shape, Cartesian */
     int32_t low[2], high[2]; /**< bounding box of cell indices, both ends included */
     int32_t *cell_at;        /**< (high0−low0+1)·(high1−low1+1) cell numbers or −1 */
     bool periodic[2];
@@ -122,11 +123,11 @@ SV_API SV_MUST_USE sv_status sv_flake_count(sv_context *context, const sv_model 
 
 /**
  * Builds the pristine flake. Which cells a shape has:
- *  - parallelogram, rectangle by cells, ribbon: n1×n2 cells from (0, 0); a ribbon with armchair edges
- *    has n1 periods |a1 + a2| and n2 rows of dimers across;
+ *  - parallelogram, rectangle by cells, ribbon: n1×n2 cells from (0, 0); a ribbon with armchair
+ * edges has n1 periods |a1 + a2| and n2 rows of dimers across;
  *  - rectangle by size, polygon: cells whose centre lies inside, in Cartesian coordinates;
- *  - disc, annulus, hexagon by radius, triangle by side (base along x): the same about the centre of
- *    cell (0, 0), which is the centroid;
+ *  - disc, annulus, hexagon by radius, triangle by side (base along x): the same about the centre
+ * of cell (0, 0), which is the centroid;
  *  - hexagon and triangle by cells: sites, not cells. Zigzag: those of n hexagons a side; armchair:
  *    those of n disjoint rings a side. 6n² and n² + 4n + 1, or 18n² − 18n + 6 and 3n² + 3n sites.
  * @return SV_INVALID_INPUT for a shape that does not suit the lattice, an empty flake, or a
@@ -139,8 +140,8 @@ SV_API void sv_flake_free(sv_context *context, sv_flake *flake);
 /**
  * Averaging window: n1×n2 cells about the centre for flakes of L1×L2 cells, n the integer of the
  * parity of L nearest to share·L (ties up); other shapes: cells whose centre (mean of the orbital
- * positions) lies in the shape scaled by `share` about its centroid. Annulus: the middle band of the
- * ring, |r − (inner + outer)/2| ≤ share·(outer − inner)/2. Polygon with holes: the same rule,
+ * positions) lies in the shape scaled by `share` about its centroid. Annulus: the middle band of
+ * the ring, |r − (inner + outer)/2| ≤ share·(outer − inner)/2. Polygon with holes: the same rule,
  * min(d, e) ≥ (1 − share)/2·(d + e), d and e the distances from the outline and the nearest hole.
  * Holes never count as area. Hexagon and triangle by cells are scaled from the outline
  * through the centres of the next, missing row of hexagons (armchair: half a row of rings outside).
@@ -149,8 +150,11 @@ SV_API void sv_flake_free(sv_context *context, sv_flake *flake);
  * @return SV_INVALID_INPUT when no cell is inside
  */
 SV_API SV_MUST_USE sv_status sv_flake_window(sv_context *context, const sv_flake *flake,
-                                             double share, bool **ret_inside,
-                                             sv_index *ret_cells);
+                                             double share, bool **ret_inside, sv_index *ret_cells);
+/** A point inside the hole of a flake that has exactly one: annulus, polygon with one hole. */
+SV_API bool sv_flake_hole(const sv_flake *flake, double ret_at[2]);
+/** Is a point nearer to a hole than to the outline? False without a hole. */
+SV_API bool sv_flake_by_hole(const sv_flake *flake, const double at[2]);
 /** Centre of a cell: mean of the distinct orbital positions. */
 SV_API void sv_flake_cell_centre(const sv_flake *flake, sv_index cell, double ret_at[2]);
 /**
@@ -215,28 +219,30 @@ typedef struct sv_grid {
 /** The grid of an image: its lower left corner is (0, 0), values stand for the pixels' middles. */
 SV_API sv_grid sv_grid_of_grey(const sv_grey *grey, double pixel, double black, double white);
 /**
- * Value at a point of the flake, bilinear between the four values around it, constant over the outer
- * half step. @return false outside
+ * Value at a point of the flake, bilinear between the four values around it, constant over the
+ * outer half step. @return false outside
  */
 SV_API bool sv_grid_at(const sv_grid *grid, const double at[2], double *ret_value);
 SV_API void sv_grid_free(sv_context *context, sv_grid *grid);
 
 /** A defect position or site energy read from a measured file. */
 typedef struct sv_mark {
-    bool by_cell;      /**< cell, orbital given instead of a position */
+    bool by_cell; /**< cell, orbital given instead of a position */
     int32_t cell[2];
-    int32_t orbital;   /**< −1: all orbitals of the cell or position */
-    double at[2];      /**< lattice constants, flake coordinates */
-    double energy;     /**< unit of the model (on-site files) */
-    int line;          /**< line in the file, for messages */
+    int32_t orbital; /**< −1: all orbitals of the cell or position */
+    double at[2];    /**< lattice constants, flake coordinates */
+    double energy;   /**< unit of the model (on-site files) */
+    int line;        /**< line in the file, for messages */
 } sv_mark;
 
 /**
- * One entry of the sheet's `disorder` list. Lengths in lattice constants, energies in the unit of the
- * model, densities per lattice constant squared, angles in radian. What a kind does not name is 0.
+ * One entry of the sheet's `disorder` list. Lengths in lattice constants, energies in the unit of
+ * the model, densities per lattice constant squared, angles in radian. What a kind does not name is
+ * 0.
  *
- * Every random number belongs to a cell of the lattice, or to a node of a grid in the plane, and never
- * to the flake: a larger flake, an open and a closed copy see the same defects and the same fields.
+ * Every random number belongs to a cell of the lattice, or to a node of a grid in the plane, and
+ * never to the flake: a larger flake, an open and a closed copy see the same defects and the same
+ * fields.
  */
 typedef struct sv_disorder {
     char name[64]; /**< names its random stream */
@@ -250,14 +256,15 @@ typedef struct sv_disorder {
     /* vacancies */
     double cluster_size, cluster_radius; /**< size > 0: clustered */
     double distance;                     /**< > 0: no two of them as near as this or nearer */
-    double charge;                       /**< elementary charges of each defect, for messages and as a source */
+    double charge; /**< elementary charges of each defect, for messages and as a source */
     /* energies, strengths, phases */
     sv_distribution distribution;
-    double width; /**< box: full width; gaussian, correlated: standard deviation; binary: splitting */
+    double
+        width; /**< box: full width; gaussian, correlated: standard deviation; binary: splitting */
     bool per_cell;
     sv_covariance covariance;
     double length; /**< correlation length, mean domain size, mean length of cracks */
-    int term;      /**< mass, domains, steps: row of the model's local operators or SV_FIELD_POTENTIAL */
+    int term; /**< mass, domains, steps: row of the model's local operators or SV_FIELD_POTENTIAL */
     double strength; /**< puddles: energy right below a charge; mass: energy × area of one defect */
     double phase;    /**< hopping: width of the phase */
     bool nearest;    /**< hopping: only the shortest bonds */
@@ -275,20 +282,20 @@ typedef struct sv_disorder {
     double angle;          /**< direction of step edges and cracks */
     double spacing;        /**< steps: width of the terraces, 0: one step */
     double jump;           /**< steps: change per step; domains: change in a changed domain */
-    double amplitude;      /**< roughness: deepest notch; steps: standard deviation of the meander */
-    double wall;           /**< domains: width of the walls, 0: sharp */
-    bool exponential;      /**< cracks: exponential lengths rather than equal ones */
+    double amplitude; /**< roughness: deepest notch; steps: standard deviation of the meander */
+    double wall;      /**< domains: width of the walls, 0: sharp */
+    bool exponential; /**< cracks: exponential lengths rather than equal ones */
     /* measured */
     bool has_marks;
     sv_mark *marks; /**< owned */
     sv_index n_marks;
     bool has_grid;
-    sv_grid grid;          /**< energies, or grey shares of an image of defects */
-    bool darker;           /**< vacancies: below the threshold, else above */
-    double threshold;      /**< grey share, 0 … 1 */
-    bool keep_unmatched;   /**< rows and sites without a partner are left out, not refused */
-    double tolerance;   /**< largest distance of a mark from its site, lattice constants */
-    char file[256];     /**< name for messages */
+    sv_grid grid;        /**< energies, or grey shares of an image of defects */
+    bool darker;         /**< vacancies: below the threshold, else above */
+    double threshold;    /**< grey share, 0 … 1 */
+    bool keep_unmatched; /**< rows and sites without a partner are left out, not refused */
+    double tolerance;    /**< largest distance of a mark from its site, lattice constants */
+    char file[256];      /**< name for messages */
 } sv_disorder;
 
 /** Kinds of disorder with their keys (all but `name` and `kind`). */
@@ -298,8 +305,8 @@ SV_API void sv_disorder_free(sv_context *context, sv_disorder *disorder);
  * Largest share of positions that vacancies with a minimum distance can have. They are thinned by
  * marks: of two candidates nearer than that, the one with the larger random number goes, whether or
  * not the other stays (B. Matérn's second kind, value recalled from memory; Stoyan, Kendall, Mecke,
- * Stochastic Geometry and its Applications, ch. 5). With n other positions within reach a share p of
- * candidates leaves (1 − (1 − p)^(n+1))/(n+1), at most 1/(n + 1). 1 without a distance.
+ * Stochastic Geometry and its Applications, ch. 5). With n other positions within reach a share p
+ * of candidates leaves (1 − (1 − p)^(n+1))/(n+1), at most 1/(n + 1). 1 without a distance.
  */
 SV_API double sv_disorder_share_limit(const sv_model *model, const sv_disorder *disorder);
 /**
@@ -355,8 +362,7 @@ SV_API SV_MUST_USE sv_status sv_read_marks(sv_context *context, const sv_model *
  * @return SV_INVALID_INPUT with the line of the first mark outside in *ret_fault
  */
 SV_API SV_MUST_USE sv_status sv_marks_check(sv_context *context, const sv_flake *flake,
-                                            const sv_disorder *disorder,
-                                            sv_table_fault *ret_fault);
+                                            const sv_disorder *disorder, sv_table_fault *ret_fault);
 
 /* -------------------------------------------------------------- occupation */
 
@@ -386,7 +392,7 @@ typedef struct sv_inventory {
     sv_index dangling;      /**< positions with exactly one */
     sv_index removed_sites; /**< in pieces that flake.keep has dropped, not counted as vacant */
     sv_index imbalance; /**< largest minus smallest number of sites of one orbital of the model */
-    sv_index adatoms;      /**< rows that are adatoms; they count as sites */
+    sv_index adatoms;   /**< rows that are adatoms; they count as sites */
     sv_index placed[SV_DISORDER_MOST]; /**< per entry: positions emptied, adatoms, points, cracks */
 } sv_inventory;
 
@@ -395,11 +401,16 @@ typedef struct sv_sample {
     const sv_flake *flake; /**< borrowed */
     sv_index n;            /**< sites left = order of the Hamiltonian */
     sv_index *pristine;    /**< n pristine site numbers, in ascending order, repeated for adatoms */
-    int16_t *adatom;       /**< per row: entry of the adatom it is, −1 for a site; its `pristine` is then
-                                the host, whose row stands before it. NULL: no adatoms */
-    double *potential;     /**< n on-site disorder energies (adatoms: their energy) */
+    int16_t *adatom; /**< per row: entry of the adatom it is, −1 for a site; its `pristine` is then
+                          the host, whose row stands before it. NULL: no adatoms */
+    double *potential; /**< n on-site disorder energies (adatoms: their energy) */
     sv_sparse hamiltonian;
     sv_inventory inventory;
+    /* what it was drawn from */
+    const sv_disorder *disorder; /**< borrowed; read by sv_sample_add_flux() only */
+    int n_disorder;
+    uint64_t seed;
+    sv_index realisation;
 } sv_sample;
 
 /**
@@ -433,6 +444,16 @@ SV_API SV_MUST_USE sv_status sv_sample_keep_largest(sv_context *context, sv_samp
 
 /** Name of the orbital of a row; "adatom" for an adatom. */
 SV_API const char *sv_sample_orbital_name(const sv_sample *sample, sv_index row);
+
+/**
+ * Hamiltonian of the same realisation with whole flux quanta more through the whole torus, evenly
+ * spread; sign and gauge as in conventions.h, in coordinates along the torus vectors. Same pattern.
+ * The realisation is drawn again: the list of disorder must still be there.
+ * @return SV_UNDEFINED unless the flake is closed both ways
+ */
+SV_API SV_MUST_USE sv_status sv_sample_add_flux(sv_context *context, const sv_sample *sample,
+                                                int quanta, sv_sparse *ret_hamiltonian);
+
 /** Writes the Hamiltonian as Matrix Market, coordinate complex hermitian (lower triangle). */
 SV_API SV_MUST_USE sv_status sv_sample_write_matrix(sv_context *context, const sv_sample *sample,
                                                     const char *path);

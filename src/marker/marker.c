@@ -122,6 +122,24 @@ static const sv_key spin_chern_keys[] = {
      .doc = "least gap of P sz P about zero of a resolved value; 2 with conserved spin"},
 };
 
+static const sv_key flow_keys[] = {
+    {.name = "steps",
+     .type = SV_KEY_INTEGER,
+     .low = 1,
+     .high = 500,
+     .fallback = "16",
+     .doc = "steps of the flux to begin with; halved where levels cannot be followed"},
+    {.name = "energy_window",
+     .type = SV_KEY_AUTO_OR_REAL,
+     .dimension = SV_DIM_ENERGY,
+     .low = 0,
+     .high = 1e12,
+     .low_open = true,
+     .fallback = "auto",
+     .doc = "levels nearer to the Fermi energy are followed, 24 at most; auto: 5 % of the largest "
+            "energy"},
+};
+
 static const sv_marker table[] = {
     {.kind = {"local_chern", "local Chern marker, mean over a window (Bianco, Resta 2011)",
               local_chern_keys, 3},
@@ -167,6 +185,16 @@ static const sv_marker table[] = {
      .needs_projector = true,
      .needs_occupied_basis = true,
      .compute = sv_spin_bott},
+    {.kind = {"density_response", "states gained per flux quantum through the torus (Streda 1982)",
+              NULL, 0},
+     .is_index = true,
+     .boundary = SV_CLOSED_COPY,
+     .compute = sv_density_response},
+    {.kind = {"spectral_flow", "levels that pass the Fermi energy per flux quantum through a hole",
+              flow_keys, 2},
+     .is_index = true,
+     .boundary = SV_OPEN_COPY,
+     .compute = sv_spectral_flow},
 };
 
 const sv_marker *sv_marker_table(int *ret_count)

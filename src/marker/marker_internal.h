@@ -50,4 +50,13 @@ double sv_window_error(const window_choice *choice, const double *sums, const sv
 enum { CHERN_WINDOW, CHERN_BLOCKS, CHERN_BLOCK_CELLS };
 bool sv_local_chern_check(const sv_value *values, int *ret_key, char *message, size_t size);
 
+/*
+ * The Fermi energy of a sample by inertia of its Hamiltonian (as given, or for a filling), electrons
+ * and the levels on either side to the outcome. *ret_good false: a level lies on it, and the
+ * outcome has the reason. Leaves the plan with a factor at the energy.
+ */
+sv_status sv_energy_place(sv_context *context, sv_inertia_plan *plan, const sv_sparse *h,
+                          const sv_occupation *occupation, sv_outcome *outcome,
+                          double *ret_energy, bool *ret_good);
+
 #endif

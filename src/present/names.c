@@ -16,6 +16,8 @@ static const struct {
     {"crosshair", "crosshair marker", NULL, NULL},
     {"spin_chern", "spin Chern number", "spin_gap", NULL},
     {"spin_bott", "spin Bott index", "spin_gap", "smallest_modulus"},
+    {"density_response", "density response", "nearest_level", "level_movement"},
+    {"spectral_flow", "spectral flow", "edge_weight", "followed"},
 };
 
 static int find_marker(const char *name)

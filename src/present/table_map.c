@@ -50,22 +50,33 @@ static bool is_of_spin(const sv_marker *marker)
     return margin != NULL && strcmp(margin, "spin_gap") == 0;
 }
 
-static void print_index(FILE *stream, const char *name, const sv_outcome *outcome, bool of_spin)
+/* What the verdict of an index hangs on. */
+static bool describe_margin(const char *marker, const sv_outcome *outcome, char *text, size_t size)
+{
+    if (strcmp(marker, "bott") == 0 && isfinite(outcome->weakest))
+        snprintf(text, size, "    %.3g rad from pi; smallest modulus %.3g", outcome->margin,
+                 outcome->weakest);
+    else if (strcmp(marker, "density_response") == 0 && isfinite(outcome->margin))
+        snprintf(text, size, "    nearest level %.3g off, moved by at most %.3g", outcome->margin,
+                 outcome->weakest);
+    else if (strcmp(marker, "spectral_flow") == 0 && isfinite(outcome->weakest))
+        snprintf(text, size, "    levels found again to %.3g, crossing ones %.3g on their side",
+                 outcome->weakest, outcome->margin);
+    else if (isfinite(outcome->kappa))
+        snprintf(text, size, "    localizer gap %.3g at kappa %.3g", outcome->margin,
+                 outcome->kappa);
+    else
+        return false;
+    return true;
+}
+
+static void print_index(FILE *stream, const char *marker, const sv_outcome *outcome)
 {
     char text[256];
     snprintf(text, sizeof text, "%lld", (long long)outcome->index);
-    print_line(stream, name, text);
-    if (of_spin)
-        return;
-    if (isfinite(outcome->weakest))
-        snprintf(text, sizeof text, "    %.3g rad from pi; smallest modulus %.3g", outcome->margin,
-                 outcome->weakest);
-    else if (isfinite(outcome->kappa))
-        snprintf(text, sizeof text, "    localizer gap %.3g at kappa %.3g", outcome->margin,
-                 outcome->kappa);
-    else
-        return;
-    print_line(stream, "", text);
+    print_line(stream, sv_words_marker(marker), text);
+    if (describe_margin(marker, outcome, text, sizeof text))
+        print_line(stream, "", text);
 }
 
 static void print_levels(FILE *stream, const sv_outcome *outcome)
@@ -94,7 +105,7 @@ static void print_outcome(FILE *stream, const sv_marker *marker, const sv_outcom
         snprintf(text, sizeof text, "%s", outcome->reason);
         print_line(stream, "", text);
     } else if (marker->is_index) {
-        print_index(stream, name, outcome, is_of_spin(marker));
+        print_index(stream, marker->kind.name, outcome);
     } else {
         print_window_mean(stream, name, outcome);
     }

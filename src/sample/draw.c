@@ -125,15 +125,23 @@ static sv_status take_drawing(sv_context *context, sv_drawing *d)
     return SV_OK;
 }
 
-sv_status sv_sample_draw(sv_context *context, const sv_flake *flake, const sv_disorder *disorder,
-                         int n_disorder, uint64_t seed, sv_index index, sv_sample *ret_sample)
+/* `as` tells flake, disorder, seed and realisation. */
+static sv_status draw_sample(sv_context *context, const sv_sample *as, int quanta,
+                             sv_sample *ret_sample)
 {
+    const sv_flake *flake = as->flake;
+    int n_disorder = as->n_disorder;
     sv_drawing d = {.flake = flake,
-                    .disorder = disorder,
+                    .disorder = as->disorder,
                     .n_disorder = n_disorder,
-                    .seed = seed,
-                    .realisation = index};
-    sv_sample sample = {.flake = flake};
+                    .seed = as->seed,
+                    .realisation = as->realisation,
+                    .quanta = quanta};
+    sv_sample sample = {.flake = flake,
+                        .disorder = as->disorder,
+                        .n_disorder = n_disorder,
+                        .seed = as->seed,
+                        .realisation = as->realisation};
     int32_t *row_of_site = NULL;
     sv_status status = take_drawing(context, &d);
     for (; d.entry < n_disorder && status == SV_OK; d.entry++)
@@ -158,6 +166,33 @@ out:
     sv_give(context, row_of_site);
     sv_sample_free(context, &sample);
     return status;
+}
+
+sv_status sv_sample_draw(sv_context *context, const sv_flake *flake, const sv_disorder *disorder,
+                         int n_disorder, uint64_t seed, sv_index index, sv_sample *ret_sample)
+{
+    const sv_sample as = {.flake = flake,
+                          .disorder = disorder,
+                          .n_disorder = n_disorder,
+                          .seed = seed,
+                          .realisation = index};
+    return draw_sample(context, &as, 0, ret_sample);
+}
+
+sv_status sv_sample_add_flux(sv_context *context, const sv_sample *sample, int quanta,
+                             sv_sparse *ret_hamiltonian)
+{
+    sv_sample other = {0};
+    if (!(sample->flake->periodic[0] && sample->flake->periodic[1]))
+        return SV_FAIL(context, SV_UNDEFINED,
+                       "flux through a torus needs a flake closed both ways");
+    sv_status status = draw_sample(context, sample, quanta, &other);
+    if (status != SV_OK)
+        return status;
+    *ret_hamiltonian = other.hamiltonian;
+    other.hamiltonian = (sv_sparse){0};
+    sv_sample_free(context, &other);
+    return SV_OK;
 }
 
 void sv_sample_free(sv_context *context, sv_sample *sample)

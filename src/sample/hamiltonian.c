@@ -18,7 +18,30 @@ typedef struct builder {
     const int32_t *row_of_site;
     double (*orbital_uv)[2]; /* reduced positions of the orbitals */
     double flux;             /* quanta per cell */
+    int quanta;              /* through the whole torus, beside those */
 } builder;
+
+/* Coordinates along the torus vectors of a point counted in cells. */
+static void torus_coordinates(const sv_flake *flake, double u, double v, double ret_st[2])
+{
+    const int32_t(*t)[2] = flake->period;
+    double det = (double)t[0][0] * t[1][1] - (double)t[0][1] * t[1][0];
+    ret_st[0] = (u * t[1][1] - v * t[1][0]) / det;
+    ret_st[1] = (v * t[0][0] - u * t[0][1]) / det;
+}
+
+/* Turns of a hop from (u0, v0) to (u1, v1) by the quanta through the torus: the gauge below in
+ * torus coordinates, A = Φ s dt, which any torus carries for whole Φ. */
+static double turns_of_quanta(const builder *b, const double from[2], const double to[2],
+                              const int32_t torus[2])
+{
+    double start[2], end[2], wound[2];
+    torus_coordinates(b->flake, from[0], from[1], start);
+    torus_coordinates(b->flake, to[0], to[1], end);
+    torus_coordinates(b->flake, torus[0], torus[1], wound);
+    return b->quanta * (-0.5 * (start[0] + end[0]) * (end[1] - start[1]) +
+                        round(wound[0]) * (end[1] - round(wound[1])));
+}
 
 /*
  * ⟨to|H|from⟩ of a hop that starts in cell `start` of the flake and whose end, before wrapping,
@@ -34,12 +57,14 @@ static sv_complex element(const builder *b, int number, const sv_cell *start,
     const sv_hop *hop = &b->flake->model->hops[number];
     sv_complex amplitude = hop->amplitude * sv_bond_factor(b->drawing, number, start);
     int32_t i = start->i, j = start->j;
-    if (b->flux == 0.0)
+    if (b->flux == 0.0 && b->quanta == 0)
         return amplitude;
     const double *from = b->orbital_uv[hop->from], *to = b->orbital_uv[hop->to];
     double u0 = i + from[0], v0 = j + from[1];
     double u1 = i + hop->shift[0] + to[0], v1 = j + hop->shift[1] + to[1];
     double turns = -b->flux * 0.5 * (u0 + u1) * (v1 - v0) + b->flux * torus[0] * (v1 - torus[1]);
+    if (b->quanta != 0)
+        turns += turns_of_quanta(b, (const double[2]){u0, v0}, (const double[2]){u1, v1}, torus);
     double angle = 2.0 * M_PI * (turns - floor(turns));
     return amplitude * CMPLX(cos(angle), sin(angle));
 }
@@ -196,7 +221,8 @@ sv_status sv_sample_build_hamiltonian(sv_context *context, sv_sample *sample, co
                  .sample = sample,
                  .drawing = d,
                  .row_of_site = row_of_site,
-                 .flux = (double)model->flux[0] / model->flux[1]};
+                 .flux = (double)model->flux[0] / model->flux[1],
+                 .quanta = d->quanta};
     entry *row = NULL;
     sv_status status;
     if ((status = sv_take(context,

@@ -129,6 +129,53 @@ double sv_polygon_distance(const sv_polygon *p, int first, int last, const doubl
     return best;
 }
 
+/* The middle of the widest stretch of the line y = level inside a loop, in steps of the corners. */
+static double stretch_at(const sv_polygon *p, int loop, double level, double *ret_middle)
+{
+    double widest = 0.0;
+    int n = loop_size(p, loop);
+    for (int j = 0; j < n; j++) {
+        const double *a = corner(p, loop, j), *b = corner(p, loop, j + 1);
+        if ((a[1] > level) == (b[1] > level))
+            continue;
+        double x = a[0] + (level - a[1]) / (b[1] - a[1]) * (b[0] - a[0]), next = INFINITY;
+        int left = 0;
+        for (int k = 0; k < n; k++) {
+            const double *c = corner(p, loop, k), *d = corner(p, loop, k + 1);
+            if ((c[1] > level) == (d[1] > level))
+                continue;
+            double other = c[0] + (level - c[1]) / (d[1] - c[1]) * (d[0] - c[0]);
+            left += other < x;
+            next = other > x ? fmin(next, other) : next;
+        }
+        /* Inside lies right of the first, third … crossing. */
+        if (left % 2 == 0 && isfinite(next) && next - x > widest) {
+            widest = next - x;
+            *ret_middle = 0.5 * (x + next);
+        }
+    }
+    return widest;
+}
+
+void sv_loop_inside(const sv_polygon *p, int loop, double ret_at[2])
+{
+    double best = 0.0;
+    int n = loop_size(p, loop);
+    for (int k = 0; k < n; k++) {
+        double above = INFINITY, low = corner(p, loop, k)[1], middle = 0.0;
+        for (int j = 0; j < n; j++)
+            above = corner(p, loop, j)[1] > low ? fmin(above, corner(p, loop, j)[1]) : above;
+        if (!isfinite(above))
+            continue;
+        double room = fmin(above - low, stretch_at(p, loop, 0.5 * (low + above), &middle));
+        if (room > best) {
+            best = room;
+            ret_at[0] = middle;
+            ret_at[1] = 0.5 * (low + above);
+        }
+    }
+}
+
 static const char *loop_name(int loop, char name[32])
 {
     snprintf(name, 32, loop == 0 ? "the outline" : "hole %d", loop);

@@ -54,6 +54,8 @@ bool sv_box_place(const sv_flake_spec *spec, int64_t i, int64_t j, int64_t ret_p
 
 /* One loop of a polygon; edges count as inside. */
 bool sv_loop_holds(const sv_polygon *polygon, int loop, const double at[2], bool *ret_on_edge);
+/* A point well inside a loop. */
+void sv_loop_inside(const sv_polygon *polygon, int loop, double ret_at[2]);
 /* Distance of a point from the edges of loops first … last − 1. */
 double sv_polygon_distance(const sv_polygon *polygon, int first, int last, const double at[2]);
 double sv_polygon_length(const sv_polygon *polygon);
@@ -97,7 +99,8 @@ typedef struct sv_drawing {
     int n_disorder;
     uint64_t seed;
     sv_index realisation;
-    int entry; /* being drawn */
+    int entry;  /* being drawn */
+    int quanta; /* flux through the whole torus, beside that of the model */
     bool *gone;
     int16_t *taken_by;              /* entry that emptied a site, −1: none */
     double *potential;              /* energies on the diagonal */

@@ -108,3 +108,30 @@ sv_status sv_flake_window(sv_context *context, const sv_flake *flake, double sha
     *ret_cells = cells;
     return SV_OK;
 }
+
+bool sv_flake_hole(const sv_flake *flake, double ret_at[2])
+{
+    const sv_flake_spec *spec = &flake->spec;
+    if (spec->shape == SV_SHAPE_POLYGON && spec->polygon.n_loops == 2) {
+        sv_loop_inside(&spec->polygon, 1, ret_at);
+        return true;
+    }
+    if (spec->shape != SV_SHAPE_ANNULUS)
+        return false;
+    /* Cells lie about the centre of cell (0, 0), which has a hole once that cell is left out. */
+    ret_at[0] = flake->centre[0];
+    ret_at[1] = flake->centre[1];
+    return spec->inner > 0.0;
+}
+
+bool sv_flake_by_hole(const sv_flake *flake, const double at[2])
+{
+    const sv_flake_spec *spec = &flake->spec;
+    if (spec->shape == SV_SHAPE_ANNULUS)
+        return hypot(at[0] - flake->centre[0], at[1] - flake->centre[1]) <
+               0.5 * (spec->inner + spec->outer);
+    if (spec->shape != SV_SHAPE_POLYGON || spec->polygon.n_loops < 2)
+        return false;
+    return sv_polygon_distance(&spec->polygon, 1, spec->polygon.n_loops, at) <
+           sv_polygon_distance(&spec->polygon, 0, 1, at);
+}

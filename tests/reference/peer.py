@@ -112,6 +112,54 @@ def spin_halves(states, spins):
     return halves, values[down] - values[down - 1]
 
 
+def with_torus_flux(hamiltonian, x, y, torus, quanta):
+    """Whole quanta through a torus, hops by the nearest image: A = Φ s dt in torus coordinates, an
+    element that wraps by T1 gets exp(+2πiΦ t) of its wrapped end (electrons). Tori much larger than
+    the hops only."""
+    s, t = reduced(x, y, torus)
+    rows, columns = np.nonzero(hamiltonian)  # ⟨row|H|column⟩: a hop from column to row
+    wound = np.round(s[rows] - s[columns]), np.round(t[rows] - t[columns])
+    s1, t1 = s[rows] - wound[0], t[rows] - wound[1]  # where the hop ends before wrapping
+    turns = -0.5 * (s1 + s[columns]) * (t1 - t[columns]) - wound[0] * (t1 + wound[1])
+    turned = hamiltonian.copy()
+    turned[rows, columns] *= np.exp(2j * np.pi * quanta * turns)
+    return turned
+
+
+def density_response(hamiltonian, x, y, torus, fermi_energy=0.0):
+    """States gained below the Fermi energy with −1, +1 quantum through the torus (Streda 1982)."""
+    below = [int(np.count_nonzero(np.linalg.eigvalsh(
+        with_torus_flux(hamiltonian, x, y, torus, quanta)) < fermi_energy)) for quanta in (0, -1, 1)]
+    return below[1] - below[0], below[2] - below[0]
+
+
+def with_hole_flux(hamiltonian, x, y, hole, flux):
+    """Flux through a hole as a phase on the hops across a cut from the hole along +x: exp(−2πiΦ)
+    counter-clockwise."""
+    dx, dy = x - hole[0], y - hole[1]
+    rows, columns = np.nonzero(hamiltonian)
+    up = (dy[columns] < 0) & (dy[rows] >= 0)
+    down = (dy[columns] >= 0) & (dy[rows] < 0)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        at = dx[columns] - dy[columns] * (dx[rows] - dx[columns]) / (dy[rows] - dy[columns])
+    crossing = np.where(up & (at > 0), 1, 0) - np.where(down & (at > 0), 1, 0)
+    turned = hamiltonian.copy()
+    turned[rows, columns] *= np.exp(-2j * np.pi * flux * crossing)
+    return turned
+
+
+def spectral_flow(hamiltonian, x, y, hole, inner, fermi_energy=0.0, steps=40):
+    """Electrons that drift to the hole while one quantum is put through it, by the charge there: the
+    charge of the states below the Fermi energy comes back to itself, so what drifts in smoothly leaves
+    by jumps, one for each level that rises through the Fermi energy. No level is followed."""
+    charge = []
+    for flux in np.linspace(0.0, 1.0, steps + 1) + 0.5 / steps:
+        energies, states = np.linalg.eigh(with_hole_flux(hamiltonian, x, y, hole, flux))
+        charge.append(float((np.abs(states[inner][:, energies < fermi_energy])**2).sum()))
+    change = np.diff(charge)
+    return change[np.abs(change) < 0.4].sum()
+
+
 def main():
     parser = argparse.ArgumentParser()
     parser.add_argument("matrix")
