@@ -186,3 +186,31 @@ SV_TEST(electrons_of_a_filling)
     CHECK_INT(sv_occupation_electrons(&filling, 15), 5); /* 4.5: ties go up */
     CHECK_INT(sv_occupation_electrons(&count, 10), 7);
 }
+
+/* Adatoms are rows after the one of their host, with a name of their own. */
+SV_TEST(rows_name_their_orbitals)
+{
+    sv_model model = fixture_haldane(0.1, 1.0, 0.0);
+    sv_flake_spec spec = fixture_cells(&model, 5, 4, false);
+    sv_flake flake = fixture_flake(&model, &spec);
+    sv_disorder d = {.name = "ad",
+                     .type = SV_DISORDER_ADATOMS,
+                     .on = -1,
+                     .has_share = true,
+                     .share = 0.4,
+                     .energy = 0.7,
+                     .coupling = 0.2};
+    sv_sample s = {0};
+    CHECK_OK(sv_sample_draw(test_context(), &flake, &d, 1, 3, 0, &s));
+    sv_index adatoms = 0;
+    for (sv_index r = 0; r < s.n; r++) {
+        bool second = r > 0 && s.pristine[r] == s.pristine[r - 1];
+        int orbital = flake.sites[s.pristine[r]].orbital;
+        CHECK_TEXT(sv_sample_orbital_name(&s, r), second ? "adatom" : orbital == 0 ? "A" : "B");
+        adatoms += second;
+    }
+    CHECK(adatoms > 5 && adatoms == s.inventory.adatoms && s.n == flake.n_sites + adatoms);
+    sv_sample_free(test_context(), &s);
+    sv_flake_free(test_context(), &flake);
+    sv_model_free(test_context(), &model);
+}
