@@ -74,27 +74,66 @@ static sv_status try_settings(sv_context *context, const pilot *p, const sv_proj
     return status;
 }
 
-/* Lowest degree of the ladder from `first` whose stated error is within what is allowed. */
+/* One rung: the stated error with a polynomial of this degree, +∞ where it cannot be used. */
+static sv_status try_degree(sv_context *context, const pilot *p, int degree,
+                            sv_projector_options *o, double *ret_error)
+{
+    sv_outcome outcome;
+    *ret_error = (double)INFINITY;
+    o->degree = degree;
+    o->half_gap = half_gap_of(p, o->accuracy, degree);
+    if (o->half_gap > 0.5 * p->scale)
+        return SV_OK;
+    sv_status status = try_settings(context, p, o, &outcome);
+    if (status == SV_OK && outcome.verdict == SV_RESOLVED)
+        *ret_error = outcome.numerical_error;
+    return status;
+}
+
+/* A degree between one that is too low and one that does, where the logarithm of the error, were it
+ * a straight line, would cross what is allowed; a little above. */
+static int between_degrees(const int degrees[2], const double errors[2], double allowed)
+{
+    double share = log(errors[0] / allowed) / log(errors[0] / errors[1]);
+    int steps = (degrees[1] - degrees[0]) / 2;
+    return degrees[0] + 2 * (int)ceil(fmin(1.0, 1.1 * share) * steps);
+}
+
+/* A low degree from `first` on whose stated error is within what is allowed. Rungs are far apart
+ * while the error is far too large, so that hopeless searches end soon; then one look between. */
 static sv_status climb_degrees(sv_context *context, const pilot *p, int first, int most,
                                sv_projector_options *o, bool *ret_found, double *ret_error)
 {
+    int degrees[2] = {0, first};
+    double errors[2] = {(double)INFINITY, (double)INFINITY};
     *ret_found = false;
     o->near_states = 0;
-    for (int degree = first; degree <= most; degree += 2 * (degree / 13)) {
-        sv_outcome outcome;
-        o->degree = degree;
-        o->half_gap = half_gap_of(p, o->accuracy, degree);
-        if (o->half_gap > 0.5 * p->scale)
-            continue;
-        sv_status status = try_settings(context, p, o, &outcome);
+    while (degrees[1] <= most && !*ret_found) {
+        sv_status status = try_degree(context, p, degrees[1], o, &errors[1]);
         if (status != SV_OK)
             return status;
-        *ret_error = outcome.numerical_error;
-        *ret_found = outcome.verdict == SV_RESOLVED && outcome.numerical_error <= o->accuracy;
+        *ret_found = errors[1] <= o->accuracy;
         if (*ret_found)
-            return SV_OK;
+            break;
+        bool far = isinf(errors[1]) || errors[1] > 30.0 * o->accuracy;
+        degrees[0] = degrees[1];
+        errors[0] = errors[1];
+        degrees[1] += far ? 2 * (degrees[1] / 4) : 2 * (degrees[1] / 13);
     }
-    return SV_OK;
+    if (!*ret_found)
+        return SV_OK;
+    *ret_error = errors[1];
+    if (isinf(errors[0]) || degrees[1] - degrees[0] < 6)
+        return SV_OK;
+    int degree = between_degrees(degrees, errors, o->accuracy), known = degrees[1];
+    sv_status status = degree < known ? try_degree(context, p, degree, o, &errors[0]) : SV_OK;
+    if (status == SV_OK && degree < known && errors[0] <= o->accuracy)
+        *ret_error = errors[0];
+    else if (status == SV_OK) {
+        o->degree = known;
+        o->half_gap = half_gap_of(p, o->accuracy, known);
+    }
+    return status;
 }
 
 /* The widest interval that holds few levels, those computed one by one, the rest left to a

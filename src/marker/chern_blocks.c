@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* A coarse map of the local Chern marker: square blocks, in each a stratified sample of cells. */
-#include "marker_internal.h"
+#include "chern_internal.h"
 
 #include <math.h>
 #include <string.h>
@@ -57,18 +57,6 @@ static void free_work(sv_context *context, block_work *w)
     sv_give(context, w->rows);
     sv_give(context, w->marker);
     sv_give(context, w->error);
-}
-
-static bool near_edge(const sv_flake *flake, const sv_cell *cell)
-{
-    int64_t width = (int64_t)flake->high[1] - flake->low[1] + 1;
-    for (int64_t i = cell->i - EDGE_CELLS; i <= cell->i + EDGE_CELLS; i++)
-        for (int64_t j = cell->j - EDGE_CELLS; j <= cell->j + EDGE_CELLS; j++)
-            if (i < flake->low[0] || i > flake->high[0] || j < flake->low[1] ||
-                j > flake->high[1] ||
-                flake->cell_at[(i - flake->low[0]) * width + (j - flake->low[1])] < 0)
-                return true;
-    return false;
 }
 
 /* Square blocks over the centres of the cells, so many along the longer side. */
@@ -132,7 +120,8 @@ static sv_status sort_cells(sv_context *context, block_work *w)
         sv_index block = sv_coarse_block(&w->map, at);
         if (block >= 0)
             w->map.blocks[block].cells++;
-        w->block[c] = block < 0 || near_edge(flake, &flake->cells[c]) ? -1 : (int32_t)block;
+        w->block[c] =
+            block < 0 || sv_near_edge(flake, (int32_t)c, EDGE_CELLS) ? -1 : (int32_t)block;
         if (w->block[c] >= 0)
             w->first[block + 2]++;
     }

@@ -150,3 +150,15 @@ void sv_chern_end_work(sv_context *context, column_work *w)
     sv_give(context, w->place);
     sv_give(context, w->area.rows);
 }
+
+bool sv_near_edge(const sv_flake *flake, int32_t cell, int32_t depth)
+{
+    int64_t width = (int64_t)flake->high[1] - flake->low[1] + 1;
+    for (int32_t i = flake->cells[cell].i - depth; i <= flake->cells[cell].i + depth; i++)
+        for (int32_t j = flake->cells[cell].j - depth; j <= flake->cells[cell].j + depth; j++)
+            if (i < flake->low[0] || i > flake->high[0] || j < flake->low[1] ||
+                j > flake->high[1] ||
+                flake->cell_at[(i - flake->low[0]) * width + (j - flake->low[1])] < 0)
+                return true;
+    return false;
+}

@@ -1,13 +1,15 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* Local Chern marker of the sites of a window: from a basis of the occupied or empty space
  * (chern_basis.c), or column by column (chern_columns.c). */
-#include "marker_internal.h"
+#include "chern_internal.h"
 
 #include <math.h>
 #include <string.h>
 
 /* Cells of the rim of a sampled window whose numerical error is looked at besides. */
 static const sv_index RIM_CELLS = 16;
+/* Cells next to the edge where a map by a polynomial that does not know edge states is blank. */
+static const int32_t RIM_DEPTH = 3;
 /* A site whose stated error is above this is left blank in a map. */
 static const double LARGEST_SITE_ERROR = 0.02;
 
@@ -45,20 +47,6 @@ static sv_status pick_rows(sv_context *context, chern_work *w, const bool *insid
     return SV_OK;
 }
 
-/* Does the flake lack a cell within three cells of this one? */
-static bool near_edge(const sv_flake *flake, int32_t cell)
-{
-    const int32_t reach = 3;
-    int64_t width = (int64_t)flake->high[1] - flake->low[1] + 1;
-    for (int32_t i = flake->cells[cell].i - reach; i <= flake->cells[cell].i + reach; i++)
-        for (int32_t j = flake->cells[cell].j - reach; j <= flake->cells[cell].j + reach; j++)
-            if (i < flake->low[0] || i > flake->high[0] || j < flake->low[1] ||
-                j > flake->high[1] ||
-                flake->cell_at[(i - flake->low[0]) * width + (j - flake->low[1])] < 0)
-                return true;
-    return false;
-}
-
 /* Window mean (and, with all rows, the sum and the site values) from the row values. */
 static void reduce(const chern_work *w, const bool *inside, sv_index cells, double *ret_sites,
                    sv_outcome *outcome)
@@ -75,7 +63,7 @@ static void reduce(const chern_work *w, const bool *inside, sv_index cells, doub
         int32_t cell = w->sample->flake->sites[w->sample->pristine[row]].cell;
         bool unsure = w->error != NULL && ret_sites != NULL &&
                       (w->error[k] > LARGEST_SITE_ERROR ||
-                       (!w->levels_known && near_edge(w->sample->flake, cell)));
+                       (!w->levels_known && sv_near_edge(w->sample->flake, cell, RIM_DEPTH)));
         blanked = blanked || unsure;
         if (ret_sites != NULL)
             ret_sites[row] = unsure ? (double)NAN : w->marker[k];
