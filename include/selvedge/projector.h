@@ -49,10 +49,10 @@ typedef struct sv_levels {
     sv_index occupied; /**< states below the Fermi energy */
     bool has_highest, has_lowest;
     double highest_occupied, lowest_empty;
-    double fermi_energy; /**< as given, or the middle of the gap for a filling */
-    bool by_count;       /**< a filling or a number of electrons chose it */
-    bool on_level;       /**< a level coincides with the Fermi energy within `resolution` */
-    double resolution;   /**< two energies closer than this cannot be told apart */
+    double fermi_energy;  /**< as given, or the middle of the gap for a filling */
+    bool by_count;        /**< a filling or a number of electrons chose it */
+    bool on_level;        /**< a level coincides with the Fermi energy within `resolution` */
+    double resolution;    /**< two energies closer than this cannot be told apart */
     double resolved_from; /**< levels at least this far from the Fermi energy are occupied or empty
                                to the accuracy asked for, nearer ones in part; 0: all */
     bool gap_resolved;    /**< no level is known to be nearer than that: the engine occupies all */
@@ -115,6 +115,14 @@ SV_API SV_MUST_USE sv_status sv_projector_restrict(sv_context *context,
                                                    int32_t *place, sv_projector **ret_part);
 /** Radius of the parts that markers should ask for, lattice constants; 0: use the whole. */
 SV_API double sv_projector_reach(const sv_projector *projector);
+
+/**
+ * Switches a projector made with options.single between single and double precision.
+ * @return false, and nothing happens, for a projector that has one precision only
+ */
+SV_API bool sv_projector_set_single(sv_projector *projector, bool single);
+/** Are its polynomials in single precision now? */
+SV_API bool sv_projector_single(const sv_projector *projector);
 
 /**
  * Norm of the error of P on the levels the engine resolves, rounding of the columns applied so far

@@ -296,6 +296,44 @@ static sv_status settle_degree(sv_context *context, const pilot *p, sv_projector
     return status;
 }
 
+/* Lower degrees while the stated error leaves room. */
+static sv_status trim_degree(sv_context *context, const pilot *p, sv_projector_options *o,
+                             double *ret_error)
+{
+    const double share = 0.9, room = 0.7;
+    for (int turn = 0; turn < 6 && *ret_error < 0.5 * room * o->accuracy; turn++) {
+        sv_projector_options trial = *o;
+        sv_outcome outcome;
+        trial.degree = 2 * (int)(0.5 * share * o->degree) + 1;
+        if (trial.degree >= o->degree)
+            return SV_OK;
+        sv_status status = try_settings(context, p, &trial, &outcome);
+        if (status != SV_OK)
+            return status;
+        if (outcome.verdict != SV_RESOLVED || outcome.numerical_error > room * o->accuracy)
+            return SV_OK;
+        *o = trial;
+        *ret_error = outcome.numerical_error;
+    }
+    return SV_OK;
+}
+
+/* Single precision where its rounding leaves the stated error within what is allowed. */
+static sv_status try_single(sv_context *context, const pilot *p, sv_projector_options *o,
+                            double *ret_error)
+{
+    sv_projector_options trial = *o;
+    sv_outcome outcome;
+    trial.single = true;
+    sv_status status = try_settings(context, p, &trial, &outcome);
+    if (status != SV_OK || outcome.verdict != SV_RESOLVED ||
+        outcome.numerical_error > 0.9 * o->accuracy)
+        return status;
+    *o = trial;
+    *ret_error = outcome.numerical_error;
+    return SV_OK;
+}
+
 /* Degree, reach and sampling, in this order: each is tried with the ones before it. On huge flakes
  * the degree is tried on parts from the start, of a radius the next step corrects. */
 static sv_status settle(sv_context *context, const pilot *p, double sampling_error,
@@ -306,6 +344,10 @@ static sv_status settle(sv_context *context, const pilot *p, double sampling_err
     sv_status status = settle_degree(context, p, o, ret_found, ret_error);
     if (status == SV_OK && o->near_states == 0)
         status = find_reach(context, p, *ret_error, o);
+    if (status == SV_OK && *ret_found)
+        status = trim_degree(context, p, o, ret_error);
+    if (status == SV_OK && *ret_found)
+        status = try_single(context, p, o, ret_error);
     return status == SV_OK ? find_sampling(context, p, o, sampling_error) : status;
 }
 
@@ -333,8 +375,9 @@ static sv_status plan_chebyshev(sv_context *context, sv_case *point, double samp
     point->solve = o;
     snprintf(
         plan->reason, sizeof plan->reason,
-        "chebyshev: degree %d resolves levels %.3g from the Fermi energy%s, stated error %.1e%s",
-        o.degree, o.half_gap, o.near_states > 0 ? ", nearer ones one by one" : "", error,
+        "chebyshev: degree %d resolves levels %.3g from the Fermi energy%s%s, stated error %.1e%s",
+        o.degree, o.half_gap, o.near_states > 0 ? ", nearer ones one by one" : "",
+        o.single ? ", single precision" : "", error,
         found ? "" : " (more than the accuracy asked for)");
     return SV_OK;
 }

@@ -4,7 +4,7 @@
 
 #include <math.h>
 
-enum { CHECKED = 32, CHECKED_BLOCKS = 4 };
+enum { CHECKED = SV_PANEL_COLUMNS_SINGLE, CHECKED_BLOCKS = 4 };
 
 /*
  * Allowance for what is not of first order in the error of P: terms with two errors take positions
@@ -36,9 +36,14 @@ static double bound(double first, const double middle[2], double outer)
     return 2.0 * (sqrt(middle[0] * middle[1]) + 2.0 * sqrt(first * outer));
 }
 
-/* Bound and base of each row of one block; `axis` is the position next to |r⟩ in the outer term. */
+/* What a close look at a row gives; values over 4π/A. */
+typedef struct look {
+    double bound, base, marker;
+} look;
+
+/* Looks at each row of one block; `axis` is the position next to |r⟩ in the outer term. */
 static sv_status look_at(sv_context *context, const column_job *job, const sv_index *rows,
-                         int count, int axis, column_work *w, double *ret_bound, double *ret_base)
+                         int count, int axis, column_work *w, look *ret_looks)
 {
     double first[SV_PANEL_COLUMNS_SINGLE], middle[SV_PANEL_COLUMNS_SINGLE][2];
     sv_status status = sv_chern_set_block(context, job, rows, count, w);
@@ -50,17 +55,21 @@ static sv_status look_at(sv_context *context, const column_job *job, const sv_in
     for (int turn = 0; turn < 2 && status == SV_OK; turn++) {
         int along = turn == 0 ? axis : 1 - axis;
         status = sv_chern_project_moved(context, w, along, w->v, w->z);
-        for (int k = 0; k < count && status == SV_OK; k++)
+        for (int k = 0; k < count && status == SV_OK; k++) {
             middle[k][along] = sv_chern_weight_of_moved(w, k, w->z);
+            if (along == 1)
+                ret_looks[k].marker = sv_chern_overlap(w, k);
+        }
     }
     if (status == SV_OK)
         status = sv_chern_project_moved(context, w, axis, w->z, w->t);
     for (int k = 0; k < count && status == SV_OK; k++) {
         const sv_sample *sample = job->sample;
         int32_t cell = sample->flake->sites[sample->pristine[rows[k]]].cell;
-        ret_bound[k] = bound(first[k], middle[k], sv_chern_weight_of_moved(w, k, w->t)) *
-                       (sv_near_edge(sample->flake, cell, EDGE_CELLS) ? CAUTION_AT_EDGE : CAUTION);
-        ret_base[k] = sv_chern_base(first[k], middle[k][1]);
+        ret_looks[k].bound =
+            bound(first[k], middle[k], sv_chern_weight_of_moved(w, k, w->t)) *
+            (sv_near_edge(sample->flake, cell, EDGE_CELLS) ? CAUTION_AT_EDGE : CAUTION);
+        ret_looks[k].base = sv_chern_base(first[k], middle[k][1]);
     }
     if (w->area.owned)
         sv_projector_free(context, w->area.projector);
@@ -98,15 +107,15 @@ static sv_status check_columns(sv_context *context, const column_job *job, doubl
         for (sum += job->base[k]; mark < sum && found < CHECKED; mark += step)
             chosen[found++] = job->rows[k];
     for (int first = 0; first < found; first += SV_PANEL_COLUMNS_SINGLE) {
-        double bounds[SV_PANEL_COLUMNS_SINGLE], bases[SV_PANEL_COLUMNS_SINGLE];
+        look looks[SV_PANEL_COLUMNS_SINGLE];
         int count =
             found - first < SV_PANEL_COLUMNS_SINGLE ? found - first : SV_PANEL_COLUMNS_SINGLE;
         sv_status status = look_at(context, job, chosen + first, count,
-                                   first / SV_PANEL_COLUMNS_SINGLE % 2, w, bounds, bases);
+                                   first / SV_PANEL_COLUMNS_SINGLE % 2, w, looks);
         if (status != SV_OK)
             return status;
         for (int k = 0; k < count; k++)
-            add(t, bounds[k], bases[k]);
+            add(t, looks[k].bound, looks[k].base);
     }
     return SV_OK;
 }
@@ -123,15 +132,14 @@ static sv_status check_blocks(sv_context *context, const column_job *job, double
             sum += job->base[first + k];
         if (!(mark < sum))
             continue;
-        double bounds[SV_PANEL_COLUMNS_SINGLE], bases[SV_PANEL_COLUMNS_SINGLE], of_bounds = 0.0,
-                                                                                of_bases = 0.0;
-        sv_status status =
-            look_at(context, job, job->rows + first, count, t->count % 2, w, bounds, bases);
+        look looks[SV_PANEL_COLUMNS_SINGLE];
+        double of_bounds = 0.0, of_bases = 0.0;
+        sv_status status = look_at(context, job, job->rows + first, count, t->count % 2, w, looks);
         if (status != SV_OK)
             return status;
         for (int k = 0; k < count; k++) {
-            of_bounds += bounds[k];
-            of_bases += bases[k];
+            of_bounds += looks[k].bound;
+            of_bases += looks[k].base;
         }
         for (; mark < sum && t->count < CHECKED_BLOCKS; mark += step)
             add(t, of_bounds, of_bases);
@@ -158,4 +166,80 @@ sv_status sv_chern_check(sv_context *context, const column_job *job, double *ret
     if (status == SV_OK)
         *ret_factor = factor_of(&t);
     return status;
+}
+
+/* ------------------------------------------------------------------ single precision */
+
+typedef struct exact_tally {
+    double bounds, squares, rounding;
+    int count;
+} exact_tally;
+
+static void add_exact(const column_job *job, sv_index row, const look *found, exact_tally *t)
+{
+    double unit = 4.0 * M_PI / sv_model_cell_area(job->sample->flake->model);
+    double difference = job->marker[row] / unit - found->marker;
+    t->bounds += found->bound;
+    t->squares += found->bound * found->bound;
+    t->rounding += difference * difference;
+    t->count++;
+}
+
+static sv_status look_evenly(sv_context *context, const column_job *job, column_work *w,
+                             exact_tally *t)
+{
+    sv_index chosen[CHECKED], rows[CHECKED];
+    int found = 0;
+    for (int k = 0; k < CHECKED; k++) {
+        sv_index number = (sv_index)((double)job->n_rows * (k + 0.5) / CHECKED);
+        if (found > 0 && chosen[found - 1] == number)
+            continue;
+        chosen[found] = number;
+        rows[found++] = job->rows[number];
+    }
+    look looks[CHECKED];
+    sv_status status = look_at(context, job, rows, found, 0, w, looks);
+    for (int k = 0; k < found && status == SV_OK; k++)
+        add_exact(job, chosen[k], &looks[k], t);
+    return status;
+}
+
+/* The same with whole blocks where each block works on a part of its own. */
+static sv_status look_at_blocks(sv_context *context, const column_job *job, column_work *w,
+                                exact_tally *t)
+{
+    sv_status status = SV_OK;
+    int count, done = 0;
+    for (sv_index first = 0; first < job->n_rows && status == SV_OK; first += count) {
+        look looks[SV_PANEL_COLUMNS_SINGLE];
+        count = sv_chern_block_size(job, first);
+        if ((double)(first + count) * CHECKED_BLOCKS <= (double)job->n_rows * (done + 0.5))
+            continue;
+        status = look_at(context, job, job->rows + first, count, done++ % 2, w, looks);
+        for (int k = 0; k < count && status == SV_OK; k++)
+            add_exact(job, first + k, &looks[k], t);
+    }
+    return status;
+}
+
+sv_status sv_chern_check_single(sv_context *context, const column_job *job, double *ret_error)
+{
+    column_work w;
+    exact_tally t = {0};
+    *ret_error = 0.0;
+    if (job->n_rows == 0)
+        return SV_OK;
+    sv_status status = sv_chern_start_work(context, job, &w);
+    sv_projector_set_single(job->projector, false);
+    if (status == SV_OK)
+        status = job->reach > 0.0 ? look_at_blocks(context, job, &w, &t)
+                                  : look_evenly(context, job, &w, &t);
+    sv_projector_set_single(job->projector, true);
+    sv_chern_end_work(context, &w);
+    if (status != SV_OK)
+        return status;
+    double n = t.count, mean = t.bounds / n;
+    double variance = n > 1.0 ? fmax(0.0, t.squares / n - mean * mean) / (n - 1.0) : 0.0;
+    *ret_error = mean + 2.0 * sqrt(variance) + 3.0 * sqrt(t.rounding / n);
+    return SV_OK;
 }

@@ -33,8 +33,7 @@ sv_status sv_chern_project_moved(sv_context *context, column_work *w, int axis,
     return sv_projector_apply(context, w->area.projector, w->count, w->x, to);
 }
 
-/* Im⟨(x − x_r) v|z⟩ of column k. */
-static double overlap(const column_work *w, int k)
+double sv_chern_overlap(const column_work *w, int k)
 {
     sv_index n = w->area.n;
     const sv_complex *v = w->v + k * n, *z = w->z + k * n;
@@ -122,7 +121,7 @@ static sv_status one_block(sv_context *context, column_job *job, sv_index first,
         status = sv_chern_project_moved(context, w, 1, w->v, w->z);
     double eta = status == SV_OK ? sv_projector_uniform_error(w->area.projector) : 0.0;
     for (int k = 0; k < count && status == SV_OK; k++) {
-        job->marker[first + k] = factor * overlap(w, k);
+        job->marker[first + k] = factor * sv_chern_overlap(w, k);
         job->base[first + k] =
             sv_chern_base(sv_chern_weight_of_site(w, k), sv_chern_weight_of_moved(w, k, w->z));
         job->error[first + k] = 0.0;
@@ -206,10 +205,13 @@ sv_status sv_chern_columns(sv_context *context, const sv_sample *sample, sv_proj
     }
     if (status == SV_OK)
         status = run_threads(context, &job, threads);
-    if (status == SV_OK)
+    bool single = sv_projector_single(projector);
+    if (status == SV_OK && single)
+        status = sv_chern_check_single(context, &job, &factor);
+    else if (status == SV_OK)
         status = sv_chern_check(context, &job, &factor);
     for (sv_index k = 0; k < n_rows && status == SV_OK; k++)
-        ret_error[k] += factor * unit * job.base[k];
+        ret_error[k] += factor * unit * (single ? 1.0 : job.base[k]);
 out:
     sv_give(context, job.base);
     sv_give(context, job.row_of_site);

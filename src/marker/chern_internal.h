@@ -64,9 +64,17 @@ double sv_chern_weight_of_moved(const column_work *w, int k, const sv_complex *p
 /* A number of the size of the error of one value, from these weights of |r⟩ and (y − y_r) v. */
 double sv_chern_base(double first, double second);
 
+/* Im⟨(x − x_r) v|z⟩ of column k: the marker over 4π/A. */
+double sv_chern_overlap(const column_work *w, int k);
 /* Does the flake lack a cell within `depth` cells of this one? */
 bool sv_near_edge(const sv_flake *flake, int32_t cell, int32_t depth);
 /* How often sv_chern_base() the error can be, from some of the columns looked at closely. */
 sv_status sv_chern_check(sv_context *context, const column_job *job, double *ret_factor);
+/*
+ * For columns in single precision, whose rounding hides those weights: some columns evenly spread
+ * over the rows are done again in double. Mean of their bounds and twice its standard error, and
+ * three times the root mean square of what rounding did to them.
+ */
+sv_status sv_chern_check_single(sv_context *context, const column_job *job, double *ret_error);
 
 #endif

@@ -155,6 +155,9 @@ static sv_status from_columns(sv_context *context, const sv_marker_input *input,
 {
     double sum = 0.0;
     sv_status status;
+    /* Maps judge every site by its own error, which single precision does not tell. */
+    if (input->ret_site_values != NULL)
+        sv_projector_set_single(input->projector, false);
     if ((status = sv_take(context, w->n_rows, sizeof *w->marker, &w->marker)) != SV_OK ||
         (status = sv_take(context, w->n_rows, sizeof *w->error, &w->error)) != SV_OK ||
         (status = sv_chern_columns(context, w->sample, input->projector, input->threads, w->rows,

@@ -23,8 +23,9 @@ typedef struct chebyshev_state {
     int degree;
     double energy, scale;
     sv_panel_kernel kernel;
-    bool single;    /* panels hold floats, twice as many columns */
-    double *panels; /* four panels: x, two of work, y */
+    bool may_be_single; /* the matrix is there in single precision too */
+    bool single;        /* now: panels hold floats, twice as many columns */
+    double *panels;     /* four panels: x, two of work, y */
     sv_near_states near;
     double *correction; /* θ_n − p(E_n) of the near states */
 } chebyshev_state;
@@ -116,7 +117,7 @@ static sv_status set_matrix(sv_context *context, const sv_sparse *h, const sv_in
                             sv_index n, const int32_t *place, chebyshev_state *s)
 {
     sv_status status = sv_packed_make(context, h, rows, n, place, s->energy, s->scale, &s->packed);
-    if (status == SV_OK && s->single)
+    if (status == SV_OK && s->may_be_single)
         status = sv_packed_add_single(context, &s->packed);
     if (status != SV_OK)
         return status;
@@ -137,6 +138,7 @@ static sv_status chebyshev_restrict(sv_context *context, const sv_projector *pro
                               .degree = whole->degree,
                               .energy = whole->energy,
                               .scale = whole->scale,
+                              .may_be_single = whole->single,
                               .single = whole->single,
                               .kernel = whole->kernel};
     status = set_matrix(context, &projector->sample->hamiltonian, rows, n_rows, place, part);
@@ -147,10 +149,27 @@ static sv_status chebyshev_restrict(sv_context *context, const sv_projector *pro
     return status;
 }
 
+/* Panels are as large in both precisions; the matrix is there in double always. */
+static bool chebyshev_set_single(void *state, bool single)
+{
+    chebyshev_state *s = state;
+    if (!s->may_be_single)
+        return false;
+    s->single = single;
+    return true;
+}
+
+static bool chebyshev_is_single(const void *state)
+{
+    return ((const chebyshev_state *)state)->single;
+}
+
 static const engine_class chebyshev_class = {.name = "chebyshev",
                                              .free = chebyshev_free,
                                              .apply = chebyshev_apply,
                                              .basis = chebyshev_basis,
+                                             .set_single = chebyshev_set_single,
+                                             .is_single = chebyshev_is_single,
                                              .restrict_to = chebyshev_restrict};
 
 /* Gap and degree in units of the half width of the spectrum about the Fermi energy. */
@@ -265,7 +284,7 @@ sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
         return status;
     s->energy = levels.fermi_energy;
     s->kernel = sv_panel_best_kernel();
-    s->single = options->single;
+    s->may_be_single = s->single = options->single;
     status = sv_projector_scale(context, &sample->hamiltonian, s->energy, &s->scale);
     if (status == SV_OK)
         status = set_polynomial(context, options, s->scale, s);

@@ -85,6 +85,17 @@ double sv_projector_reach(const sv_projector *projector)
     return projector->engine->restrict_to != NULL ? projector->reach : 0.0;
 }
 
+bool sv_projector_set_single(sv_projector *projector, bool single)
+{
+    return projector->engine->set_single != NULL &&
+           projector->engine->set_single(projector->state, single);
+}
+
+bool sv_projector_single(const sv_projector *projector)
+{
+    return projector->engine->is_single != NULL && projector->engine->is_single(projector->state);
+}
+
 double sv_projector_uniform_error(const sv_projector *projector)
 {
     const engine_class *engine = projector->engine;

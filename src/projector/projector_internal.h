@@ -17,6 +17,9 @@ typedef struct engine_class {
                              void **ret_state);
     /* See sv_projector_uniform_error(); NULL: no such statement. */
     double (*uniform_error)(const void *state);
+    /* Single precision on or off; false: there is no choice. NULL: always double. */
+    bool (*set_single)(void *state, bool single);
+    bool (*is_single)(const void *state);
 } engine_class;
 
 struct sv_projector {
