@@ -27,11 +27,12 @@ static json_t *film_json(const film_length *film)
 static int print_json(session *s, const forecast *f, const film_length *film)
 {
     json_t *root = json_pack(
-        "{s:i, s:s, s:s, s:s, s:{s:I, s:i, s:I, s:s, s:f, s:f, s:i, s:f, s:f}}", "selvedge", 1,
-        "command", "check", "title", s->base.title, "resolved", s->base.resolved, "forecast",
-        "sites", (json_int_t)f->sites, "points", (int)s->n_points, "realisations",
+        "{s:i, s:s, s:s, s:s, s:{s:I, s:i, s:I, s:s, s:f, s:f, s:f, s:i, s:f, s:f, s:f}}",
+        "selvedge", 1, "command", "check", "title", s->base.title, "resolved", s->base.resolved,
+        "forecast", "sites", (json_int_t)f->sites, "points", (int)s->n_points, "realisations",
         (json_int_t)f->realisations, "engine", s->points[0].plan.reason, "memory_bytes_per_thread",
-        f->bytes_per_thread, "memory_bytes_available", f->bytes_available, "threads", s->threads,
+        f->bytes_per_thread, "memory_bytes_program", f->bytes_before, "memory_bytes_available",
+        f->bytes_available, "threads", s->threads, "seconds_before", f->seconds_before,
         "seconds_per_realisation", f->seconds_per_realisation, "seconds", f->seconds);
     if (root == NULL)
         return sv_status_exit_code(SV_NO_MEMORY);

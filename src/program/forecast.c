@@ -4,15 +4,10 @@
 
 #include <math.h>
 #include <string.h>
-#include <time.h>
 #include <unistd.h>
 
-static double seconds_now(void)
-{
-    struct timespec now;
-    clock_gettime(CLOCK_MONOTONIC, &now);
-    return (double)now.tv_sec + 1e-9 * (double)now.tv_nsec;
-}
+/* The program, its libraries and the buffers of BLAS with nothing computed (measured: 17 to 20). */
+static const double PROGRAM_BYTES = 18e6;
 
 static double read_number_file(const char *path)
 {
@@ -35,8 +30,7 @@ static double memory_available(void)
     return fmin(pages * size, limit);
 }
 
-/* How many projectors one realisation needs: one per boundary asked for. */
-static void boundaries_needed(const session *s, const sv_setup *setup, bool *open, bool *closed)
+void boundaries_needed(const session *s, const sv_setup *setup, bool *open, bool *closed)
 {
     int count;
     const sv_marker *table = sv_marker_table(&count);
@@ -51,8 +45,7 @@ static void boundaries_needed(const session *s, const sv_setup *setup, bool *ope
     }
 }
 
-/* Does a marker of the open flake need a basis of the occupied space? */
-static bool needs_open_basis(const sv_setup *setup)
+bool needs_open_basis(const sv_setup *setup)
 {
     int count;
     const sv_marker *table = sv_marker_table(&count);
@@ -138,157 +131,42 @@ sv_status session_fit_memory(session *s)
     return SV_OK;
 }
 
-/* What the forecast's small trials found. */
-typedef struct calibration {
-    double per_cube; /* dense: seconds per site³ */
-    double per_step; /* chebyshev: seconds per stored element, column and degree */
-} calibration;
-
-/* The fastest of three realisations of a small flake, seconds. */
-static sv_status time_small(session *s, const sv_case *problem, double *ret_seconds)
-{
-    sv_record record;
-    sv_status status = SV_OK;
-    *ret_seconds = INFINITY;
-    for (int k = 0; status == SV_OK && k < 3; k++) {
-        double start = seconds_now();
-        status = sv_realise(s->context, problem, k, NULL, NULL, &record);
-        *ret_seconds = fmin(*ret_seconds, seconds_now() - start);
-    }
-    return status;
-}
-
-/* One realisation of half-BHZ with each engine: 14×14 cells dense, 24×24 by polynomials. */
-static sv_status calibrate_engine(session *s, bool dense, calibration *c)
-{
-    const int side = dense ? 14 : 24, degree = 101;
-    double sites = 2.0 * side * side, seconds = 0.0;
-    int count, qi_wu_zhang = 0;
-    const sv_kind *kinds = sv_model_kinds(&count);
-    while (strcmp(kinds[qi_wu_zhang].name, "qi_wu_zhang") != 0)
-        qi_wu_zhang++;
-    sv_value mass = {.present = true, .real = {-1.0}};
-    sv_model model = {0};
-    sv_flake flake = {0};
-    sv_disorder disorder = {.name = "trial", .type = SV_DISORDER_ONSITE, .on = -1, .width = 1.0};
-    sv_flake_spec spec = {.shape = SV_SHAPE_RECTANGLE, .has_cells = true, .cells = {side, side}};
-    sv_case problem = {.open_flake = &flake,
-                       .disorder = &disorder,
-                       .n_disorder = 1,
-                       .solve = sv_projector_options_default(),
-                       .n_markers = 1};
-    problem.solve.engine = dense ? SV_ENGINE_DENSE : SV_ENGINE_CHEBYSHEV;
-    problem.solve.degree = degree;
-    problem.solve.half_gap = 0.5;
-    problem.markers[0] = (sv_marker_request){.marker = sv_marker_find("local_chern"),
-                                             .values = {{.present = true, .real = {0.5}}}};
-    sv_status status = sv_model_make(s->context, &kinds[qi_wu_zhang], &mass, &model);
-    if (status == SV_OK)
-        status = sv_flake_make(s->context, &model, &spec, &flake);
-    if (status == SV_OK)
-        status = time_small(s, &problem, &seconds);
-    if (dense)
-        c->per_cube = seconds / pow(sites, 3.0);
-    else /* 9 elements a row, a window of half the side, two applications */
-        c->per_step = seconds / (9.0 * sites * (0.25 * sites) * 2.0 * degree);
-    sv_flake_free(s->context, &flake);
-    sv_model_free(s->context, &model);
-    return status;
-}
-
-static double window_columns(session *s, const sv_case *problem)
-{
-    bool *inside = NULL;
-    sv_index cells = 0;
-    double share = 0.5;
-    for (int k = 0; k < problem->n_markers; k++)
-        if (problem->markers[k].marker == sv_marker_find("local_chern"))
-            share = problem->markers[k].values[0].real[0];
-    if (sv_flake_window(s->context, problem->open_flake, share, &inside, &cells) != SV_OK)
-        return 0.0;
-    sv_give(s->context, inside);
-    if (problem->solve.sampled_cells > 0 && problem->solve.sampled_cells < cells)
-        cells = problem->solve.sampled_cells;
-    return (double)cells * problem->open_flake->model->n_orbitals;
-}
-
-/* Elements a row of the Hamiltonian has in the bulk. */
-static double row_elements(const sv_model *model)
-{
-    return 1.0 + 2.0 * model->n_hops / (double)model->n_orbitals;
-}
-
-static double chebyshev_seconds(session *s, const point *p, const calibration *c)
-{
-    const sv_case *problem = &p->problem;
-    const sv_model *model = &p->setup.model;
-    double sites = (double)p->open.n_sites, part = sites;
-    if (problem->solve.reach > 0.0)
-        part = M_PI * pow(problem->solve.reach + 4.0, 2.0) * model->n_orbitals /
-               sv_model_cell_area(model);
-    double steps = part * window_columns(s, problem) * 2.0 * problem->solve.degree;
-    /* Drawing the sample and, where asked for, counting and finding levels one by one. */
-    double other = 1.5e-6 * sites + (problem->solve.near_states > 0 ? 5e-5 * sites : 0.0);
-    return c->per_step * row_elements(model) * steps + other;
-}
-
-/* Factors and solutions for every pole. A solution moves its factor through the processor once each
- * way: its time follows the size of the factor (measured, 1,800 to 80,000 sites); speeds are taken
- * relative to the dense trial. */
-static double rational_seconds(session *s, const point *p, const calibration *c)
-{
-    const double forecast_poles = 25.0, per_operation = 5.2e-10, per_byte = 3.6e-11;
-    const double reference = 4.2e-10; /* per_cube of the machine these were measured on */
-    const sv_case *problem = &p->problem;
-    double sites = (double)p->open.n_sites, bytes, operations;
-    double poles = sv_zolotarev_terms(0.25 / sites, 0.02 * problem->solve.accuracy);
-    sv_projector_forecast(SV_ENGINE_RATIONAL, p->open.n_sites, &bytes, &operations);
-    double work = per_operation * operations + 2.0 * window_columns(s, problem) * per_byte * bytes;
-    return c->per_cube / reference * poles / forecast_poles * work;
-}
-
-/* Dense work grows as the cube of the sites, a little faster once it leaves the cache (measured:
- * 1.0 at the calibration's 392 sites, 1.35 at 1,800). */
-static double dense_seconds(double sites, const calibration *c)
-{
-    double cache = 1.0 + 0.35 * fmin(1.0, fmax(0.0, (sites - 400.0) / 1400.0));
-    return c->per_cube * sites * sites * sites * cache;
-}
-
-static double point_seconds(session *s, const point *p, const calibration *c)
+/* Memory of a point whose engine is settled: the open and the closed copy come one after the other.
+ */
+static double planned_bytes(const session *s, const point *p)
 {
     bool open, closed;
+    double bytes[2] = {0.0, 0.0}, operations;
+    const sv_projector_options *solve = &p->problem.solve;
     boundaries_needed(s, &p->setup, &open, &closed);
-    double sites = (double)p->open.n_sites, seconds = 0.0;
-    if (open && needs_open_basis(&p->setup)) /* the split by spin costs as much again */
-        seconds += 2.0 * dense_seconds(sites, c);
-    else if (open && p->problem.solve.engine == SV_ENGINE_CHEBYSHEV)
-        seconds += chebyshev_seconds(s, p, c);
-    else if (open && p->problem.solve.engine == SV_ENGINE_RATIONAL)
-        seconds += rational_seconds(s, p, c);
-    else if (open)
-        seconds += dense_seconds(sites, c);
-    /* The Bott index adds the eigenvalues of a general matrix of half the order. */
-    return closed ? seconds + 1.5 * dense_seconds(sites, c) : seconds;
+    if (open)
+        sv_projector_forecast(needs_open_basis(&p->setup) ? SV_ENGINE_DENSE : solve->engine,
+                              p->open.n_sites, &bytes[0], &operations);
+    if (closed) /* polynomials make a basis of half the order, as large as the dense one's */
+        sv_projector_forecast(SV_ENGINE_DENSE, p->open.n_sites, &bytes[1], &operations);
+    return fmax(bytes[0], bytes[1]);
 }
 
 sv_status session_forecast(session *s, bool calibrate, forecast *ret)
 {
-    forecast f = {.bytes_available = memory_available()};
-    calibration c = {0};
-    double all = 0.0;
+    forecast f = {.bytes_available = memory_available(), .bytes_before = PROGRAM_BYTES};
+    /* So far the program has read the sheet and settled the engines, as `average` does again. */
+    f.seconds_before = processor_seconds();
+    cost_model costs = {0};
+    double all = 0.0, bytes = 0.0;
     sv_status status = largest(s, &f.sites, &f.bytes_per_thread);
-    if (status == SV_OK && calibrate)
-        status = calibrate_engine(s, true, &c);
-    if (status == SV_OK && calibrate)
-        status = calibrate_engine(s, false, &c);
-    for (int32_t k = 0; status == SV_OK && k < s->n_points; k++) {
-        double seconds = point_seconds(s, &s->points[k], &c);
+    for (int32_t k = 0; status == SV_OK && calibrate && k < s->n_points; k++) {
+        double seconds = 0.0;
+        status = cost_of_point(s, &s->points[k], &costs, &seconds);
+        if (!s->levels_only)
+            bytes = fmax(bytes, planned_bytes(s, &s->points[k]));
         f.seconds_per_realisation = fmax(f.seconds_per_realisation, seconds);
         all += seconds * (double)s->base.realisations;
     }
+    if (bytes > 0.0)
+        f.bytes_per_thread = bytes;
     f.realisations = (int64_t)s->n_points * s->base.realisations;
-    f.seconds = all / s->threads;
+    f.seconds = f.seconds_before + all / s->threads;
     if (status == SV_OK)
         *ret = f;
     return status;
@@ -316,8 +194,12 @@ void print_forecast(const forecast *f, const session *s, const char *prefix, FIL
     fprintf(stream, "%ssites         %lld (largest flake)\n", prefix, (long long)f->sites);
     fprintf(stream, "%spoints        %d\n", prefix, s->n_points);
     fprintf(stream, "%srealisations  %lld over all points\n", prefix, (long long)f->realisations);
-    fprintf(stream, "%smemory        %.3g MB per thread, %d threads, %.3g GB in this machine\n",
-            prefix, f->bytes_per_thread / 1e6, s->threads, f->bytes_available / 1e9);
-    fprintf(stream, "%stime          about %s per realisation, about %s in all\n", prefix, one,
-            all);
+    fprintf(
+        stream,
+        "%smemory        %.3g MB per thread, %d threads, and %.2g MB; %.3g GB in this machine\n",
+        prefix, f->bytes_per_thread / 1e6, s->threads, f->bytes_before / 1e6,
+        f->bytes_available / 1e9);
+    fprintf(stream,
+            "%stime          about %s per realisation, about %s in all, if nothing else runs\n",
+            prefix, one, all);
 }

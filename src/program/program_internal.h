@@ -78,6 +78,8 @@ typedef struct session {
 sv_status session_open(sv_context *context, const options *o, const char *path, bool inside_run,
                        bool with_sweep, session *ret);
 void session_close(session *s);
+/* Flakes, markers and options of a point whose setup is filled. */
+sv_status session_make_point(session *s, point *p);
 /* Settles the engine of every point (tries realisation 0 of each). */
 sv_status session_plan(session *s, bool site_map);
 /* The plans of all points as comment lines of a sheet; taken from the context. */
@@ -90,10 +92,26 @@ typedef struct forecast {
     int64_t sites;        /* largest flake of the sweep */
     int64_t realisations; /* over all points */
     double bytes_per_thread, bytes_available;
-    double seconds_per_realisation; /* of the largest */
+    double bytes_before;            /* the program itself */
+    double seconds_before;          /* reading the sheet, settling the engines */
+    double seconds_per_realisation; /* of the costliest point, on one thread */
     double seconds;                 /* whole ensemble on `threads` */
 } forecast;
 sv_status session_forecast(session *s, bool calibrate, forecast *ret);
+/* How many projectors one realisation needs: one per boundary asked for. */
+void boundaries_needed(const session *s, const sv_setup *setup, bool *open, bool *closed);
+/* Does a marker of the open flake need a basis of the occupied space? */
+bool needs_open_basis(const sv_setup *setup);
+/* Processor time of this process, which other programs on the machine do not lengthen. */
+double processor_seconds(void);
+
+/* Seconds the small trials of forecast_cost.c took, 0 where one has not been needed yet. */
+enum { COST_TRIALS = 9 };
+typedef struct cost_model {
+    double seconds[COST_TRIALS], sites[COST_TRIALS];
+} cost_model;
+/* Processor seconds one realisation of a point takes; runs the trials it needs. */
+sv_status cost_of_point(session *s, const point *p, cost_model *costs, double *ret_seconds);
 void print_forecast(const forecast *f, const session *s, const char *prefix, FILE *stream);
 
 /* Arithmetic kernel of this machine as text: part of the identity of a run. */

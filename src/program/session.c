@@ -123,7 +123,7 @@ static sv_status prepare_localizer(session *s, point *p)
     return status;
 }
 
-static sv_status make_point(session *s, point *p)
+sv_status session_make_point(session *s, point *p)
 {
     const sv_setup *setup = &p->setup;
     sv_status status = make_flakes(s, p);
@@ -182,7 +182,7 @@ static sv_status make_points(session *s, bool with_sweep, sv_diagnostics *diagno
                                 &p->setup);
         if (status == SV_OK) {
             s->n_points = k + 1;
-            status = make_point(s, p);
+            status = session_make_point(s, p);
         }
     }
     return status;

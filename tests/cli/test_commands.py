@@ -75,6 +75,29 @@ def check_computes_nothing_and_prints_what_can_be_read_back():
 
 
 @test
+def the_forecast_follows_the_work():
+    """Scales only: how near the forecast comes is measured by `scripts/benchmark forecast`."""
+    def forecast(*changes):
+        options = [word for change in changes for word in ("--set", change)]
+        return run("check", sheet(SMALL + "ensemble: {realisations: 3}\n"), "--json", "-j", "1",
+                   *options, code=0).json()["forecast"]
+
+    small = forecast()
+    for name in ("seconds_before", "seconds_per_realisation", "seconds", "memory_bytes_per_thread",
+                 "memory_bytes_program", "memory_bytes_available"):
+        check(small[name] > 0.0, "%s is %r" % (name, small[name]))
+    for row in (small, forecast("ensemble.realisations=300")):
+        whole = row["seconds_before"] + row["realisations"] * row["seconds_per_realisation"]
+        check(abs(row["seconds"] - whole) <= 1e-9 * whole, "parts and whole: %r" % row)
+    # Diagonalisation: 64 times the work and 16 times the memory at twice the side.
+    dense = [forecast("solve.engine=dense", "flake.cells=[%d, %d]" % (n, n)) for n in (8, 16)]
+    check(10.0 < dense[1]["seconds_per_realisation"] / dense[0]["seconds_per_realisation"] < 400.0,
+          "time at twice the side: %r" % dense)
+    check(abs(dense[1]["memory_bytes_per_thread"] / dense[0]["memory_bytes_per_thread"] - 16.0) < 1e-6,
+          "memory at twice the side: %r" % dense)
+
+
+@test
 def a_missing_or_unreadable_sheet_is_invalid_input():
     for path in ("no-such-sheet.yaml", folder()):
         result = run("check", path, code=3)

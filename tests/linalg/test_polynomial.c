@@ -39,6 +39,22 @@ SV_TEST(step_polynomials_reach_the_best_rate)
     CHECK_STATUS(SV_INVALID_INPUT, sv_step_polynomial(test_context(), 0.9, 101, none));
 }
 
+/* Wide of its interval a near-best polynomial is the step itself: its low coefficients are those of
+ * the Chebyshev series of Θ(x_F − x) at x_F = 0, c_0 = 1/2 and c_n = −2 sin(nπ/2)/(nπ), as in A.
+ * Weiße, G. Wellein, A. Alvermann, H. Fehske, RMP 78, 275 (2006) (value recalled from memory): 0.5,
+ * −0.636620, 0, 0.212207, 0, −0.127324. The rounding of the step over δ changes them by O(δ²). */
+SV_TEST(low_coefficients_are_those_of_the_series_of_a_step)
+{
+    const double series[] = {0.5, -0.636620, 0.0, 0.212207, 0.0, -0.127324};
+    const double delta = 1e-3;
+    int degree = sv_step_degree(delta, 1e-6);
+    double *c = calloc((size_t)degree + 1, sizeof *c);
+    CHECK_OK(sv_step_polynomial(test_context(), delta, degree, c));
+    for (int n = 0; n < 6; n++)
+        CHECK_CLOSE(c[n], series[n], 5e-6);
+    free(c);
+}
+
 /* Σ c_k T_k((H − shift)/scale) x of one column by repeated sparse products; v: room for 4 n. */
 static void repeated_products(const sv_sparse *h, const double *coefficients, int degree,
                               double shift, double scale, const sv_complex *x, sv_complex *v,
