@@ -99,7 +99,8 @@ static void add_entry(sv_draw_figure *f, int *number, int point, sv_index count,
 static void add_legend(sv_draw_figure *f)
 {
     int number = 0;
-    add_entry(f, &number, POINT_VACANT, f->vacant, "vacancy", "vacancies");
+    const char *empty = sv_empty_words(f->result->sample, f->vacant);
+    add_entry(f, &number, POINT_VACANT, f->vacant, empty, empty);
     add_entry(f, &number, POINT_REMOVED, f->removed, "removed position", "removed positions");
     add_entry(f, &number, POINT_HANGING, f->hanging, "dangling position", "dangling positions");
     add_entry(f, &number, POINT_ADATOM, f->adatoms, "site with an adatom", "sites with adatoms");

@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* Layout and script of the marker map. All lengths in centimetres until the last moment. */
 #include <math.h>
+#include <string.h>
 
 #include "figure_internal.h"
 
@@ -107,10 +108,12 @@ static void add_scale_bar(sv_map_figure *f)
                  (side_cm + cm + 0.15) / w, y / h);
 }
 
-/* How vacancies look, at the right of the foot. */
+/* How empty positions look, at the right of the foot. */
 static void add_legend(sv_map_figure *f)
 {
-    const double w = f->figure.width_cm, h = f->figure.height_cm, y = 0.36, x = w - 2.25;
+    const char *words = sv_empty_words(f->map->sample, f->vacancies.count);
+    const double w = f->figure.width_cm, h = f->figure.height_cm, y = 0.36;
+    const double x = w - (strlen(words) > 9 ? 3.1 : 2.25); /* "empty positions" is longer */
     sv_draft *script = &f->figure.script;
     if (f->vacancies.count == 0) {
         sv_draft_add(script, "set label 31 'no vacancies' at screen %.5f,%.5f left font ',7'\n",
@@ -123,8 +126,7 @@ static void add_legend(sv_map_figure *f)
                  (x - 0.18) / w, y / h, 0.07 / w,
                  f->vacancies.count > MOST_RINGS ? "solid 1 noborder" : "empty border");
     sv_draft_add(script, "set label 31 '%lld %s' at screen %.5f,%.5f left font ',7'\n",
-                 (long long)f->vacancies.count, f->vacancies.count == 1 ? "vacancy" : "vacancies",
-                 x / w, y / h);
+                 (long long)f->vacancies.count, words, x / w, y / h);
 }
 
 /* Rings in the holes; too many of them would hide the map, so then the holes are dark. */

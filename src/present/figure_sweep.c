@@ -157,8 +157,9 @@ static void choose_range(const sv_result *result, int marker, double range[2])
 }
 
 /* Thin lines at the integers, named outside the frame where no curve runs. */
-static void add_integers(sv_draft *script, const double range[2])
+static void add_integers(sv_draft *script, const char *marker, const double range[2])
 {
+    const char *symbol = sv_words_symbol(marker);
     const int first = (int)ceil(range[0]), last = (int)floor(range[1]);
     const int step = (last - first) / 8 + 1;
     sv_draft_add(script, "unset arrow\n");
@@ -166,9 +167,9 @@ static void add_integers(sv_draft *script, const double range[2])
         sv_draft_add(script,
                      "set arrow %d from graph 0,first %d to graph 1,first %d nohead lc rgb "
                      "'#808080' lw 0.5 dt (6,4) back\n"
-                     "set label %d 'C = %s%d' at graph 1.02,first %d left font 'Helvetica,7' tc "
+                     "set label %d '%s = %s%d' at graph 1.02,first %d left font 'Helvetica,7' tc "
                      "rgb '#505050'\n",
-                     40 + k - first, k, k, 40 + k - first, k < 0 ? "\xE2\x88\x92" : "",
+                     40 + k - first, k, k, 40 + k - first, symbol, k < 0 ? "\xE2\x88\x92" : "",
                      k < 0 ? -k : k, k);
 }
 
@@ -206,7 +207,7 @@ static void add_panel(sv_figure *figure, const sv_result *result, int number, do
                  "set tmargin at screen %.5f\nset bmargin at screen %.5f\n"
                  "set yrange [%.9g:%.9g]\nset ylabel %s offset 1.2,0\n",
                  top_cm / h, (top_cm - panel_cm) / h, range[0], range[1], literal);
-    add_integers(script, range);
+    add_integers(script, summary->marker, range);
     if (lowest)
         sv_draft_add(script, "set format x '%%g'\nset xlabel xname offset 0,0.4\n");
     else

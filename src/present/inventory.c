@@ -23,6 +23,15 @@ static json_t *make_orbitals(sv_json *json, const sv_sample *sample)
     return object;
 }
 
+/* What each entry of the sheet has put into this sample, by its name. */
+static json_t *make_placed(sv_json *json, const sv_sample *sample)
+{
+    json_t *object = json_object();
+    for (int k = 0; k < sample->n_disorder && k < SV_DISORDER_MOST; k++)
+        sv_json_put_integer(json, object, sample->disorder[k].name, sample->inventory.placed[k]);
+    return object;
+}
+
 json_t *sv_json_inventory(sv_json *json, const sv_sample *sample)
 {
     const sv_inventory *inventory = &sample->inventory;
@@ -32,6 +41,7 @@ json_t *sv_json_inventory(sv_json *json, const sv_sample *sample)
     sv_json_put(json, object, "orbitals", make_orbitals(json, sample));
     sv_json_put_integer(json, object, "imbalance", inventory->imbalance);
     sv_json_put_integer(json, object, "vacancies", inventory->vacancies);
+    sv_json_put(json, object, "placed", make_placed(json, sample));
     sv_json_put_integer(json, object, "vacant_sites", inventory->vacant_sites);
     sv_json_put_integer(json, object, "adatoms", inventory->adatoms);
     sv_json_put_integer(json, object, "removed_sites", inventory->removed_sites);
@@ -43,6 +53,13 @@ json_t *sv_json_inventory(sv_json *json, const sv_sample *sample)
     sv_json_put_integer(json, object, "marks_unmatched", inventory->marks_unmatched);
     sv_json_put_integer(json, object, "marks_merged", inventory->marks_merged);
     return object;
+}
+
+const char *sv_empty_words(const sv_sample *sample, sv_index count)
+{
+    if (count != sample->inventory.vacancies)
+        return count == 1 ? "empty position" : "empty positions";
+    return count == 1 ? "vacancy" : "vacancies";
 }
 
 void sv_inventory_words(const sv_sample *sample, char *text, size_t size)

@@ -7,17 +7,17 @@
 #include "present_internal.h"
 
 static const struct {
-    const char *name, *words, *margin, *weakest;
+    const char *name, *words, *margin, *weakest, *symbol; /* NULL: that of the Chern number */
 } markers[] = {
-    {"local_chern", "local Chern marker", "level_spacing", NULL},
-    {"bott", "Bott index", "angle_margin", "smallest_modulus"},
-    {"localizer", "localizer index", "gap", NULL},
-    {"three_sector", "three-sector number", NULL, NULL},
-    {"crosshair", "crosshair marker", NULL, NULL},
-    {"spin_chern", "spin Chern number", "spin_gap", NULL},
-    {"spin_bott", "spin Bott index", "spin_gap", "smallest_modulus"},
-    {"density_response", "density response", "nearest_level", "level_movement"},
-    {"spectral_flow", "spectral flow", "edge_weight", "followed"},
+    {"local_chern", "local Chern marker", "level_spacing", NULL, NULL},
+    {"bott", "Bott index", "angle_margin", "smallest_modulus", NULL},
+    {"localizer", "localizer index", "gap", NULL, NULL},
+    {"three_sector", "three-sector number", NULL, NULL, NULL},
+    {"crosshair", "crosshair marker", NULL, NULL, NULL},
+    {"spin_chern", "spin Chern number", "spin_gap", NULL, "spin C"},
+    {"spin_bott", "spin Bott index", "spin_gap", "smallest_modulus", "spin C"},
+    {"density_response", "density response", "nearest_level", "level_movement", NULL},
+    {"spectral_flow", "spectral flow", "edge_weight", "followed", NULL},
 };
 
 static int find_marker(const char *name)
@@ -32,6 +32,12 @@ const char *sv_words_marker(const char *name)
 {
     const int row = find_marker(name);
     return row < 0 ? name : markers[row].words;
+}
+
+const char *sv_words_symbol(const char *name)
+{
+    const int row = find_marker(name);
+    return row < 0 || markers[row].symbol == NULL ? "C" : markers[row].symbol;
 }
 
 const char *sv_words_margin(const char *name)
@@ -50,9 +56,9 @@ const char *sv_words_weakest(const char *name)
 static const struct {
     const char *key, *words;
 } disorder_keys[] = {
-    {"share", "share of positions removed (%s)"},
-    {"count", "number of defects (%s)"},
-    {"density", "defect density (%s)"},
+    {"share", "share (%s)"},
+    {"count", "number (%s)"},
+    {"density", "density (%s)"},
     {"volume_density", "defect density per volume (%s)"},
     {"cluster_size", "mean number of defects per cluster (%s)"},
     {"cluster_radius", "radius of the clusters (%s)"},
@@ -61,6 +67,20 @@ static const struct {
     {"screening_length", "screening length (%s)"},
     {"strength", "strength (%s)"},
     {"width", "disorder width (%s; box: full width)"},
+    {"phase", "phase of the bonds (%s; box: full width)"},
+    {"coupling", "hop to an adatom (%s)"},
+    {"energy", "energy of an adatom (%s)"},
+    {"charge", "charge of a vacancy (%s)"},
+    {"permittivity", "relative permittivity (%s)"},
+    {"length", "length of a crack (%s)"},
+    {"angle", "direction (%s)"},
+    {"size", "size of a domain (%s)"},
+    {"wall", "width of the walls (%s)"},
+    {"change", "energy added in changed domains (%s)"},
+    {"amplitude", "deepest notch of the edges (%s)"},
+    {"jump", "energy of a step (%s)"},
+    {"spacing", "width of the terraces (%s)"},
+    {"meander", "meander of the steps (%s)"},
 };
 
 static const struct {
@@ -70,6 +90,22 @@ static const struct {
     {"occupation.filling", "filling (share of the states present)"},
     {"occupation.electrons", "number of electrons"},
     {"model.phi", "phase phi of the hops"},
+    {"model.t1", "nearest-neighbour hop t1"},
+    {"model.t2", "second-neighbour hop t2"},
+    {"model.mass", "mass of the model"},
+    {"model.so", "spin-orbit hop"},
+    {"model.rashba", "Rashba hop"},
+    {"model.exchange", "exchange energy"},
+    {"model.m0", "hybridisation m0 of the surfaces"},
+    {"model.m1", "curvature m1 of the hybridisation"},
+    {"model.velocity", "velocity hbar v of the surfaces"},
+    {"model.grid", "spacing of the grid"},
+    {"flake.radius", "radius of the flake"},
+    {"flake.inner", "inner radius of the ring"},
+    {"flake.outer", "outer radius of the ring"},
+    {"flake.orientation", "angle of the lattice against the outline"},
+    {"markers.localizer.kappa", "kappa of the localizer"},
+    {"markers.local_chern.window", "averaging window (share of the linear size)"},
     {"model.m", "mass parameter m of the model"},
 };
 

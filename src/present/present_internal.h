@@ -37,6 +37,8 @@ int sv_words_width(const char *text);
 void sv_words_fit(const char *text, int columns, char *fitted, size_t size);
 /* "local Chern marker" for local_chern; the name itself for unknown ones. */
 const char *sv_words_marker(const char *name);
+/* What an integer of it is called in a figure: "C", "spin C". */
+const char *sv_words_symbol(const char *name);
 /* What the margin and the second number of a marker are called in results, or NULL. */
 const char *sv_words_margin(const char *name);
 const char *sv_words_weakest(const char *name);
@@ -74,6 +76,8 @@ void sv_survey_print(const sv_survey *survey, FILE *stream);
 /* ----------------------------------------------------------- inventory.c */
 
 json_t *sv_json_inventory(sv_json *json, const sv_sample *sample);
+/* Places where nothing is are vacancies only when no other kind, nor flake.keep, emptied any. */
+const char *sv_empty_words(const sv_sample *sample, sv_index count);
 /* "2 pieces (largest: 840 sites), 3 dangling, …" @param[out] text at least 300 bytes */
 void sv_inventory_words(const sv_sample *sample, char *text, size_t size);
 /* -------------------------------------------------------------- coarse.c */

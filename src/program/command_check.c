@@ -57,25 +57,54 @@ static void print_film(const session *s)
            s->base.model.n_positions / (area * a * a) * 1e14);
 }
 
-/* The pieces of realisation 0 on the sheet's own boundary, when that is quick. */
-static void print_sample(session *s)
+/* Realisation 0 on the sheet's own boundary, when that is quick. A sheet whose disorder cannot be
+ * drawn fails here rather than in a run; that all sites are vacant is an answer. */
+static sv_status describe_sample(session *s, char text[400])
 {
     sv_context *context = s->context;
     const sv_setup *setup = &s->base;
     sv_flake flake = {0};
     sv_sample sample = {0};
     char *words = NULL;
+    text[0] = '\0';
     if (s->points[0].open.n_sites > SAMPLE_LARGEST)
-        return;
-    if (sv_flake_make(context, &setup->model, &setup->flake, &flake) == SV_OK &&
-        sv_sample_draw(context, &flake, setup->disorder, setup->n_disorder, setup->seed, 0,
-                       &sample) == SV_OK &&
-        sv_inventory_text(context, &sample, &words) == SV_OK)
-        printf("#\n# realisation 0 of the sheet as written: %lld sites, %lld vacancies\n# %s\n",
-               (long long)sample.n, (long long)sample.inventory.vacancies, words);
+        return SV_OK;
+    sv_status status = sv_flake_make(context, &setup->model, &setup->flake, &flake);
+    if (status == SV_OK)
+        status = sv_sample_draw(context, &flake, setup->disorder, setup->n_disorder, setup->seed, 0,
+                                &sample);
+    if (status == SV_OK)
+        status = sv_inventory_text(context, &sample, &words);
+    if (status == SV_OK)
+        snprintf(text, 400,
+                 "#\n# realisation 0 of the sheet as written: %lld sites, %lld vacancies\n# %s\n",
+                 (long long)sample.n, (long long)sample.inventory.vacancies, words);
     sv_give(context, words);
     sv_sample_free(context, &sample);
     sv_flake_free(context, &flake);
+    return status == SV_UNDEFINED ? SV_OK : status;
+}
+
+/* Has every window of every point a cell? */
+static sv_status try_windows(session *s)
+{
+    for (int32_t k = 0; k < s->n_points; k++) {
+        const sv_case *problem = &s->points[k].problem;
+        for (int m = 0; m < problem->n_markers; m++) {
+            bool *inside = NULL;
+            sv_index cells;
+            const int marker = problem->markers[m].marker;
+            if (marker != sv_marker_find("local_chern") && marker != sv_marker_find("spin_chern"))
+                continue;
+            sv_status status =
+                sv_flake_window(s->context, problem->open_flake,
+                                problem->markers[m].values[0].real[0], &inside, &cells);
+            if (status != SV_OK)
+                return status;
+            sv_give(s->context, inside);
+        }
+    }
+    return SV_OK;
 }
 
 int run_check(sv_context *context, const options *o)
@@ -83,8 +112,13 @@ int run_check(sv_context *context, const options *o)
     session s = {0};
     forecast f;
     film_length film = {0};
+    char sample[400] = "";
     int code = 0;
     sv_status status = session_open(context, o, o->files[0], false, true, &s);
+    if (status == SV_OK)
+        status = session_blame(&s, "flake", try_windows(&s));
+    if (status == SV_OK)
+        status = session_blame(&s, "disorder", describe_sample(&s, sample));
     if (status == SV_OK)
         status = session_plan(&s, false);
     if (status == SV_OK)
@@ -105,7 +139,7 @@ int run_check(sv_context *context, const options *o)
         print_forecast(&f, &s, "#   ", stdout);
         print_film(&s);
         defects_print(&s.base, stdout);
-        print_sample(&s);
+        fputs(sample, stdout);
         film_print(&film, s.n_points, stdout);
         status = presets_print_sources(context, s.sheet, stdout);
         code = status == SV_OK ? code : fail_exit(context, status);

@@ -34,6 +34,8 @@ sv_status film_measure(session *s, film_length *ret)
         if (status != SV_OK)
             return status;
         double gap = fmax(0.0, edges[1] - edges[0]);
+        if (gap < 1e-9 * model->velocity) /* rounding; the spacing of the grid is the length */
+            gap = 0.0;
         double lengths = extent(&p->open) * gap / model->velocity;
         if (lengths >= film.lengths)
             continue;

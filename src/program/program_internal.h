@@ -77,6 +77,8 @@ typedef struct session {
 /* Reads the sheet and builds all points of its sweep (`with_sweep`) or the sheet as written. */
 sv_status session_open(sv_context *context, const options *o, const char *path, bool inside_run,
                        bool with_sweep, session *ret);
+/* Shows the context's error at a top-level key of the sheet; returns the status it was given. */
+sv_status session_blame(session *s, const char *key, sv_status status);
 void session_close(session *s);
 /* Flakes, markers and options of a point whose setup is filled. */
 sv_status session_make_point(session *s, point *p);

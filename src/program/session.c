@@ -241,6 +241,19 @@ sv_status session_open(sv_context *context, const options *o, const char *path, 
     return status;
 }
 
+sv_status session_blame(session *s, const char *key, sv_status status)
+{
+    sv_diagnostics diagnostics = {0};
+    if (status != SV_INVALID_INPUT || s->context->error.message[0] == '\0')
+        return status;
+    sv_sheet_report(s->context, s->sheet, key, s->context->error.message, NULL, &diagnostics);
+    sv_diagnostics_print(&diagnostics, wants_colour(s->options, stderr), stderr);
+    if (diagnostics.errors > 0) /* said, with its place */
+        s->context->error.message[0] = '\0';
+    sv_diagnostics_free(s->context, &diagnostics);
+    return status;
+}
+
 void session_close(session *s)
 {
     for (int32_t k = 0; k < s->n_points; k++) {

@@ -19,13 +19,6 @@ static sv_status add_cut(sv_context *context, sv_drawing *d, const double from[2
     return SV_OK;
 }
 
-static bool is_on_flake(const sv_flake *flake, const double at[2])
-{
-    double uv[2];
-    sv_model_reduce(flake->model, at, uv);
-    return sv_flake_look_up(flake, (int64_t)floor(uv[0]), (int64_t)floor(uv[1])) >= 0;
-}
-
 static double uniform(const sv_stream *stream, const sv_point *point, uint32_t which)
 {
     return sv_stream_uniform(stream, point->cell[0], point->cell[1], point->slot + which);
@@ -53,7 +46,7 @@ sv_status sv_draw_cracks(sv_context *context, sv_drawing *d, const sv_disorder *
         const double *at = points[k].at;
         status = add_cut(context, d, (const double[2]){at[0] - x, at[1] - y},
                          (const double[2]){at[0] + x, at[1] + y});
-        d->inventory.placed[d->entry] += is_on_flake(d->flake, at);
+        d->inventory.placed[d->entry] += sv_point_on_flake(d->flake, at);
     }
     sv_give(context, points);
     return status;

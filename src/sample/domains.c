@@ -156,7 +156,8 @@ sv_status sv_draw_domains(sv_context *context, sv_drawing *d, const sv_disorder 
         if (value != 0.0)
             status = sv_add_term(context, d, disorder->term, s, value);
     }
-    d->inventory.placed[d->entry] += n;
+    for (sv_index k = 0; status == SV_OK && k < n; k++)
+        d->inventory.placed[d->entry] += sv_point_on_flake(d->flake, points[k].at);
     sv_give(context, points);
     sv_give(context, t.seeds);
     sv_give(context, t.start);

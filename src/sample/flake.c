@@ -9,6 +9,11 @@
 
 static const sv_index MOST_SITES = 2000000000;
 
+/* Cells looked at one by one, and four bytes each in the table: more only for the flakes that are
+ * nearly as large themselves. A narrow ring or a thin slanted polygon spans far more than it has.
+ */
+static const double MOST_SPANNED = 1e8;
+
 static int cell_sites(const outline *o, int64_t i, int64_t j)
 {
     int n = 0;
@@ -30,6 +35,13 @@ sv_status sv_flake_count(sv_context *context, const sv_model *model, const sv_fl
     if (sites > (double)MOST_SITES)
         return SV_FAIL(context, SV_REFUSED, "a flake of %.3g sites is above the limit of %.3g",
                        sites, (double)MOST_SITES);
+    const double spanned =
+        ((double)o.high[0] - (double)o.low[0] + 1.0) * ((double)o.high[1] - (double)o.low[1] + 1.0);
+    if (spanned > MOST_SPANNED + 8.0 * sites)
+        return SV_FAIL(context, SV_REFUSED,
+                       "a flake of about %.3g sites that spans %.3g cells is too sparse to be laid "
+                       "out: at most %.3g cells and 8 a site",
+                       sites, spanned, MOST_SPANNED);
     *ret_sites = (sv_index)sites;
     return SV_OK;
 }

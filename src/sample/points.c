@@ -6,6 +6,8 @@
 #include <math.h>
 
 static const double MOST_PER_CELL = 500.0;
+/* Cells looked at, and points, that bound time and memory whatever the sheet says. */
+static const double MOST_CELLS = 1e8, MOST_POINTS = 2e7;
 enum { SLOTS_EACH = 16 };
 
 int sv_poisson(double mean, double u)
@@ -34,6 +36,13 @@ static sv_point point_of(const sv_model *model, const sv_stream *stream, int32_t
     return point;
 }
 
+bool sv_point_on_flake(const sv_flake *flake, const double at[2])
+{
+    double uv[2];
+    sv_model_reduce(flake->model, at, uv);
+    return sv_flake_look_up(flake, (int64_t)floor(uv[0]), (int64_t)floor(uv[1])) >= 0;
+}
+
 sv_status sv_points_draw(sv_context *context, const sv_flake *flake, const sv_stream *stream,
                          double density, double reach, sv_point **ret_points, sv_index *ret_count)
 {
@@ -47,6 +56,13 @@ sv_status sv_points_draw(sv_context *context, const sv_flake *flake, const sv_st
                        MOST_PER_CELL);
     sv_flake_box(flake, low, high);
     sv_patch patch = sv_patch_around(model, low, high, reach);
+    const double cells =
+        ((double)patch.high[0] - patch.low[0] + 1.0) * ((double)patch.high[1] - patch.low[1] + 1.0);
+    if (cells > MOST_CELLS || cells * mean > MOST_POINTS)
+        return SV_FAIL(context, SV_INVALID_INPUT,
+                       "points as far as %.3g lattice constants from the flake count: %.3g cells "
+                       "with %.3g points, at most %.3g with %.3g can be drawn",
+                       reach, cells, cells * mean, MOST_CELLS, MOST_POINTS);
     for (int64_t i = patch.low[0]; i <= patch.high[0] && status == SV_OK; i++) {
         for (int64_t j = patch.low[1]; j <= patch.high[1] && status == SV_OK; j++) {
             double u = sv_stream_uniform(stream, (int32_t)i, (int32_t)j, SV_SLOT_POINTS);

@@ -97,14 +97,15 @@ sv_status sv_draw_puddles(sv_context *context, sv_drawing *d, const sv_disorder 
     }
     if (disorder->same_sign)
         take_mean_off(d, disorder);
-    d->inventory.placed[d->entry] += n;
+    for (sv_index k = 0; k < n; k++)
+        d->inventory.placed[d->entry] += sv_point_on_flake(d->flake, points[k].at);
     sv_give(context, points);
     return SV_OK;
 }
 
 double sv_disorder_puddle_deviation(const sv_disorder *disorder)
 {
-    double x = 2.0 * disorder->depth / disorder->screening;
+    double x = fmax(2.0 * disorder->depth / disorder->screening, 1e-300); /* E1(0) is infinite */
     double h = disorder->depth;
     return fabs(disorder->strength) * h *
            sqrt(2.0 * M_PI * disorder->density * gsl_sf_expint_E1_scaled(x));

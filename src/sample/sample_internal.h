@@ -176,6 +176,8 @@ typedef struct sv_point {
     uint32_t slot; /* first of 8 slots free for its user */
 } sv_point;
 
+/* Does the point lie in a cell of the flake? Points around it act too, but are not counted. */
+bool sv_point_on_flake(const sv_flake *flake, const double at[2]);
 /* Points with a mean number per area, in all cells within `reach` of the flake, in order of cells.
  */
 sv_status sv_points_draw(sv_context *context, const sv_flake *flake, const sv_stream *stream,

@@ -124,7 +124,9 @@ static double parent_density(const sv_disorder *disorder, double b)
 {
     const double euler = 0.57721566490153286;
     double radius = disorder->cluster_radius;
-    double ein = b < 1e-4 ? b * (1.0 - b / 4.0) : euler + log(b) + gsl_sf_expint_E1(b);
+    /* E1(700) = 1e-307: GSL ends the program on an underflow. */
+    double rest = b >= 1e-4 && b < 700.0 ? gsl_sf_expint_E1(b) : 0.0;
+    double ein = b < 1e-4 ? b * (1.0 - b / 4.0) : euler + log(b) + rest;
     return -log1p(-fmin(disorder->share, 1.0 - 1e-15)) / (2.0 * M_PI * radius * radius * ein);
 }
 
