@@ -145,6 +145,8 @@ int run_check(sv_context *context, const options *o)
         code = status == SV_OK ? code : fail_exit(context, status);
     }
     film_warn(context, &film);
+    if (film.known)
+        film_warn_vacancies(&s);
     session_close(&s);
     return code;
 }

@@ -72,6 +72,19 @@ void film_print(const film_length *film, int32_t n_points, FILE *stream)
         fprintf(stream, "#   at point %d, the worst of the sweep\n", film->point);
 }
 
+void film_warn_vacancies(const session *s)
+{
+    const sv_setup *setup = &s->points[0].setup;
+    double a = setup->lattice_constant;
+    for (int k = 0; k < setup->n_disorder; k++)
+        if (setup->model.velocity > 0.0 && setup->disorder[k].type == SV_DISORDER_VACANCIES)
+            sv_log(s->context, SV_LOG_WARNING,
+                   "disorder.%s: a vacancy of this model is a hole of one grid cell, %.3g nm^2; a "
+                   "point "
+                   "defect is a change of mass, exchange or potential (kind: mass)",
+                   setup->disorder[k].name, a * a);
+}
+
 void film_warn(sv_context *context, const film_length *film)
 {
     if (!film->known || film->enough)

@@ -183,6 +183,8 @@ typedef struct film_length {
 sv_status film_measure(session *s, film_length *ret);
 void film_print(const film_length *film, int32_t n_points, FILE *stream);
 void film_warn(sv_context *context, const film_length *film);
+/* Vacancies of a film model are holes of whole grid cells. */
+void film_warn_vacancies(const session *s);
 
 /* ---------------------------------------------------------- presets.c */
 

@@ -349,6 +349,11 @@ def check_states_the_length_of_a_film():
     wide = run("check", path, "--set", "model.exchange=70 meV", "--set", "flake.size=[16 nm, 18 nm]",
                code=0)
     check("below 8" not in wide.err and "= 8.96 xi across" in wide.out, wide.out + wide.err)
+    check("hole of one grid cell" not in wide.err, wide.err)
+    holes = sheet("{name: magnetic_film, grid: 2 nm, velocity: 0.25 eV nm, m0: 0, m1: 0.15, exchange: 70 meV}",
+                  "{shape: rectangle, cells: [6, 6]}\ndisorder: [{name: v, kind: vacancies, share: 0.02}]")
+    check("disorder.v: a vacancy of this model is a hole of one grid cell, 4 nm^2" in
+          run("check", holes, code=0).err, "no warning")
     equal(run("check", source("samples", "clean_phases.yaml"), "--json", code=0).json()["film"], None,
           "a model without light states")
 
