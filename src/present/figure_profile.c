@@ -160,13 +160,16 @@ static void choose_note(const profile *f, const sv_map_result *map, char *note, 
 {
     const sv_survey *s = f->survey;
     const char *where = map->note == NULL ? "" : map->note;
-    char place[120];
+    char place[160];
+    /* In the unit of the axis along the line. */
+    const double a = map->lattice_constant > 0 ? map->lattice_constant : 1.0;
+    const char *unit = map->lattice_constant > 0 ? " nm" : "";
     if (f->kappas)
-        snprintf(place, sizeof place, "localizer at (%.4g, %.4g)", f->probes[0].at[0],
-                 f->probes[0].at[1]);
+        snprintf(place, sizeof place, "localizer at (%.4g, %.4g)%s", a * f->probes[0].at[0],
+                 a * f->probes[0].at[1], unit);
     else
-        snprintf(place, sizeof place, "localizer from (%.4g, %.4g) to (%.4g, %.4g), kappa %.3g",
-                 s->from[0], s->from[1], s->to[0], s->to[1], s->kappa);
+        snprintf(place, sizeof place, "localizer from (%.4g, %.4g) to (%.4g, %.4g)%s, kappa %.3g",
+                 a * s->from[0], a * s->from[1], a * s->to[0], a * s->to[1], unit, s->kappa);
     snprintf(note, size, "%s\nrealisation %lld%s%.150s", place, (long long)map->record->realisation,
              where[0] != '\0' ? ", " : "", where);
 }

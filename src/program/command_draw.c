@@ -2,6 +2,7 @@
 /* selvedge draw: the sample of one realisation as a figure, and what it consists of. */
 #include "program_internal.h"
 
+#include <stdio.h>
 #include <string.h>
 
 /* Where the figure goes: folder, name, and the ending that says which picture. */
@@ -113,6 +114,24 @@ static sv_status draw_figure(session *s, const target *where)
     return status;
 }
 
+/* FIGURE.dat stands beside FIGURE.svg, and film.dat may be somebody's measurement: only the data of
+ * a drawing are replaced. */
+static sv_status spare_data(const session *s, const target *where)
+{
+    static const char ours[] = "# The parts of the drawing";
+    char path[800], head[sizeof ours] = "";
+    snprintf(path, sizeof path, "%s/%s.dat", where->folder, where->name);
+    FILE *file = s->options->force ? NULL : fopen(path, "r");
+    if (file == NULL)
+        return SV_OK;
+    size_t length = fread(head, 1, sizeof ours - 1, file);
+    fclose(file);
+    if (length == sizeof ours - 1 && memcmp(head, ours, length) == 0)
+        return SV_OK;
+    return SV_FAIL(s->context, SV_STORAGE, "%s exists and is not of a drawing; choose another name",
+                   path);
+}
+
 int run_draw(sv_context *context, const options *o)
 {
     session s = {.levels_only = true};
@@ -124,6 +143,8 @@ int run_draw(sv_context *context, const options *o)
         status = split_path(context, o->output, &where);
     if (status == SV_OK)
         status = session_open(context, o, o->files[0], false, false, &s);
+    if (status == SV_OK)
+        status = spare_data(&s, &where);
     if (status == SV_OK)
         status = draw_figure(&s, &where);
     session_close(&s);

@@ -54,6 +54,18 @@ def the_script_draws_it_again():
 
 
 @test
+def data_of_others_are_spared():
+    place = folder()
+    for _ in range(2):  # its own are replaced
+        run("draw", sheet(), "-o", os.path.join(place, "own.svg"), code=0)
+    mine = write(os.path.join(place, "film.dat"), "x y\n1 2\n")
+    told = run("draw", sheet(), "-o", os.path.join(place, "film.svg"), code=4)
+    contains(told.err, "film.dat exists")
+    equal(open(mine, encoding="utf-8").read(), "x y\n1 2\n", "film.dat")
+    check(not os.path.exists(os.path.join(place, "film.svg")), "a figure was written")
+
+
+@test
 def misuse_writes_nothing():
     place = folder()
     for arguments in (("-o", os.path.join(place, "a.jpeg")), ()):

@@ -82,6 +82,8 @@ def figures_by_map_and_report():
     for place in ("map", os.path.join("run", "figures")):
         for name in ("localizer_line", "localizer_kappa"):
             check(os.path.exists(os.path.join(top, place, name + ".gp")), place + " " + name)
+    with open(os.path.join(top, "map", "localizer_line.gp"), encoding="utf-8") as file:
+        contains(file.read(), "localizer from (0, 1.5) to (3.5, 1.5) nm", "places in the unit of the axis")
     run("map", sheet("points: [3, 3]"), "-o", os.path.join(top, "grid"), code=0)
     check(os.path.exists(os.path.join(top, "grid", "localizer_grid.gp")), "grid")
 
