@@ -371,6 +371,32 @@ SV_API SV_MUST_USE sv_status sv_density_response(sv_context *context, const sv_m
 SV_API SV_MUST_USE sv_status sv_spectral_flow(sv_context *context, const sv_marker_input *input,
                                               sv_outcome *ret_outcome);
 
+/** One level at one flux of a spectral flow. */
+typedef struct sv_flow_level {
+    double flux;        /**< quanta */
+    double energy;      /**< from the Fermi energy, unit of the model */
+    double hole_weight; /**< share of the level nearer to the hole than to the outline */
+} sv_flow_level;
+
+/** The levels behind one spectral flow. */
+typedef struct sv_flow_trace {
+    sv_flow_level *levels; /**< by flux; at one flux first those at the hole, then by energy */
+    sv_index count, room;  /**< of levels; allocated */
+    int fluxes, most;      /**< fluxes followed; levels followed at one flux, at most */
+    double fermi_energy;   /**< unit of the model */
+} sv_flow_trace;
+
+/**
+ * sv_spectral_flow() with the levels it followed: those within the energy window of each flux, the
+ * window narrowed where more than 24 lie in it. Same outcome, bit by bit. Where the flow could not
+ * be followed to the end the levels up to there are in the trace.
+ */
+SV_API SV_MUST_USE sv_status sv_spectral_flow_trace(sv_context *context,
+                                                    const sv_marker_input *input,
+                                                    sv_outcome *ret_outcome,
+                                                    sv_flow_trace *ret_trace);
+SV_API void sv_flow_trace_free(sv_context *context, sv_flow_trace *trace);
+
 #ifdef __cplusplus
 }
 #endif

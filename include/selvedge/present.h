@@ -19,7 +19,7 @@ typedef struct sv_coordinate {
     const char *path;
     double value; /**< in `unit` where there is one, else in the model's unit */
     bool integer;
-    const char *unit; /**< symbol, or NULL */
+    const char *unit;  /**< symbol, or NULL */
     const char *label; /**< readable name with unit for axes, or NULL: made from the path */
 } sv_coordinate;
 
@@ -38,8 +38,8 @@ typedef struct sv_result {
     const char *title;
     sv_point_result *points;
     int32_t n_points;
-    double seconds;          /**< of this invocation; kept outside `points` */
-    bool complete;           /**< false: stopped early */
+    double seconds; /**< of this invocation; kept outside `points` */
+    bool complete;  /**< false: stopped early */
 } sv_result;
 
 /**
@@ -76,6 +76,7 @@ typedef struct sv_map_result {
     const char *note;          /**< shown under the title of the figure, or NULL */
     const sv_coarse *coarse;   /**< means over blocks, from which site_values were made, or NULL */
     const sv_survey *survey;   /**< the localizer at many points and over κ, or NULL */
+    const sv_flow_trace *flow; /**< the levels of the spectral flow, or NULL */
 } sv_map_result;
 
 /** JSON document of one realisation (contract: `map`). */
@@ -90,6 +91,11 @@ SV_API SV_MUST_USE sv_status sv_coarse_csv(sv_context *context, const sv_coarse 
  *  index of an unresolved one is empty. */
 SV_API SV_MUST_USE sv_status sv_survey_csv(sv_context *context, const sv_survey *survey,
                                            char **ret_text);
+
+/** The levels of a spectral flow as CSV: flux [quanta], energy (from the Fermi energy, unit of the
+ *  model), hole_weight. Taken from the context. */
+SV_API SV_MUST_USE sv_status sv_flow_csv(sv_context *context, const sv_flow_trace *trace,
+                                         char **ret_text);
 
 /** The spectrum of one realisation. */
 typedef struct sv_spectrum_result {
@@ -169,6 +175,12 @@ SV_API SV_MUST_USE sv_status sv_figure_probes(sv_context *context, const char *f
 SV_API SV_MUST_USE sv_status sv_figure_profile(sv_context *context, const char *folder,
                                                const char *name, const sv_map_result *map,
                                                bool kappas, sv_figure_files *ret_files);
+/** Levels against flux with the Fermi energy: at the hole (dots), at the outline (open squares), at
+ *  neither with 0.75 of the weight (crosses).
+ *  @return SV_INVALID_INPUT when map->flow holds no levels; else as sv_figure_map() */
+SV_API SV_MUST_USE sv_status sv_figure_flow(sv_context *context, const char *folder,
+                                            const char *name, const sv_map_result *map,
+                                            sv_figure_files *ret_files);
 
 /* ----------------------------------------------------------------- progress */
 

@@ -4,6 +4,7 @@
 #include "flow_internal.h"
 
 #include <math.h>
+#include <string.h>
 
 enum { STEPS, ENERGY_WINDOW };
 enum { MOST_FLUXES = 600 };
@@ -27,7 +28,33 @@ typedef struct flow {
     double half_width, step;
     int rise[2], fluxes;
     double kept, side, coupling;
+    sv_flow_trace *trace; /* or NULL */
 } flow;
+
+/* The levels of one flux join the trace. */
+static sv_status note_levels(sv_context *context, flow *f, const flow_levels *l)
+{
+    sv_flow_trace *trace = f->trace;
+    if (trace == NULL)
+        return SV_OK;
+    if (trace->count + l->count > trace->room) {
+        sv_index room = 2 * (trace->count + l->count);
+        sv_flow_level *levels = NULL;
+        sv_status status = sv_take_raw(context, room, sizeof *levels, &levels);
+        if (status != SV_OK)
+            return status;
+        if (trace->count > 0)
+            memcpy(levels, trace->levels, (size_t)trace->count * sizeof *levels);
+        sv_give(context, trace->levels);
+        trace->levels = levels;
+        trace->room = room;
+    }
+    for (int k = 0; k < l->count; k++)
+        trace->levels[trace->count++] = (sv_flow_level){l->flux, l->energies[k], l->weights[k]};
+    trace->fluxes++;
+    trace->most = l->count > trace->most ? l->count : trace->most;
+    return SV_OK;
+}
 
 static sv_status find_levels(sv_context *context, flow *f, double flux, flow_levels *ret_levels)
 {
@@ -69,7 +96,7 @@ static sv_status advance(sv_context *context, flow *f, flow_levels *here, bool *
     sv_flow_levels_free(context, here);
     *here = there;
     *ret_done = true;
-    return SV_OK;
+    return note_levels(context, f, here);
 }
 
 static void judge(const flow *f, sv_outcome *outcome)
@@ -102,6 +129,8 @@ static sv_status follow(sv_context *context, flow *f, sv_outcome *outcome)
     flow_levels here = {0};
     bool done = true;
     sv_status status = find_levels(context, f, FIRST, &here);
+    if (status == SV_OK)
+        status = note_levels(context, f, &here);
     while (status == SV_OK && done && here.flux < FIRST + 1.0)
         status = advance(context, f, &here, &done);
     if (status == SV_OK && !done)
@@ -135,11 +164,11 @@ static sv_status start(sv_context *context, const sv_marker_input *input, flow *
     return sv_flow_ring_make(context, sample, energy, &f->ring);
 }
 
-sv_status sv_spectral_flow(sv_context *context, const sv_marker_input *input,
-                           sv_outcome *ret_outcome)
+static sv_status compute(sv_context *context, const sv_marker_input *input, sv_flow_trace *trace,
+                         sv_outcome *ret_outcome)
 {
     sv_outcome outcome = sv_outcome_blank();
-    flow f = {.kept = 1.0, .side = 1.0};
+    flow f = {.kept = 1.0, .side = 1.0, .trace = trace};
     double hole[2];
     bool good = false;
     snprintf(outcome.engine, sizeof outcome.engine, "near states");
@@ -160,8 +189,34 @@ sv_status sv_spectral_flow(sv_context *context, const sv_marker_input *input,
         UNRESOLVED(&outcome, "%.190s", context->error.message);
         status = SV_OK;
     }
+    if (trace != NULL)
+        trace->fermi_energy = f.ring.energy;
     sv_flow_ring_free(context, &f.ring);
     if (status == SV_OK)
         *ret_outcome = outcome;
     return status;
+}
+
+sv_status sv_spectral_flow(sv_context *context, const sv_marker_input *input,
+                           sv_outcome *ret_outcome)
+{
+    return compute(context, input, NULL, ret_outcome);
+}
+
+sv_status sv_spectral_flow_trace(sv_context *context, const sv_marker_input *input,
+                                 sv_outcome *ret_outcome, sv_flow_trace *ret_trace)
+{
+    sv_flow_trace trace = {0};
+    sv_status status = compute(context, input, &trace, ret_outcome);
+    if (status == SV_OK)
+        *ret_trace = trace;
+    else
+        sv_flow_trace_free(context, &trace);
+    return status;
+}
+
+void sv_flow_trace_free(sv_context *context, sv_flow_trace *trace)
+{
+    sv_give(context, trace->levels);
+    *trace = (sv_flow_trace){0};
 }

@@ -114,6 +114,10 @@ sv_status sv_map_json(sv_context *context, const sv_map_result *map, char **ret_
             sv_coarse_put(&json, object, map->coarse);
         if (map->survey != NULL && marker->compute == sv_localizer_index)
             sv_survey_put(&json, object, map->survey);
+        if (map->flow != NULL && marker->compute == sv_spectral_flow) {
+            sv_json_put_integer(&json, object, "fluxes", map->flow->fluxes);
+            sv_json_put_integer(&json, object, "levels_followed", map->flow->most);
+        }
         sv_json_put(&json, markers, marker->kind.name, object);
     }
     sv_json_put(&json, document, "markers", markers);

@@ -137,4 +137,7 @@ void sv_map_print(const sv_map_result *map, bool colour, FILE *stream)
         sv_coarse_print(map->coarse, stream);
     if (map->survey != NULL)
         sv_survey_print(map->survey, stream);
+    if (map->flow != NULL)
+        fprintf(stream, "  spectral flow: at most %d levels followed over %d fluxes\n",
+                map->flow->most, map->flow->fluxes);
 }

@@ -37,6 +37,11 @@ static sv_status draw_figures(session *s, const sv_map_result *map)
     }
     if (status == SV_OK && map->survey != NULL)
         status = survey_draw(s, o->output, map, tell_figure);
+    if (status == SV_OK && map->flow != NULL && map->flow->count > 0) {
+        status = sv_figure_flow(context, o->output, "spectral_flow", map, &files);
+        if (status == SV_OK)
+            tell_figure(s, &files, "spectral flow");
+    }
     return status;
 }
 
@@ -89,7 +94,7 @@ static sv_status check_exports(sv_context *context, const options *o, const sv_c
         return SV_FAIL(context, SV_USAGE,
                        "--csv: with markers.local_chern.blocks there is no marker of single sites; "
                        "--blocks writes the blocks");
-    return SV_OK;
+    return flow_check(context, o, problem);
 }
 
 static sv_status map_one(session *s)
@@ -101,6 +106,7 @@ static sv_status map_one(session *s)
     sv_sample sample = {0};
     sv_survey survey = {0};
     sv_coarse coarse = {0};
+    sv_flow_trace flow = {0};
     double *values = NULL;
     sv_status status = check_exports(context, o, problem);
     if (status == SV_OK)
@@ -130,6 +136,11 @@ static sv_status map_one(session *s)
             goto out;
         map.survey = &survey;
     }
+    if (flow_wanted(o, problem)) {
+        if ((status = flow_compute(s, problem, &sample, &flow)) != SV_OK)
+            goto out;
+        map.flow = &flow;
+    }
     int chern = sv_marker_find("local_chern");
     for (int k = 0; k < record.n_outcomes; k++)
         if (problem->markers[k].marker == chern && record.outcomes[k].verdict != SV_RESOLVED)
@@ -140,15 +151,19 @@ static sv_status map_one(session *s)
         status = coarse_write_csv(s, &coarse, o->blocks);
     if (status == SV_OK && o->probes != NULL)
         status = survey_write_csv(s, &survey, o->probes);
+    if (status == SV_OK && o->flow != NULL)
+        status = flow_write_csv(s, &flow, o->flow);
     if (status == SV_OK)
         status = print_result(context, o, &map);
-    if (status == SV_OK && o->output != NULL && (map.site_values != NULL || map.survey != NULL))
+    if (status == SV_OK && o->output != NULL &&
+        (map.site_values != NULL || map.survey != NULL || map.flow != NULL))
         status = draw_figures(s, &map);
     if (status == SV_OK)
         status = verdict(context, &record);
 out:
     sv_coarse_free(context, &coarse);
     sv_survey_free(context, &survey);
+    sv_flow_trace_free(context, &flow);
     sv_give(context, values);
     sv_sample_free(context, &sample);
     return status;

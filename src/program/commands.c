@@ -13,7 +13,7 @@ static const command commands[] = {
     {"draw", "SHEET -o FIGURE", "one realisation of the sample as a figure, and its inventory",
      SHEET_OPTIONS "ko", 1, 1, run_draw},
     {"map", "SHEET", "one realisation: the local Chern marker site by site",
-     SHEET_OPTIONS "kojVBMPF", 1, 1, run_map},
+     SHEET_OPTIONS "kojVBMWPF", 1, 1, run_map},
     {"spectrum", "SHEET", "states below E_F, gap, states next to it, density of states",
      SHEET_OPTIONS "koVF", 1, 1, run_spectrum},
     {"average", "SHEET -o RUN", "the ensemble and its sweep; continues an existing run",

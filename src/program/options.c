@@ -26,6 +26,7 @@ typedef enum option_id {
     OPT_CSV = 'V',
     OPT_PROBES = 'B',
     OPT_BLOCKS = 'M',
+    OPT_FLOW = 'W',
     OPT_HELP = 'h'
 } option_id;
 
@@ -57,6 +58,7 @@ static const option_row option_rows[] = {
      "write the marker of each site, or the density of states (CSV)"},
     {OPT_PROBES, false, "probes", "FILE", "write the probe points of the localizer (CSV)"},
     {OPT_BLOCKS, false, "blocks", "FILE", "write the blocks of a coarse map (CSV)"},
+    {OPT_FLOW, false, "flow", "FILE", "write the levels of the spectral flow (CSV)"},
     {OPT_HELP, true, "help", NULL, "this text"},
 };
 enum { N_ROWS = sizeof option_rows / sizeof option_rows[0] };
@@ -213,6 +215,9 @@ static bool apply(options *o, option_id id, const char *value)
         return is_file_name(value);
     case OPT_PROBES:
         o->probes = value;
+        return is_file_name(value);
+    case OPT_FLOW:
+        o->flow = value;
         return is_file_name(value);
     case OPT_BLOCKS:
         o->blocks = value;

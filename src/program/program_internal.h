@@ -17,7 +17,7 @@ typedef struct options {
     const struct command *command;
     const char *files[MOST_FILES];
     int n_files;
-    const char *output, *hamiltonian, *sites, *csv, *probes, *blocks;
+    const char *output, *hamiltonian, *sites, *csv, *probes, *blocks, *flow;
     int64_t realisation;
     int64_t threads; /* 0: as many as the affinity mask allows */
     double time_limit;
@@ -127,6 +127,13 @@ sv_status result_make(session *s, const sv_ensemble *ensemble, const sv_stop_rul
                       sv_result *ret);
 void result_free(sv_context *context, sv_result *result);
 sv_stop_rule session_stop_rule(const session *s);
+
+/* The levels of the spectral flow: are they wanted, can they be written, computing, writing. */
+bool flow_wanted(const options *o, const sv_case *problem);
+sv_status flow_check(sv_context *context, const options *o, const sv_case *problem);
+sv_status flow_compute(session *s, const sv_case *problem, const sv_sample *sample,
+                       sv_flow_trace *ret_trace);
+sv_status flow_write_csv(session *s, const sv_flow_trace *trace, const char *path);
 
 /* The localizer at many points (survey.c): asked for by a sheet, computed on a sample, written,
  * drawn. Each figure is told to the caller. */

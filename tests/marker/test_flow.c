@@ -147,6 +147,53 @@ SV_TEST(verdicts)
 }
 
 /* 78 disordered rings and 26 trivial ones, vacancies in half of them: none wrong. */
+/* Followed again from the trace alone: C levels rise through the Fermi energy at the hole per
+ * quantum, and as many fall at the outline. */
+SV_TEST(trace_holds_the_levels_behind_the_index)
+{
+    sv_context *c = test_context();
+    sv_model model = fixture_qi_wu_zhang(-1.0);
+    sv_flake flake = fixture_flake(&model, &ring);
+    sv_sample sample = {0};
+    sv_outcome plain, traced;
+    sv_flow_trace trace = {0};
+    CHECK_OK(sv_sample_draw(c, &flake, NULL, 0, 1, 0, &sample));
+    sv_value values[2] = {{.present = true, .integer = {64}}, {.present = true, .has_auto = true}};
+    sv_marker_input input = {
+        .sample = &sample, .occupation = &fixture_below_zero, .values = values};
+    CHECK_OK(sv_spectral_flow(c, &input, &plain));
+    CHECK_OK(sv_spectral_flow_trace(c, &input, &traced, &trace));
+    CHECK_INT(traced.index, plain.index);
+    CHECK(traced.margin == plain.margin && traced.weakest == plain.weakest);
+    CHECK(trace.fluxes >= 65 && trace.most >= 2 && trace.count >= 2 * trace.fluxes);
+    /* A quantum is a gauge transformation: the levels come back. */
+    double first = trace.levels[0].flux, last = trace.levels[trace.count - 1].flux;
+    CHECK_CLOSE(last - first, 1.0, 1e-12);
+    /* Steps this small move a level by a small part of the spacing: it is the nearest one. */
+    int rise[2] = {0, 0};
+    for (sv_index from = 0, to = 0, end; to < trace.count; from = to, to = end) {
+        for (end = to; end < trace.count && trace.levels[end].flux == trace.levels[to].flux;)
+            end++;
+        for (sv_index a = from; a < to; a++) {
+            const sv_flow_level *l = &trace.levels[a];
+            double there = INFINITY;
+            int side = l->hole_weight < 0.5;
+            CHECK(l->hole_weight > -1e-9 && l->hole_weight < 1.0 + 1e-9);
+            for (sv_index b = to; b < end; b++)
+                if ((trace.levels[b].hole_weight < 0.5) == side &&
+                    fabs(trace.levels[b].energy - l->energy) < fabs(there - l->energy))
+                    there = trace.levels[b].energy;
+            rise[side] += isfinite(there) ? (there > 0.0) - (l->energy > 0.0) : 0;
+        }
+    }
+    CHECK_INT(rise[0], plain.index);
+    CHECK_INT(rise[1], -plain.index);
+    sv_flow_trace_free(c, &trace);
+    sv_sample_free(c, &sample);
+    sv_flake_free(c, &flake);
+    sv_model_free(c, &model);
+}
+
 SV_TEST(flow_under_disorder)
 {
     int resolved = 0;

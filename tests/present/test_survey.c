@@ -115,6 +115,32 @@ SV_TEST(a_line_and_kappa_are_drawn_as_profiles)
     map_fixture_free(&f.map);
 }
 
+SV_TEST(a_spectral_flow_is_written_and_drawn)
+{
+    sv_flow_level levels[] = {{0.0, -0.25, 1.0}, {0.0, 0.5, 0.125}, {1.0, 0.25, 0.5}};
+    sv_flow_trace trace = {.levels = levels, .count = 3, .fluxes = 2, .most = 2};
+    survey_fixture f;
+    sv_figure_files files = {.drawn = false};
+    char *text = NULL;
+    size_t size;
+    make(&f, false);
+    choose_folder("flow");
+    CHECK_STATUS(SV_INVALID_INPUT,
+                 sv_figure_flow(test_context(), folder, "flow", &f.map.map, &files));
+    f.map.map.flow = &trace;
+    CHECK_OK(sv_flow_csv(test_context(), &trace, &text));
+    CHECK(strcmp(text, "flux,energy,hole_weight\n0,-0.25,1\n0,0.5,0.125\n1,0.25,0.5\n") == 0);
+    sv_give(test_context(), text);
+    CHECK_OK(sv_figure_flow(test_context(), folder, "flow", &f.map.map, &files));
+    check_files(&files, "flow");
+    char *data = slurp(files.data, &size);
+    const char *hole = strstr(data, "\n0 -0.25 1\n"), *both = strstr(data, "\n1 0.25 0.5\n");
+    const char *outline = strstr(data, "\n0 0.5 0.125\n");
+    CHECK(hole != NULL && hole < outline && outline < both); /* one block each, in this order */
+    free(data);
+    map_fixture_free(&f.map);
+}
+
 SV_TEST(blocks_as_csv)
 {
     sv_block blocks[3] = {
