@@ -175,6 +175,8 @@ typedef struct sv_summary {
     double bounds[2];       /**< mean if every unresolved one had the worst plausible value */
     double numerical_error; /**< largest */
     double estimator_error; /**< root mean square */
+    double disorder_deviation; /**< √max(0, deviation² − estimator_error²): what the disorder alone
+                                    does; NaN for an index and below two values */
     double smallest_margin, mean_margin;
     double kappa; /**< localizer: of the first realisation (one per run when automatic) */
     sv_index_share *shares; /**< ascending by index; taken from the context */

@@ -35,13 +35,25 @@ typedef struct pilot {
     double scale;  /* half width of the spectrum about it */
 } pilot;
 
-static int find_request(const sv_case *point)
+/* What the pilot computes: the local Chern marker asked for or, on a flake too large to be
+ * diagonalised, one in the place of the markers of a disc, which use the same columns. */
+static bool find_request(const sv_case *point, sv_marker_request *ret_request)
 {
+    const double disc_window = 0.3;
     int chern = sv_marker_find("local_chern");
-    for (int k = 0; k < point->n_markers; k++)
-        if (point->markers[k].marker == chern)
-            return k;
-    return -1;
+    bool disc = false;
+    for (int k = 0; k < point->n_markers; k++) {
+        int marker = point->markers[k].marker;
+        if (marker == chern) {
+            *ret_request = point->markers[k];
+            return true;
+        }
+        disc = disc || marker == sv_marker_find("three_sector") ||
+               marker == sv_marker_find("crosshair");
+    }
+    *ret_request = (sv_marker_request){
+        .marker = chern, .values = {{.present = true, .count = 1, .real = {disc_window}}}};
+    return disc && point->open_flake->n_sites > DENSE_LARGEST;
 }
 
 /* δ for which a polynomial of this degree has the error asked for. */
@@ -236,9 +248,8 @@ static sv_status start_pilot(sv_context *context, const sv_case *point, pilot *p
 {
     bool *inside = NULL;
     sv_index cells = 0;
-    int row = find_request(point);
-    *p = (pilot){
-        .point = point, .request = point->markers[row], .sites = point->open_flake->n_sites};
+    *p = (pilot){.point = point, .sites = point->open_flake->n_sites};
+    (void)find_request(point, &p->request);
     sv_status status =
         sv_flake_window(context, point->open_flake, p->request.values[0].real[0], &inside, &cells);
     if (status != SV_OK)
@@ -266,7 +277,8 @@ static int highest_degree(const pilot *p)
 /* Why the dense engine is the only one, or NULL. */
 static const char *dense_reason(const sv_case *point, bool site_map)
 {
-    if (find_request(point) < 0)
+    sv_marker_request request;
+    if (!find_request(point, &request))
         return "no marker of single sites is asked for";
     if (point->occupation.by != SV_BY_ENERGY && point->open_flake->n_sites > FILLING_LARGEST)
         return "a filling needs state counts, too costly for a flake of this size";

@@ -17,7 +17,7 @@ static int compare_doubles(const void *a, const void *b)
 
 static void blank(sv_summary *s)
 {
-    s->mean = s->deviation = s->standard_error = NAN;
+    s->mean = s->deviation = s->standard_error = s->disorder_deviation = NAN;
     s->interval[0] = s->interval[1] = s->bounds[0] = s->bounds[1] = NAN;
     s->kappa = NAN;
     s->numerical_error = s->estimator_error = s->smallest_margin = s->mean_margin = NAN;
@@ -133,6 +133,10 @@ static sv_status fill(sv_context *context, double *values, sv_summary *s)
     s->mean = m.mean;
     s->deviation = m.deviation;
     s->standard_error = m.standard_error;
+    /* The spread over realisations holds that of the estimator, which is drawn anew in each. */
+    if (!s->is_index && s->resolved > 1)
+        s->disorder_deviation =
+            sqrt(fmax(0.0, m.deviation * m.deviation - s->estimator_error * s->estimator_error));
     if (sv_student_interval(&m, s->confidence, s->interval) != SV_OK)
         s->interval[0] = s->interval[1] = NAN;
     if (s->is_index)

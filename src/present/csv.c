@@ -24,6 +24,16 @@ static void add_field(sv_draft *text, const char *field)
     sv_draft_add(text, "\"");
 }
 
+/* Is a window mean an estimate at any point? Then there is one more column. */
+static bool any_estimated(const sv_result *result)
+{
+    for (int i = 0; i < result->n_points; i++)
+        for (int j = 0; j < result->points[i].n_summaries; j++)
+            if (sv_words_estimated(&result->points[i].summaries[j]))
+                return true;
+    return false;
+}
+
 /* An empty field for a number that does not exist. */
 static void add_real(sv_draft *text, double value)
 {
@@ -62,11 +72,14 @@ static void add_head(sv_draft *text, const sv_result *result)
                        "interval_high,confidence,deviation");
     for (int i = 0; i < SV_N_QUANTILES; i++)
         sv_draft_add(text, ",quantile_%.2f", sv_quantile_levels()[i]);
-    sv_draft_add(text, ",bounds_low,bounds_high,shares,numerical_error,estimator_error,"
-                       "smallest_margin,engine,reason\n");
+    sv_draft_add(text,
+                 ",bounds_low,bounds_high,shares,numerical_error,estimator_error,"
+                 "%ssmallest_margin,engine,reason\n",
+                 any_estimated(result) ? "disorder_deviation," : "");
 }
 
-static void add_row(sv_draft *text, const sv_point_result *point, const sv_summary *summary)
+static void add_row(sv_draft *text, const sv_point_result *point, const sv_summary *summary,
+                    bool estimated)
 {
     const double numbers[] = {summary->mean,        summary->standard_error, summary->interval[0],
                               summary->interval[1], summary->confidence,     summary->deviation};
@@ -89,6 +102,8 @@ static void add_row(sv_draft *text, const sv_point_result *point, const sv_summa
                      (long long)summary->shares[i].count);
     add_real(text, summary->numerical_error);
     add_real(text, summary->estimator_error);
+    if (estimated)
+        add_real(text, summary->exists ? summary->disorder_deviation : (double)NAN);
     add_real(text, summary->smallest_margin);
     sv_draft_add(text, ",");
     add_field(text, summary->engine);
@@ -102,9 +117,10 @@ static void add_row(sv_draft *text, const sv_point_result *point, const sv_summa
 sv_status sv_result_csv(sv_context *context, const sv_result *result, char **ret_text)
 {
     sv_draft text = {.context = context};
+    const bool estimated = any_estimated(result);
     add_head(&text, result);
     for (int32_t i = 0; i < result->n_points; i++)
         for (int j = 0; j < result->points[i].n_summaries; j++)
-            add_row(&text, &result->points[i], &result->points[i].summaries[j]);
+            add_row(&text, &result->points[i], &result->points[i].summaries[j], estimated);
     return sv_draft_finish(&text, ret_text);
 }

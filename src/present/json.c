@@ -87,6 +87,8 @@ static json_t *make_marker(sv_json *json, const sv_summary *summary)
     }
     sv_json_put_real(json, object, "numerical_error", summary->numerical_error);
     sv_json_put_real(json, object, "estimator_error", summary->estimator_error);
+    if (sv_words_estimated(summary))
+        sv_json_put_real(json, object, "disorder_deviation", summary->disorder_deviation);
     put_margin(json, object, summary);
     if (isfinite(summary->kappa))
         sv_json_put_real(json, object, "kappa", summary->kappa);

@@ -40,6 +40,11 @@ const char *sv_words_symbol(const char *name)
     return row < 0 || markers[row].symbol == NULL ? "C" : markers[row].symbol;
 }
 
+bool sv_words_estimated(const sv_summary *summary)
+{
+    return summary->exists && !summary->is_index && summary->estimator_error > 0.0;
+}
+
 const char *sv_words_margin(const char *name)
 {
     const int row = find_marker(name);

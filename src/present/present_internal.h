@@ -41,6 +41,8 @@ const char *sv_words_marker(const char *name);
 const char *sv_words_symbol(const char *name);
 /* What the margin and the second number of a marker are called in results, or NULL. */
 const char *sv_words_margin(const char *name);
+/* Was the value of a realisation itself an estimate, from a sample of its window? */
+bool sv_words_estimated(const sv_summary *summary);
 const char *sv_words_weakest(const char *name);
 /* Axis text of a parameter: its label, or words made of its path. */
 void sv_words_parameter(const sv_coordinate *coordinate, char *text, size_t size);

@@ -112,6 +112,18 @@ static void print_unresolved(FILE *stream, const sv_summary *summary, bool colou
     print_remark(stream, remark);
 }
 
+/* What the estimator of a sampled window adds to the spread, and what is left of it. */
+static void print_estimator(FILE *stream, const sv_summary *summary)
+{
+    char remark[200];
+    int used = snprintf(remark, sizeof remark, "estimator error %.2g per realisation",
+                        summary->estimator_error);
+    if (isfinite(summary->disorder_deviation))
+        snprintf(remark + used, sizeof remark - (size_t)used, "; disorder alone spreads by %.2g",
+                 summary->disorder_deviation);
+    print_remark(stream, remark);
+}
+
 static void print_row(FILE *stream, const sv_point_result *point, const sv_summary *summary,
                       bool colour)
 {
@@ -133,6 +145,8 @@ static void print_row(FILE *stream, const sv_point_result *point, const sv_summa
     format_interval(summary, text, sizeof text);
     sv_table_cell(stream, text, INTERVAL_COLUMNS, false);
     print_unresolved(stream, summary, colour);
+    if (sv_words_estimated(summary))
+        print_estimator(stream, summary);
 }
 
 /* How far the index of the first point stays the one of most realisations. */

@@ -29,6 +29,11 @@ static void print_window_mean(FILE *stream, const char *name, const sv_outcome *
     snprintf(text, sizeof text, "%.6g   mean over %lld cells, error %.1g", outcome->value + 0.0,
              (long long)outcome->window_cells, outcome->numerical_error);
     print_line(stream, name, text);
+    if (outcome->estimator_error > 0.0) {
+        snprintf(text, sizeof text, "%.2g   estimator error: the window is sampled",
+                 outcome->estimator_error);
+        print_line(stream, "", text);
+    }
     if (!isfinite(outcome->sum_over_sites))
         return;
     snprintf(text, sizeof text, "%.2g   sum over all sites, zero on a finite flake",

@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* Three-sector and crosshair markers: sign and convergence against integers from link variables. */
 #include "fixtures.h"
+#include "selvedge/ensemble.h"
 
 static double value_of(const char *name, const sv_model *model, int side, double radius)
 {
@@ -83,6 +84,41 @@ SV_TEST(discs_work_on_parts)
     CHECK_STATUS(SV_UNDEFINED, sv_crosshair(test_context(), &input, &outcome));
     sv_projector_free(test_context(), p);
     sv_sample_free(test_context(), &sample);
+    sv_flake_free(test_context(), &flake);
+    sv_model_free(test_context(), &model);
+}
+
+/* Discs alone on a flake too large to be diagonalised: parts of it, never the dense engine. */
+SV_TEST(discs_alone_are_planned_on_parts)
+{
+    sv_model model = fixture_qi_wu_zhang(-1.0);
+    sv_flake_spec spec = fixture_cells(&model, 80, 80, false);
+    sv_flake flake = fixture_flake(&model, &spec);
+    sv_disorder d = {.name = "pot", .type = SV_DISORDER_ONSITE, .on = -1, .width = 0.5};
+    sv_case point = {.open_flake = &flake,
+                     .disorder = &d,
+                     .n_disorder = 1,
+                     .occupation = fixture_below_zero,
+                     .solve = sv_projector_options_default(),
+                     .seed = 5,
+                     .n_markers = 2};
+    sv_plan plan = {0};
+    sv_record record;
+    const char *const names[] = {"three_sector", "crosshair"};
+    for (int k = 0; k < 2; k++)
+        point.markers[k] = (sv_marker_request){
+            .marker = sv_marker_find(names[k]),
+            .values = {{.present = true, .has_auto = true}, {.present = true, .real = {7.0}}}};
+    CHECK_OK(sv_case_plan(test_context(), &point, false, 0.005, &plan));
+    CHECK_INT(point.solve.engine, SV_ENGINE_CHEBYSHEV);
+    CHECK(point.solve.reach > 0.0);
+    if (point.solve.engine == SV_ENGINE_CHEBYSHEV) {
+        CHECK_OK(sv_realise(test_context(), &point, 0, NULL, NULL, &record));
+        for (int k = 0; k < 2; k++) {
+            CHECK_INT(record.outcomes[k].verdict, SV_RESOLVED);
+            CHECK_CLOSE(record.outcomes[k].value, 1.0, 2e-3);
+        }
+    }
     sv_flake_free(test_context(), &flake);
     sv_model_free(test_context(), &model);
 }

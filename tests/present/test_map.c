@@ -90,3 +90,20 @@ SV_TEST(the_map_prints_in_80_columns)
     free(text);
     map_fixture_free(&f);
 }
+
+SV_TEST(a_sampled_window_states_its_estimator_error)
+{
+    map_fixture f;
+    map_fixture_make(&f, false, &square, 0);
+    for (int k = 0; k < 2; k++) {
+        char *text = NULL;
+        size_t size = 0;
+        FILE *stream = open_memstream(&text, &size);
+        f.record.outcomes[0].estimator_error = k == 0 ? 0.0 : 0.0123;
+        sv_map_print(&f.map, false, stream);
+        fclose(stream);
+        CHECK((strstr(text, "0.012   estimator error") != NULL) == (k == 1));
+        free(text);
+    }
+    map_fixture_free(&f);
+}

@@ -318,3 +318,42 @@ SV_TEST(every_allocation_may_fail)
     context->allocator = plenty;
     CHECK(status == SV_OK && k > 5);
 }
+
+/* Sampled windows: the error of the estimator and what is left for the disorder stand apart. */
+SV_TEST(estimator_and_disorder_are_kept_apart)
+{
+    fixture f;
+    fixture_make(&f);
+    json_t *document = read_back(&f.result);
+    CHECK(json_object_get(marker_of(document, 0, "local_chern"), "disorder_deviation") == NULL);
+    json_decref(document);
+    char *text = print_table(&f.result, false), *csv = NULL;
+    CHECK(strstr(text, "estimator") == NULL);
+    free(text);
+    f.points[0].summaries[0].estimator_error = 0.003;
+    f.points[0].summaries[0].disorder_deviation = 0.0048;
+    document = read_back(&f.result);
+    CHECK(number(marker_of(document, 0, "local_chern"), "disorder_deviation") == 0.0048);
+    CHECK(json_object_get(marker_of(document, 0, "bott"), "disorder_deviation") == NULL);
+    json_decref(document);
+    text = print_table(&f.result, false);
+    CHECK(strstr(text, "estimator error 0.003 per realisation; disorder alone spreads by 0.0048") !=
+          NULL);
+    CHECK(widest_line(text) <= 80);
+    free(text);
+    CHECK_OK(sv_result_csv(test_context(), &f.result, &csv));
+    const char *head = strstr(csv, "estimator_error,disorder_deviation,smallest_margin");
+    CHECK(head != NULL);
+    if (head != NULL) {
+        int fields = 0;
+        const char *row = strchr(head, '\n') + 1;
+        const char *start = head;
+        while (start > csv && start[-1] != '\n')
+            start--;
+        fields = count_fields(start);
+        for (; *row != '\0'; row = strchr(row, '\n') + 1)
+            CHECK_INT(count_fields(row), fields);
+    }
+    CHECK(strstr(csv, ",0.003,0.0048,0.125,") != NULL);
+    sv_give(test_context(), csv);
+}
