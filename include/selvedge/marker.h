@@ -52,6 +52,7 @@ typedef struct sv_marker_input {
     sv_projector *projector; /**< NULL for markers that do not need one */
     const sv_value *values;  /**< one per key of its kind */
     sv_index sampled_cells;  /**< local Chern: window cells to sample, 0: all */
+    sv_index sampled_vectors; /**< local Chern: random-phase vectors instead of cells; 0: none */
     int threads;             /**< inside this realisation; 0 or 1: one */
     uint64_t seed;           /**< of the ensemble: draws the sampled cells */
     sv_index realisation;
@@ -94,6 +95,11 @@ SV_API sv_outcome sv_outcome_blank(void);
  * c(r) = (4π/A) Im⟨r|P x P y P|r⟩, A the area of a cell; the sum over the orbitals of a cell is
  * the marker of the cell and tends to +C in the bulk. The window mean is normalised by the number
  * of cells of the window, vacant ones included. Key: window (share of the linear size).
+ *
+ * With sampled_vectors and an engine without a basis the window mean is that of
+ * −(4π/A) Im⟨P D z|x Q y P z⟩ over vectors z of independent random phases, D the window, Q = 1 − P;
+ * its mean over z is the sum over the window, since D P x y P has a real trace. The phases
+ * depend on seed, realisation, site and number of the vector only.
  */
 SV_API SV_MUST_USE sv_status sv_local_chern(sv_context *context, const sv_marker_input *input,
                                             sv_outcome *ret_outcome);

@@ -19,6 +19,13 @@ typedef enum sv_engine {
     SV_ENGINE_RATIONAL
 } sv_engine;
 
+/** How a window mean of the local Chern marker is estimated. */
+typedef enum sv_estimator {
+    SV_ESTIMATOR_AUTO,        /**< every site; of large windows a sample of cells */
+    SV_ESTIMATOR_CELLS,       /**< a sample of cells, however small the window */
+    SV_ESTIMATOR_RANDOM_PHASE /**< vectors of random phases */
+} sv_estimator;
+
 /** What to build; fill with sv_projector_options_default(). */
 typedef struct sv_projector_options {
     size_t size; /**< sizeof(sv_projector_options), for later versions */
@@ -39,6 +46,9 @@ typedef struct sv_projector_options {
     double reach;    /**< chebyshev: radius of the parts for single columns, lattice constants;
                           0: columns use the whole flake */
     sv_index sampled_cells; /**< local Chern: number of window cells to sample; 0: all */
+    sv_estimator estimator;   /**< read by sv_case_plan() */
+    sv_index sampled_vectors; /**< local Chern: random-phase vectors; 0: none. Chebyshev then holds
+                                   the whole projector besides its parts */
     int threads;            /**< threads inside one realisation (huge flakes); 0 or 1: one */
     bool trial; /**< chebyshev: do not count states to see whether a level is on the Fermi energy */
 } sv_projector_options;

@@ -121,7 +121,7 @@ typedef struct sv_setup {
     int64_t stop_at_least;
     sv_sweep_axis axes[2];
     int n_axes;
-    char engine[16];
+    char engine[16], estimator[16];
     double accuracy, sampling_error;
     sv_sheet_file *files;
     int n_files;

@@ -80,6 +80,7 @@ static sv_status try_settings(sv_context *context, const pilot *p, const sv_proj
                              .projector = projector,
                              .values = p->request.values,
                              .sampled_cells = PILOT_CELLS,
+                             .sampled_vectors = o->sampled_vectors,
                              .seed = p->point->seed};
     status = sv_local_chern(context, &input, ret_outcome);
     sv_projector_free(context, projector);
@@ -215,7 +216,7 @@ static sv_status find_sampling(sv_context *context, const pilot *p, sv_projector
                                double sampling_error)
 {
     sv_outcome outcome;
-    if (p->columns <= SAMPLE_ABOVE)
+    if (p->columns <= SAMPLE_ABOVE && o->estimator != SV_ESTIMATOR_CELLS)
         return SV_OK;
     sv_status status = try_settings(context, p, o, &outcome);
     if (status != SV_OK)
@@ -224,6 +225,44 @@ static sv_status find_sampling(sv_context *context, const pilot *p, sv_projector
     /* A margin of 2 in the variance for the roughness of the pilot's own error. */
     o->sampled_cells = (sv_index)((double)PILOT_CELLS * fmax(1.0, 2.0 * ratio * ratio));
     return SV_OK;
+}
+
+/* Vectors of random phases for the sampling error asked for, in whole blocks: a block of the
+ * polynomial costs the same however few of its columns are used. */
+static sv_status find_vectors(sv_context *context, const pilot *p, sv_projector_options *o,
+                              double sampling_error)
+{
+    const double margin = 1.5; /* in the variance, for the roughness of the pilot's own error */
+    sv_outcome outcome;
+    sv_projector_options trial = *o;
+    trial.sampled_vectors = SV_PANEL_COLUMNS;
+    sv_status status = try_settings(context, p, &trial, &outcome);
+    if (status != SV_OK)
+        return status;
+    double ratio = outcome.estimator_error / sampling_error;
+    o->sampled_vectors = SV_PANEL_COLUMNS * (sv_index)ceil(fmax(1.0, margin * ratio * ratio));
+    return SV_OK;
+}
+
+static sv_status find_estimator(sv_context *context, const pilot *p, sv_projector_options *o,
+                                double sampling_error)
+{
+    return o->estimator == SV_ESTIMATOR_RANDOM_PHASE ? find_vectors(context, p, o, sampling_error)
+                                                     : find_sampling(context, p, o, sampling_error);
+}
+
+/* How the window is estimated, behind the reason of the engine. */
+static void say_estimator(const sv_projector_options *o, sv_plan *plan)
+{
+    size_t used = strlen(plan->reason), room = sizeof plan->reason - used;
+    if (o->sampled_vectors > 0)
+        snprintf(plan->reason + used, room, "; window by %lld random-phase vectors",
+                 (long long)o->sampled_vectors);
+    else if (o->sampled_cells > 0)
+        snprintf(plan->reason + used, room, "; window by about %lld sampled cells",
+                 (long long)o->sampled_cells);
+    else if (o->estimator != SV_ESTIMATOR_AUTO)
+        snprintf(plan->reason + used, room, "; every site: no estimator is needed");
 }
 
 /* Fermi energy of realisation 0; a filling is turned into one by counting states. */
@@ -358,9 +397,10 @@ static sv_status settle(sv_context *context, const pilot *p, double sampling_err
         status = find_reach(context, p, *ret_error, o);
     if (status == SV_OK && *ret_found)
         status = trim_degree(context, p, o, ret_error);
-    if (status == SV_OK && *ret_found)
+    /* Nothing vouches for the rounding of single precision in vectors. */
+    if (status == SV_OK && *ret_found && o->estimator != SV_ESTIMATOR_RANDOM_PHASE)
         status = try_single(context, p, o, ret_error);
-    return status == SV_OK ? find_sampling(context, p, o, sampling_error) : status;
+    return status == SV_OK ? find_estimator(context, p, o, sampling_error) : status;
 }
 
 static sv_status plan_chebyshev(sv_context *context, sv_case *point, double sampling_error,
@@ -405,7 +445,7 @@ static sv_status plan_rational(sv_context *context, sv_case *point, double sampl
     sv_projector_options o = point->solve;
     sv_status status = start_pilot(context, point, &p);
     if (status == SV_OK)
-        status = find_sampling(context, &p, &o, sampling_error);
+        status = find_estimator(context, &p, &o, sampling_error);
     sv_sample_free(context, &p.sample);
     if (status != SV_OK)
         return status;
@@ -437,6 +477,8 @@ sv_status sv_case_plan(sv_context *context, sv_case *point, bool site_map, doubl
     sv_plan plan = {0};
     sv_status status = SV_OK;
     const char *reason = dense_reason(point, site_map);
+    if (site_map)
+        point->solve.estimator = SV_ESTIMATOR_AUTO;
     point->solve.basis_engine = basis_engine(point);
     if (reason != NULL && point->solve.engine == SV_ENGINE_CHEBYSHEV)
         return SV_FAIL(context, SV_INVALID_INPUT, "the chebyshev engine cannot be used: %s",
@@ -451,6 +493,8 @@ sv_status sv_case_plan(sv_context *context, sv_case *point, bool site_map, doubl
     } else {
         status = plan_chebyshev(context, point, sampling_error, &plan);
     }
+    if (status == SV_OK)
+        say_estimator(&point->solve, &plan);
     if (status == SV_OK && needs_basis(point) && point->solve.basis_engine == SV_ENGINE_CHEBYSHEV) {
         size_t used = strlen(plan.reason);
         snprintf(plan.reason + used, sizeof plan.reason - used, "; torus: basis by polynomials");

@@ -109,6 +109,7 @@ static sv_status markers_on(sv_context *context, const sv_case *point, const sv_
                                  .projector = projector,
                                  .values = request->values,
                                  .sampled_cells = point->solve.sampled_cells,
+                                 .sampled_vectors = point->solve.sampled_vectors,
                                  .threads = point->solve.threads,
                                  .seed = point->seed,
                                  .realisation = record->realisation,

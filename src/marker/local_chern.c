@@ -177,6 +177,12 @@ static sv_status from_columns(sv_context *context, const sv_marker_input *input,
     return status;
 }
 
+/* Vectors stand in for the sites; a basis, or the marker of every site, needs no estimate. */
+static bool by_vectors(const sv_marker_input *input, const chern_work *w)
+{
+    return input->sampled_vectors > 0 && !w->basis.available && input->ret_site_values == NULL;
+}
+
 /* Sampling replaces the window by a random choice of its cells; site maps need them all. */
 static sv_status choose_cells(sv_context *context, const sv_marker_input *input, const bool *inside,
                               sv_index *cells, chern_work *w)
@@ -206,6 +212,11 @@ sv_status sv_local_chern(sv_context *context, const sv_marker_input *input, sv_o
     outcome.window_cells = cells;
     if (levels->on_level)
         goto done;
+    if (by_vectors(input, &w)) {
+        if ((status = sv_chern_vectors(context, input, inside, cells, &outcome)) != SV_OK)
+            goto out;
+        goto settled;
+    }
     if ((status = choose_cells(context, input, inside, &cells, &w)) != SV_OK ||
         (status = pick_rows(context, &w, inside, input->ret_site_values != NULL)) != SV_OK)
         goto out;
@@ -216,6 +227,7 @@ sv_status sv_local_chern(sv_context *context, const sv_marker_input *input, sv_o
     reduce(&w, inside, cells, input->ret_site_values, &outcome);
     if ((status = sampling_error(context, &w, w.marker, &outcome.estimator_error)) != SV_OK)
         goto out;
+settled:
     outcome.margin = levels->has_highest && levels->has_lowest
                          ? levels->lowest_empty - levels->highest_occupied
                          : (double)NAN;

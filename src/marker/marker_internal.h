@@ -26,6 +26,11 @@ sv_status sv_chern_columns(sv_context *context, const sv_sample *sample, sv_proj
                            int threads, const sv_index *rows, sv_index n_rows, double *ret_marker,
                            double *ret_error);
 
+/* Window mean from input->sampled_vectors vectors of random phases (at least 4), three applications
+ * of the whole projector each: value, estimator_error, and numerical_error from the first block. */
+sv_status sv_chern_vectors(sv_context *context, const sv_marker_input *input, const bool *inside,
+                           sv_index cells, sv_outcome *outcome);
+
 /* A stratified random choice of window cells, in runs that one block of columns serves. */
 typedef struct window_choice {
     int32_t *unit; /* per cell: number of its chosen run, −1: not chosen */

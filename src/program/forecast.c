@@ -76,6 +76,9 @@ static bool needs_dense(const session *s, const sv_setup *setup, int64_t sites)
            (strcmp(setup->engine, "auto") == 0 && sites <= dense_by_choice);
 }
 
+/* Random-phase vectors: panels of the whole flake and five blocks, per site. */
+static const double VECTOR_BYTES = 2400.0;
+
 static sv_status bytes_of(session *s, const sv_setup *setup, int64_t *ret_sites, double *ret_bytes)
 {
     double operations;
@@ -90,6 +93,8 @@ static sv_status bytes_of(session *s, const sv_setup *setup, int64_t *ret_sites,
         sv_projector_forecast(SV_ENGINE_DENSE, *ret_sites, ret_bytes, &operations);
     else
         sv_projector_forecast(SV_ENGINE_CHEBYSHEV, *ret_sites, ret_bytes, &operations);
+    if (strcmp(setup->estimator, "random_phase") == 0)
+        *ret_bytes += VECTOR_BYTES * (double)*ret_sites;
     return SV_OK;
 }
 
@@ -142,6 +147,8 @@ static double planned_bytes(const session *s, const point *p)
     if (open)
         sv_projector_forecast(needs_open_basis(&p->setup) ? SV_ENGINE_DENSE : solve->engine,
                               p->open.n_sites, &bytes[0], &operations);
+    if (solve->sampled_vectors > 0)
+        bytes[0] += VECTOR_BYTES * (double)p->open.n_sites;
     if (closed) /* polynomials make a basis of half the order, as large as the dense one's */
         sv_projector_forecast(SV_ENGINE_DENSE, p->open.n_sites, &bytes[1], &operations);
     return fmax(bytes[0], bytes[1]);

@@ -130,6 +130,9 @@ static double window_columns(session *s, const sv_case *problem)
     if (sv_flake_window(s->context, problem->open_flake, share, &inside, &cells) != SV_OK)
         return 0.0;
     sv_give(s->context, inside);
+    /* Three applications a vector instead of two a column, and three more for the first block. */
+    if (problem->solve.sampled_vectors > 0)
+        return 1.5 * (double)(problem->solve.sampled_vectors + SV_PANEL_COLUMNS);
     if (problem->solve.sampled_cells > 0 && problem->solve.sampled_cells < cells)
         cells = problem->solve.sampled_cells;
     return (double)cells * problem->open_flake->model->n_orbitals;
@@ -155,6 +158,8 @@ static sv_status add_chebyshev(session *s, const point *p, cost_model *costs, do
     if (problem->solve.reach > 0.0)
         part = M_PI * pow(problem->solve.reach + 4.0, 2.0) * model->n_orbitals /
                sv_model_cell_area(model);
+    if (problem->solve.sampled_vectors > 0)
+        part = sites;
     double steps = part * window_columns(s, problem) * 2.0 * problem->solve.degree;
     /* Drawing the sample and, where asked for, counting and finding levels one by one. */
     double other = 1.5e-6 * sites + (problem->solve.near_states > 0 ? 5e-5 * sites : 0.0);

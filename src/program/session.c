@@ -138,6 +138,10 @@ sv_status session_make_point(session *s, point *p)
                               : strcmp(setup->engine, "chebyshev") == 0 ? SV_ENGINE_CHEBYSHEV
                               : strcmp(setup->engine, "rational") == 0  ? SV_ENGINE_RATIONAL
                                                                         : SV_ENGINE_AUTO;
+    p->problem.solve.estimator = strcmp(setup->estimator, "cells") == 0 ? SV_ESTIMATOR_CELLS
+                                 : strcmp(setup->estimator, "random_phase") == 0
+                                     ? SV_ESTIMATOR_RANDOM_PHASE
+                                     : SV_ESTIMATOR_AUTO;
     p->problem.seed = setup->seed;
     status = set_markers(s, setup, &p->problem);
     return status == SV_OK ? prepare_localizer(s, p) : status;

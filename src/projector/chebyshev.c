@@ -289,7 +289,7 @@ sv_status sv_chebyshev_engine_make(sv_context *context, const sv_sample *sample,
     if (status == SV_OK)
         status = set_polynomial(context, options, s->scale, s);
     /* Parts bring their own matrix; the whole one would only cost memory. */
-    if (status == SV_OK && options->reach <= 0.0)
+    if (status == SV_OK && (options->reach <= 0.0 || options->sampled_vectors > 0))
         status = set_matrix(context, &sample->hamiltonian, NULL, n, NULL, s);
     if (status == SV_OK && options->near_states > 0 && options->reach <= 0.0)
         status = set_near_states(context, sample, options, s, &levels);

@@ -144,6 +144,12 @@ static const sv_key solve_keys[] = {
      .high = 1,
      .fallback = "0.005",
      .doc = "error allowed of a window mean that is sampled"},
+    {.name = "estimator",
+     .type = SV_KEY_CHOICE,
+     .choices = "auto cells random_phase",
+     .fallback = "auto",
+     .doc = "window mean: auto (every site, of large windows sampled cells), cells, or vectors of "
+            "random phases"},
 };
 
 #define KEYS(rows) .keys = rows, .n_keys = (int)(sizeof rows / sizeof rows[0])

@@ -111,6 +111,8 @@ bool sv_setup_ensemble(sv_reader *reader, sv_setup *setup)
     setup->realisations = sv_section_value(ensemble, "realisations")->integer[0];
     setup->seed = (uint64_t)sv_section_value(ensemble, "seed")->integer[0];
     snprintf(setup->engine, sizeof setup->engine, "%s", sv_section_value(solve, "engine")->text);
+    snprintf(setup->estimator, sizeof setup->estimator, "%s",
+             sv_section_value(solve, "estimator")->text);
     setup->accuracy = sv_section_value(solve, "accuracy")->real[0];
     setup->sampling_error = sv_section_value(solve, "sampling_error")->real[0];
     bool good = use_occupation(reader, setup);

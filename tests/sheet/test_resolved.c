@@ -135,6 +135,7 @@ SV_TEST(identity_sees_every_number)
         "solve.engine=dense",
         "solve.accuracy=1e-7",
         "solve.sampling_error=0.1",
+        "solve.estimator=random_phase",
         "model.energy_unit=1 eV",
         "model.lattice_constant=1 nm",
         "markers.local_chern.window=0.25",

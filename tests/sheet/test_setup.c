@@ -25,6 +25,7 @@ SV_TEST(defaults)
         CHECK(!s->has_stop);
         CHECK_INT(s->n_axes, 0);
         CHECK_TEXT(s->engine, "auto");
+        CHECK_TEXT(s->estimator, "auto");
         CHECK_CLOSE(s->accuracy, 1e-6, 0.0);
         CHECK_CLOSE(s->sampling_error, 0.005, 0.0);
         CHECK_CLOSE(s->lattice_constant, 0.0, 0.0);
