@@ -35,6 +35,10 @@ typedef struct sv_outcome {
     double weakest; /**< Bott: smallest modulus of an eigenvalue of V U V† U†, which is 0 when U or
                          V is singular (or a lower bound, as for the margin); spectral flow: least share of a level
                          found again; density response: largest movement of a level next to the Fermi energy; NaN: none */
+    double unresolved_within; /**< levels nearer than this to the Fermi energy are occupied in part
+                                   only; 0: none is; NaN: no projector. Not kept in a run folder */
+    double nearest_level;     /**< distance from the Fermi energy to the nearest level; NaN: not
+                                   known. Not kept in a run folder */
     double sum_over_sites;                 /**< local Chern, when asked for; NaN otherwise */
     int64_t window_cells;                  /**< local Chern */
     double kappa;                          /**< localizer: energy per lattice constant; NaN: none */

@@ -224,6 +224,8 @@ sv_outcome sv_outcome_blank(void)
                         .estimator_error = 0.0,
                         .margin = NAN,
                         .weakest = NAN,
+                        .unresolved_within = NAN,
+                        .nearest_level = NAN,
                         .sum_over_sites = NAN,
                         .kappa = NAN,
                         .highest_occupied = NAN,
@@ -236,6 +238,13 @@ sv_outcome sv_outcome_start(const sv_projector *projector)
     const sv_levels *levels = sv_projector_levels(projector);
     snprintf(outcome.engine, sizeof outcome.engine, "%s", sv_projector_engine(projector));
     outcome.electrons = levels->occupied;
+    outcome.unresolved_within = levels->gap_resolved ? 0.0 : levels->resolved_from;
+    double nearest = INFINITY;
+    if (levels->has_highest)
+        nearest = fabs(levels->fermi_energy - levels->highest_occupied);
+    if (levels->has_lowest)
+        nearest = fmin(nearest, fabs(levels->lowest_empty - levels->fermi_energy));
+    outcome.nearest_level = isfinite(nearest) ? nearest : (double)NAN;
     if (levels->has_highest)
         outcome.highest_occupied = levels->highest_occupied;
     if (levels->has_lowest)

@@ -87,6 +87,8 @@ static json_t *make_marker(sv_json *json, const sv_marker *marker, const sv_outc
     sv_json_put_real(json, object, "estimator_error", outcome->estimator_error);
     sv_json_put_text(json, object, "engine", outcome->engine);
     put_levels(json, object, outcome);
+    put_known(json, object, "levels_unresolved_within", outcome->unresolved_within);
+    put_known(json, object, "level_distance", outcome->nearest_level);
     return object;
 }
 

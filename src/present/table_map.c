@@ -100,6 +100,24 @@ static void print_levels(FILE *stream, const sv_outcome *outcome)
     print_line(stream, "", text);
 }
 
+/* How near to the Fermi energy the engine resolves levels, beside how near they are. */
+static void print_resolution(FILE *stream, const sv_outcome *outcome)
+{
+    char text[100];
+    if (!isfinite(outcome->unresolved_within) || strcmp(outcome->engine, "dense") == 0)
+        return;
+    if (outcome->unresolved_within > 0.0)
+        snprintf(text, sizeof text, "levels within %.3g of the Fermi energy not resolved",
+                 outcome->unresolved_within);
+    else
+        snprintf(text, sizeof text, "all levels resolved");
+    print_line(stream, "", text);
+    if (!isfinite(outcome->nearest_level))
+        return;
+    snprintf(text, sizeof text, "nearest level %.3g from the Fermi energy", outcome->nearest_level);
+    print_line(stream, "", text);
+}
+
 static void print_outcome(FILE *stream, const sv_marker *marker, const sv_outcome *outcome)
 {
     static const char *const words[] = {"", "unresolved", "does not exist", "failed"};
@@ -118,6 +136,8 @@ static void print_outcome(FILE *stream, const sv_marker *marker, const sv_outcom
         print_spin_gap(stream, outcome);
     if (outcome->verdict == SV_RESOLVED || outcome->verdict == SV_UNRESOLVED)
         print_levels(stream, outcome);
+    if (outcome->verdict == SV_RESOLVED)
+        print_resolution(stream, outcome);
 }
 
 void sv_map_print(const sv_map_result *map, bool colour, FILE *stream)

@@ -107,3 +107,40 @@ SV_TEST(a_sampled_window_states_its_estimator_error)
     }
     map_fixture_free(&f);
 }
+
+SV_TEST(a_map_states_which_levels_are_resolved)
+{
+    static const struct {
+        double within, nearest;
+        const char *engine, *expected;
+    } rows[] = {
+        {0.25, 0.125, "chebyshev", "levels within 0.25 of the Fermi energy not resolved\n"},
+        {0.25, NAN, "chebyshev", "levels within 0.25 of the Fermi energy not resolved\n"},
+        {0.0, 0.125, "rational", "nearest level 0.125 from the Fermi energy\n"},
+        {0.0, 0.125, "dense", NULL},
+        {NAN, NAN, "", NULL},
+    };
+    map_fixture f;
+    map_fixture_make(&f, false, &square, 0);
+    for (size_t k = 0; k < sizeof rows / sizeof *rows; k++) {
+        sv_outcome *o = &f.record.outcomes[0];
+        char *text = NULL;
+        size_t size = 0;
+        FILE *stream = open_memstream(&text, &size);
+        o->unresolved_within = rows[k].within;
+        o->nearest_level = rows[k].nearest;
+        snprintf(o->engine, sizeof o->engine, "%s", rows[k].engine);
+        sv_map_print(&f.map, false, stream);
+        fclose(stream);
+        const char *expected = rows[k].expected;
+        CHECK(strstr(text, expected != NULL ? expected : "resolved") != NULL ? expected != NULL
+                                                                             : expected == NULL);
+        free(text);
+        json_t *document = read_back(&f.map);
+        const json_t *chern = json_object_get(json_object_get(document, "markers"), "local_chern");
+        const json_t *within = json_object_get(chern, "levels_unresolved_within");
+        CHECK(isnan(rows[k].within) ? within == NULL : json_number_value(within) == rows[k].within);
+        json_decref(document);
+    }
+    map_fixture_free(&f);
+}
