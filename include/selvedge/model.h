@@ -54,6 +54,23 @@ typedef struct sv_model_field {
     int n_terms;
 } sv_model_field;
 
+/**
+ * Hops by distance, for structures without cells. Sites of the two species at a distance r are
+ * joined by
+ *  - a shell (decay 0): amplitude when |r − distance| ≤ tolerance;
+ *  - a decay: amplitude · exp(−(r − distance)/decay) when r ≤ cutoff.
+ * With a phase φ the hop needs a common neighbour, one that rules without a phase join to both
+ * ends; of several the one on the shortest way counts. Turning right (clockwise) over it multiplies
+ * ⟨end|H|start⟩ by e^{iφ}, turning left by e^{−iφ}, as in the honeycomb model of F. D. M. Haldane,
+ * Phys. Rev. Lett. 61, 2015 (1988). Without a common neighbour, or straight over it: no hop.
+ */
+typedef struct sv_distance_rule {
+    int from, to; /**< orbitals of the model, here species; amplitude = ⟨to|H|from⟩ */
+    double distance, tolerance, decay, cutoff; /**< lattice constants */
+    sv_complex amplitude;
+    double phase; /**< radian */
+} sv_distance_rule;
+
 /** A clean model. Build it with sv_model_make() or sv_model_begin() … sv_model_finish(). */
 typedef struct sv_model {
     char name[32];
@@ -71,6 +88,11 @@ typedef struct sv_model {
                           the gap Δ it gives the length ξ = ħv/Δ a film must exceed. */
     int32_t *hop_slots; /**< for finding hops; hop number + 1 or 0, power of two */
     sv_index n_hop_slots;
+    /* Hops by distance: orbitals are species, and there are neither cells nor bands. */
+    sv_distance_rule *rules;
+    int n_rules;
+    sv_index rule_capacity;
+    double site_area; /**< mean area of a site of its structure; 0: none known yet */
 } sv_model;
 
 /** Kinds of models: table of names, docs and keys (custom has keys of type SV_KEY_TREE). */
@@ -123,6 +145,17 @@ SV_API int sv_model_find_hop(const sv_model *model, int from, int to, int shift_
 SV_API SV_MUST_USE sv_status sv_model_read_hops(sv_context *context, sv_model *model,
                                                 const char *text, size_t size, double energy_unit,
                                                 bool *ret_has_unit, sv_table_fault *ret_fault);
+/**
+ * Adds a rule of hops by distance; the model then has no lattice. sv_structure_make() gives it the
+ * grid its sites are numbered by.
+ * @return SV_INVALID_INPUT for lengths or orbitals that make no sense, an amplitude between equal
+ * species that is not real, one with a phase that is not real, or two rules of the same species
+ * that could meet at one distance
+ */
+SV_API SV_MUST_USE sv_status sv_model_add_rule(sv_context *context, sv_model *model,
+                                               const sv_distance_rule *rule);
+/** Distances at which a rule may join sites. */
+SV_API void sv_rule_range(const sv_distance_rule *rule, double ret_range[2]);
 /** Sets p/q flux quanta per cell. @return SV_INVALID_INPUT for q < 1 */
 SV_API SV_MUST_USE sv_status sv_model_set_flux(sv_context *context, sv_model *model, int p, int q);
 /**
@@ -152,7 +185,10 @@ SV_API void sv_model_turn(sv_model *model, double angle);
 
 /** Row of an orbital, or -1. */
 SV_API int sv_model_find_orbital(const sv_model *model, const char *name);
-/** Area of the cell, lattice constants squared. */
+/** Area spanned by the vectors. */
+SV_API double sv_model_vector_area(const sv_model *model);
+/** Area of the cell, lattice constants squared; of a model by distance: that of a site, on average
+ *  (its vectors only number the sites). */
 SV_API double sv_model_cell_area(const sv_model *model);
 /** Reduced coordinates (u, v) of a Cartesian point: r = u·a1 + v·a2. */
 SV_API void sv_model_reduce(const sv_model *model, const double at[2], double ret_uv[2]);

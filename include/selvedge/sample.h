@@ -23,7 +23,8 @@ typedef enum sv_shape {
     SV_SHAPE_ANNULUS,
     SV_SHAPE_TRIANGLE,
     SV_SHAPE_RIBBON,
-    SV_SHAPE_POLYGON
+    SV_SHAPE_POLYGON,
+    SV_SHAPE_STRUCTURE /**< sites from a file */
 } sv_shape;
 
 /** Edges of shapes by cells on a honeycomb lattice. */
@@ -36,6 +37,57 @@ typedef struct sv_polygon {
     int n_loops;
 } sv_polygon;
 
+/**
+ * A finite set of sites read from a file, and the hops between them. Each site is the only one of
+ * its cell; cells are squares of the plane so small (side least_distance/√2) that no two sites
+ * share one, so that random numbers belong to places in the plane here too.
+ */
+typedef struct sv_structure {
+    sv_index n;
+    double (*at)[2];  /**< lattice constants */
+    int32_t *species; /**< orbital of the model */
+    int32_t *line;    /**< in the file */
+    double z[2];      /**< smallest and largest, lattice constants: projected */
+    bool has_lattice; /**< the file states a periodic cell, which is not used */
+    /* ⟨site|H|bond_to⟩, row by row; both directions are listed */
+    sv_index *bond_start; /**< n + 1 */
+    int32_t *bond_to;
+    sv_complex *bond;
+    double longest; /**< hop */
+    /* cells */
+    int32_t (*cell)[2], low[2], high[2];
+    int32_t *cell_at; /**< site or −1, as sv_flake.cell_at */
+    /* convex hull */
+    double *corners, area, centre[2];
+    int32_t loop_start[2];
+} sv_structure;
+
+/** How a file of sites is read. */
+typedef struct sv_structure_options {
+    double unit;           /**< of the file, in lattice constants */
+    double least_distance; /**< nearer sites are refused; lattice constants */
+    double thickness;      /**< largest difference of z that may be projected */
+} sv_structure_options;
+
+/**
+ * Reads sites from XYZ text: line 1 their number; line 2 a comment, in extended XYZ key=value pairs
+ * of which Properties names the columns (species:S:1 and pos:R:3 are used, others skipped); then a
+ * line per site, without Properties `species x y z`. One frame. Joins them by the rules of the
+ * model, and gives the model its cells, the mean area of a site (area of the convex hull/n), and
+ * what its hops add up to. Cost: linear in sites and hops, n log n for the hull.
+ * Format: extended XYZ specification, github.com/libAtoms/extxyz.
+ * @param[in,out] model  by distance, finished
+ * @return SV_INVALID_INPUT with *ret_fault filled (line 0: no place in the file)
+ */
+SV_API SV_MUST_USE sv_status sv_structure_make(sv_context *context, sv_model *model,
+                                               const char *text, size_t size,
+                                               const sv_structure_options *options,
+                                               sv_structure *ret_structure,
+                                               sv_table_fault *ret_fault);
+SV_API void sv_structure_free(sv_context *context, sv_structure *structure);
+/** Distance of a point from the rim of the convex hull; negative outside. */
+SV_API double sv_structure_depth(const sv_structure *structure, const double at[2]);
+
 /** What the sheet's `flake` block says. Lengths in lattice constants. */
 typedef struct sv_flake_spec {
     sv_shape shape;
@@ -47,12 +99,13 @@ typedef struct sv_flake_spec {
     double radius;       /**< hexagon of other lattices (centre to corner), disc */
     double inner, outer; /**< annulus */
     bool has_side;
-    double side;        /**< triangle of other lattices */
-    sv_edge edge;       /**< hexagon and triangle by cells, ribbon */
-    sv_polygon polygon; /**< borrowed: must outlive every flake made from it */
-    bool periodic[2];   /**< along a1 and a2 (rectangle by size: along x and y; ribbon: along its
-                             length and across) */
-    bool keep_largest;  /**< a sample keeps its largest connected piece only */
+    double side;                   /**< triangle of other lattices */
+    sv_edge edge;                  /**< hexagon and triangle by cells, ribbon */
+    sv_polygon polygon;            /**< borrowed: must outlive every flake made from it */
+    const sv_structure *structure; /**< borrowed, as the polygon */
+    bool periodic[2];  /**< along a1 and a2 (rectangle by size: along x and y; ribbon: along its
+                            length and across) */
+    bool keep_largest; /**< a sample keeps its largest connected piece only */
 } sv_flake_spec;
 
 enum { SV_POLYGON_MOST = 2000 /**< corners of all loops */ };
@@ -130,6 +183,7 @@ SV_API SV_MUST_USE sv_status sv_flake_count(sv_context *context, const sv_model 
  * of cell (0, 0), which is the centroid;
  *  - hexagon and triangle by cells: sites, not cells. Zigzag: those of n hexagons a side; armchair:
  *    those of n disjoint rings a side. 6n² and n² + 4n + 1, or 18n² − 18n + 6 and 3n² + 3n sites.
+ *  - structure: the sites of the file, in its order.
  * @return SV_INVALID_INPUT for a shape that does not suit the lattice, an empty flake, or a
  *         periodic side that does not fit the lattice or the flux
  */
@@ -143,6 +197,7 @@ SV_API void sv_flake_free(sv_context *context, sv_flake *flake);
  * positions) lies in the shape scaled by `share` about its centroid. Annulus: the middle band of
  * the ring, |r − (inner + outer)/2| ≤ share·(outer − inner)/2. Polygon with holes: the same rule,
  * min(d, e) ≥ (1 − share)/2·(d + e), d and e the distances from the outline and the nearest hole.
+ * Structure: sites in the convex hull scaled by `share` about its centroid.
  * Holes never count as area. Hexagon and triangle by cells are scaled from the outline
  * through the centres of the next, missing row of hexagons (armchair: half a row of rings outside).
  * @param share  0 < share ≤ 1
@@ -151,6 +206,12 @@ SV_API void sv_flake_free(sv_context *context, sv_flake *flake);
  */
 SV_API SV_MUST_USE sv_status sv_flake_window(sv_context *context, const sv_flake *flake,
                                              double share, bool **ret_inside, sv_index *ret_cells);
+/**
+ * What the mean over the cells of a window is to be multiplied by: 1 for lattices. Of a structure
+ * the sum over the sites counts by the area of the window, share² times that of the convex hull:
+ * (cells in the window)·(mean area of a site)/(that area).
+ */
+SV_API double sv_flake_window_factor(const sv_flake *flake, double share, sv_index cells);
 /** A point inside the hole of a flake that has exactly one: annulus, polygon with one hole. */
 SV_API bool sv_flake_hole(const sv_flake *flake, double ret_at[2]);
 /** Is a point nearer to a hole than to the outline? False without a hole. */
@@ -300,6 +361,8 @@ typedef struct sv_disorder {
 
 /** Kinds of disorder with their keys (all but `name` and `kind`). */
 SV_API const sv_kind *sv_disorder_kinds(int *ret_count);
+/** Why an entry cannot act on a structure, which has no cells; NULL: it can. */
+SV_API const char *sv_structure_refusal(const sv_disorder *disorder);
 SV_API void sv_disorder_free(sv_context *context, sv_disorder *disorder);
 /**
  * Largest share of positions that vacancies with a minimum distance can have. They are thinned by

@@ -22,13 +22,13 @@ typedef enum sv_severity { SV_SEVERITY_ERROR, SV_SEVERITY_WARNING, SV_SEVERITY_N
 /** One message about an input, with its place. Lines and columns count from 1; 0: no place. */
 typedef struct sv_diagnostic {
     sv_severity severity;
-    char *file;    /**< or "--set" for an override */
+    char *file; /**< or "--set" for an override */
     int line, column;
-    int length;    /**< characters to underline, at least 1 */
+    int length; /**< characters to underline, at least 1 */
     char *message;
-    char *hint;    /**< or NULL */
-    char *text;    /**< the source line, or NULL */
-    char *path;    /**< dotted path of the key, or NULL */
+    char *hint; /**< or NULL */
+    char *text; /**< the source line, or NULL */
+    char *path; /**< dotted path of the key, or NULL */
 } sv_diagnostic;
 
 /** Messages collected; at most 20 errors, then a last one that says so. */
@@ -71,16 +71,15 @@ SV_API SV_MUST_USE sv_status sv_sheet_read(sv_context *context, const char *path
                                            const sv_sheet_options *options,
                                            sv_diagnostics *diagnostics, sv_sheet **ret_sheet);
 /** As sv_sheet_read() from memory. @param name shown in messages, its folder resolves files */
-SV_API SV_MUST_USE sv_status sv_sheet_parse(sv_context *context, const char *name,
-                                            const char *text, size_t size,
-                                            const sv_sheet_options *options,
+SV_API SV_MUST_USE sv_status sv_sheet_parse(sv_context *context, const char *name, const char *text,
+                                            size_t size, const sv_sheet_options *options,
                                             sv_diagnostics *diagnostics, sv_sheet **ret_sheet);
 SV_API void sv_sheet_free(sv_context *context, sv_sheet *sheet);
 
 /** A marker the sheet asks for. */
 typedef struct sv_sheet_marker {
-    int kind;             /**< row of sv_sheet_options.markers */
-    sv_value values[16];  /**< one per key of the kind */
+    int kind;            /**< row of sv_sheet_options.markers */
+    sv_value values[16]; /**< one per key of the kind */
 } sv_sheet_marker;
 
 /** One axis of a sweep. */
@@ -88,26 +87,27 @@ typedef struct sv_sweep_axis {
     char path[200];
     double *values;
     sv_index count;
-    bool integer; /**< the parameter is an integer */
+    bool integer;      /**< the parameter is an integer */
     const char *unit;  /**< symbol of the unit the sweep is written in, NULL: none */
     double unit_scale; /**< what is written = unit_scale · value; 1 without a unit */
 } sv_sweep_axis;
 
 /** A file the sheet names. */
 typedef struct sv_sheet_file {
-    char *path;     /**< as opened */
-    char *written;  /**< as written in the sheet */
+    char *path;    /**< as opened */
+    char *written; /**< as written in the sheet */
     char digest[65];
     char *key_path; /**< dotted path of the key, e.g. disorder.vac.file */
 } sv_sheet_file;
 
 /** The sheet as typed values; everything in the model's units. */
 typedef struct sv_setup {
-    char *title; /**< never NULL */
+    char *title;             /**< never NULL */
     double lattice_constant; /**< nm, 0: not given */
     double energy_unit;      /**< eV per unit of the model, 0: none known */
     sv_model model;
     sv_flake_spec flake;
+    sv_structure *structure; /**< owned, or NULL; flake.structure */
     sv_disorder *disorder;
     int n_disorder;
     sv_occupation occupation;
@@ -163,8 +163,7 @@ SV_API void sv_setup_free(sv_context *context, sv_setup *setup);
  * @param n_names must be the number of those files
  * @param[out] ret_text taken from the context
  */
-SV_API SV_MUST_USE sv_status sv_sheet_resolved_relocated(sv_context *context,
-                                                         const sv_sheet *sheet,
+SV_API SV_MUST_USE sv_status sv_sheet_resolved_relocated(sv_context *context, const sv_sheet *sheet,
                                                          const char *const *names, int n_names,
                                                          char **ret_text);
 

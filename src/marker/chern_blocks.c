@@ -138,8 +138,10 @@ static sv_index run_end(const block_work *w, sv_index at, sv_index end)
 {
     const sv_cell *cells = w->sample->flake->cells;
     sv_index longest = SV_PANEL_COLUMNS / w->sample->flake->model->n_orbitals, k = at + 1;
-    while (k < end && k - at < longest && cells[w->order[k]].i == cells[w->order[k - 1]].i &&
-           cells[w->order[k]].j == cells[w->order[k - 1]].j + 1)
+    const bool lattice = w->sample->flake->spec.structure == NULL;
+    while (k < end && k - at < longest &&
+           (!lattice || (cells[w->order[k]].i == cells[w->order[k - 1]].i &&
+                         cells[w->order[k]].j == cells[w->order[k - 1]].j + 1)))
         k++;
     return k;
 }

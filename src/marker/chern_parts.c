@@ -34,7 +34,7 @@ static sv_status gather_part(sv_context *context, const column_job *job, const d
 {
     const sv_flake *flake = job->sample->flake;
     const double(*vectors)[2] = flake->model->vectors;
-    double cell = sv_model_cell_area(flake->model), uv[2];
+    double cell = sv_model_vector_area(flake->model), uv[2];
     double du = radius * hypot(vectors[1][0], vectors[1][1]) / cell + 1.5;
     double dv = radius * hypot(vectors[0][0], vectors[0][1]) / cell + 1.5;
     sv_model_reduce(flake->model, middle, uv);
@@ -154,6 +154,9 @@ void sv_chern_end_work(sv_context *context, column_work *w)
 bool sv_near_edge(const sv_flake *flake, int32_t cell, int32_t depth)
 {
     int64_t width = (int64_t)flake->high[1] - flake->low[1] + 1;
+    if (flake->spec.structure != NULL) /* by distances, of two sites to a cell */
+        return sv_structure_depth(flake->spec.structure, flake->sites[cell].at) <
+               depth * sqrt(2.0 * sv_model_cell_area(flake->model));
     for (int32_t i = flake->cells[cell].i - depth; i <= flake->cells[cell].i + depth; i++)
         for (int32_t j = flake->cells[cell].j - depth; j <= flake->cells[cell].j + depth; j++)
             if (i < flake->low[0] || i > flake->high[0] || j < flake->low[1] ||

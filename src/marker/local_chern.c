@@ -197,6 +197,16 @@ static sv_status choose_cells(sv_context *context, const sv_marker_input *input,
     return status;
 }
 
+/* From a mean over cells to one over the area of the window. */
+static void scale_outcome(const sv_marker_input *input, sv_index window_cells, sv_outcome *outcome)
+{
+    const double factor =
+        sv_flake_window_factor(input->sample->flake, input->values[0].real[0], window_cells);
+    outcome->value *= factor;
+    outcome->numerical_error *= factor;
+    outcome->estimator_error *= factor;
+}
+
 sv_status sv_local_chern(sv_context *context, const sv_marker_input *input, sv_outcome *ret_outcome)
 {
     sv_outcome outcome = sv_outcome_start(input->projector);
@@ -204,12 +214,12 @@ sv_status sv_local_chern(sv_context *context, const sv_marker_input *input, sv_o
     const sv_levels *levels = sv_projector_levels(input->projector);
     w.levels_known = levels->gap_resolved;
     bool *inside = NULL;
-    sv_index cells = 0;
+    sv_index cells = 0, window_cells = 0;
     sv_status status = SV_OK;
     if ((status = sv_flake_window(context, w.sample->flake, input->values[0].real[0], &inside,
                                   &cells)) != SV_OK)
         goto out;
-    outcome.window_cells = cells;
+    outcome.window_cells = window_cells = cells;
     if (levels->on_level)
         goto done;
     if (by_vectors(input, &w)) {
@@ -228,6 +238,7 @@ sv_status sv_local_chern(sv_context *context, const sv_marker_input *input, sv_o
     if ((status = sampling_error(context, &w, w.marker, &outcome.estimator_error)) != SV_OK)
         goto out;
 settled:
+    scale_outcome(input, window_cells, &outcome);
     outcome.margin = levels->has_highest && levels->has_lowest
                          ? levels->lowest_empty - levels->highest_occupied
                          : (double)NAN;

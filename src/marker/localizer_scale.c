@@ -48,6 +48,8 @@ double sv_localizer_radius(const sv_flake *flake, const double at[2])
     const int32_t rim = 2;
     double uv[2];
     int32_t low[2], high[2], here[2][2];
+    if (flake->spec.structure != NULL)
+        return fabs(sv_structure_depth(flake->spec.structure, at));
     sv_model_reduce(flake->model, at, uv);
     for (int d = 0; d < 2; d++) {
         low[d] = flake->low[d] - rim;

@@ -22,9 +22,10 @@ static sv_index number_runs(const sv_flake *flake, const bool *inside, int32_t *
             length = 0;
             continue;
         }
-        bool goes_on = length > 0 && length < longest &&
-                       flake->cells[c].i == flake->cells[c - 1].i &&
-                       flake->cells[c].j == flake->cells[c - 1].j + 1;
+        bool goes_on =
+            length > 0 && length < longest &&
+            (flake->spec.structure != NULL || (flake->cells[c].i == flake->cells[c - 1].i &&
+                                               flake->cells[c].j == flake->cells[c - 1].j + 1));
         if (!goes_on) {
             runs++;
             length = 0;
@@ -69,10 +70,22 @@ sv_status sv_window_choose(sv_context *context, const sv_flake *flake, const boo
     return SV_OK;
 }
 
+/* Of a structure: is a site it is joined to outside, or the hull near? */
+static bool on_rim_of_structure(const sv_flake *flake, const bool *inside, sv_index site)
+{
+    const sv_structure *s = flake->spec.structure;
+    for (sv_index k = s->bond_start[site]; k < s->bond_start[site + 1]; k++)
+        if (!inside[s->bond_to[k]])
+            return true;
+    return sv_structure_depth(s, s->at[site]) < sqrt(sv_model_cell_area(flake->model));
+}
+
 /* Has the cell a neighbour outside the window? */
 static bool on_rim(const sv_flake *flake, const bool *inside, sv_index cell)
 {
     const sv_cell *at = &flake->cells[cell];
+    if (flake->spec.structure != NULL)
+        return on_rim_of_structure(flake, inside, cell);
     int64_t width = (int64_t)flake->high[1] - flake->low[1] + 1;
     for (int k = 0; k < 9; k++) {
         int32_t i = at->i + k / 3 - 1, j = at->j + k % 3 - 1, other = -1;

@@ -102,6 +102,8 @@ static sv_status make_bands(sv_context *context, const sv_model *model, bands *b
     int64_t divisor = common_divisor(model->flux[0], model->flux[1]);
     int p = (int)(model->flux[0] / divisor), q = (int)(model->flux[1] / divisor);
     sv_status status;
+    if (model->n_rules > 0)
+        return SV_FAIL(context, SV_UNDEFINED, "a model of hops by distance has no bands");
     if ((int64_t)q * model->n_orbitals > MOST_BANDS)
         return SV_FAIL(context, SV_UNDEFINED, "more than %d bands of the pristine torus",
                        MOST_BANDS);

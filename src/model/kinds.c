@@ -111,6 +111,18 @@ static const sv_key custom_keys[] = {
      .doc = "[p, q]: p/q flux quanta per cell"},
 };
 
+static const sv_key by_distance_keys[] = {
+    {.name = "species",
+     .type = SV_KEY_TREE,
+     .required = true,
+     .doc = "[{name: A, onsite: 0.2}, …]: species of the file, one orbital each; onsite 0"},
+    {.name = "hops",
+     .type = SV_KEY_TREE,
+     .required = true,
+     .doc = "[{between: [A, B], distance: r0, tolerance: d, amplitude: t}, …]: shells; decay: l "
+            "and cutoff: t exp(-(r - r0)/l); phase: angle, by the turn over the common neighbour"},
+};
+
 #define KIND(name_, doc_, keys_)                                                                   \
     {                                                                                              \
         .name = name_, .doc = doc_, .keys = keys_, .n_keys = (int)(sizeof keys_ / sizeof keys_[0]) \
@@ -134,6 +146,8 @@ static const sv_kind kinds[] = {
          "sign(exchange) when |exchange| > |m0|",
          magnetic_film_keys),
     KIND("custom", "own vectors, orbitals, on-site terms, hops and flux", custom_keys),
+    KIND("by_distance", "hops by distance between the sites of a structure (flake: structure)",
+         by_distance_keys),
 };
 
 const sv_kind *sv_model_kinds(int *ret_count)

@@ -212,6 +212,7 @@ void sv_model_free(sv_context *context, sv_model *model)
     sv_give(context, model->orbitals);
     sv_give(context, model->hops);
     sv_give(context, model->hop_slots);
+    sv_give(context, model->rules);
     *model = (sv_model){.flux = {0, 1}};
 }
 
@@ -239,14 +240,19 @@ int sv_model_find_orbital(const sv_model *model, const char *name)
     return -1;
 }
 
-double sv_model_cell_area(const sv_model *model)
+double sv_model_vector_area(const sv_model *model)
 {
     return cross(model->vectors[0], model->vectors[1]);
 }
 
+double sv_model_cell_area(const sv_model *model)
+{
+    return model->site_area > 0.0 ? model->site_area : sv_model_vector_area(model);
+}
+
 void sv_model_reduce(const sv_model *model, const double at[2], double ret_uv[2])
 {
-    double area = sv_model_cell_area(model);
+    double area = sv_model_vector_area(model);
     ret_uv[0] = cross(at, model->vectors[1]) / area;
     ret_uv[1] = cross(model->vectors[0], at) / area;
 }

@@ -87,6 +87,8 @@ static sv_status fill_places(sv_draw_figure *f, places *p)
 static bool is_straight(const sv_flake *flake, const double a[2], const double b[2])
 {
     double longest = 0;
+    if (!flake->periodic[0] && !flake->periodic[1])
+        return true;
     for (int h = 0; h < flake->model->n_hops; h++) {
         const sv_hop *hop = &flake->model->hops[h];
         const double *from = flake->model->orbitals[hop->from].at;
@@ -147,6 +149,7 @@ static void write_bonds(sv_draw_figure *f, const places *p, bond_kind kind, sv_d
 {
     const sv_sample *sample = f->result->sample;
     const sv_sparse *h = &sample->hamiltonian;
+    const double slack = sample->flake->spec.structure != NULL ? 1.3 : 1.05;
     for (sv_index r = 0; r < sample->n; r++) {
         const sv_index a = place_of(sample, r);
         for (sv_index k = h->row_start[r]; k < h->row_start[r + 1]; k++) {
@@ -159,7 +162,7 @@ static void write_bonds(sv_draw_figure *f, const places *p, bond_kind kind, sv_d
             if (around)
                 nearest_image(sample->flake, from, to);
             const double length = hypot(to[0] - from[0], to[1] - from[1]);
-            const bool near = length <= f->shortest * 1.05;
+            const bool near = length <= f->shortest * slack;
             const bond_kind is = around ? BOND_AROUND : near ? BOND_NEAR : BOND_FAR;
             if (is != kind || (!around && a > b) || (around && !near) || is_repeated(sample, r, k))
                 continue;
@@ -175,15 +178,24 @@ static void find_shortest(sv_draw_figure *f, const places *p)
 {
     const sv_sample *sample = f->result->sample;
     const sv_sparse *h = &sample->hamiltonian;
-    double shortest = INFINITY;
-    for (sv_index r = 0; r < sample->n; r++)
+    double shortest = INFINITY, sum = 0.0;
+    sv_index joined = 0;
+    for (sv_index r = 0; r < sample->n; r++) {
+        double own = INFINITY; /* shortest hop of this site */
         for (sv_index k = h->row_start[r]; k < h->row_start[r + 1]; k++) {
             const double *a = p->at[place_of(sample, r)].at;
             const double *b = p->at[place_of(sample, h->column[k])].at;
             const double length = hypot(a[0] - b[0], a[1] - b[1]);
             if (is_hop(h, k) && length > 1e-9)
-                shortest = fmin(shortest, length);
+                own = fmin(own, length);
         }
+        shortest = fmin(shortest, own);
+        sum += isfinite(own) ? own : 0.0;
+        joined += isfinite(own);
+    }
+    /* Hops of a structure differ from site to site. */
+    if (sample->flake->spec.structure != NULL && joined > 0)
+        shortest = sum / (double)joined;
     f->shortest = isfinite(shortest) ? shortest : 0;
 }
 

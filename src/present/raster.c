@@ -115,11 +115,20 @@ static sv_index find_cell(const sv_flake *flake, const int64_t at[2])
     return flake->cell_at[(at[0] - flake->low[0]) * width + (at[1] - flake->low[1])];
 }
 
+/* Of a structure: the nearest site, unless none is as near as sites are apart. */
+static sv_index find_site(const sv_flake *flake, const double point[2])
+{
+    double distance;
+    const sv_index site = sv_flake_nearest(flake, point, -1, &distance);
+    return distance <= sqrt(sv_model_cell_area(flake->model)) ? site : -1;
+}
+
 static void paint_pixel(const painter *p, const double point[2], float *value, uint8_t *inside)
 {
     int64_t at[2] = {0, 0};
-    const int position = find_nearest(p, point, at);
-    const sv_index cell = find_cell(p->flake, at);
+    const bool lattice = p->flake->spec.structure == NULL;
+    const int position = lattice ? find_nearest(p, point, at) : 0;
+    const sv_index cell = lattice ? find_cell(p->flake, at) : find_site(p->flake, point);
     *value = nanf("");
     *inside = 0;
     if (cell < 0)
@@ -137,7 +146,9 @@ static void paint_pixel(const painter *p, const double point[2], float *value, u
 static void choose_grid(const sv_flake *flake, int most, sv_raster *raster)
 {
     const double(*a)[2] = flake->model->vectors;
-    const double margin = 0.6 * (hypot(a[0][0], a[0][1]) + hypot(a[1][0], a[1][1]));
+    const double margin = flake->spec.structure != NULL
+                              ? 1.2 * sqrt(sv_model_cell_area(flake->model))
+                              : 0.6 * (hypot(a[0][0], a[0][1]) + hypot(a[1][0], a[1][1]));
     double low[2] = {INFINITY, INFINITY}, high[2] = {-INFINITY, -INFINITY};
     for (sv_index k = 0; k < flake->n_sites; k++)
         for (int d = 0; d < 2; d++) {
@@ -231,7 +242,9 @@ sv_status sv_places_vacant(sv_context *context, const sv_sample *sample, sv_plac
             continue;
         for (int d = 0; d < 2; d++)
             places.at[places.count][d] =
-                cell->i * a[0][d] + cell->j * a[1][d] + p.at[k % p.n_positions][d];
+                p.flake->spec.structure != NULL
+                    ? p.flake->sites[cell->first_site].at[d]
+                    : cell->i * a[0][d] + cell->j * a[1][d] + p.at[k % p.n_positions][d];
         places.count++;
     }
     drop_painter(context, &p);

@@ -139,8 +139,12 @@ static double window_columns(session *s, const sv_case *problem)
 }
 
 /* Elements a row of the Hamiltonian has in the bulk. */
-static double row_elements(const sv_model *model)
+static double row_elements(const sv_flake *flake)
 {
+    const sv_model *model = flake->model;
+    const sv_structure *s = flake->spec.structure;
+    if (s != NULL)
+        return 1.0 + (double)s->bond_start[s->n] / (double)s->n;
     return 1.0 + 2.0 * model->n_hops / (double)model->n_orbitals;
 }
 
@@ -163,7 +167,7 @@ static sv_status add_chebyshev(session *s, const point *p, cost_model *costs, do
     double steps = part * window_columns(s, problem) * 2.0 * problem->solve.degree;
     /* Drawing the sample and, where asked for, counting and finding levels one by one. */
     double other = 1.5e-6 * sites + (problem->solve.near_states > 0 ? 5e-5 * sites : 0.0);
-    *seconds += per_step * row_elements(model) * steps + other;
+    *seconds += per_step * row_elements(&p->open) * steps + other;
     return SV_OK;
 }
 

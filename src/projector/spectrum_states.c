@@ -33,8 +33,11 @@ static bool is_edge_cell(const sv_flake *flake, const sv_cell *cell)
 {
     const double(*a)[2] = flake->model->vectors;
     /* Lattice vectors no longer than the depth: their indices are bounded by depth·|a|/area. */
-    double area = sv_model_cell_area(flake->model);
+    double area = sv_model_vector_area(flake->model);
     int32_t reach[2];
+    if (flake->spec.structure != NULL)
+        return sv_structure_depth(flake->spec.structure, flake->sites[cell->first_site].at) <=
+               EDGE_DEPTH;
     for (int k = 0; k < 2; k++)
         reach[k] = (int32_t)floor(EDGE_DEPTH * hypot(a[1 - k][0], a[1 - k][1]) / area + 1e-9);
     for (int32_t i = -reach[0]; i <= reach[0]; i++)

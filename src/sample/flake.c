@@ -28,8 +28,12 @@ sv_status sv_flake_count(sv_context *context, const sv_model *model, const sv_fl
                          sv_index *ret_sites)
 {
     outline o;
-    sv_status status = sv_outline_make(context, model, spec, &o);
-    if (status != SV_OK)
+    sv_status status = sv_structure_check(context, model, spec);
+    if (status == SV_OK && spec->structure != NULL) {
+        *ret_sites = spec->structure->n;
+        return SV_OK;
+    }
+    if (status != SV_OK || (status = sv_outline_make(context, model, spec, &o)) != SV_OK)
         return status;
     double sites = sv_outline_estimate(&o);
     if (sites > (double)MOST_SITES)
@@ -139,6 +143,8 @@ sv_status sv_flake_make(sv_context *context, const sv_model *model, const sv_fla
     char reason[160];
     sv_index estimate;
     sv_status status = sv_flake_count(context, model, spec, &estimate);
+    if (status == SV_OK && spec->structure != NULL)
+        return sv_structure_flake(context, model, spec, ret_flake);
     if (status != SV_OK || (status = sv_outline_make(context, model, spec, &o)) != SV_OK)
         return status;
     memcpy(flake.periodic, spec->periodic, sizeof flake.periodic);
@@ -167,6 +173,10 @@ void sv_flake_free(sv_context *context, sv_flake *flake)
 void sv_flake_cell_centre(const sv_flake *flake, sv_index cell, double ret_at[2])
 {
     double corner[2], offset[2];
+    if (flake->spec.structure != NULL) {
+        memcpy(ret_at, flake->sites[cell].at, 2 * sizeof *ret_at);
+        return;
+    }
     sv_cell_offset(flake->model, offset);
     sv_lattice_point(flake->model, flake->cells[cell].i, flake->cells[cell].j, corner);
     ret_at[0] = corner[0] + offset[0];
@@ -187,6 +197,8 @@ sv_index sv_flake_nearest(const sv_flake *flake, const double at[2], int orbital
 {
     double uv[2], best = INFINITY;
     sv_index nearest = -1;
+    if (flake->spec.structure != NULL)
+        return sv_structure_nearest(flake, at, orbital, ret_distance);
     sv_model_reduce(flake->model, at, uv);
     if (!(fabs(uv[0]) < 1e9 && fabs(uv[1]) < 1e9)) {
         *ret_distance = best;

@@ -137,6 +137,18 @@ static int add_adatoms(const builder *b, sv_index r, entry *row, int n)
     return n;
 }
 
+/* Hops of a structure are listed with it. */
+static int add_bonds(const builder *b, sv_index site, entry *row, int n)
+{
+    const sv_structure *s = b->flake->spec.structure;
+    for (sv_index k = s->bond_start[site]; k < s->bond_start[site + 1]; k++) {
+        int32_t column = b->row_of_site[s->bond_to[k]];
+        if (column >= 0)
+            n = add_entry(row, n, column, s->bond[k]);
+    }
+    return n;
+}
+
 /* Gathers one row; `row` has room for 2·n_hops + 1 entries and those of the local operators. */
 static int gather_row(const builder *b, sv_index r, entry *row)
 {
@@ -149,6 +161,8 @@ static int gather_row(const builder *b, sv_index r, entry *row)
                       model->orbitals[site->orbital].onsite + b->sample->potential[r]);
     n = add_local(b, b->sample->pristine[r], row, n);
     n = add_adatoms(b, r, row, n);
+    if (b->flake->spec.structure != NULL)
+        return add_bonds(b, b->sample->pristine[r], row, n);
     for (int h = 0; h < model->n_hops; h++) {
         const sv_hop *hop = &model->hops[h];
         landing place;
@@ -194,6 +208,22 @@ static sv_index room_of_fields(const sv_drawing *d)
     return room;
 }
 
+/* Hops of a site of a structure. */
+static sv_index bonds_of(const sv_flake *flake, sv_index site)
+{
+    const sv_structure *s = flake->spec.structure;
+    return s->bond_start[site + 1] - s->bond_start[site];
+}
+
+/* Hops of the site that has most of them; 0 for lattices. */
+static sv_index most_bonds(const sv_flake *flake)
+{
+    sv_index most = 0;
+    for (sv_index s = 0; flake->spec.structure != NULL && s < flake->n_sites; s++)
+        most = bonds_of(flake, s) > most ? bonds_of(flake, s) : most;
+    return most;
+}
+
 /* Most entries a row of this orbital can have; the sum over rows sizes the matrix. */
 static sv_index room_needed(const sv_sample *sample, const sv_drawing *d)
 {
@@ -206,6 +236,8 @@ static sv_index room_needed(const sv_sample *sample, const sv_drawing *d)
             continue;
         }
         room++;
+        if (sample->flake->spec.structure != NULL)
+            room += bonds_of(sample->flake, sample->pristine[r]);
         for (int h = 0; h < model->n_hops; h++)
             room += (model->hops[h].from == orbital) + (model->hops[h].to == orbital);
     }
@@ -226,7 +258,8 @@ sv_status sv_sample_build_hamiltonian(sv_context *context, sv_sample *sample, co
     entry *row = NULL;
     sv_status status;
     if ((status = sv_take(context,
-                          2 * (sv_index)model->n_hops + 2 + room_of_fields(d) + SV_DISORDER_MOST,
+                          2 * (sv_index)model->n_hops + most_bonds(sample->flake) + 2 +
+                              room_of_fields(d) + SV_DISORDER_MOST,
                           sizeof *row, &row)) != SV_OK ||
         (status = sv_take(context, model->n_orbitals, sizeof *b.orbital_uv, &b.orbital_uv)) !=
             SV_OK ||

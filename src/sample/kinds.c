@@ -117,6 +117,33 @@ static const sv_key polygon_keys[] = {
     ORIENTATION,
 };
 
+static const sv_key structure_keys[] = {
+    {.name = "file",
+     .type = SV_KEY_FILE,
+     .required = true,
+     .doc = "XYZ, plain or extended: number of sites, a comment, species x y z a line"},
+    {.name = "unit",
+     .type = SV_KEY_CHOICE,
+     .choices = "angstrom nm lattice",
+     .fallback = "angstrom",
+     .doc = "of the positions in the file; lattice: lattice constants"},
+    {.name = "least_distance",
+     .type = SV_KEY_AUTO_OR_REAL,
+     .dimension = SV_DIM_LENGTH,
+     .low = 0,
+     .low_open = true,
+     .high = 1e6,
+     .fallback = "auto",
+     .doc = "sites nearer than that are refused; auto: half the shortest distance of a hop"},
+    {.name = "thickness",
+     .type = SV_KEY_REAL,
+     .dimension = SV_DIM_LENGTH,
+     .low = 0,
+     .high = 1e6,
+     .fallback = "0",
+     .doc = "largest difference in z that may be projected onto the plane"},
+};
+
 static const sv_kind shapes[] = {
     [SV_SHAPE_RECTANGLE] = {"rectangle", "sides along x and y", rectangle_keys,
                             COUNT(rectangle_keys)},
@@ -133,6 +160,8 @@ static const sv_kind shapes[] = {
                          COUNT(ribbon_keys)},
     [SV_SHAPE_POLYGON] = {"polygon", "any outline, with holes, open only", polygon_keys,
                           COUNT(polygon_keys)},
+    [SV_SHAPE_STRUCTURE] = {"structure", "sites from a file, for the model by_distance, open only",
+                            structure_keys, COUNT(structure_keys)},
 };
 
 const sv_kind *sv_shape_kinds(int *ret_count)

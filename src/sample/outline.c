@@ -159,6 +159,8 @@ sv_status sv_outline_make(sv_context *context, const sv_model *model, const sv_f
     case SV_SHAPE_POLYGON:
         status = range_of_polygon(context, &o);
         break;
+    case SV_SHAPE_STRUCTURE:
+        return SV_FAIL(context, SV_INTERNAL, "a structure has no outline by cells");
     }
     if (status == SV_OK)
         status = check_edge(context, &o);

@@ -47,7 +47,7 @@ sv_status sv_points_draw(sv_context *context, const sv_flake *flake, const sv_st
                          double density, double reach, sv_point **ret_points, sv_index *ret_count)
 {
     const sv_model *model = flake->model;
-    double mean = density * sv_model_cell_area(model), low[2], high[2];
+    double mean = density * sv_model_vector_area(model), low[2], high[2];
     sv_point *points = NULL;
     sv_index n = 0, capacity = 0;
     sv_status status = SV_OK;

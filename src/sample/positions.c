@@ -50,6 +50,9 @@ bool sv_is_candidate(const sv_drawing *d, const sv_disorder *disorder, sv_index 
 {
     return !d->gone[site] &&
            sv_position_matches(d->flake->model, sv_position_of(d->flake, site), disorder->on) &&
+           /* Species of a structure share the one position of a cell. */
+           (d->flake->spec.structure == NULL || disorder->on < 0 ||
+            d->flake->sites[site].orbital == disorder->on) &&
            sv_is_first_at_position(d->flake, site);
 }
 
@@ -98,7 +101,7 @@ sv_patch sv_patch_around(const sv_model *model, const double low[2], const doubl
                          double reach)
 {
     double first[2], last[2], uv[2], from[2] = {INFINITY, INFINITY}, to[2] = {-INFINITY, -INFINITY};
-    const double area = sv_model_cell_area(model);
+    const double area = sv_model_vector_area(model);
     sv_patch patch;
     position_range(model, first, last);
     for (int corner = 0; corner < 4; corner++) {

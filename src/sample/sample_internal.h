@@ -74,6 +74,15 @@ bool sv_flake_torus(const sv_model *model, const sv_flake_spec *spec, const bool
 /* Cell number at (i, j) without wrapping, or −1. */
 int32_t sv_flake_look_up(const sv_flake *flake, int64_t i, int64_t j);
 
+/* --------------------------------------------------- structure_flake.c */
+
+/* Do shape and model belong together? */
+sv_status sv_structure_check(sv_context *context, const sv_model *model, const sv_flake_spec *spec);
+sv_status sv_structure_flake(sv_context *context, const sv_model *model, const sv_flake_spec *spec,
+                             sv_flake *ret_flake);
+sv_index sv_structure_nearest(const sv_flake *flake, const double at[2], int orbital,
+                              double *ret_distance);
+
 /* ------------------------------------------------------------- positions.c */
 
 /* A straight cut: hops that cross it are gone. */

@@ -89,6 +89,7 @@ static bool point_in_shape(const outline *o, const double d[2])
         return sv_polygon_holds(&spec->polygon, d);
     case SV_SHAPE_PARALLELOGRAM:
     case SV_SHAPE_RIBBON:
+    case SV_SHAPE_STRUCTURE:
         break;
     }
     return false;

@@ -60,6 +60,7 @@ static bool in_scaled_shape(const sv_flake *flake, const double d[2], double sha
 {
     const sv_flake_spec *spec = &flake->spec;
     sv_regular regular;
+    sv_polygon hull;
     switch (spec->shape) {
     case SV_SHAPE_DISC:
         return hypot(d[0], d[1]) <= share * spec->radius + 1e-9;
@@ -71,6 +72,10 @@ static bool in_scaled_shape(const sv_flake *flake, const double d[2], double sha
         return sv_regular_holds(&regular, d, share);
     case SV_SHAPE_POLYGON:
         return in_polygon(flake, d, share);
+    case SV_SHAPE_STRUCTURE:
+        hull = (sv_polygon){spec->structure->corners, spec->structure->loop_start, 1};
+        return sv_polygon_holds(&hull, (const double[2]){flake->centre[0] + d[0] / share,
+                                                         flake->centre[1] + d[1] / share});
     default:
         return fabs(d[0]) <= 0.5 * share * spec->size[0] + 1e-9 &&
                fabs(d[1]) <= 0.5 * share * spec->size[1] + 1e-9;
@@ -107,6 +112,14 @@ sv_status sv_flake_window(sv_context *context, const sv_flake *flake, double sha
     *ret_inside = inside;
     *ret_cells = cells;
     return SV_OK;
+}
+
+double sv_flake_window_factor(const sv_flake *flake, double share, sv_index cells)
+{
+    const sv_structure *s = flake->spec.structure;
+    if (s == NULL)
+        return 1.0;
+    return (double)cells * sv_model_cell_area(flake->model) / (share * share * s->area);
 }
 
 bool sv_flake_hole(const sv_flake *flake, double ret_at[2])

@@ -58,8 +58,8 @@ static bool begin(sv_reader *reader, const sv_section *section, sv_model *model)
 }
 
 /* One entry of `orbitals` or `hops`, read by its key table. */
-static bool read_item(sv_reader *reader, const sv_block *block, const sv_node *node,
-                      const char *list, sv_index number, sv_section *ret_section)
+bool sv_model_item_read(sv_reader *reader, const sv_block *block, const sv_node *node,
+                        const char *list, sv_index number, sv_section *ret_section)
 {
     const char *path = sv_reader_text(reader, "model.%s.%lld", list, (long long)number);
     if (path == NULL)
@@ -76,7 +76,7 @@ static bool add_orbital(sv_reader *reader, const sv_node *item, sv_index number,
 {
     sv_section section;
     double energy = 0.0;
-    if (!read_item(reader, &orbital_block, item, "orbitals", number, &section))
+    if (!sv_model_item_read(reader, &orbital_block, item, "orbitals", number, &section))
         return false;
     const char *name = section.values[0].text;
     const double *at = section.values[1].real;
@@ -92,8 +92,7 @@ static bool add_orbital(sv_reader *reader, const sv_node *item, sv_index number,
 }
 
 /* Row of an orbital; a name that is not there is reported. */
-static int find_orbital(sv_reader *reader, const sv_model *model, const char *name,
-                        const sv_node *node)
+int sv_orbital_read(sv_reader *reader, const sv_model *model, const char *name, const sv_node *node)
 {
     char hint[400];
     int row = sv_model_find_orbital(model, name);
@@ -125,13 +124,14 @@ static bool add_orbitals(sv_reader *reader, const sv_section *section, sv_model 
     if (!good)
         return false;
     for (sv_index i = 0; onsite != NULL && i < onsite->count; i++)
-        good = find_orbital(reader, model, onsite->items[2 * i]->text, onsite->items[2 * i]) >= 0 &&
-               good;
+        good =
+            sv_orbital_read(reader, model, onsite->items[2 * i]->text, onsite->items[2 * i]) >= 0 &&
+            good;
     return good;
 }
 
-static bool read_amplitude(sv_reader *reader, const sv_node *node, const char *path,
-                           sv_complex *ret_amplitude)
+bool sv_amplitude_read(sv_reader *reader, const sv_node *node, const char *path,
+                       sv_complex *ret_amplitude)
 {
     double parts[2] = {0.0, 0.0};
     bool is_list = node->kind == SV_NODE_LIST;
@@ -148,13 +148,14 @@ static bool add_hop(sv_reader *reader, const sv_node *item, sv_index number, sv_
 {
     sv_section section;
     sv_complex amplitude = 0.0;
-    if (!read_item(reader, &hop_block, item, "hops", number, &section))
+    if (!sv_model_item_read(reader, &hop_block, item, "hops", number, &section))
         return false;
     const sv_value *v = section.values;
-    int from = find_orbital(reader, model, v[0].text, sv_section_node(&section, "from"));
-    int to = find_orbital(reader, model, v[1].text, sv_section_node(&section, "to"));
+    int from = sv_orbital_read(reader, model, v[0].text, sv_section_node(&section, "from"));
+    int to = sv_orbital_read(reader, model, v[1].text, sv_section_node(&section, "to"));
     if (from < 0 || to < 0 ||
-        !read_amplitude(reader, sv_section_node(&section, "amplitude"), section.path, &amplitude))
+        !sv_amplitude_read(reader, sv_section_node(&section, "amplitude"), section.path,
+                           &amplitude))
         return false;
     sv_status status = sv_model_add_hop(reader->context, model, from, to, (int)v[2].integer[0],
                                         (int)v[2].integer[1], amplitude);

@@ -148,7 +148,8 @@ static void add_axis(writer *w, const sv_sweep_axis *axis, int number)
     end_line(w);
 }
 
-/* The model as built says what the trees of a custom one say; a table of hops counts by its digest. */
+/* The model as built says what the trees of a custom one say; a table of hops counts by its digest.
+ */
 static void add_custom(writer *w, const sv_model *model)
 {
     for (int i = 0; i < 2; i++) {
@@ -174,6 +175,25 @@ static void add_custom(writer *w, const sv_model *model)
         sv_text_add(&w->line, "model.hops.%05d = %d %d [%d, %d] ", i, hop->from, hop->to,
                     hop->shift[0], hop->shift[1]);
         add_pair(w, parts);
+        end_line(w);
+    }
+}
+
+static void add_rules(writer *w, const sv_model *model)
+{
+    for (int i = 0; i < model->n_orbitals; i++) {
+        sv_text_add(&w->line, "model.species.%04d = ", i);
+        sv_emit_scalar(&w->line, model->orbitals[i].name);
+        sv_text_add(&w->line, " ");
+        add_real(w, model->orbitals[i].onsite);
+        end_line(w);
+    }
+    for (int i = 0; i < model->n_rules; i++) {
+        const sv_distance_rule *r = &model->rules[i];
+        const double numbers[] = {r->distance,         r->tolerance,        r->decay, r->cutoff,
+                                  creal(r->amplitude), cimag(r->amplitude), r->phase};
+        sv_text_add(&w->line, "model.hops.%05d = %d %d ", i, r->from, r->to);
+        add_list(w, numbers, (sv_index)(sizeof numbers / sizeof numbers[0]));
         end_line(w);
     }
 }
@@ -218,6 +238,8 @@ sv_status sv_identity_write(sv_reader *reader, const sv_setup *setup, char **ret
     end_line(&w);
     if (strcmp(setup->model.name, "custom") == 0)
         add_custom(&w, &setup->model);
+    if (setup->model.n_rules > 0)
+        add_rules(&w, &setup->model);
     for (int i = 0; i < setup->n_axes; i++)
         add_axis(&w, &setup->axes[i], i);
     sv_status status = join(&w, ret_text);

@@ -11,6 +11,8 @@ bool sv_setup_model(sv_reader *reader, sv_setup *setup)
     int n_common = section->block->n_keys;
     if (strcmp(section->kind->name, "custom") == 0)
         return sv_custom_read(reader, section, &setup->model);
+    if (strcmp(section->kind->name, "by_distance") == 0)
+        return sv_by_distance_read(reader, section, &setup->model);
     sv_status status =
         sv_model_make(reader->context, section->kind, section->values + n_common, &setup->model);
     /* What the sheet itself says is shown, not the text of its preset. */
@@ -163,7 +165,7 @@ bool sv_setup_build(sv_reader *reader, sv_setup *setup)
     bool has_model = sv_setup_model(reader, setup);
     use_scales(reader, setup);
     good = sv_setup_flake(reader, setup) && good && has_model;
-    if (has_model)
+    if (has_model && (setup->model.n_rules == 0 || setup->model.site_area > 0.0))
         good = sv_setup_disorder(reader, setup) && good;
     good = sv_setup_ensemble(reader, setup) && good;
     if (!good || !sv_reader_good(reader))

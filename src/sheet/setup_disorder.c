@@ -56,6 +56,17 @@ static bool find_source(sv_reader *reader, const sv_section *section, const sv_s
                      section->path, disorder->source);
 }
 
+static bool suits_structure(sv_reader *reader, const sv_section *section, const sv_model *model,
+                            const sv_disorder *disorder)
+{
+    const char *reason = model->n_rules > 0 ? sv_structure_refusal(disorder) : NULL;
+    if (reason == NULL && model->n_rules > 0 && disorder->on >= 0 && disorder->has_share &&
+        !sv_section_value(section, "share")->written)
+        reason = "a density on one species needs its share of the sites; give share or count";
+    return reason == NULL || sv_report(reader, section->anchor, NULL,
+                                       "%s does not suit a structure: %s", section->path, reason);
+}
+
 static bool use_section(sv_reader *reader, const sv_section *section, const sv_model *model,
                         sv_disorder *disorder)
 {
@@ -64,7 +75,8 @@ static bool use_section(sv_reader *reader, const sv_section *section, const sv_m
     return find_on(reader, section, model, disorder) &&
            uses[section->kind_row](reader, section, model, disorder) &&
            find_source(reader, section, reader->setup, disorder) &&
-           sv_use_file(reader, section, model, disorder);
+           sv_use_file(reader, section, model, disorder) &&
+           suits_structure(reader, section, model, disorder);
 }
 
 bool sv_setup_disorder(sv_reader *reader, sv_setup *setup)

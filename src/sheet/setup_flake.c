@@ -132,5 +132,7 @@ bool sv_setup_flake(sv_reader *reader, sv_setup *setup)
     }
     sv_model_turn(&setup->model, sv_section_value(section, "orientation")->real[0]);
     read_boundary(reader, section, flake);
+    if (flake->shape == SV_SHAPE_STRUCTURE)
+        return sv_setup_structure(reader, section, setup);
     return flake->shape != SV_SHAPE_POLYGON || read_polygon(reader, section, &flake->polygon);
 }

@@ -255,6 +255,9 @@ void sv_setup_free(sv_context *context, sv_setup *setup)
         sv_disorder_free(context, &setup->disorder[i]);
     sv_give(context, setup->disorder);
     sv_model_free(context, &setup->model);
+    if (setup->structure != NULL)
+        sv_structure_free(context, setup->structure);
+    sv_give(context, setup->structure);
     sv_give(context, setup->resolved);
     sv_give(context, setup->identity);
     sv_arena_free(context, &arena);

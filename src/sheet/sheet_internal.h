@@ -162,7 +162,8 @@ const sv_block *sv_schema_find(const char *name);
 const sv_block *sv_schema_child(const sv_block *parent, const sv_block *previous);
 /* Keys that give the scales themselves: a unit is required and kept. */
 bool sv_schema_is_scale(const sv_key *key);
-/* The spacing of a model on a grid of its own: its lattice constant, in nm with or without a unit. */
+/* The spacing of a model on a grid of its own: its lattice constant, in nm with or without a unit.
+ */
 bool sv_schema_is_grid(const sv_key *key);
 
 /* ------------------------------------------------------------ reader.c */
@@ -411,6 +412,17 @@ bool sv_check_measured(sv_reader *reader, const sv_flake *flake, const sv_disord
 bool sv_setup_ensemble(sv_reader *reader, sv_setup *setup);
 /* Builds the flake, when it is not too large, to see that it exists and holds the defects. */
 bool sv_setup_geometry(sv_reader *reader, const sv_setup *setup);
+/* One entry of a list of the model, read by its key table. */
+bool sv_model_item_read(sv_reader *reader, const sv_block *block, const sv_node *node,
+                        const char *list, sv_index number, sv_section *ret_section);
+/* Row of an orbital; a name that is not there is reported, and −1. */
+int sv_orbital_read(sv_reader *reader, const sv_model *model, const char *name,
+                    const sv_node *node);
+/* [re, im] or a number. */
+bool sv_amplitude_read(sv_reader *reader, const sv_node *node, const char *path,
+                       sv_complex *ret_amplitude);
+bool sv_by_distance_read(sv_reader *reader, const sv_section *section, sv_model *model);
+bool sv_setup_structure(sv_reader *reader, const sv_section *section, sv_setup *setup);
 bool sv_custom_read(sv_reader *reader, const sv_section *section, sv_model *model);
 
 /* ---------------------------------------------- resolved_text.c, identity.c */
