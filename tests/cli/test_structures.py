@@ -42,6 +42,7 @@ model:
   hops:
     - %s
 flake: {shape: structure, file: film.xyz%s}
+markers: {local_chern: {window: 1}}
 ensemble: {realisations: 1, seed: 1}
 %s"""
 GOOD = "{between: [A, B], distance: 1, tolerance: 0.1, amplitude: [0.5, 0.25]}"

@@ -35,7 +35,7 @@ SV_TEST(kinds_have_keys_and_docs)
 {
     int count;
     const sv_kind *shapes = sv_shape_kinds(&count);
-    CHECK_INT(count, SV_SHAPE_POLYGON + 1);
+    CHECK_INT(count, SV_SHAPE_STRUCTURE + 1);
     CHECK_TEXT(shapes[SV_SHAPE_HEXAGON].name, "hexagon");
     for (int k = 0; k < count; k++)
         CHECK(shapes[k].n_keys > 0 && strlen(shapes[k].doc) > 0);
