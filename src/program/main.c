@@ -32,7 +32,7 @@ int main(int argc, char **argv)
     setlocale(LC_CTYPE, "");
     /* Realisations take and give back the same large blocks: keep them instead of handing them to
      * the system, which would have to clear their pages each time. */
-    mallopt(M_MMAP_THRESHOLD, 1 << 30);
+    mallopt(M_MMAP_THRESHOLD, 1 << 25); /* the most that is accepted */
     mallopt(M_TRIM_THRESHOLD, 1 << 30);
     signal(SIGXFSZ, SIG_IGN);
     int code = options_parse(argc, argv, &o);
