@@ -115,8 +115,8 @@ SV_API void sv_panel_polynomial(const sv_packed *a, const double *coefficients, 
                                 sv_panel_kernel kernel, const double *x, double *work, double *y);
 /**
  * The same in single precision, for a panel of SV_PANEL_COLUMNS_SINGLE columns and a matrix with
- * sv_packed_add_single(): about twice as many columns per second. Columns of a projector differ from
- * those in double by a few 1e-7 an element (test projector.chebyshev).
+ * sv_packed_add_single(): about twice as many columns per second. Columns of a projector differ
+ * from those in double by a few 1e-7 an element (test projector.chebyshev).
  */
 SV_API void sv_panel_polynomial_single(const sv_packed *a, const double *coefficients, int degree,
                                        sv_panel_kernel kernel, const float *x, float *work,
