@@ -99,22 +99,65 @@ typedef struct sv_ensemble_options {
     double time_limit; /**< seconds, 0: none */
 } sv_ensemble_options;
 
-/** Records of all points; table[point·realisations + k] is valid where `done` is set. */
-typedef struct sv_ensemble {
-    int32_t n_points;
-    int64_t realisations;
-    sv_record *records;
-    bool *done;
-} sv_ensemble;
+/** What an ensemble keeps of a realisation as a whole. */
+typedef struct sv_kept_head {
+    int64_t sites, vacancies;
+    double seconds;
+    sv_status status;
+    int32_t n_outcomes;
+} sv_kept_head;
 
-/** Room for all records, none done. @return SV_INVALID_INPUT for no points or realisations */
-SV_API SV_MUST_USE sv_status sv_ensemble_init(sv_context *context, int32_t n_points,
-                                              int64_t realisations, sv_ensemble *ret_ensemble);
-/** Gives the records back; safe on a zeroed ensemble and twice in a row. */
-SV_API void sv_ensemble_free(sv_context *context, sv_ensemble *ensemble);
+/** What it keeps of one marker: sv_outcome, its two texts as numbers of sv_ensemble_text(). */
+typedef struct sv_kept_outcome {
+    double value;
+    int64_t index;
+    double numerical_error, estimator_error, margin, weakest, sum_over_sites, kappa;
+    double highest_occupied, lowest_empty;
+    int64_t window_cells, electrons;
+    int32_t reason, engine;
+    sv_verdict verdict;
+} sv_kept_outcome;
 
 /**
- * Computes what is missing. Marks records as done before the call to skip them.
+ * Realisations of all points, packed: 33 + 112·n_markers bytes each and every text once, taken in
+ * blocks as they come in (10⁶ realisations of three markers: 370 MB).
+ */
+typedef struct sv_ensemble {
+    int32_t n_points;
+    int32_t n_markers; /**< outcomes a realisation may have */
+    int64_t realisations; /**< per point */
+    bool *done; /**< [point·realisations + realisation]: is there. Set by sv_ensemble_put() */
+    struct sv_shelf *shelf; /**< the rest; private */
+} sv_ensemble;
+
+/** Room for all realisations, none done. @return SV_INVALID_INPUT for no points or realisations */
+SV_API SV_MUST_USE sv_status sv_ensemble_init(sv_context *context, int32_t n_points,
+                                              int64_t realisations, int32_t n_markers,
+                                              sv_ensemble *ret_ensemble);
+/** Gives everything back; safe on a zeroed ensemble and twice in a row. */
+SV_API void sv_ensemble_free(sv_context *context, sv_ensemble *ensemble);
+/**
+ * Keeps a realisation, replacing an earlier one of its number. Not from two threads at once.
+ * @return SV_INVALID_INPUT when point, realisation or the number of outcomes is out of range
+ */
+SV_API SV_MUST_USE sv_status sv_ensemble_put(sv_context *context, sv_ensemble *ensemble,
+                                             const sv_record *record);
+/** The whole record of a realisation; false when it is not there. `unresolved_within` and
+ * `nearest_level` of its outcomes are not kept (NaN). */
+SV_API bool sv_ensemble_get(const sv_ensemble *ensemble, int32_t point, int64_t realisation,
+                            sv_record *ret_record);
+/** A realisation, or NULL when it is not there. Cheap; the pointer stays good until
+ * sv_ensemble_free(). */
+SV_API const sv_kept_head *sv_ensemble_head(const sv_ensemble *ensemble, int32_t point,
+                                            int64_t realisation);
+/** One marker of a realisation, or NULL when the realisation or the outcome is not there. Cheap. */
+SV_API const sv_kept_outcome *sv_ensemble_outcome(const sv_ensemble *ensemble, int32_t point,
+                                                  int64_t realisation, int marker);
+/** Text of a number in sv_kept_outcome; "" for 0. */
+SV_API const char *sv_ensemble_text(const sv_ensemble *ensemble, int32_t number);
+
+/**
+ * Computes what is missing; what is there (sv_ensemble_put(), sv_run_load()) is skipped.
  * The result does not depend on the number of threads or the order of completion.
  * @return SV_INTERRUPTED on cancel or time limit (records so far are kept), SV_STORAGE when the
  *         sink refuses, or the status of a failed draw

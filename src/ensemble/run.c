@@ -30,33 +30,6 @@ static double seconds_now(void)
     return (double)now.tv_sec + 1e-9 * (double)now.tv_nsec;
 }
 
-sv_status sv_ensemble_init(sv_context *context, int32_t n_points, int64_t realisations,
-                           sv_ensemble *ret_ensemble)
-{
-    sv_ensemble ensemble = {.n_points = n_points, .realisations = realisations};
-    sv_index count;
-    if (n_points < 1 || realisations < 1 ||
-        __builtin_mul_overflow((sv_index)n_points, realisations, &count))
-        return SV_FAIL(context, SV_INVALID_INPUT, "%d points of %lld realisations", n_points,
-                       (long long)realisations);
-    sv_status status = sv_take(context, count, sizeof *ensemble.records, &ensemble.records);
-    if (status == SV_OK)
-        status = sv_take(context, count, sizeof *ensemble.done, &ensemble.done);
-    if (status != SV_OK) {
-        sv_ensemble_free(context, &ensemble);
-        return status;
-    }
-    *ret_ensemble = ensemble;
-    return SV_OK;
-}
-
-void sv_ensemble_free(sv_context *context, sv_ensemble *ensemble)
-{
-    sv_give(context, ensemble->records);
-    sv_give(context, ensemble->done);
-    *ensemble = (sv_ensemble){0};
-}
-
 /* Hands out the next missing realisation of the first point that still needs one. */
 static bool next_work(crew *c, int32_t *ret_point, int64_t *ret_realisation)
 {
@@ -103,17 +76,15 @@ static void fail_crew(crew *c, const sv_context *worker, sv_status status)
 
 static void store(crew *c, sv_context *worker, const sv_record *record)
 {
-    sv_ensemble *e = c->ensemble;
-    sv_index slot = record->point * e->realisations + record->realisation;
-    if (c->options->sink.put != NULL) {
-        sv_status status = c->options->sink.put(worker, record, c->options->sink.user);
-        if (status != SV_OK) {
-            fail_crew(c, worker, status);
-            return;
-        }
+    sv_status status = SV_OK;
+    if (c->options->sink.put != NULL)
+        status = c->options->sink.put(worker, record, c->options->sink.user);
+    if (status == SV_OK)
+        status = sv_ensemble_put(worker, c->ensemble, record);
+    if (status != SV_OK) {
+        fail_crew(c, worker, status);
+        return;
     }
-    e->records[slot] = *record;
-    e->done[slot] = true;
     c->done++;
     settle(c, record->point);
     report(c, false);

@@ -13,6 +13,12 @@ static void take_in(stop_state *state, double value)
     state->squares += delta * (value - state->mean);
 }
 
+static void judge(stop_state *state, const sv_kept_head *head, const sv_kept_outcome *outcome)
+{
+    if (head != NULL && head->status == SV_OK && outcome != NULL && outcome->verdict == SV_RESOLVED)
+        take_in(state, outcome->value);
+}
+
 static bool rule_holds(const stop_state *state, const sv_stop_rule *rule)
 {
     if (!rule->active || state->counted < rule->at_least || state->resolved < 2)
@@ -24,13 +30,12 @@ static bool rule_holds(const stop_state *state, const sv_stop_rule *rule)
 void sv_stop_advance(stop_state *state, const sv_ensemble *ensemble, int32_t point,
                      const sv_stop_rule *rule)
 {
-    const sv_record *records = &ensemble->records[point * ensemble->realisations];
     const bool *done = &ensemble->done[point * ensemble->realisations];
     while (!state->settled && state->counted < ensemble->realisations && done[state->counted]) {
-        const sv_record *record = &records[state->counted++];
-        if (rule->active && record->status == SV_OK && rule->marker < record->n_outcomes &&
-            record->outcomes[rule->marker].verdict == SV_RESOLVED)
-            take_in(state, record->outcomes[rule->marker].value);
+        const int64_t k = state->counted++;
+        if (rule->active)
+            judge(state, sv_ensemble_head(ensemble, point, k),
+                  sv_ensemble_outcome(ensemble, point, k, rule->marker));
         state->settled = state->counted == ensemble->realisations || rule_holds(state, rule);
     }
 }

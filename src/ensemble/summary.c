@@ -27,21 +27,21 @@ static void blank(sv_summary *s)
 }
 
 /* Counts verdicts, keeps resolved values in order, gathers errors and margins. */
-static void gather(const sv_record *records, int marker, int64_t counted, double *values,
-                   sv_summary *s)
+static void gather(const sv_ensemble *ensemble, int32_t point, int marker, int64_t counted,
+                   double *values, sv_summary *s)
 {
     double estimator = 0.0, margins = 0.0;
     int64_t n_margins = 0;
     for (int64_t k = 0; k < counted; k++) {
-        if (marker >= records[k].n_outcomes) { /* a record from elsewhere: never an index of 0 */
+        const sv_kept_outcome *o = sv_ensemble_outcome(ensemble, point, k, marker);
+        if (o == NULL) { /* a record from elsewhere: never an index of 0 */
             if (s->unresolved++ == 0)
                 snprintf(s->unresolved_reason, sizeof s->unresolved_reason,
                          "the record of realisation %lld has no such marker", (long long)k);
             continue;
         }
-        const sv_outcome *o = &records[k].outcomes[marker];
         if (o->verdict == SV_ABSENT) {
-            snprintf(s->reason, sizeof s->reason, "%s", o->reason);
+            snprintf(s->reason, sizeof s->reason, "%s", sv_ensemble_text(ensemble, o->reason));
             continue;
         }
         if (isnan(s->kappa))
@@ -53,11 +53,12 @@ static void gather(const sv_record *records, int marker, int64_t counted, double
         if (o->verdict != SV_RESOLVED) {
             s->failed += o->verdict == SV_FAILED;
             if (s->unresolved++ == 0)
-                snprintf(s->unresolved_reason, sizeof s->unresolved_reason, "%s", o->reason);
+                snprintf(s->unresolved_reason, sizeof s->unresolved_reason, "%s",
+                         sv_ensemble_text(ensemble, o->reason));
             continue;
         }
         if (s->engine[0] == '\0')
-            snprintf(s->engine, sizeof s->engine, "%s", o->engine);
+            snprintf(s->engine, sizeof s->engine, "%s", sv_ensemble_text(ensemble, o->engine));
         values[s->resolved++] = o->value;
         if (isfinite(o->numerical_error))
             s->numerical_error =
@@ -157,14 +158,13 @@ sv_status sv_summarise(sv_context *context, const sv_ensemble *ensemble, const s
 {
     int count;
     const sv_marker *row = &sv_marker_table(&count)[point->markers[marker].marker];
-    const sv_record *records = &ensemble->records[point_number * ensemble->realisations];
     sv_summary s = {.marker = row->kind.name, .is_index = row->is_index, .realisations = counted};
     double *values = NULL;
     blank(&s);
     sv_status status = sv_take(context, counted, sizeof *values, &values);
     if (status != SV_OK)
         return status;
-    gather(records, marker, counted, values, &s);
+    gather(ensemble, point_number, marker, counted, values, &s);
     if (s.resolved > 0)
         status = fill(context, values, &s);
     else if (s.reason[0] == '\0')

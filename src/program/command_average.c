@@ -206,7 +206,8 @@ static sv_status average(session *s)
     sv_status computed = SV_OK;
     sv_status status = open_run(s, &run);
     if (status == SV_OK)
-        status = sv_ensemble_init(context, s->n_points, s->base.realisations, &ensemble);
+        status = sv_ensemble_init(context, s->n_points, s->base.realisations,
+                                  s->points[0].problem.n_markers, &ensemble);
     if (status == SV_OK)
         status = sv_run_load(context, run, &ensemble, &loaded);
     if (status != SV_OK)

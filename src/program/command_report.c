@@ -193,7 +193,8 @@ static sv_status report(session *s, sv_run *run)
         status = SV_FAIL(context, SV_REFUSED, "the ledger claims %lld realisations at %d points",
                          (long long)realisations, s->n_points);
     if (status == SV_OK)
-        status = sv_ensemble_init(context, s->n_points, realisations, &ensemble);
+        status = sv_ensemble_init(context, s->n_points, realisations,
+                                  s->points[0].problem.n_markers, &ensemble);
     if (status == SV_OK)
         status = sv_run_load(context, run, &ensemble, &loaded);
     if (status == SV_OK)

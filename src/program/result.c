@@ -8,11 +8,11 @@
 /* Sites and vacancies of the samples that count. */
 static void mean_inventory(const sv_ensemble *ensemble, int32_t number, sv_point_result *ret)
 {
-    const sv_record *records = &ensemble->records[number * ensemble->realisations];
     double sites = 0.0, vacancies = 0.0;
     for (int64_t k = 0; k < ret->realisations; k++) {
-        sites += (double)records[k].sites;
-        vacancies += (double)records[k].vacancies;
+        const sv_kept_head *head = sv_ensemble_head(ensemble, number, k);
+        sites += head != NULL ? (double)head->sites : 0.0;
+        vacancies += head != NULL ? (double)head->vacancies : 0.0;
     }
     ret->mean_sites = ret->realisations > 0 ? sites / (double)ret->realisations : (double)NAN;
     ret->mean_vacancies =

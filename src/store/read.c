@@ -175,15 +175,19 @@ static sv_status load_rows(sv_context *context, sv_run *run, sqlite3_stmt *keys,
                            run->folder, SV_LEDGER_NAME);
         if (point >= ensemble->n_points || realisation >= ensemble->realisations)
             continue;
-        const int64_t place = point * ensemble->realisations + realisation;
+        sv_record record;
         bool found = false;
-        sv_status status = sv_record_read(context, run, (int32_t)point, realisation,
-                                          &ensemble->records[place], &found);
+        sv_status status =
+            sv_record_read(context, run, (int32_t)point, realisation, &record, &found);
         if (status == SV_OK && !found)
             status = damaged(context, run, (int32_t)point, realisation, "it cannot be found");
+        else if (status == SV_OK && record.n_outcomes > ensemble->n_markers)
+            status = damaged(context, run, (int32_t)point, realisation,
+                             "it has more markers than the run");
+        if (status == SV_OK)
+            status = sv_ensemble_put(context, ensemble, &record);
         if (status != SV_OK)
             return status;
-        ensemble->done[place] = true;
         (*loaded)++;
     }
     return code == SQLITE_DONE ? SV_OK : sv_ledger_fail(context, run, "read");

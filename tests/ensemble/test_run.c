@@ -63,11 +63,22 @@ static sv_status run(const problem *p, int64_t n, int threads, sv_stop_rule stop
     return sv_ensemble_run(test_context(), &p->point, &o, e);
 }
 
-static bool same_outcome(const sv_outcome *a, const sv_outcome *b)
+static bool same_outcome(const sv_kept_outcome *a, const sv_kept_outcome *b)
 {
     return a->verdict == b->verdict && memcmp(&a->value, &b->value, sizeof a->value) == 0 &&
            a->index == b->index && memcmp(&a->margin, &b->margin, sizeof a->margin) == 0 &&
            a->electrons == b->electrons;
+}
+
+static void set(sv_ensemble *e, int k, sv_verdict verdict, int64_t index)
+{
+    sv_record record = {.realisation = k, .n_outcomes = 1};
+    record.outcomes[0] = sv_outcome_blank();
+    record.outcomes[0].verdict = verdict;
+    record.outcomes[0].index = index;
+    record.outcomes[0].value = (double)index;
+    snprintf(record.outcomes[0].reason, 100, "because");
+    CHECK_OK(sv_ensemble_put(test_context(), e, &record));
 }
 
 SV_TEST(threads_change_no_bit)
@@ -77,14 +88,15 @@ SV_TEST(threads_change_no_bit)
     sv_ensemble e[3] = {{0}};
     for (int t = 0; t < 3; t++) {
         sink out = {0};
-        CHECK_OK(sv_ensemble_init(test_context(), 1, 12, &e[t]));
+        CHECK_OK(sv_ensemble_init(test_context(), 1, 12, 2, &e[t]));
         CHECK_OK(run(&p, 12, t + 1, (sv_stop_rule){0}, &out, &e[t]));
         CHECK_INT(out.calls, 12);
     }
     for (int t = 1; t < 3; t++)
         for (int k = 0; k < 12; k++)
             for (int m = 0; m < 2; m++)
-                CHECK(same_outcome(&e[0].records[k].outcomes[m], &e[t].records[k].outcomes[m]));
+                CHECK(same_outcome(sv_ensemble_outcome(&e[0], 0, k, m),
+                                   sv_ensemble_outcome(&e[t], 0, k, m)));
     for (int t = 0; t < 3; t++)
         sv_ensemble_free(test_context(), &e[t]);
     release(&p);
@@ -96,8 +108,9 @@ SV_TEST(finished_work_is_not_repeated)
     make(&p, 5, 2.0);
     sv_ensemble e = {0};
     sink out = {0};
-    CHECK_OK(sv_ensemble_init(test_context(), 1, 6, &e));
-    e.done[1] = e.done[4] = true;
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 6, 2, &e));
+    set(&e, 1, SV_RESOLVED, 1);
+    set(&e, 4, SV_RESOLVED, 1);
     CHECK_OK(run(&p, 6, 2, (sv_stop_rule){0}, &out, &e));
     CHECK_INT(out.calls, 4);
     sv_ensemble_free(test_context(), &e);
@@ -110,7 +123,7 @@ SV_TEST(a_failing_sink_ends_the_run)
     make(&p, 4, 2.0);
     sv_ensemble e = {0};
     sink out = {.fail_after = 2};
-    CHECK_OK(sv_ensemble_init(test_context(), 1, 8, &e));
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 8, 2, &e));
     CHECK_STATUS(SV_STORAGE, run(&p, 8, 2, (sv_stop_rule){0}, &out, &e));
     int done = 0;
     for (int k = 0; k < 8; k++)
@@ -132,7 +145,7 @@ SV_TEST(cancel_and_time_limit_stop_cleanly)
     make(&p, 4, 2.0);
     sv_ensemble e = {0};
     sink out = {0};
-    CHECK_OK(sv_ensemble_init(test_context(), 1, 1000, &e));
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 1000, 2, &e));
     test_context()->cancel = always;
     CHECK_STATUS(SV_INTERRUPTED, run(&p, 1000, 2, (sv_stop_rule){0}, &out, &e));
     test_context()->cancel = NULL;
@@ -152,15 +165,15 @@ SV_TEST(cancel_and_time_limit_stop_cleanly)
 SV_TEST(stop_rule_holds_at_one_place)
 {
     sv_ensemble e = {0};
-    CHECK_OK(sv_ensemble_init(test_context(), 1, 400, &e));
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 400, 2, &e));
     sv_stop_rule rule = {.active = true, .marker = 0, .standard_error = 0.06, .at_least = 20};
     sv_stream stream = sv_stream_make(3, "values", 0);
     static double values[400];
     for (int k = 0; k < 400; k++) {
-        e.done[k] = true;
-        e.records[k].n_outcomes = 1;
-        e.records[k].outcomes[0].verdict = SV_RESOLVED;
-        values[k] = e.records[k].outcomes[0].value = sv_stream_normal(&stream, k, 0, 0);
+        sv_record record = {.realisation = k, .n_outcomes = 1};
+        record.outcomes[0].verdict = SV_RESOLVED;
+        values[k] = record.outcomes[0].value = sv_stream_normal(&stream, k, 0, 0);
+        CHECK_OK(sv_ensemble_put(test_context(), &e, &record));
     }
     int64_t expected = 20;
     while (sv_moments_of(values, expected).standard_error > 0.06)
@@ -186,22 +199,11 @@ SV_TEST(a_settled_point_computes_no_more)
     sv_ensemble e = {0};
     sink out = {0};
     sv_stop_rule rule = {.active = true, .marker = 0, .standard_error = 0.01, .at_least = 5};
-    CHECK_OK(sv_ensemble_init(test_context(), 1, 50, &e));
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 50, 2, &e));
     CHECK_OK(run(&p, 50, 1, rule, &out, &e));
     CHECK_INT(out.calls, 5);
     sv_ensemble_free(test_context(), &e);
     release(&p);
-}
-
-static void set(sv_ensemble *e, int k, sv_verdict verdict, int64_t index)
-{
-    e->done[k] = true;
-    e->records[k].n_outcomes = 1;
-    e->records[k].outcomes[0] = sv_outcome_blank();
-    e->records[k].outcomes[0].verdict = verdict;
-    e->records[k].outcomes[0].index = index;
-    e->records[k].outcomes[0].value = (double)index;
-    snprintf(e->records[k].outcomes[0].reason, 100, "because");
 }
 
 /* 200 realisations, 3 of them unresolved, the rest +1: mean 1, bounds 0.97 and 1, Wilson interval
@@ -214,7 +216,7 @@ SV_TEST(unresolved_realisations_bound_the_mean)
     p.point.n_markers = 1;
     sv_ensemble e = {0};
     sv_summary s = {0};
-    CHECK_OK(sv_ensemble_init(test_context(), 1, 200, &e));
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 200, 2, &e));
     for (int k = 0; k < 200; k++)
         set(&e, k, k % 70 == 5 ? SV_UNRESOLVED : SV_RESOLVED, 1);
     CHECK_OK(sv_summarise(test_context(), &e, &p.point, 0, 0, 200, &s));
@@ -246,7 +248,7 @@ SV_TEST(several_indices_are_counted_apart)
     p.point.n_markers = 1;
     sv_ensemble e = {0};
     sv_summary s = {0};
-    CHECK_OK(sv_ensemble_init(test_context(), 1, 10, &e));
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 10, 2, &e));
     const int64_t indices[10] = {0, 2, -1, 0, 2, 2, 0, 0, 2, 2};
     for (int k = 0; k < 10; k++)
         set(&e, k, k == 7 ? SV_FAILED : SV_RESOLVED, indices[k]);
@@ -294,7 +296,7 @@ SV_TEST(records_with_too_few_outcomes_are_unresolved)
     make(&p, 4, 0.0);
     sv_ensemble e = {0};
     sv_summary s = {0};
-    CHECK_OK(sv_ensemble_init(test_context(), 1, 3, &e));
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 3, 2, &e));
     for (int k = 0; k < 3; k++)
         set(&e, k, SV_RESOLVED, 1);
     CHECK_OK(sv_summarise(test_context(), &e, &p.point, 0, 1, 3, &s));
@@ -340,7 +342,7 @@ SV_TEST(empty_realisations_are_recorded)
     sv_ensemble e = {0};
     sink out = {0};
     sv_summary s = {0};
-    CHECK_OK(sv_ensemble_init(test_context(), 1, 60, &e));
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 60, 2, &e));
     CHECK_OK(run(&p, 60, 2, (sv_stop_rule){0}, &out, &e));
     CHECK_INT(out.calls, 60);
     for (int m = 0; m < 2; m++) {
@@ -351,7 +353,7 @@ SV_TEST(empty_realisations_are_recorded)
     sv_ensemble_free(test_context(), &e);
     p.point.occupation = (sv_occupation){.by = SV_BY_ELECTRONS, .electrons = 6};
     vacancies.share = 0.3;
-    CHECK_OK(sv_ensemble_init(test_context(), 1, 40, &e));
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 40, 2, &e));
     CHECK_OK(run(&p, 40, 1, (sv_stop_rule){0}, &out, &e));
     CHECK_OK(sv_summarise(test_context(), &e, &p.point, 0, 0, 40, &s));
     CHECK(s.unresolved > 3 && s.resolved > 3);
@@ -404,7 +406,7 @@ SV_TEST(ensemble_agrees_with_an_independent_run)
     sv_ensemble e = {0};
     sink out = {0};
     sv_summary s = {0};
-    CHECK_OK(sv_ensemble_init(test_context(), 1, 40, &e));
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 40, 2, &e));
     CHECK_OK(run(&p, 40, 2, (sv_stop_rule){0}, &out, &e));
     CHECK_OK(sv_summarise(test_context(), &e, &p.point, 0, 0, 40, &s));
     CHECK_CLOSE(s.mean, 0.909, 4.0 * hypot(0.021, s.standard_error));

@@ -128,15 +128,17 @@ SV_TEST(quantiles)
 SV_TEST(disorder_and_estimator_are_kept_apart)
 {
     sv_record records[3] = {{.n_outcomes = 1}, {.n_outcomes = 1}, {.n_outcomes = 1}};
-    bool done[3] = {true, true, true};
-    sv_ensemble ensemble = {.n_points = 1, .realisations = 3, .records = records, .done = done};
+    sv_ensemble ensemble = {0};
     sv_case point = {.n_markers = 1, .markers = {{.marker = sv_marker_find("local_chern")}}};
     sv_summary s;
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 3, 1, &ensemble));
     for (int k = 0; k < 3; k++) {
+        records[k].realisation = k;
         records[k].outcomes[0] = sv_outcome_blank();
         records[k].outcomes[0].verdict = SV_RESOLVED;
         records[k].outcomes[0].value = 5.0 * (k - 1);
         records[k].outcomes[0].estimator_error = k == 1 ? sqrt(27.0) : 0.0;
+        CHECK_OK(sv_ensemble_put(test_context(), &ensemble, &records[k]));
     }
     CHECK_OK(sv_summarise(test_context(), &ensemble, &point, 0, 0, 3, &s));
     CHECK_CLOSE(s.deviation, 5.0, 1e-14);
@@ -144,10 +146,12 @@ SV_TEST(disorder_and_estimator_are_kept_apart)
     CHECK_CLOSE(s.disorder_deviation, 4.0, 1e-14);
     sv_summary_free(test_context(), &s);
     records[0].outcomes[0].estimator_error = 50.0;
+    CHECK_OK(sv_ensemble_put(test_context(), &ensemble, &records[0]));
     CHECK_OK(sv_summarise(test_context(), &ensemble, &point, 0, 0, 3, &s));
     CHECK(s.disorder_deviation == 0.0);
     sv_summary_free(test_context(), &s);
     CHECK_OK(sv_summarise(test_context(), &ensemble, &point, 0, 0, 1, &s));
     CHECK(isnan(s.disorder_deviation));
     sv_summary_free(test_context(), &s);
+    sv_ensemble_free(test_context(), &ensemble);
 }

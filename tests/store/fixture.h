@@ -92,20 +92,19 @@ static inline bool same_record(const sv_record *a, const sv_record *b)
     return same;
 }
 
-/* Room for records without the ensemble layer. */
 static inline sv_ensemble fixture_ensemble(int32_t n_points, int64_t realisations)
 {
-    const size_t count = (size_t)n_points * (size_t)realisations;
-    return (sv_ensemble){.n_points = n_points,
-                         .realisations = realisations,
-                         .records = calloc(count, sizeof(sv_record)),
-                         .done = calloc(count, sizeof(bool))};
+    sv_ensemble ensemble = {0};
+    CHECK_OK(sv_ensemble_init(test_context(), n_points, realisations, SV_MAX_MARKERS, &ensemble));
+    return ensemble;
 }
 
-static inline void fixture_ensemble_free(sv_ensemble *ensemble)
+/* Is the realisation there, and is it this record? */
+static inline bool fixture_holds(const sv_ensemble *ensemble, const sv_record *record)
 {
-    free(ensemble->records);
-    free(ensemble->done);
+    sv_record kept;
+    return sv_ensemble_get(ensemble, record->point, record->realisation, &kept) &&
+           same_record(&kept, record);
 }
 
 /* A fresh folder with a run of `realisations` records at each of the three points. */

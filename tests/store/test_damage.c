@@ -23,11 +23,11 @@ static sv_status read_all(void)
         for (int64_t i = 0; i < 3 * realisations; i++) {
             const int64_t k = i % realisations, point = i / realisations;
             const sv_record expected = fixture_record((int32_t)point, k);
-            CHECK(same_record(&ensemble.records[point * 4 + k], &expected));
+            CHECK(fixture_holds(&ensemble, &expected));
         }
     }
     sv_run_close(context, run);
-    fixture_ensemble_free(&ensemble);
+    sv_ensemble_free(test_context(), &ensemble);
     return status;
 }
 

@@ -151,11 +151,10 @@ static void check_all_there(sv_run *run, int64_t last)
     CHECK_OK(sv_run_load(test_context(), run, &ensemble, &loaded));
     CHECK(loaded >= last + 1);
     for (int64_t k = 0; k <= last; k++) {
-        const int64_t place = k % 3 * realisations + k / 3;
         const sv_record expected = fixture_record((int32_t)(k % 3), k / 3);
-        CHECK(ensemble.done[place] && same_record(&ensemble.records[place], &expected));
+        CHECK(fixture_holds(&ensemble, &expected));
     }
-    fixture_ensemble_free(&ensemble);
+    sv_ensemble_free(test_context(), &ensemble);
 }
 
 SV_TEST(a_killed_writer_loses_nothing_it_acknowledged)
@@ -218,6 +217,6 @@ SV_TEST(a_full_disk_is_reported_and_keeps_the_rows)
     sv_index loaded = 0;
     CHECK_OK(sv_run_load(context, run, &ensemble, &loaded));
     CHECK_INT(loaded, 4 + written - 1);
-    fixture_ensemble_free(&ensemble);
+    sv_ensemble_free(test_context(), &ensemble);
     sv_run_close(context, run);
 }

@@ -36,7 +36,7 @@ SV_TEST(what_was_put_comes_back_bit_for_bit)
         for (int64_t k = 0; k < 5; k++) {
             const sv_record expected = fixture_record(point, k);
             CHECK(ensemble.done[point * 5 + k]);
-            CHECK(same_record(&ensemble.records[point * 5 + k], &expected));
+            CHECK(fixture_holds(&ensemble, &expected));
         }
     int64_t realisations = 0;
     int32_t points = 0;
@@ -47,7 +47,7 @@ SV_TEST(what_was_put_comes_back_bit_for_bit)
     CHECK_TEXT(sv_run_meta(run, "markers"), "local_chern bott");
     CHECK_INT(strlen(sv_run_meta(run, "identity_digest")), 64);
     CHECK(sv_run_meta(run, "nothing of that name") == NULL);
-    fixture_ensemble_free(&ensemble);
+    sv_ensemble_free(test_context(), &ensemble);
     sv_run_close(context, run);
 }
 
@@ -86,12 +86,12 @@ SV_TEST(a_failed_realisation_is_kept_as_such)
     sv_index loaded = 0;
     CHECK_OK(sv_run_load(context, run, &ensemble, &loaded));
     CHECK_INT(loaded, 1);
-    CHECK(same_record(&ensemble.records[0], &record));
+    CHECK(fixture_holds(&ensemble, &record));
     record.n_outcomes = 3; /* more than the run has markers */
     CHECK_STATUS(SV_STORAGE, sv_run_put(context, &record, run));
     record.n_outcomes = SV_MAX_MARKERS + 1;
     CHECK_STATUS(SV_INTERNAL, sv_run_put(context, &record, run));
-    fixture_ensemble_free(&ensemble);
+    sv_ensemble_free(test_context(), &ensemble);
     sv_run_close(context, run);
 }
 
@@ -152,7 +152,7 @@ SV_TEST(force_records_the_change_and_keeps_the_rows)
     sv_index loaded = 0;
     CHECK_OK(sv_run_load(context, run, &ensemble, &loaded));
     CHECK_INT(loaded, 6);
-    fixture_ensemble_free(&ensemble);
+    sv_ensemble_free(test_context(), &ensemble);
     sv_run_close(context, run);
     CHECK_INT(count_events("identity change"), 1);
     CHECK_INT(count_events("start"), 1);
@@ -184,7 +184,7 @@ SV_TEST(force_under_another_sheet_starts_over)
     sv_index loaded = -1;
     CHECK_OK(sv_run_load(context, run, &ensemble, &loaded));
     CHECK_INT(loaded, 0);
-    fixture_ensemble_free(&ensemble);
+    sv_ensemble_free(test_context(), &ensemble);
     sv_run_close(context, run);
     CHECK_INT(count_events("identity change"), 1);
     CHECK(stat(fixture_path("ledger.old-1.sqlite"), &info) == 0);
@@ -200,7 +200,7 @@ static int64_t loaded_from(const sv_run_identity *identity)
     if (run != NULL)
         CHECK_OK(sv_run_load(context, run, &ensemble, &loaded));
     sv_run_close(context, run);
-    fixture_ensemble_free(&ensemble);
+    sv_ensemble_free(test_context(), &ensemble);
     return loaded;
 }
 
@@ -321,7 +321,7 @@ static void *scarce_take(size_t bytes, void *user)
 static sv_status use_run(sv_context *context, const sv_run_identity *identity)
 {
     sv_run *run = NULL;
-    sv_ensemble ensemble = fixture_ensemble(1, 1);
+    sv_ensemble ensemble = {0};
     sv_index loaded = 0;
     const sv_record record = fixture_record(0, 0);
     sv_status status = sv_run_open(context, fixture_folder, identity, false, &run);
@@ -332,9 +332,11 @@ static sv_status use_run(sv_context *context, const sv_run_identity *identity)
     if (status == SV_OK)
         status = sv_run_open_read(context, fixture_folder, &run);
     if (status == SV_OK)
+        status = sv_ensemble_init(context, 1, 1, 2, &ensemble);
+    if (status == SV_OK)
         status = sv_run_load(context, run, &ensemble, &loaded);
     sv_run_close(context, run);
-    fixture_ensemble_free(&ensemble);
+    sv_ensemble_free(test_context(), &ensemble);
     return status;
 }
 
