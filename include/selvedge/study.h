@@ -1,0 +1,108 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/**
+ * @file study.h
+ * Layer 9: questions asked of ensembles. A question does not know how realisations are made: it
+ * asks a responder for values and decides where to ask next.
+ */
+#ifndef SELVEDGE_STUDY_H
+#define SELVEDGE_STUDY_H
+
+#include "store.h"
+
+#ifdef __cplusplus
+extern "C" {
+#endif
+
+/* -------------------------------------------------- threshold of a criterion */
+
+/**
+ * Gives responses number have … have+more−1 at a value of the parameter: one number per
+ * realisation. They must depend on (parameter, number) alone, and responses at different values
+ * should be independent; then the search is repeatable and can be replayed from a ledger.
+ * Criterion SV_CRITERION_MEAN: the value of the quantity, NaN where it is unresolved.
+ * Criterion SV_CRITERION_SHARE: 1 where the realisation meets the criterion, else 0 (unresolved
+ * ones do not meet it).
+ */
+typedef sv_status (*sv_responder)(sv_context *context, double parameter, int64_t have, int64_t more,
+                                  double *ret_values, void *user);
+
+typedef enum sv_criterion_kind {
+    SV_CRITERION_MEAN, /**< |mean − clean| ≤ within */
+    SV_CRITERION_SHARE /**< share of realisations that meet it ≥ share */
+} sv_criterion_kind;
+
+/** Where does a criterion, met at small values of a parameter, first fail? */
+typedef struct sv_threshold_question {
+    size_t size;
+    sv_criterion_kind kind;
+    double low, high;  /**< range of the parameter */
+    bool integer;      /**< only whole numbers make sense */
+    double clean;      /**< MEAN: the quantised value */
+    double within;     /**< MEAN: half width of the band */
+    double share;      /**< SHARE: 0 < share < 1 */
+    double precision;  /**< half width of the interval wanted */
+    double confidence; /**< of the interval, e.g. 0.95 */
+    int64_t most;      /**< responses at most; 0: 200,000 */
+} sv_threshold_question;
+
+typedef enum sv_threshold_state {
+    SV_THRESHOLD_FOUND,
+    SV_THRESHOLD_ALWAYS,   /**< the criterion holds up to `high` */
+    SV_THRESHOLD_NEVER,    /**< it fails already at `low` */
+    SV_THRESHOLD_UNDECIDED /**< not within `most` responses; the interval is what is known */
+} sv_threshold_state;
+
+/** What was asked at one value of the parameter. */
+typedef struct sv_threshold_point {
+    double parameter;
+    int64_t responses, unresolved;
+    double measure; /**< MEAN: |mean − clean|; SHARE: share that does not meet the criterion */
+    double standard_error; /**< NaN below two responses */
+    int verdict;           /**< −1: holds, +1: fails, 0: open; each at 99 % */
+} sv_threshold_point;
+
+typedef struct sv_threshold_answer {
+    sv_threshold_state state;
+    double value;       /**< NaN unless FOUND or UNDECIDED */
+    double interval[2]; /**< for ALWAYS and NEVER: NaN */
+    double confidence;
+    int64_t responses;
+    bool bracketed;             /**< interval from two decided values instead of a local fit */
+    bool re_enters;             /**< beyond the threshold the criterion holds again … */
+    double re_entry;            /**< … at this value, NaN otherwise */
+    double monotone_p;          /**< p-value of "the measure never falls as the parameter grows" */
+    char reason[240];           /**< for every state but FOUND */
+    sv_threshold_point *points; /**< ascending; taken from the context */
+    int n_points;
+} sv_threshold_answer;
+
+/**
+ * Searches for the first failure going up from `low`.
+ *
+ * 1. Nine evenly spaced values with six responses each; the first whose measure is beyond the
+ *    target, and the one before it, are tested until decided (t or exact binomial test, 0.5 %
+ *    each look).
+ * 2. Bisection between them as long as the middle is decided. Two decided values closer than
+ *    twice the precision are the answer.
+ * 3. Around the value left undecided only fresh responses count: 60 % there and 20 % on either
+ *    side at three times the precision, fitted by a parabola (MEAN: weighted least squares with a
+ *    sandwich covariance; SHARE: logistic with Firth's penalty, Biometrika 80, 27 (1993)). The
+ *    interval holds all values at which the fit does not differ from the target (inverted test, as
+ *    Fieller's); the centre follows the root, the sides come closer where the parabola bends too
+ *    much, and the number of responses at most doubles per step until the interval is narrow
+ *    enough.
+ *
+ * The coverage of the interval is measured by simulation in tests/study/test_threshold.c.
+ * @return SV_INVALID_INPUT for a question that makes no sense, or the responder's status
+ */
+SV_API SV_MUST_USE sv_status sv_threshold_search(sv_context *context,
+                                                 const sv_threshold_question *question,
+                                                 sv_responder responder, void *user,
+                                                 sv_threshold_answer *ret_answer);
+/** Gives the points back; safe on a zeroed answer and twice in a row. */
+SV_API void sv_threshold_free(sv_context *context, sv_threshold_answer *answer);
+
+#ifdef __cplusplus
+}
+#endif
+#endif
