@@ -92,6 +92,23 @@ typedef struct sv_sweep_axis {
     double unit_scale; /**< what is written = unit_scale · value; 1 without a unit */
 } sv_sweep_axis;
 
+enum { SV_MAX_SIZES = 8 };
+
+/** The block `question`: how much of one parameter is tolerable? */
+typedef struct sv_sheet_question {
+    sv_sweep_axis axis;   /**< the parameter; values: lowest, highest, precision, in its unit of the
+                               model */
+    sv_sweep_axis budget; /**< a second parameter and its values; count 0: none */
+    int marker;           /**< number in sv_setup.markers */
+    bool of_mean;         /**< the mean counts, else the share of samples */
+    bool has_within;
+    double within, share;
+    double confidence;
+    int64_t most;
+    int64_t sizes[SV_MAX_SIZES][2];
+    int n_sizes; /**< 0: the flake of the sheet alone */
+} sv_sheet_question;
+
 /** A file the sheet names. */
 typedef struct sv_sheet_file {
     char *path;    /**< as opened */
@@ -121,6 +138,8 @@ typedef struct sv_setup {
     int64_t stop_at_least;
     sv_sweep_axis axes[2];
     int n_axes;
+    bool has_question;
+    sv_sheet_question question;
     char engine[16], estimator[16];
     double accuracy, sampling_error;
     sv_sheet_file *files;

@@ -9,7 +9,8 @@
 
 /* These change no number of a realisation: a run may be continued with other values. What a preset
  * gives counts by its values. */
-static const char EXEMPT_KEYS[] = "ensemble.realisations ensemble.threads model.preset";
+static const char EXEMPT_KEYS[] =
+    "ensemble.realisations ensemble.threads model.preset question.most";
 static const char EXEMPT_BLOCKS[] = "ensemble.stop";
 
 static bool is_exempt(const sv_section *section, const char *key)
@@ -198,6 +199,24 @@ static void add_rules(writer *w, const sv_model *model)
     }
 }
 
+/* The trees of a question say what is asked; how many realisations it may cost does not count. */
+static void add_question(writer *w, const sv_sheet_question *q)
+{
+    sv_text_add(&w->line, "question.range = ");
+    add_list(w, q->axis.values, q->axis.count);
+    end_line(w);
+    for (int i = 0; i < q->n_sizes; i++) {
+        sv_text_add(&w->line, "question.sizes.%d = [%lld, %lld]", i, (long long)q->sizes[i][0],
+                    (long long)q->sizes[i][1]);
+        end_line(w);
+    }
+    if (q->budget.count > 0) {
+        sv_text_add(&w->line, "question.budget.values = ");
+        add_list(w, q->budget.values, q->budget.count);
+        end_line(w);
+    }
+}
+
 static int compare_lines(const void *a, const void *b)
 {
     const char *const *x = a, *const *y = b;
@@ -242,6 +261,8 @@ sv_status sv_identity_write(sv_reader *reader, const sv_setup *setup, char **ret
         add_rules(&w, &setup->model);
     for (int i = 0; i < setup->n_axes; i++)
         add_axis(&w, &setup->axes[i], i);
+    if (setup->has_question)
+        add_question(&w, &setup->question);
     sv_status status = join(&w, ret_text);
     sv_give(reader->context, w.lines);
     sv_give(reader->context, w.line.data);

@@ -125,6 +125,57 @@ static const sv_key sweep_keys[] = {
     {.name = "values", .type = SV_KEY_TREE, .doc = "[v1, v2, …] instead of from, to, steps"},
 };
 
+static const sv_key question_keys[] = {
+    {.name = "parameter", .type = SV_KEY_TEXT, .required = true, .doc = "dotted path of a number"},
+    {.name = "range",
+     .type = SV_KEY_TREE,
+     .required = true,
+     .doc = "[lowest, highest] value to look at; the criterion should hold at the lowest"},
+    {.name = "precision",
+     .type = SV_KEY_TREE,
+     .required = true,
+     .doc = "half width of the interval wanted"},
+    {.name = "confidence",
+     .type = SV_KEY_REAL,
+     .low = 0.5,
+     .high = 0.999,
+     .fallback = "0.95",
+     .doc = "of the interval"},
+    {.name = "sizes",
+     .type = SV_KEY_TREE,
+     .doc = "[[n1, n2], …] cells of the flakes to ask; left out: the flake of the sheet"},
+    {.name = "most",
+     .type = SV_KEY_INTEGER,
+     .low = 100,
+     .high = 1e8,
+     .fallback = "20000",
+     .doc = "realisations at most for one threshold"},
+};
+
+static const sv_key criterion_keys[] = {
+    {.name = "quantity",
+     .type = SV_KEY_TEXT,
+     .required = true,
+     .doc = "a marker (judged by its samples) or MARKER.mean"},
+    {.name = "within",
+     .type = SV_KEY_REAL,
+     .low = 0,
+     .low_open = true,
+     .high = 1e6,
+     .doc = "half width of the band about the clean value"},
+    {.name = "share",
+     .type = SV_KEY_REAL,
+     .low = 0,
+     .low_open = true,
+     .high = 1,
+     .doc = "of the samples in the band, or with the clean index"},
+};
+
+static const sv_key budget_keys[] = {
+    {.name = "parameter", .type = SV_KEY_TEXT, .required = true, .doc = "dotted path of a number"},
+    {.name = "values", .type = SV_KEY_TREE, .required = true, .doc = "[v1, v2, …] in any order"},
+};
+
 static const sv_key solve_keys[] = {
     {.name = "engine",
      .type = SV_KEY_CHOICE,
@@ -201,6 +252,21 @@ static const sv_block blocks[] = {
      .form = SV_BLOCK_LIST,
      .max_entries = 2,
      KEYS(sweep_keys)},
+    {.parent = "",
+     .name = "question",
+     .doc = "for the command tolerance: how much of one parameter is tolerable",
+     .optional_section = true,
+     KEYS(question_keys)},
+    {.parent = "question",
+     .name = "criterion",
+     .doc = "what must hold",
+     .required = true,
+     KEYS(criterion_keys)},
+    {.parent = "question",
+     .name = "budget",
+     .doc = "the same question at several values of a second parameter",
+     .optional_section = true,
+     KEYS(budget_keys)},
     {.parent = "", .name = "solve", .doc = "engine and accuracy", KEYS(solve_keys)},
 };
 enum { N_BLOCKS = sizeof blocks / sizeof blocks[0] };

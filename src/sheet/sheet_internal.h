@@ -352,6 +352,14 @@ bool sv_preset_expand(sv_reader *reader, const sv_node **root);
 /* The first value of a sweep over this key, when one is written; else NULL. */
 const sv_node *sv_sweep_first(const sv_reader *reader, const sv_section *section, const char *key);
 bool sv_sweep_read(sv_reader *reader, sv_setup *setup);
+/* Numbers that mean what an axis over the parameter at `path_node` would mean by them. */
+bool sv_sweep_read_numbers(sv_reader *reader, const sv_node *path_node, const sv_node *const *nodes,
+                           int n, sv_sweep_axis *axis);
+
+/* ---------------------------------------------------------- question.c */
+
+/* The block `question`, where there is one. */
+bool sv_question_read(sv_reader *reader, sv_setup *setup);
 /* The `parameter` value of the axis that sweeps this path, or NULL. */
 const sv_node *sv_sweep_parameter(const sv_node *root, const char *path);
 

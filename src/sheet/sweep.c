@@ -112,7 +112,8 @@ static bool is_number(const sv_key *key)
 
 static bool is_swept_block(const sv_block *block)
 {
-    return block->name[0] != '\0' && !sv_words_hold("ensemble stop sweep", block->name);
+    return block->name[0] != '\0' &&
+           !sv_words_hold("ensemble stop sweep question criterion budget", block->name);
 }
 
 static bool report_not_found(sv_reader *reader, const char *path, const sv_node *node)
@@ -241,13 +242,9 @@ static bool read_values(sv_reader *reader, const sv_section *section, const targ
 }
 
 /* The unit of the first value that has one: results are shown in it. */
-static void set_unit(const sv_reader *reader, const sv_section *section, const target *aim,
-                     sv_sweep_axis *axis)
+static void unit_of(const sv_reader *reader, const sv_node *const *nodes, sv_index count,
+                    const target *aim, sv_sweep_axis *axis)
 {
-    const sv_node *list = sv_section_node(section, "values");
-    const sv_node *ends[2] = {sv_section_node(section, "from"), sv_section_node(section, "to")};
-    bool by_list = sv_section_written(section, "values") > 0;
-    sv_index count = by_list ? list->count : 2;
     double a = reader->lattice_constant;
     double unit = reader->energy_unit > 0.0 ? reader->energy_unit : 1.0;
     sv_dimension dimension = aim->key->dimension;
@@ -263,14 +260,22 @@ static void set_unit(const sv_reader *reader, const sv_section *section, const t
     axis->unit_scale = 1.0;
     for (sv_index i = 0; i < count && axis->unit == NULL; i++) {
         sv_quantity quantity = {0};
-        const sv_node *node = by_list ? list->items[i] : ends[i];
-        if (node->text == NULL ||
-            sv_parse_quantity(node->text, aim->key->dimension, &quantity) != SV_PARSE_OK ||
+        if (nodes[i]->text == NULL ||
+            sv_parse_quantity(nodes[i]->text, aim->key->dimension, &quantity) != SV_PARSE_OK ||
             !quantity.has_unit)
             continue;
         axis->unit = quantity.unit->symbol;
         axis->unit_scale = base / quantity.unit->factor;
     }
+}
+
+static void set_unit(const sv_reader *reader, const sv_section *section, const target *aim,
+                     sv_sweep_axis *axis)
+{
+    const sv_node *list = sv_section_node(section, "values");
+    const sv_node *ends[2] = {sv_section_node(section, "from"), sv_section_node(section, "to")};
+    bool by_list = sv_section_written(section, "values") > 0;
+    unit_of(reader, by_list ? list->items : ends, by_list ? list->count : 2, aim, axis);
 }
 
 static bool read_axis(sv_reader *reader, const sv_section *section, sv_sweep_axis *axis)
@@ -310,4 +315,24 @@ bool sv_sweep_read(sv_reader *reader, sv_setup *setup)
                          NULL, "the sweep has %lld points; at most %d", (long long)points,
                          MAX_POINTS);
     return true;
+}
+
+bool sv_sweep_read_numbers(sv_reader *reader, const sv_node *path_node, const sv_node *const *nodes,
+                           int n, sv_sweep_axis *axis)
+{
+    target aim = {0};
+    if (strlen(path_node->text) >= sizeof axis->path)
+        return sv_report(reader, path_node, NULL, "the path is too long");
+    snprintf(axis->path, sizeof axis->path, "%s", path_node->text);
+    if (!find_target(reader, axis->path, path_node, &aim))
+        return false;
+    axis->integer = aim.key->type == SV_KEY_INTEGER;
+    axis->count = n;
+    axis->values = sv_reader_take(reader, n, sizeof *axis->values);
+    bool good = axis->values != NULL;
+    for (int i = 0; good && i < n; i++)
+        good = read_number(reader, &aim, axis->path, nodes[i], &axis->values[i]);
+    if (good)
+        unit_of(reader, nodes, n, &aim, axis);
+    return good;
 }
