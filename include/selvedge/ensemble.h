@@ -175,12 +175,14 @@ SV_API int64_t sv_ensemble_counted(const sv_ensemble *ensemble, int32_t point,
 
 /* -------------------------------------------------------------- statistics */
 
-/** Mean and deviation of a series in its order (two passes, compensated sums). */
+/** Moments of a series in its order (compensated sums about the mean). */
 typedef struct sv_moments {
     int64_t n;
     double mean;
     double deviation;      /**< n−1; 0 for n < 2 */
     double standard_error; /**< deviation/√n; NaN for n < 2 */
+    double skewness; /**< k₃/k₂^{3/2} of unbiased cumulants; NaN for n < 3 and constant series */
+    double kurtosis; /**< excess, k₄/k₂²; NaN for n < 4 and constant series */
 } sv_moments;
 SV_API sv_moments sv_moments_of(const double *values, int64_t n);
 /** Lag-1 autocorrelation Σ(x_i−m)(x_{i+1}−m)/Σ(x_i−m)²; NaN for a constant series. */
@@ -188,19 +190,153 @@ SV_API double sv_autocorrelation(const double *values, int64_t n);
 /** Student interval of a mean. @return SV_UNDEFINED for n < 2 */
 SV_API sv_status sv_student_interval(const sv_moments *moments, double confidence,
                                      double ret_interval[2]);
+/**
+ * Student's interval corrected for skewness γ: the quantiles ±t of g(T) = T + γT²/(3√n) +
+ * γ²T³/(27n) + γ/(6√n), T = √n (mean − μ)/deviation, turned back to μ. Without skewness it is
+ * Student's. What it covers stands in docs/statistics.md.
+ * @return SV_UNDEFINED for n < 3
+ * Reference: P. Hall, J. R. Stat. Soc. B 54, 221 (1992) (value recalled from memory)
+ */
+SV_API sv_status sv_corrected_interval(const sv_moments *moments, double confidence,
+                                       double ret_interval[2]);
+enum { SV_BOOTSTRAP_LARGEST = 100000 };
+/**
+ * Bootstrap interval of a mean, bias-corrected and accelerated (BCa): quantiles Φ(z₀ + z/(1 − az)),
+ * z = z₀ ± z_confidence, of the means of `resamples` resamples; z₀ from the share of them below the
+ * mean (ties count half), a = Σd³/(6(Σd²)^{3/2}) by the jackknife, d the deviations from the mean.
+ * Index k of resample b is ⌊n·w/2³²⌋, w word k mod 4 of the Philox block (⌊k/4⌋, 0, b, 0) under
+ * (seed, "bootstrap"): a pure function of data and seed. A value is preferred by at most n/2³².
+ * @param n  3 … SV_BOOTSTRAP_LARGEST @param resamples at least 100
+ * @return SV_UNDEFINED for n < 3 or a constant series; SV_INVALID_INPUT, SV_NO_MEMORY
+ * Cost: n · resamples random numbers.
+ * Reference: B. Efron, J. Am. Stat. Assoc. 82, 171 (1987)
+ */
+SV_API sv_status sv_bootstrap_interval(sv_context *context, const double *values, int64_t n,
+                                       int64_t resamples, uint64_t seed, double confidence,
+                                       double ret_interval[2]);
+
+/** Two groups are peaks apart when they explain more than this share of the variance. */
+#define SV_TWO_PEAKS 0.85
+/** Sorted values cut in two groups as the least sum of squares about the groups' means has it. */
+typedef struct sv_peaks {
+    bool apart;        /**< explained > SV_TWO_PEAKS */
+    double explained;  /**< share of the variance that lies between the groups; NaN: n < 4 or
+                            constant. Normal values: 0.64, uniform: 0.75, two values: 1 */
+    int64_t n_low;     /**< values of the lower group */
+    double low, high;  /**< means of the groups */
+} sv_peaks;
+/** The best cut; `apart` false and NaN below four values and for constant ones. */
+SV_API sv_peaks sv_peaks_of(const double *sorted, int64_t n);
+/**
+ * Should Student's interval carry a warning? True for a constant series, below 10 values, and for
+ * n < 25 skewness² (W. G. Cochran, Sampling Techniques, 3rd ed., section 2.15; recalled from
+ * memory). @param[out] message  why, empty when false
+ */
+SV_API bool sv_interval_warning(const sv_moments *moments, const sv_peaks *peaks, char *message,
+                                size_t size);
+
 /** Wilson score interval of a share k/n (Wilson, J. Am. Stat. Assoc. 22, 209 (1927)). */
 SV_API void sv_wilson_interval(int64_t k, int64_t n, double confidence, double ret_interval[2]);
+enum { SV_EXACT_LARGEST = 1000000 };
+/** Interval of a share k/n that covers at least `confidence` whatever the share (Clopper, Pearson,
+ *  Biometrika 26, 404 (1934)). Above SV_EXACT_LARGEST: Wilson's. */
+SV_API void sv_exact_interval(int64_t k, int64_t n, double confidence, double ret_interval[2]);
+/** Exact two-sided test that k of n is a draw with probability ½: P(at least as uneven). */
+SV_API double sv_binomial_test(int64_t k, int64_t n);
+
 /** Quantile of sorted values by linear interpolation (Hyndman–Fan type 7). */
 SV_API double sv_quantile_sorted(const double *sorted, int64_t n, double probability);
+/**
+ * Interval of a quantile between order statistics: the innermost ranks with a binomial tail of at
+ * most (1 − confidence)/2 outside on each side, whatever the distribution.
+ * @param[out] ret_interval NaN at a side where n is too small for it
+ * Reference: H. A. David, H. N. Nagaraja, Order Statistics, 3rd ed., section 7.1 (recalled)
+ */
+SV_API void sv_quantile_interval(const double *sorted, int64_t n, double probability,
+                                 double confidence, double ret_interval[2]);
+
+enum { SV_N_QUANTILES = 5, SV_MOST_BINS = 64 };
+/** Counts in bins [low + k·width, low + (k+1)·width). */
+typedef struct sv_histogram {
+    double low, width; /**< width 0: one bin that holds a constant series */
+    int n_bins;
+    int64_t counts[SV_MOST_BINS];
+} sv_histogram;
+/**
+ * Histogram of sorted values. Width: 2·IQR·n^{−1/3} (Freedman, Diaconis 1981), or where the
+ * quartiles coincide 3.49·deviation·n^{−1/3} (Scott 1979), rounded up to 1, 2 or 5 times a power of
+ * ten, and further until SV_MOST_BINS suffice; edges are whole multiples of it.
+ */
+SV_API sv_histogram sv_histogram_of(const double *sorted, int64_t n, double deviation);
+
+/** How a marker differs between two points of a sweep. NaN: does not exist. */
+typedef struct sv_comparison {
+    int32_t other, point; /**< point minus other */
+    const char *marker;
+    bool is_index;
+    int64_t pairs; /**< realisations resolved at both */
+    double difference, standard_error, interval[2]; /**< of the means, 95 %, Student on the pairs */
+    double p_value; /**< two-sided that there is none: t test of the pairs; for an index the exact
+                         test of `lost` against `gained` */
+    double adjusted_p_value; /**< Holm, over the comparisons of the marker; set by the caller */
+    double correlation;      /**< of the pairs */
+    double unpaired_error, unpaired_p_value; /**< had the points been drawn apart (Welch) */
+    int64_t index;        /**< most frequent one at `other` among the pairs */
+    int64_t lost, gained; /**< pairs that have it at `other` only, at `point` only */
+} sv_comparison;
+/**
+ * Paired comparison of n values with n others of the same realisations; sets all fields of
+ * ret_comparison from `pairs` to `unpaired_p_value` but adjusted_p_value.
+ * @return SV_NO_MEMORY
+ */
+SV_API SV_MUST_USE sv_status sv_compare_pairs(sv_context *context, const double *other,
+                                              const double *values, int64_t n,
+                                              sv_comparison *ret_comparison);
+/** Exact test of an index (McNemar, Psychometrika 12, 153 (1947), exact form): sets index, lost,
+ *  gained and p_value. */
+SV_API void sv_compare_indices(const double *other, const double *values, int64_t n, int64_t index,
+                               sv_comparison *ret_comparison);
+/**
+ * Compares a marker at two points. Realisations of the same number share their random numbers, so
+ * what the disorder does to both drops out of the difference.
+ * @param counted  leading realisations of each point, from sv_ensemble_counted()
+ */
+SV_API SV_MUST_USE sv_status sv_compare_points(sv_context *context, const sv_ensemble *ensemble,
+                                               const sv_case *point, int marker,
+                                               const int64_t *counted, int32_t other,
+                                               int32_t number, sv_comparison *ret_comparison);
+/** Holm, Scand. J. Stat. 6, 65 (1979): p-values adjusted for their number; NaN stays out. */
+SV_API SV_MUST_USE sv_status sv_adjust_p_values(sv_context *context, const double *p, int64_t n,
+                                                double *ret_adjusted);
+
+/** What a realisation with a sampled window costs and is worth; the last three are the answer. */
+typedef struct sv_split {
+    double columns;            /**< sampled columns or vectors per realisation, as run */
+    double step, most;         /**< they come in blocks of `step`, at most `most` */
+    double estimator_error;    /**< of one realisation at `columns` */
+    double disorder_deviation; /**< of the marker, without the estimator's part */
+    double seconds_fixed, seconds_per_column;
+    double best_columns;
+    double work;         /**< for the same error of the mean, relative to `columns` */
+    double realisations; /**< for the same error, relative */
+} sv_split;
+/**
+ * The columns per realisation with the least work for a given error of the mean: minimises
+ * (σ² + v/m)(c₀ + c₁m) over whole steps, m* = √(v c₀/c₁)/σ; σ disorder, v = estimator_error² ·
+ * columns, c₀ fixed cost, c₁ cost of a column.
+ * @return false when there is nothing to choose (no estimator error, no costs)
+ * Reference: W. G. Cochran, Sampling Techniques, 3rd ed., section 10.6 (recalled from memory)
+ */
+SV_API bool sv_split_optimise(sv_split *split);
 
 /** How often an index came out. */
 typedef struct sv_index_share {
     int64_t index, count;
     double share; /**< of all counted realisations */
-    double interval[2];
+    double interval[2];       /**< Wilson */
+    double exact_interval[2]; /**< Clopper–Pearson */
 } sv_index_share;
 
-enum { SV_N_QUANTILES = 5 };
 /** 0.05, 0.25, 0.5, 0.75, 0.95 */
 SV_API const double *sv_quantile_levels(void);
 
@@ -214,7 +350,15 @@ typedef struct sv_summary {
     int64_t realisations, resolved, unresolved; /**< failed ones count as unresolved */
     int64_t failed;
     double mean, deviation, standard_error, interval[2], confidence;
+    double skewness, kurtosis;
+    double interval_corrected[2]; /**< Student's, corrected for skewness; not of an index */
+    double interval_bca[2];       /**< bootstrap, see sv_summary_bootstrap(); not of an index */
+    int64_t resamples;            /**< behind interval_bca; 0: not computed */
+    char warning[200];            /**< why `interval` may cover less than it says, or empty */
+    sv_peaks peaks;               /**< not of an index */
     double quantiles[SV_N_QUANTILES];
+    double quantile_intervals[SV_N_QUANTILES][2]; /**< order statistics, 95 % */
+    sv_histogram histogram;                       /**< n_bins 0: an index */
     double bounds[2];       /**< mean if every unresolved one had the worst plausible value */
     double numerical_error; /**< largest */
     double estimator_error; /**< root mean square */
@@ -231,6 +375,14 @@ typedef struct sv_summary {
 SV_API SV_MUST_USE sv_status sv_summarise(sv_context *context, const sv_ensemble *ensemble,
                                           const sv_case *point, int32_t point_number, int marker,
                                           int64_t counted, sv_summary *ret_summary);
+/**
+ * Adds the bootstrap interval of the mean to a summary of the same arguments; leaves it out of
+ * indices, below three values and of constant ones.
+ */
+SV_API SV_MUST_USE sv_status sv_summary_bootstrap(sv_context *context, const sv_ensemble *ensemble,
+                                                  const sv_case *point, int32_t point_number,
+                                                  int marker, int64_t resamples,
+                                                  sv_summary *summary);
 SV_API void sv_summary_free(sv_context *context, sv_summary *summary);
 
 #ifdef __cplusplus

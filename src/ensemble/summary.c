@@ -19,11 +19,15 @@ static void blank(sv_summary *s)
 {
     s->mean = s->deviation = s->standard_error = s->disorder_deviation = NAN;
     s->interval[0] = s->interval[1] = s->bounds[0] = s->bounds[1] = NAN;
+    s->interval_corrected[0] = s->interval_corrected[1] = NAN;
+    s->interval_bca[0] = s->interval_bca[1] = NAN;
+    s->skewness = s->kurtosis = NAN;
+    s->peaks = (sv_peaks){.explained = NAN, .low = NAN, .high = NAN};
     s->kappa = NAN;
     s->numerical_error = s->estimator_error = s->smallest_margin = s->mean_margin = NAN;
     s->confidence = CONFIDENCE;
     for (int k = 0; k < SV_N_QUANTILES; k++)
-        s->quantiles[k] = NAN;
+        s->quantiles[k] = s->quantile_intervals[k][0] = s->quantile_intervals[k][1] = NAN;
 }
 
 /* Counts verdicts, keeps resolved values in order, gathers errors and margins. */
@@ -107,6 +111,7 @@ static sv_status count_shares(sv_context *context, const double *sorted, sv_summ
         sv_index_share *share = &s->shares[n];
         share->share = (double)share->count / (double)all;
         sv_wilson_interval(share->count, all, s->confidence, share->interval);
+        sv_exact_interval(share->count, all, s->confidence, share->exact_interval);
     }
     return SV_OK;
 }
@@ -127,6 +132,16 @@ static void index_interval(sv_summary *s)
     }
 }
 
+/* The distribution of a marker that is no index, from its sorted values. */
+static void describe(const sv_moments *m, const double *sorted, sv_summary *s)
+{
+    if (sv_corrected_interval(m, s->confidence, s->interval_corrected) != SV_OK)
+        s->interval_corrected[0] = s->interval_corrected[1] = NAN;
+    s->peaks = sv_peaks_of(sorted, m->n);
+    s->histogram = sv_histogram_of(sorted, m->n, m->deviation);
+    (void)sv_interval_warning(m, &s->peaks, s->warning, sizeof s->warning);
+}
+
 static sv_status fill(sv_context *context, double *values, sv_summary *s)
 {
     sv_moments m = sv_moments_of(values, s->resolved);
@@ -134,6 +149,8 @@ static sv_status fill(sv_context *context, double *values, sv_summary *s)
     s->mean = m.mean;
     s->deviation = m.deviation;
     s->standard_error = m.standard_error;
+    s->skewness = m.skewness;
+    s->kurtosis = m.kurtosis;
     /* The spread over realisations holds that of the estimator, which is drawn anew in each. */
     if (!s->is_index && s->resolved > 1)
         s->disorder_deviation =
@@ -143,10 +160,15 @@ static sv_status fill(sv_context *context, double *values, sv_summary *s)
     if (s->is_index)
         bound_mean(values, s);
     qsort(values, (size_t)s->resolved, sizeof *values, compare_doubles);
-    for (int k = 0; k < SV_N_QUANTILES; k++)
-        s->quantiles[k] = sv_quantile_sorted(values, s->resolved, sv_quantile_levels()[k]);
-    if (!s->is_index)
+    for (int k = 0; k < SV_N_QUANTILES; k++) {
+        double level = sv_quantile_levels()[k];
+        s->quantiles[k] = sv_quantile_sorted(values, s->resolved, level);
+        sv_quantile_interval(values, s->resolved, level, s->confidence, s->quantile_intervals[k]);
+    }
+    if (!s->is_index) {
+        describe(&m, values, s);
         return SV_OK;
+    }
     sv_status status = count_shares(context, values, s);
     if (status == SV_OK)
         index_interval(s);
@@ -177,6 +199,31 @@ sv_status sv_summarise(sv_context *context, const sv_ensemble *ensemble, const s
     }
     *ret_summary = s;
     return SV_OK;
+}
+
+sv_status sv_summary_bootstrap(sv_context *context, const sv_ensemble *ensemble,
+                               const sv_case *point, int32_t point_number, int marker,
+                               int64_t resamples, sv_summary *summary)
+{
+    double *values = NULL, interval[2];
+    int64_t n = 0;
+    if (!summary->exists || summary->is_index || summary->resolved > SV_BOOTSTRAP_LARGEST)
+        return SV_OK;
+    sv_status status = sv_take(context, summary->resolved, sizeof *values, &values);
+    for (int64_t k = 0; status == SV_OK && k < summary->realisations; k++) {
+        const sv_kept_outcome *o = sv_ensemble_outcome(ensemble, point_number, k, marker);
+        if (o != NULL && o->verdict == SV_RESOLVED && n < summary->resolved)
+            values[n++] = o->value;
+    }
+    if (status == SV_OK)
+        status = sv_bootstrap_interval(context, values, n, resamples, point->seed,
+                                       summary->confidence, interval);
+    sv_give(context, values);
+    if (status == SV_OK) {
+        memcpy(summary->interval_bca, interval, sizeof interval);
+        summary->resamples = resamples;
+    }
+    return status == SV_UNDEFINED ? SV_OK : status;
 }
 
 void sv_summary_free(sv_context *context, sv_summary *summary)

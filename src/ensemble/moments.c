@@ -1,10 +1,8 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Statistics of a series in its order. Compensated sums: NIST StRD NumAcc4 needs them. */
+/* Moments of a series in its order. Compensated sums: NIST StRD NumAcc4 needs them. */
 #include "selvedge/ensemble.h"
 
 #include <math.h>
-
-#include <gsl/gsl_cdf.h>
 
 /* Neumaier's sum: total and the low-order part that rounding lost. */
 typedef struct exact_sum {
@@ -26,9 +24,30 @@ static double value_of(const exact_sum *sum)
     return sum->total + sum->lost;
 }
 
+/* Third and fourth cumulants by their unbiased estimators (k-statistics) over the variance's. */
+static void shape(const double *values, double deviation, sv_moments *m)
+{
+    exact_sum third = {0}, fourth = {0};
+    double n = (double)m->n;
+    for (int64_t k = 0; k < m->n; k++) {
+        double z = (values[k] - m->mean) / deviation;
+        add(&third, z * z * z);
+        add(&fourth, z * z * z * z);
+    }
+    m->skewness = n / ((n - 1.0) * (n - 2.0)) * value_of(&third);
+    if (m->n > 3)
+        m->kurtosis = n * (n + 1.0) / ((n - 1.0) * (n - 2.0) * (n - 3.0)) * value_of(&fourth) -
+                      3.0 * (n - 1.0) * (n - 1.0) / ((n - 2.0) * (n - 3.0));
+}
+
 sv_moments sv_moments_of(const double *values, int64_t n)
 {
-    sv_moments m = {.n = n, .mean = NAN, .deviation = 0.0, .standard_error = NAN};
+    sv_moments m = {.n = n,
+                    .mean = NAN,
+                    .deviation = 0.0,
+                    .standard_error = NAN,
+                    .skewness = NAN,
+                    .kurtosis = NAN};
     if (n < 1)
         return m;
     exact_sum sum = {0}, squares = {0}, rest = {0};
@@ -47,6 +66,8 @@ sv_moments sv_moments_of(const double *values, int64_t n)
         (value_of(&squares) - value_of(&rest) * value_of(&rest) / (double)n) / (double)(n - 1);
     m.deviation = sqrt(fmax(variance, 0.0));
     m.standard_error = m.deviation / sqrt((double)n);
+    if (n > 2 && m.deviation > 0.0)
+        shape(values, m.deviation, &m);
     return m;
 }
 
@@ -62,48 +83,4 @@ double sv_autocorrelation(const double *values, int64_t n)
     }
     double below = value_of(&squares);
     return below > 0.0 ? value_of(&product) / below : (double)NAN;
-}
-
-sv_status sv_student_interval(const sv_moments *moments, double confidence, double ret_interval[2])
-{
-    if (moments->n < 2)
-        return SV_UNDEFINED;
-    double t = gsl_cdf_tdist_Pinv(0.5 + 0.5 * confidence, (double)(moments->n - 1));
-    ret_interval[0] = moments->mean - t * moments->standard_error;
-    ret_interval[1] = moments->mean + t * moments->standard_error;
-    return SV_OK;
-}
-
-void sv_wilson_interval(int64_t k, int64_t n, double confidence, double ret_interval[2])
-{
-    double z = gsl_cdf_ugaussian_Pinv(0.5 + 0.5 * confidence);
-    double count = (double)n, p = n > 0 ? (double)k / count : 0.5;
-    if (n == 0) {
-        ret_interval[0] = 0.0;
-        ret_interval[1] = 1.0;
-        return;
-    }
-    double centre = p + z * z / (2.0 * count);
-    double half = z * sqrt(p * (1.0 - p) / count + z * z / (4.0 * count * count));
-    double scale = 1.0 + z * z / count;
-    ret_interval[0] = k == 0 ? 0.0 : fmax(0.0, (centre - half) / scale);
-    ret_interval[1] = k == n ? 1.0 : fmin(1.0, (centre + half) / scale);
-}
-
-double sv_quantile_sorted(const double *sorted, int64_t n, double probability)
-{
-    if (n < 1)
-        return NAN;
-    double place = probability * (double)(n - 1);
-    int64_t below = (int64_t)floor(place);
-    if (below >= n - 1)
-        return sorted[n - 1];
-    double share = place - (double)below;
-    return sorted[below] + share * (sorted[below + 1] - sorted[below]);
-}
-
-const double *sv_quantile_levels(void)
-{
-    static const double levels[SV_N_QUANTILES] = {0.05, 0.25, 0.5, 0.75, 0.95};
-    return levels;
 }
