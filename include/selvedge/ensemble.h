@@ -97,7 +97,16 @@ typedef struct sv_ensemble_options {
     sv_stop_rule stop;
     sv_sink sink;
     double time_limit; /**< seconds, 0: none */
+    int32_t task, tasks; /**< compute only what belongs to task `task` (from 1) of `tasks`; 0 of 0:
+                              everything */
 } sv_ensemble_options;
+
+/**
+ * Does a realisation belong to a task? (point + realisation) mod tasks = task − 1: every point is
+ * spread over all tasks, and the total number of realisations does not matter. Every one belongs to
+ * task 0 of 0.
+ */
+SV_API bool sv_task_owns(int32_t task, int32_t tasks, int32_t point, int64_t realisation);
 
 /** What an ensemble keeps of a realisation as a whole. */
 typedef struct sv_kept_head {

@@ -37,6 +37,9 @@ typedef struct sv_run_identity {
                                      known, then rows carry positions only */
     int n_markers;
     int32_t n_points; /**< of the sweep, 1 without one; 0: not known */
+    int64_t realisations; /**< per point asked for; a note, no part of the identity; 0: not known */
+    int32_t task, tasks; /**< the part of task `task` (from 1) of `tasks`; 0 of 0: the whole run.
+                              The folder of one task refuses another task */
 } sv_run_identity;
 
 /**
@@ -70,9 +73,45 @@ SV_API SV_MUST_USE sv_status sv_run_event(sv_context *context, sv_run *run, cons
                                           const char *note);
 /**
  * Value of a meta key, or NULL: "identity" (canonical text), "identity_digest", "program_version",
- * "kernel", "sheet" (resolved sheet), "sheet_digest", "markers", "points".
+ * "kernel", "sheet" (resolved sheet), "sheet_digest", "markers", "points", "realisations", "task".
  */
 SV_API const char *sv_run_meta(const sv_run *run, const char *key);
+
+/* ------------------------------------------------------------------- merging */
+
+/** Which part of a run a folder holds: task of tasks, from 1; 0 of 0 for a whole run. */
+SV_API void sv_run_task(const sv_run *run, int32_t *ret_task, int32_t *ret_tasks);
+
+/** What a number of run folders hold together. */
+typedef struct sv_merge_survey {
+    int64_t rows;         /**< realisations, counted in every folder */
+    int64_t distinct;     /**< of them with different numbers */
+    int64_t extent;       /**< largest realisation number plus one */
+    int64_t realisations; /**< most that any folder was asked for, per point; 0: none says */
+    int32_t tasks;        /**< parts all folders agree on; 0: no folder is a part, −1: they differ */
+} sv_merge_survey;
+
+/**
+ * Reads every row of every folder with its checksum, compares what is there twice (times apart), and
+ * writes nothing. The folders may come from elsewhere: their ledgers are checked as
+ * sv_run_open_read() does, and none is followed out of itself. They must be of one run: the same
+ * sheet, inputs, version and arithmetic kernel.
+ * Memory: 56 bytes a row.
+ * @param folders  n ≥ 1 paths; the first one says which run it is
+ * @return SV_OTHER_RUN naming what differs; SV_STORAGE for damage; SV_UNDECIDED when a realisation has
+ *         other numbers in another folder: something is not reproducible; SV_INTERRUPTED
+ */
+SV_API SV_MUST_USE sv_status sv_run_survey(sv_context *context, const char *const *folders, int n,
+                                           sv_merge_survey *ret_survey);
+/**
+ * Puts the rows of the shards into a run of the same identity, in one transaction: all or none. Rows
+ * that are there already must be the same bit for bit (times apart). Any order, any number of times.
+ * An event notes each shard.
+ * @return as sv_run_survey(); SV_STORAGE also for a row that differs from the run's
+ */
+SV_API SV_MUST_USE sv_status sv_run_merge(sv_context *context, sv_run *run,
+                                          const char *const *shards, int n, int64_t *ret_added,
+                                          int64_t *ret_present);
 
 /** Writes a file of the run folder whole or not at all (temporary, fsync, rename). */
 SV_API SV_MUST_USE sv_status sv_write_file(sv_context *context, const char *path, const char *text,

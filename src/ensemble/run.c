@@ -30,6 +30,19 @@ static double seconds_now(void)
     return (double)now.tv_sec + 1e-9 * (double)now.tv_nsec;
 }
 
+bool sv_task_owns(int32_t task, int32_t tasks, int32_t point, int64_t realisation)
+{
+    return tasks == 0 || (point + realisation) % tasks == task - 1;
+}
+
+/* Is there anything left to do for a realisation here? */
+static bool is_wanted(const crew *c, int32_t point, int64_t realisation)
+{
+    const sv_ensemble *e = c->ensemble;
+    return !e->done[point * e->realisations + realisation] &&
+           sv_task_owns(c->options->task, c->options->tasks, point, realisation);
+}
+
 /* Hands out the next missing realisation of the first point that still needs one. */
 static bool next_work(crew *c, int32_t *ret_point, int64_t *ret_realisation)
 {
@@ -37,7 +50,7 @@ static bool next_work(crew *c, int32_t *ret_point, int64_t *ret_realisation)
     for (int32_t p = 0; p < e->n_points; p++) {
         if (c->stops[p].settled)
             continue;
-        while (c->next[p] < e->realisations && e->done[p * e->realisations + c->next[p]])
+        while (c->next[p] < e->realisations && !is_wanted(c, p, c->next[p]))
             c->next[p]++;
         if (c->next[p] == e->realisations)
             continue;
@@ -154,12 +167,14 @@ static void count_what_is_there(crew *c)
 {
     const sv_ensemble *e = c->ensemble;
     for (int32_t p = 0; p < e->n_points; p++) {
-        int64_t there = 0;
-        for (int64_t k = 0; k < e->realisations; k++)
+        int64_t there = 0, wanted = 0;
+        for (int64_t k = 0; k < e->realisations; k++) {
             there += e->done[p * e->realisations + k];
+            wanted += is_wanted(c, p, k);
+        }
         c->done += there;
         sv_stop_advance(&c->stops[p], e, p, &c->options->stop);
-        c->total += c->stops[p].settled ? there : e->realisations;
+        c->total += c->stops[p].settled ? there : there + wanted;
     }
 }
 
@@ -168,6 +183,12 @@ sv_status sv_ensemble_run(sv_context *context, const sv_case *points,
 {
     crew c = {.points = points, .options = options, .ensemble = ensemble, .context = context};
     sv_status status;
+    if (options->tasks < 0 || options->task < 0 || options->task > options->tasks ||
+        (options->tasks > 0 && (options->task == 0 || options->stop.active)))
+        return SV_FAIL(context, SV_INVALID_INPUT, "task %ld of %ld%s", (long)options->task,
+                       (long)options->tasks,
+                       options->stop.active ? " with a stop rule, which needs all realisations"
+                                            : "");
     if (options->threads < 1)
         return SV_FAIL(context, SV_INVALID_INPUT, "%d threads", options->threads);
     if ((status = sv_take(context, ensemble->n_points, sizeof *c.stops, &c.stops)) != SV_OK ||

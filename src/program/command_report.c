@@ -162,15 +162,6 @@ static sv_status draw_sweep(session *s, const sv_result *result, const char *fol
     return status;
 }
 
-static sv_status check_identity(session *s, sv_run *run)
-{
-    const char *identity = sv_run_meta(run, "identity");
-    if (identity == NULL || strcmp(identity, s->base.identity) == 0)
-        return SV_OK;
-    return SV_FAIL(s->context, SV_STORAGE,
-                   "the resolved sheet in the folder is not the one its ledger was made from");
-}
-
 static sv_status report(session *s, sv_run *run)
 {
     sv_context *context = s->context;
@@ -181,7 +172,7 @@ static sv_status report(session *s, sv_run *run)
     int32_t points;
     char folder[1024];
     sv_stop_rule stop = session_stop_rule(s);
-    sv_status status = check_identity(s, run);
+    sv_status status = run_folder_check_identity(s, run);
     if (status == SV_OK)
         status = sv_run_extent(context, run, &realisations, &points);
     if (status == SV_OK && realisations == 0)
@@ -219,7 +210,14 @@ int run_report(sv_context *context, const options *o)
     session s = {0};
     sv_run *run = NULL;
     char sheet[1024];
+    int32_t task = 0, tasks = 0;
     sv_status status = sv_run_open_read(context, o->files[0], &run);
+    if (status == SV_OK)
+        sv_run_task(run, &task, &tasks);
+    if (status == SV_OK && tasks > 0)
+        status = SV_FAIL(context, SV_USAGE,
+                         "%s holds the part of task %ld of %ld; join the parts with merge first",
+                         o->files[0], (long)task, (long)tasks);
     if (status == SV_OK)
         status = sv_run_path(context, run, "sheet.resolved.yaml", sheet, sizeof sheet);
     if (status == SV_OK)

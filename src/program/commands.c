@@ -2,6 +2,7 @@
 /* The table of commands, and the two that only talk about the program itself. */
 #include "program_internal.h"
 
+#include <limits.h>
 #include <sched.h>
 #include <string.h>
 
@@ -17,12 +18,15 @@ static const command commands[] = {
     {"spectrum", "SHEET", "states below E_F, gap, states next to it, density of states",
      SHEET_OPTIONS "koVF", 1, 1, run_spectrum},
     {"average", "SHEET -o RUN", "the ensemble and its sweep; continues an existing run",
-     SHEET_OPTIONS "ojPDFT", 1, 1, run_average},
+     SHEET_OPTIONS "ojPDFTA", 1, 1, run_average},
+    {"merge", "RUN SHARD...", "joins the folders of tasks in one run; repeatable, in any order",
+     "jqvCJP", 2, INT_MAX, run_merge},
     {"report", "RUN", "figures of a finished or unfinished run", "okjqvCJP", 1, 1, run_report},
     {"export", "SHEET", "writes the Hamiltonian and the sites of one realisation",
      SHEET_OPTIONS "kHLF", 1, 1, run_export},
     {"info", "", "versions, BLAS, arithmetic kernel, threads", "J", 0, 0, run_info},
-    {"help", "[COMMAND|keys|presets]", "help on a command, the keys of a sheet, or material presets", "", 0, 1, run_help},
+    {"help", "[COMMAND|keys|presets]",
+     "help on a command, the keys of a sheet, or material presets", "", 0, 1, run_help},
 };
 
 const command *command_table(int *ret_count)

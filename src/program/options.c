@@ -27,6 +27,7 @@ typedef enum option_id {
     OPT_PROBES = 'B',
     OPT_BLOCKS = 'M',
     OPT_FLOW = 'W',
+    OPT_TASK = 'A',
     OPT_HELP = 'h'
 } option_id;
 
@@ -52,6 +53,7 @@ static const option_row option_rows[] = {
     {OPT_DRY_RUN, false, "dry-run", NULL, "forecast only, write nothing"},
     {OPT_FORCE, false, "force", NULL, "go on in a run of another identity; overwrite exports"},
     {OPT_TIME_LIMIT, false, "time-limit", "SECONDS", "stop cleanly after this time (exit 7)"},
+    {OPT_TASK, false, "task", "I/N", "compute part I of N only, into its own folder; see merge"},
     {OPT_HAMILTONIAN, false, "hamiltonian", "FILE", "write the Hamiltonian (Matrix Market)"},
     {OPT_SITES, false, "sites", "FILE", "write the sites in matrix order (CSV)"},
     {OPT_CSV, false, "csv", "FILE",
@@ -153,7 +155,7 @@ static bool add_made_override(options *o, int slot, const char *path, const char
 
 static bool add_override(options *o, const char *value)
 {
-    if (o->n_overrides == MOST_OVERRIDES - 2 || strchr(value, '=') == NULL)
+    if (o->n_overrides == MOST_OVERRIDES - 3 || strchr(value, '=') == NULL)
         return false;
     o->overrides[o->n_overrides++] = value;
     return true;
@@ -163,6 +165,18 @@ static bool add_override(options *o, const char *value)
 static bool is_file_name(const char *value)
 {
     return value[0] != '\0' && strcmp(value, "-") != 0;
+}
+
+/* "3/20" */
+static bool parse_task(const char *text, options *o)
+{
+    const char *slash = strchr(text, '/');
+    char head[24] = "";
+    if (slash == NULL || (size_t)(slash - text) >= sizeof head)
+        return false;
+    memcpy(head, text, (size_t)(slash - text));
+    return parse_count(head, 1, &o->task) && parse_count(slash + 1, 1, &o->tasks) &&
+           o->task <= o->tasks && o->tasks <= MOST_TASKS;
 }
 
 /* Takes one option; false when its value is not legal. */
@@ -222,6 +236,8 @@ static bool apply(options *o, option_id id, const char *value)
     case OPT_BLOCKS:
         o->blocks = value;
         return is_file_name(value);
+    case OPT_TASK:
+        return parse_task(value, o);
     case OPT_HELP:
         return true;
     }
@@ -344,6 +360,11 @@ int options_parse(int argc, char **argv, options *ret)
     if (ret->command == NULL)
         return unknown_command(argv[1]);
     keep_command_line(argc, argv, ret);
+    ret->files = calloc((size_t)argc, sizeof *ret->files);
+    if (ret->files == NULL) {
+        fprintf(stderr, "selvedge: error: %s\n", sv_status_text(SV_NO_MEMORY));
+        return sv_status_exit_code(SV_NO_MEMORY);
+    }
     return parse_words(argc, argv, ret);
 }
 
@@ -351,6 +372,7 @@ void options_free(options *o)
 {
     free(o->made[0]);
     free(o->made[1]);
+    free(o->files);
 }
 
 static void print_option_rows(const command *c, FILE *stream)

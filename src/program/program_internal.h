@@ -8,19 +8,20 @@
 #include <selvedge/present.h>
 #include <selvedge/sheet.h>
 
-enum { MOST_FILES = 4, MOST_OVERRIDES = 64, MOST_POINTS = 100000 };
+enum { MOST_OVERRIDES = 64, MOST_TASKS = 1000000, MOST_POINTS = 100000 };
 
 typedef enum choice { CHOICE_AUTO, CHOICE_ALWAYS, CHOICE_NEVER } choice;
 
 /* The command line after parsing. */
 typedef struct options {
     const struct command *command;
-    const char *files[MOST_FILES];
+    const char **files;
     int n_files;
     const char *output, *hamiltonian, *sites, *csv, *probes, *blocks, *flow;
     int64_t realisation;
     int64_t threads; /* 0: as many as the affinity mask allows */
     double time_limit;
+    int64_t task, tasks; /* 0 of 0: the whole ensemble */
     bool json, quiet, dry_run, force;
     int verbose;
     choice colour, progress;
@@ -70,6 +71,9 @@ typedef struct session {
     point *points;
     int32_t n_points;
     int threads;
+    char kernel[160], version[100]; /* of the rows: this program's, or those of a run */
+    const char *plan_lines; /* borrowed: the engines as a run notes them, when not planned here */
+    bool inside_run;     /* the sheet is the one in a run folder */
     bool add_map_marker; /* the map command always computes the local Chern marker */
     bool levels_only;    /* the spectrum command computes no marker: other needs of memory */
 } session;
@@ -128,6 +132,16 @@ sv_status result_make(session *s, const sv_ensemble *ensemble, const sv_stop_rul
 void result_free(sv_context *context, sv_result *result);
 sv_stop_rule session_stop_rule(const session *s);
 
+/* A run folder for the ensemble of a session (run_folder.c): opened for writing, the resolved sheet
+ * in it checked against its ledger, its points.csv and summary.json written, its result judged. */
+sv_status run_folder_open(session *s, sv_run **ret_run);
+sv_status run_folder_check_identity(session *s, const sv_run *run);
+sv_status run_folder_write(session *s, sv_run *run, const sv_result *result, char **ret_json);
+sv_status run_folder_judge(session *s, const sv_result *result);
+void run_folder_warn(session *s, const sv_result *result);
+/* The comment lines about engines in a resolved sheet; taken from the context. */
+sv_status run_folder_plan_lines(sv_context *context, const char *sheet, char **ret_lines);
+
 /* The levels of the spectral flow: are they wanted, can they be written, computing, writing. */
 bool flow_wanted(const options *o, const sv_case *problem);
 sv_status flow_check(sv_context *context, const options *o, const sv_case *problem);
@@ -166,6 +180,7 @@ int run_draw(sv_context *context, const options *o);
 int run_map(sv_context *context, const options *o);
 int run_spectrum(sv_context *context, const options *o);
 int run_average(sv_context *context, const options *o);
+int run_merge(sv_context *context, const options *o);
 int run_report(sv_context *context, const options *o);
 int run_export(sv_context *context, const options *o);
 int run_info(sv_context *context, const options *o);

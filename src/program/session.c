@@ -231,7 +231,10 @@ sv_status session_open(sv_context *context, const options *o, const char *path, 
     sv_diagnostics diagnostics = {0};
     ret->context = context;
     ret->options = o;
+    ret->inside_run = inside_run;
     sv_blas_setup(&ret->blas);
+    kernel_text(&ret->blas, ret->kernel, sizeof ret->kernel);
+    snprintf(ret->version, sizeof ret->version, "%s", sv_version());
     sv_status status = choose_threads(ret);
     if (status == SV_OK)
         status = open_sheet(ret, path, inside_run, with_sweep, &diagnostics);

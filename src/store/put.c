@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* Appending realisations: one transaction each, on disk when the call returns. */
+#include <stdio.h>
 #include <string.h>
 
 #include "store_internal.h"
@@ -79,7 +80,7 @@ static sv_status insert_outcome(sv_context *context, sv_run *run, const sv_recor
     return status;
 }
 
-static sv_status prepare_writing(sv_context *context, sv_run *run)
+sv_status sv_put_prepare(sv_context *context, sv_run *run)
 {
     sv_status status = SV_OK;
     if (run->put_row == NULL)
@@ -105,38 +106,52 @@ static sv_status check_record(sv_context *context, const sv_run *run, const sv_r
     return SV_OK;
 }
 
+void sv_record_difference(const sv_record *was, const sv_record *is, char *text, size_t size)
+{
+    for (int i = 0; i < is->n_outcomes && i < was->n_outcomes; i++) {
+        const sv_outcome *a = &was->outcomes[i], *b = &is->outcomes[i];
+        if (a->value < b->value || a->value > b->value) {
+            snprintf(text, size, "the value of marker number %d is %.17g there, %.17g here", i,
+                     a->value, b->value);
+            return;
+        }
+    }
+    if (was->sites != is->sites)
+        snprintf(text, size, "it has %lld sites there, %lld here", (long long)was->sites,
+                 (long long)is->sites);
+    else
+        snprintf(text, size, "an error, a margin or a verdict differs");
+}
+
 /* A realisation that is there already must have the same numbers, its time apart. */
 static sv_status compare(sv_context *context, const sv_run *run, const sv_record *old_record,
                          const sv_record *record)
 {
-    char was[65], is[65];
+    char was[65], is[65], difference[400];
     sv_record_checksum(old_record, false, was);
     sv_record_checksum(record, false, is);
     if (strcmp(was, is) == 0)
         return SV_OK;
-    for (int i = 0; i < record->n_outcomes && i < old_record->n_outcomes; i++)
-        if (old_record->outcomes[i].value < record->outcomes[i].value ||
-            old_record->outcomes[i].value > record->outcomes[i].value)
-            return SV_FAIL(context, SV_STORAGE,
-                           "realisation %lld of point %ld is kept in %s with another value: "
-                           "%.17g there, %.17g now (marker number %d)",
-                           (long long)record->realisation, (long)record->point, run->folder,
-                           old_record->outcomes[i].value, record->outcomes[i].value, i);
+    sv_record_difference(old_record, record, difference, sizeof difference);
     return SV_FAIL(context, SV_STORAGE,
-                   "realisation %lld of point %ld is kept in %s with another outcome",
-                   (long long)record->realisation, (long)record->point, run->folder);
+                   "realisation %lld of point %ld is kept in %s with another outcome: %s",
+                   (long long)record->realisation, (long)record->point, run->folder, difference);
 }
 
-static sv_status insert(sv_context *context, sv_run *run, const sv_record *record)
+sv_status sv_record_insert(sv_context *context, sv_run *run, const sv_record *record, bool *ret_new)
 {
     sv_record old_record;
     bool found = false;
-    sv_status status =
-        sv_record_read(context, run, record->point, record->realisation, &old_record, &found);
-    if (status == SV_OK && found)
-        return compare(context, run, &old_record, record);
+    sv_status status = check_record(context, run, record);
     if (status == SV_OK)
-        status = insert_row(context, run, record);
+        status =
+            sv_record_read(context, run, record->point, record->realisation, &old_record, &found);
+    if (status != SV_OK)
+        return status;
+    *ret_new = !found;
+    if (found)
+        return compare(context, run, &old_record, record);
+    status = insert_row(context, run, record);
     for (int i = 0; i < record->n_outcomes && status == SV_OK; i++)
         status = insert_outcome(context, run, record, i);
     return status;
@@ -145,14 +160,15 @@ static sv_status insert(sv_context *context, sv_run *run, const sv_record *recor
 sv_status sv_run_put(sv_context *context, const sv_record *record, void *user)
 {
     sv_run *run = user;
+    bool is_new;
     sv_status status = check_record(context, run, record);
     if (status == SV_OK)
-        status = prepare_writing(context, run);
+        status = sv_put_prepare(context, run);
     if (status == SV_OK)
         status = sv_ledger_execute(context, run, "BEGIN IMMEDIATE");
     if (status != SV_OK)
         return status;
-    status = insert(context, run, record);
+    status = sv_record_insert(context, run, record, &is_new);
     if (status == SV_OK)
         status = sv_ledger_execute(context, run, "COMMIT");
     if (status != SV_OK && sqlite3_get_autocommit(run->ledger) == 0)

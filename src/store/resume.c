@@ -96,6 +96,30 @@ static bool same_sheet(const sv_run *run, const sv_run_identity *identity)
     return before != NULL && strcmp(before, identity->identity) == 0;
 }
 
+/* The part of a task holds what is that task's and nothing else. */
+static sv_status check_task(sv_context *context, const sv_run *run, const sv_run_identity *identity)
+{
+    int32_t task, tasks;
+    sv_run_task(run, &task, &tasks);
+    if (task == identity->task && tasks == identity->tasks)
+        return SV_OK;
+    if (tasks == 0)
+        return SV_FAIL(context, SV_OTHER_RUN,
+                       "%s holds a whole run, not the part of a task; give each task a folder of "
+                       "its own",
+                       run->folder);
+    if (identity->tasks == 0)
+        return SV_FAIL(context, SV_OTHER_RUN,
+                       "%s holds the part of task %ld of %ld; continue it with --task %ld/%ld, or "
+                       "join the parts in another folder with merge",
+                       run->folder, (long)task, (long)tasks, (long)task, (long)tasks);
+    return SV_FAIL(context, SV_OTHER_RUN,
+                   "%s holds the part of task %ld of %ld, not of task %ld of %ld; give each task a "
+                   "folder of its own",
+                   run->folder, (long)task, (long)tasks, (long)identity->task,
+                   (long)identity->tasks);
+}
+
 static sv_status resume(sv_context *context, sv_run *run, const sv_run_identity *identity,
                         bool force)
 {
@@ -103,6 +127,8 @@ static sv_status resume(sv_context *context, sv_run *run, const sv_run_identity 
     const char *old_digest = sv_run_meta(run, "identity_digest");
     sv_identity_digest(context, identity, digest);
     sv_status status = SV_OK;
+    if (same_sheet(run, identity) && (status = check_task(context, run, identity)) != SV_OK)
+        return status;
     if (old_digest == NULL || strcmp(digest, old_digest) != 0) {
         sv_identity_difference(run, identity, difference, sizeof difference);
         if (!force)

@@ -10,7 +10,7 @@
 
 static sv_status set_identity(sv_context *context, sv_run *run, const sv_run_identity *identity)
 {
-    char digest[65], sheet_digest[65];
+    char digest[65], sheet_digest[65], number[64];
     sv_identity_digest(context, identity, digest);
     sv_digest(identity->resolved_sheet, strlen(identity->resolved_sheet), sheet_digest);
     const char *const pairs[][2] = {{"identity", identity->identity},
@@ -22,6 +22,14 @@ static sv_status set_identity(sv_context *context, sv_run *run, const sv_run_ide
     sv_status status = SV_OK;
     for (size_t i = 0; i < sizeof pairs / sizeof *pairs && status == SV_OK; i++)
         status = sv_meta_set(context, run, pairs[i][0], pairs[i][1]);
+    if (status == SV_OK && identity->realisations > 0) {
+        snprintf(number, sizeof number, "%lld", (long long)identity->realisations);
+        status = sv_meta_set(context, run, "realisations", number);
+    }
+    if (status == SV_OK && identity->tasks > 0) {
+        snprintf(number, sizeof number, "%ld/%ld", (long)identity->task, (long)identity->tasks);
+        status = sv_meta_set(context, run, "task", number);
+    }
     if (status == SV_OK)
         status = sv_meta_set_shape(context, run, identity);
     return status;

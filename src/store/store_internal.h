@@ -20,7 +20,8 @@ enum {
     SV_MARKER_NAME_SIZE = 64,
     /* A ledger row never needs more; guards against huge values in a file from elsewhere. */
     SV_MAX_POINTS = 1 << 20,
-    SV_MAX_TEXT_BYTES = 1 << 24
+    SV_MAX_TEXT_BYTES = 1 << 24,
+    SV_MAX_TASKS = 1 << 20
 };
 #define SV_MAX_REALISATIONS (INT64_C(1) << 40)
 
@@ -104,6 +105,14 @@ void sv_identity_difference(const sv_run *run, const sv_run_identity *identity, 
 /* read.c */
 sv_status sv_record_read(sv_context *context, sv_run *run, int32_t point, int64_t realisation,
                          sv_record *ret_record, bool *ret_found);
+
+/* put.c */
+sv_status sv_put_prepare(sv_context *context, sv_run *run);
+/* Inserts inside a transaction; a realisation that is there must have the same numbers. */
+sv_status sv_record_insert(sv_context *context, sv_run *run, const sv_record *record,
+                           bool *ret_new);
+void sv_record_difference(const sv_record *was, const sv_record *is, char *text, size_t size);
+
 /* checksum.c */
 void sv_record_checksum(const sv_record *record, bool with_seconds, char digest[65]);
 
