@@ -8,6 +8,8 @@
 #include <time.h>
 #include <unistd.h>
 
+enum { MOST_CLAIMED = 10000000 };
+
 /* What a merge knows before it writes. */
 typedef struct merge {
     const options *o;
@@ -71,6 +73,12 @@ static sv_status open_reference(sv_context *context, merge *m, options *o, char 
         snprintf(s->version, sizeof s->version, "%s", sv_run_meta(run, "program_version"));
         s->plan_lines = m->plan_lines;
     }
+    /* A folder from elsewhere may claim any number; a table of that size is taken on trust up to a
+     * point only. */
+    if (status == SV_OK && n > (MOST_CLAIMED + 100 * m->survey.distinct) / s->n_points)
+        status = SV_FAIL(context, SV_REFUSED,
+                         "the folders speak of %lld realisations at %d points and hold %lld",
+                         (long long)n, s->n_points, (long long)m->survey.distinct);
     sv_run_close(context, run);
     return status;
 }

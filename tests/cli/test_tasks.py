@@ -236,6 +236,15 @@ def damage_is_found_before_anything_is_written():
 
 
 @test
+def a_part_that_claims_too_much_is_refused():
+    top = folder()
+    claims = copy_of(parts(5)[2], top, "claims")
+    with sqlite3.connect(os.path.join(claims, "ledger.sqlite")) as writer:
+        writer.execute("update meta set value = '1000000000' where key = 'realisations'")
+    refused(os.path.join(top, "fresh"), claims, 6, "speak of 1000000000 realisations")
+
+
+@test
 def a_row_that_differs_is_a_failed_check():
     top, path = sheet()
     place, fresh = os.path.join(top, "run"), os.path.join(top, "fresh")

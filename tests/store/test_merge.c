@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Joining the parts of tasks: what is there twice, what differs, what is refused, all or nothing. */
+/* Joining the parts of tasks: what is there twice, what differs, what is refused, all or nothing.
+ */
 #include <unistd.h>
 
 #include "fixture.h"
@@ -12,7 +13,7 @@ static const char *make_part(int task, double twist, char *path, size_t size)
     sv_run_identity identity = fixture_identity();
     sv_run *run = NULL;
     char name[32];
-    snprintf(name, sizeof name, "part-%d", task);
+    snprintf(name, sizeof name, "part-%d%s", task, twist > 0.0 ? "-twisted" : "");
     snprintf(path, size, "%s", test_scratch(name));
     identity.task = task;
     identity.tasks = N_PARTS;
