@@ -82,8 +82,96 @@ static unsigned char *slurp(const char *path, size_t *ret_size)
     return bytes;
 }
 
+/*
+ * SQLite takes and gives thousands of blocks for one input. It is not compiled with a checker, so
+ * a plain pool for it loses nothing and is twice as fast: blocks of 2^k bytes, the size before
+ * them.
+ */
+enum { SMALLEST = 5, LARGEST = 24, POOL_HEAD = 16 };
+static void *idle[LARGEST + 1];
+
+static int pool_round(int bytes)
+{
+    int k = SMALLEST;
+    while (k < LARGEST && (1 << k) - POOL_HEAD < bytes)
+        k++;
+    return (1 << k) - POOL_HEAD;
+}
+
+static void *pool_take(int bytes)
+{
+    const int size = pool_round(bytes);
+    const int k = __builtin_ctz((unsigned)(size + POOL_HEAD));
+    char *block = idle[k];
+    if (size < bytes)
+        return NULL;
+    if (block != NULL)
+        memcpy(&idle[k], block + POOL_HEAD, sizeof *idle);
+    else if ((block = malloc((size_t)(size + POOL_HEAD))) == NULL)
+        return NULL;
+    memcpy(block, &size, sizeof size);
+    return block + POOL_HEAD;
+}
+
+static int pool_size(void *memory)
+{
+    int size = 0;
+    if (memory != NULL)
+        memcpy(&size, (char *)memory - POOL_HEAD, sizeof size);
+    return size;
+}
+
+static void pool_give(void *memory)
+{
+    if (memory == NULL)
+        return;
+    const int k = __builtin_ctz((unsigned)(pool_size(memory) + POOL_HEAD));
+    memcpy(memory, &idle[k], sizeof *idle);
+    idle[k] = (char *)memory - POOL_HEAD;
+}
+
+static void *pool_resize(void *memory, int bytes)
+{
+    const int before = pool_size(memory);
+    if (bytes <= before)
+        return memory;
+    void *larger = pool_take(bytes);
+    if (larger != NULL)
+        memcpy(larger, memory, (size_t)before);
+    if (larger != NULL)
+        pool_give(memory);
+    return larger;
+}
+
+static int pool_begin(void *user)
+{
+    (void)user;
+    return SQLITE_OK;
+}
+
+static void pool_end(void *user)
+{
+    (void)user;
+}
+
+static void use_pool(void)
+{
+    static const sqlite3_mem_methods pool = {pool_take,  pool_give,  pool_resize, pool_size,
+                                             pool_round, pool_begin, pool_end,    NULL};
+    fuzz_require(sqlite3_config(SQLITE_CONFIG_SINGLETHREAD) == SQLITE_OK &&
+                     sqlite3_config(SQLITE_CONFIG_MEMSTATUS, 0) == SQLITE_OK &&
+                     sqlite3_config(SQLITE_CONFIG_MALLOC, &pool) == SQLITE_OK,
+                 "SQLite is already in use");
+}
+
 static void forget(void)
 {
+    sqlite3_shutdown();
+    for (int k = SMALLEST; k <= LARGEST; k++)
+        for (char *block = idle[k], *next; block != NULL; block = next) {
+            memcpy(&next, block + POOL_HEAD, sizeof next);
+            free(block);
+        }
     free(good_ledger);
     good_ledger = NULL;
 }
@@ -95,7 +183,9 @@ static void prepare(sv_context *context)
     sv_run *run = NULL;
     if (good_ledger != NULL)
         return;
+    use_pool();
     snprintf(folder, sizeof folder, "%s/run", fuzz_folder());
+    setenv("TMPDIR", fuzz_folder(), 1); /* copies that are rolled back go there, too */
     snprintf(ledger_path, sizeof ledger_path, "%s/ledger.sqlite", folder);
     snprintf(journal_path, sizeof journal_path, "%s/ledger.sqlite-journal", folder);
     snprintf(sheet_path, sizeof sheet_path, "%s/sheet.resolved.yaml", folder);
@@ -265,12 +355,14 @@ static sv_status read_rows(sv_context *context, sv_run *run, bool others)
     sv_index loaded = 0;
     sv_status status = sv_run_extent(context, run, &realisations, &points);
     if (status == SV_OK)
-        status = sv_ensemble_init(context, N_POINTS, N_ROWS + 1, &ensemble);
+        status = sv_ensemble_init(context, N_POINTS, N_ROWS + 1, 2, &ensemble);
     if (status == SV_OK)
         status = sv_run_load(context, run, &ensemble, &loaded);
-    for (int64_t i = 0; status == SV_OK && !others && i < N_POINTS * (N_ROWS + 1); i++)
-        if (ensemble.done[i])
-            check_record(&ensemble.records[i]);
+    sv_record record;
+    for (int32_t point = 0; status == SV_OK && !others && point < N_POINTS; point++)
+        for (int64_t k = 0; k <= N_ROWS; k++)
+            if (sv_ensemble_get(&ensemble, point, k, &record))
+                check_record(&record);
     sv_ensemble_free(context, &ensemble);
     return status;
 }
