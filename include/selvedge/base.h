@@ -168,7 +168,8 @@ typedef enum sv_dimension {
     SV_DIM_TEMPERATURE, /**< inside: kelvin */
     SV_DIM_ENERGY_LENGTH, /**< ħ times a velocity; inside: eV nm, in a model: energy unit × nm */
     SV_DIM_ENERGY_AREA,   /**< inside: eV nm², in a model: energy unit × nm² */
-    SV_DIM_VOLUME_DENSITY /**< inside: nm^-3 when written with a unit */
+    SV_DIM_VOLUME_DENSITY, /**< inside: nm^-3 when written with a unit */
+    SV_DIM_TIME           /**< inside: second */
 } sv_dimension;
 
 /** One row of the table of units: value_in_base = factor · value. */

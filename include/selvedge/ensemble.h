@@ -75,13 +75,43 @@ typedef struct sv_plan {
 SV_API SV_MUST_USE sv_status sv_case_plan(sv_context *context, sv_case *point, bool site_map,
                                           double sampling_error, sv_plan *ret_plan);
 
-/** Stop rule: the first n ≥ at_least at which the standard error of `marker` is ≤ the target. */
+/**
+ * Stop rule: holds at the first n ≥ at_least, in the order of realisations, at which
+ * - the time is used up, or
+ * - every precision asked for is reached:
+ *   standard_error  s²(1 + 5γ²/n)/n ≤ standard_error², s the deviation, γ the skewness of the
+ *                   resolved values (without it the rule would stop at skewed values too early);
+ *                   values that are all the same must be 4·at_least. Of an index instead
+ *                   max(s², (Σ(x − m)² + 2)/(n + 1))/n: as if two more realisations were one off.
+ *   share_width     of Wilson's 95 % interval of the share of the most frequent index.
+ * Coverage of the intervals under the rule: docs/statistics.md.
+ */
 typedef struct sv_stop_rule {
     bool active;
-    int marker; /**< number in sv_case.markers */
-    double standard_error;
+    int marker;            /**< number in sv_case.markers */
+    bool of_index;         /**< it is an index */
+    double standard_error; /**< 0: not asked for */
+    double share_width;    /**< 0: not asked for */
+    double seconds;        /**< of computing, summed over the realisations of a point; 0: no limit. What counts then
+                                depends on the machine, but given its records no longer on anything else */
     int64_t at_least;
 } sv_stop_rule;
+
+enum { SV_STOP_INDICES = 32 };
+/** The leading realisations of a point as the rule sees them; begins zeroed. */
+typedef struct sv_stop_state {
+    int64_t counted;  /**< realisations taken in */
+    int64_t judged;   /**< of them, those on which the marker exists */
+    int64_t resolved; /**< of them, those with a value */
+    double mean, squares, cubes; /**< central sums of the values */
+    double seconds;
+    int n_indices;
+    int64_t indices[SV_STOP_INDICES], counts[SV_STOP_INDICES];
+    bool settled; /**< kept by those who take in whole ensembles */
+} sv_stop_state;
+/** Takes in the next realisation. @return does the rule hold now? */
+SV_API bool sv_stop_add(sv_stop_state *state, const sv_stop_rule *rule, sv_verdict verdict,
+                        double value, double seconds);
 
 /** Where finished realisations go. Called from one thread at a time. */
 typedef struct sv_sink {

@@ -60,6 +60,8 @@ typedef struct sv_sheet_options {
      *  the key at fault and what is wrong, to follow the key's path. */
     bool (*check_marker)(int kind, const sv_value *values, int *ret_key, char *message,
                          size_t size);
+    /** Are the values of a marker integers (from the marker layer)? NULL: nobody asks. */
+    bool (*is_index)(int kind);
 } sv_sheet_options;
 
 /**
@@ -133,7 +135,9 @@ typedef struct sv_setup {
     int64_t realisations;
     uint64_t seed;
     bool has_stop;
-    double stop_standard_error;
+    double stop_standard_error; /**< 0: not asked for */
+    double stop_share_width;    /**< 0: not asked for */
+    double stop_seconds;        /**< of computing, over all points; 0: no limit */
     int stop_marker; /**< number in `markers` */
     int64_t stop_at_least;
     sv_sweep_axis axes[2];

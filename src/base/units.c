@@ -43,6 +43,11 @@ static const sv_unit unit_rows[] = {
     {"pi", SV_DIM_ANGLE, 3.14159265358979323846},
     {"K", SV_DIM_TEMPERATURE, 1.0},
     {"mK", SV_DIM_TEMPERATURE, 1e-3},
+    {"s", SV_DIM_TIME, 1.0},
+    {"ms", SV_DIM_TIME, 1e-3},
+    {"min", SV_DIM_TIME, 60.0},
+    {"h", SV_DIM_TIME, 3600.0},
+    {"d", SV_DIM_TIME, 86400.0},
     {"eV nm", SV_DIM_ENERGY_LENGTH, 1.0},
     {"meV nm", SV_DIM_ENERGY_LENGTH, 1e-3},
     {"eV angstrom", SV_DIM_ENERGY_LENGTH, 0.1},
@@ -85,6 +90,8 @@ const char *sv_dimension_name(sv_dimension dimension)
         return "an angle";
     case SV_DIM_TEMPERATURE:
         return "a temperature";
+    case SV_DIM_TIME:
+        return "a time";
     case SV_DIM_ENERGY_LENGTH:
         return "an energy times a length";
     case SV_DIM_ENERGY_AREA:

@@ -16,7 +16,7 @@ typedef struct crew {
     sv_context *context; /* of the caller: progress, log, sink */
     double deadline;     /* monotonic seconds, 0: none */
     pthread_mutex_t mutex;
-    stop_state *stops;   /* one per point */
+    sv_stop_state *stops;   /* one per point */
     int64_t *next;       /* next realisation to hand out, one per point */
     int64_t done, total; /* for progress */
     double last_progress;

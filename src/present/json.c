@@ -54,6 +54,7 @@ static void put_mean(sv_json *json, json_t *object, const sv_summary *summary)
                                                : json_null());
     sv_json_put_real(json, object, "confidence", summary->confidence);
     sv_json_put_real(json, object, "deviation", spread ? summary->deviation : (double)NAN);
+    sv_json_put_real(json, object, "skewness", summary->skewness);
     if (!spread)
         sv_json_put_text(json, object, "reason",
                          "a standard error needs at least two resolved realisations");

@@ -52,7 +52,8 @@ static const option_row option_rows[] = {
     {OPT_PROGRESS, false, "progress", "auto|always|never", "progress on standard error"},
     {OPT_DRY_RUN, false, "dry-run", NULL, "forecast only, write nothing"},
     {OPT_FORCE, false, "force", NULL, "go on in a run of another identity; overwrite exports"},
-    {OPT_TIME_LIMIT, false, "time-limit", "SECONDS", "stop cleanly after this time (exit 7)"},
+    {OPT_TIME_LIMIT, false, "time-limit", "TIME",
+     "stop cleanly after so many seconds, or 10 min (exit 7)"},
     {OPT_TASK, false, "task", "I/N", "compute part I of N only, into its own folder; see merge"},
     {OPT_HAMILTONIAN, false, "hamiltonian", "FILE", "write the Hamiltonian (Matrix Market)"},
     {OPT_SITES, false, "sites", "FILE", "write the sites in matrix order (CSV)"},
@@ -182,7 +183,7 @@ static bool parse_task(const char *text, options *o)
 /* Takes one option; false when its value is not legal. */
 static bool apply(options *o, option_id id, const char *value)
 {
-    double seconds;
+    sv_quantity time;
     switch (id) {
     case OPT_OUTPUT:
         o->output = value;
@@ -214,9 +215,9 @@ static bool apply(options *o, option_id id, const char *value)
     case OPT_FORCE:
         return o->force = true;
     case OPT_TIME_LIMIT:
-        if (sv_parse_real(value, &seconds) != SV_PARSE_OK || seconds <= 0.0)
+        if (sv_parse_quantity(value, SV_DIM_TIME, &time) != SV_PARSE_OK || !(time.value > 0.0))
             return false;
-        o->time_limit = seconds;
+        o->time_limit = time.value;
         return true;
     case OPT_HAMILTONIAN:
         o->hamiltonian = value;

@@ -192,6 +192,11 @@ static sv_status make_points(session *s, bool with_sweep, sv_diagnostics *diagno
     return status;
 }
 
+static bool is_index_marker(int kind)
+{
+    return sv_marker_table(&(int){0})[kind].is_index;
+}
+
 /* A flake too large for the numbers of this program is refused before anything is built. */
 static sv_status open_sheet(session *s, const char *path, bool inside_run, bool with_sweep,
                             sv_diagnostics *diagnostics)
@@ -207,7 +212,8 @@ static sv_status open_sheet(session *s, const char *path, bool inside_run, bool 
                                       .markers = s->markers,
                                       .n_markers = count,
                                       .confined = inside_run,
-                                      .check_marker = sv_marker_check};
+                                      .check_marker = sv_marker_check,
+                                      .is_index = is_index_marker};
     sv_status status = sv_sheet_read(s->context, path, &sheet_options, diagnostics, &s->sheet);
     if (status == SV_OK)
         status = sv_sheet_setup(s->context, s->sheet, NULL, 0, diagnostics, &s->base);
@@ -309,8 +315,12 @@ sv_status session_plan_text(const session *s, char **ret_text)
 
 sv_stop_rule session_stop_rule(const session *s)
 {
+    const sv_case *problem = &s->points[0].problem;
     return (sv_stop_rule){.active = s->base.has_stop,
                           .marker = s->base.stop_marker,
+                          .of_index = is_index_marker(problem->markers[s->base.stop_marker].marker),
                           .standard_error = s->base.stop_standard_error,
+                          .share_width = s->base.stop_share_width,
+                          .seconds = s->base.stop_seconds / s->n_points,
                           .at_least = s->base.stop_at_least};
 }

@@ -36,6 +36,8 @@ static const char *unit_words(sv_dimension dimension)
         return " rad";
     case SV_DIM_TEMPERATURE:
         return " K";
+    case SV_DIM_TIME:
+        return " s";
     case SV_DIM_ENERGY_LENGTH:
         return " energy units x nm";
     case SV_DIM_ENERGY_AREA:

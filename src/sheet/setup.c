@@ -76,14 +76,30 @@ static bool use_markers(sv_reader *reader, sv_setup *setup)
     return true;
 }
 
+/* A share is one of an index. */
+static bool check_share(sv_reader *reader, const sv_section *section, const sv_setup *setup)
+{
+    int kind = setup->markers[setup->stop_marker].kind;
+    if (setup->stop_share_width <= 0.0 || reader->sheet->is_index == NULL ||
+        reader->sheet->is_index(kind))
+        return true;
+    return sv_report(reader, sv_section_node(section, "share_width"),
+                     "use standard_error for it, or share_width of an index such as bott",
+                     "ensemble.stop.share_width: %.60s is no index and has no shares",
+                     reader->sheet->markers[kind].name);
+}
+
 /* `of` may be left out when there is one marker; the section then gets its name. */
 static bool find_stop_marker(sv_reader *reader, const sv_section *section, sv_setup *setup)
 {
     int row = sv_section_find(section, "of");
     sv_value *of = &section->values[row];
     char hint[400];
+    if (!of->present && setup->stop_standard_error <= 0.0 && setup->stop_share_width <= 0.0)
+        return true; /* time alone asks no marker */
     if (!of->present && setup->n_markers != 1)
-        return sv_report(reader, section->anchor, "of: the marker whose standard error counts",
+        return sv_report(reader, section->anchor,
+                         "of: the marker whose standard error or share counts",
                          "ensemble.stop.of is missing");
     if (!of->present) {
         of->present = true;
@@ -95,11 +111,25 @@ static bool find_stop_marker(sv_reader *reader, const sv_section *section, sv_se
         sv_suggest_name(&suggestion, name);
         setup->stop_marker = i;
         if (strcmp(name, of->text) == 0)
-            return true;
+            return check_share(reader, section, setup);
     }
     sv_suggest_hint(&suggestion, hint, sizeof hint);
     return sv_report(reader, sv_section_node(section, "of"), hint,
                      "ensemble.stop.of: %.60s is not among the markers", of->text);
+}
+
+static bool use_stop(sv_reader *reader, const sv_section *stop, sv_setup *setup)
+{
+    if (sv_section_written(stop, "standard_error share_width time") == 0)
+        return sv_report(reader, stop->anchor,
+                         "give one or more of: standard_error, share_width, time",
+                         "ensemble.stop says no condition");
+    setup->has_stop = true;
+    setup->stop_standard_error = sv_section_value(stop, "standard_error")->real[0];
+    setup->stop_share_width = sv_section_value(stop, "share_width")->real[0];
+    setup->stop_seconds = sv_section_value(stop, "time")->real[0];
+    setup->stop_at_least = sv_section_value(stop, "at_least")->integer[0];
+    return find_stop_marker(reader, stop, setup);
 }
 
 bool sv_setup_ensemble(sv_reader *reader, sv_setup *setup)
@@ -121,10 +151,7 @@ bool sv_setup_ensemble(sv_reader *reader, sv_setup *setup)
     good = use_markers(reader, setup) && good;
     if (!good || stop == NULL)
         return good;
-    setup->has_stop = true;
-    setup->stop_standard_error = sv_section_value(stop, "standard_error")->real[0];
-    setup->stop_at_least = sv_section_value(stop, "at_least")->integer[0];
-    return find_stop_marker(reader, stop, setup);
+    return use_stop(reader, stop, setup);
 }
 
 /* Once an energy carries a unit, a bare 1 must be worth something: 1 eV unless the sheet says. */

@@ -209,6 +209,7 @@ sv_status sv_sheet_parse(sv_context *context, const char *name, const char *text
         return status;
     sheet->confined = own.confined;
     sheet->check_marker = own.check_marker;
+    sheet->is_index = own.is_index;
     sheet->markers = own.markers;
     sheet->n_markers = own.n_markers;
     status = copy_source(context, sheet, name, text, size);

@@ -185,7 +185,8 @@ struct sv_sheet {
     const char *folder;
     bool confined;
     bool (*check_marker)(int kind, const sv_value *values, int *ret_key, char *message,
-                         size_t size); /* or NULL */
+                         size_t size);
+    bool (*is_index)(int kind); /* or NULL */
     const sv_node *root;               /* overrides applied */
     const sv_kind *markers;
     int n_markers;

@@ -56,13 +56,19 @@ typedef struct reading {
     sv_setup setup;
 } reading;
 
+static inline bool is_index_kind(int kind)
+{
+    return strcmp(marker_kinds[kind].name, "bott") == 0;
+}
+
 static inline sv_sheet_options reading_options(const char *const *overrides, int n)
 {
     return (sv_sheet_options){.size = sizeof(sv_sheet_options),
                               .overrides = overrides,
                               .n_overrides = n,
                               .markers = marker_kinds,
-                              .n_markers = 3};
+                              .n_markers = 3,
+                              .is_index = is_index_kind};
 }
 
 static inline reading read_named(const char *name, const char *text, size_t size,

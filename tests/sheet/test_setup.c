@@ -286,3 +286,33 @@ SV_TEST(huge_flakes_are_not_built_to_be_checked)
     is_read(&r);
     reading_free(&r);
 }
+
+/* Conditions of the stop rule, alone and together; times have units. */
+SV_TEST(stop_rules)
+{
+    const char *head = FILM "flake: {shape: rectangle, cells: [6, 6]}\n"
+                            "markers: {bott: null, local_chern: {}}\nensemble: {stop: ";
+    const struct {
+        const char *stop;
+        double error, width, seconds;
+        int marker;
+    } rows[] = {
+        {"{share_width: 0.05, of: bott}", 0.0, 0.05, 0.0, 1},
+        {"{time: 10 min}", 0.0, 0.0, 600.0, 0},
+        {"{time: 90, of: bott}", 0.0, 0.0, 90.0, 1},
+        {"{time: 0.5 h, standard_error: 0.01, share_width: 2 %, of: bott}", 0.01, 0.02, 1800.0, 1}};
+    for (size_t k = 0; k < sizeof rows / sizeof rows[0]; k++) {
+        char text[600];
+        snprintf(text, sizeof text, "%s%s}\n", head, rows[k].stop);
+        reading r = read_text(text);
+        if (is_read(&r)) {
+            CHECK(r.setup.has_stop);
+            CHECK_CLOSE(r.setup.stop_standard_error, rows[k].error, 0.0);
+            CHECK_CLOSE(r.setup.stop_share_width, rows[k].width, 0.0);
+            CHECK_CLOSE(r.setup.stop_seconds, rows[k].seconds, 0.0);
+            CHECK_INT(r.setup.stop_marker, rows[k].marker);
+            CHECK_INT(r.setup.stop_at_least, 50);
+        }
+        reading_free(&r);
+    }
+}
