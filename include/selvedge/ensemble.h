@@ -30,6 +30,8 @@ typedef struct sv_case {
     sv_occupation occupation;
     sv_projector_options solve;
     uint64_t seed;
+    int64_t first_realisation; /**< added to the number of every realisation, for points that must
+                                    share none */
     sv_marker_request markers[SV_MAX_MARKERS];
     int n_markers;
 } sv_case;
@@ -163,7 +165,7 @@ typedef struct sv_kept_outcome {
  */
 typedef struct sv_ensemble {
     int32_t n_points;
-    int32_t n_markers; /**< outcomes a realisation may have */
+    int32_t n_markers;    /**< outcomes a realisation may have */
     int64_t realisations; /**< per point */
     bool *done; /**< [point·realisations + realisation]: is there. Set by sv_ensemble_put() */
     struct sv_shelf *shelf; /**< the rest; private */
@@ -404,7 +406,7 @@ typedef struct sv_summary {
     double disorder_deviation; /**< √max(0, deviation² − estimator_error²): what the disorder alone
                                     does; NaN for an index and below two values */
     double smallest_margin, mean_margin;
-    double kappa; /**< localizer: of the first realisation (one per run when automatic) */
+    double kappa;           /**< localizer: of the first realisation (one per run when automatic) */
     sv_index_share *shares; /**< ascending by index; taken from the context */
     int n_shares;
     char unresolved_reason[200]; /**< of the first unresolved realisation */

@@ -8,7 +8,7 @@
 
 #include <stdio.h>
 
-#include "store.h"
+#include "study.h"
 
 #ifdef __cplusplus
 extern "C" {
@@ -181,6 +181,73 @@ SV_API SV_MUST_USE sv_status sv_figure_profile(sv_context *context, const char *
 SV_API SV_MUST_USE sv_status sv_figure_flow(sv_context *context, const char *folder,
                                             const char *name, const sv_map_result *map,
                                             sv_figure_files *ret_files);
+
+/* --------------------------------------------------------------- tolerance */
+
+/** A parameter as results show it: shown value = scale · value in the unit of the model. */
+typedef struct sv_shown_parameter {
+    const char *path;
+    const char *unit; /**< symbol, or NULL */
+    double scale;
+    bool integer;
+} sv_shown_parameter;
+
+/** One threshold: of a marker, for a flake, at a value of the second parameter. */
+typedef struct sv_tolerance_row {
+    const char *marker; /**< name, static */
+    bool is_index;
+    bool primary;     /**< the quantity asked about; others get the same criterion */
+    int64_t cells[2]; /**< of the flake; 0: the flake of the sheet */
+    bool has_second;
+    double second;              /**< value of the second parameter, unit of the model */
+    double clean;               /**< value of the flake without disorder */
+    double within;              /**< band used for this marker; NaN: the clean index itself */
+    sv_threshold_answer answer; /**< in the unit of the model */
+} sv_tolerance_row;
+
+/** Threshold against size, where the sizes carry it: p(L) = limit + slope/L, weighted. */
+typedef struct sv_size_trend {
+    bool asked;  /**< at least two sizes */
+    bool exists; /**< false: `reason` */
+    double limit, standard_error;
+    double p_value; /**< of the straight line; NaN with two sizes */
+    char reason[200];
+} sv_size_trend;
+
+/** All that `tolerance` found. */
+typedef struct sv_tolerance_result {
+    const char *title;
+    sv_shown_parameter parameter, second; /**< second.path NULL: none */
+    double range[2], precision, confidence;
+    const char *quantity; /**< as written in the sheet */
+    bool of_mean;
+    double within, share; /**< as written; NaN: not given */
+    double per_area; /**< cm⁻² per unit of the parameter as a share of positions; 0: no such unit */
+    sv_tolerance_row *rows; /**< primary ones first for each flake and second value */
+    int n_rows;
+    sv_size_trend trend;
+    int64_t realisations; /**< computed in all */
+    double seconds;
+} sv_tolerance_result;
+
+/** The row that answers the question: primary, last flake, first value of the second parameter. */
+SV_API const sv_tolerance_row *sv_tolerance_main(const sv_tolerance_result *result);
+/** The document of contract `tolerance` with points, sizes, markers and budget. Given back by
+ *  sv_give(). */
+SV_API SV_MUST_USE sv_status sv_tolerance_json(sv_context *context,
+                                               const sv_tolerance_result *result, char **ret_text);
+/** Every point asked about, one line each: marker, cells, second, parameter, responses, measure …
+ */
+SV_API SV_MUST_USE sv_status sv_tolerance_csv(sv_context *context,
+                                              const sv_tolerance_result *result, char **ret_text);
+/** Table and closing paragraph in plain words. */
+SV_API void sv_tolerance_print(const sv_tolerance_result *result, FILE *stream);
+/** What was asked against the parameter, with the target and the interval; with a second parameter
+ *  the frontier between both. @return as sv_figure_map() */
+SV_API SV_MUST_USE sv_status sv_figure_tolerance(sv_context *context, const char *folder,
+                                                 const char *name,
+                                                 const sv_tolerance_result *result,
+                                                 sv_figure_files *ret_files);
 
 /* ----------------------------------------------------------------- progress */
 

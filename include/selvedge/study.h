@@ -37,6 +37,8 @@ typedef struct sv_threshold_question {
     sv_criterion_kind kind;
     double low, high;  /**< range of the parameter */
     bool integer;      /**< only whole numbers make sense */
+    bool discrete;     /**< MEAN: values are whole numbers: a few equal ones say little about their
+                            spread */
     double clean;      /**< MEAN: the quantised value */
     double within;     /**< MEAN: half width of the band */
     double share;      /**< SHARE: 0 < share < 1 */
@@ -101,6 +103,18 @@ SV_API SV_MUST_USE sv_status sv_threshold_search(sv_context *context,
                                                  sv_threshold_answer *ret_answer);
 /** Gives the points back; safe on a zeroed answer and twice in a row. */
 SV_API void sv_threshold_free(sv_context *context, sv_threshold_answer *answer);
+
+/** Standard error behind an interval made for its confidence: half width / normal quantile. */
+SV_API double sv_threshold_error(const sv_threshold_answer *answer);
+
+/** A straight line y = value + slope·x through points with known errors. */
+typedef struct sv_line {
+    bool exists; /**< at least two different x, all errors positive */
+    double value, value_error, slope, slope_error;
+    double chi_square, p_value; /**< NaN for two points */
+} sv_line;
+/** Weighted least squares, weights 1/error². */
+SV_API sv_line sv_line_fit(const double *x, const double *y, const double *error, int n);
 
 #ifdef __cplusplus
 }

@@ -181,22 +181,23 @@ sv_status sv_realise(sv_context *context, const sv_case *point, sv_index realisa
                      double **ret_site_values, sv_sample *ret_sample, sv_record *ret_record)
 {
     double start = seconds_now();
-    sv_record record = {
-        .realisation = realisation, .status = SV_OK, .n_outcomes = point->n_markers};
+    const sv_index drawn = point->first_realisation + realisation;
+    sv_record record = {.realisation = drawn, .status = SV_OK, .n_outcomes = point->n_markers};
     double *site_values = NULL;
     sv_sample sample = {0};
     sv_status status = SV_OK;
     bool want_open = ret_site_values != NULL || ret_sample != NULL || any_on(point, SV_OPEN_COPY);
     if (want_open)
-        status = open_part(context, point, realisation, ret_site_values ? &site_values : NULL,
+        status = open_part(context, point, drawn, ret_site_values ? &site_values : NULL,
                            ret_sample ? &sample : NULL, &record);
     if (status == SV_OK)
-        status = closed_part(context, point, realisation, &record);
+        status = closed_part(context, point, drawn, &record);
     if (status != SV_OK) {
         sv_give(context, site_values);
         sv_sample_free(context, &sample);
         return status;
     }
+    record.realisation = realisation;
     record.seconds = seconds_now() - start;
     if (ret_site_values != NULL)
         *ret_site_values = site_values;

@@ -21,6 +21,8 @@ static const command commands[] = {
      SHEET_OPTIONS "ojPDFTA", 1, 1, run_average},
     {"merge", "RUN SHARD...", "joins the folders of tasks in one run; repeatable, in any order",
      "jqvCJP", 2, INT_MAX, run_merge},
+    {"tolerance", "SHEET -o RUN", "the largest disorder that still meets a stated criterion",
+     SHEET_OPTIONS "ojPFT", 1, 1, run_tolerance},
     {"report", "RUN", "figures of a finished or unfinished run", "okjqvCJP", 1, 1, run_report},
     {"export", "SHEET", "writes the Hamiltonian and the sites of one realisation",
      SHEET_OPTIONS "kHLF", 1, 1, run_export},

@@ -73,9 +73,10 @@ typedef struct session {
     int threads;
     char kernel[160], version[100]; /* of the rows: this program's, or those of a run */
     const char *plan_lines; /* borrowed: the engines as a run notes them, when not planned here */
-    bool inside_run;     /* the sheet is the one in a run folder */
-    bool add_map_marker; /* the map command always computes the local Chern marker */
-    bool levels_only;    /* the spectrum command computes no marker: other needs of memory */
+    bool inside_run;        /* the sheet is the one in a run folder */
+    bool add_map_marker;    /* the map command always computes the local Chern marker */
+    bool open_ended;        /* its points are chosen as the work goes on */
+    bool levels_only;       /* the spectrum command computes no marker: other needs of memory */
 } session;
 
 /* Reads the sheet and builds all points of its sweep (`with_sweep`) or the sheet as written. */
@@ -137,10 +138,43 @@ sv_stop_rule session_stop_rule(const session *s);
 sv_status run_folder_open(session *s, sv_run **ret_run);
 sv_status run_folder_check_identity(session *s, const sv_run *run);
 sv_status run_folder_write(session *s, sv_run *run, const sv_result *result, char **ret_json);
+/* A text into a file of the run folder. */
+sv_status run_folder_put_text(session *s, sv_run *run, const char *name, const char *text);
 sv_status run_folder_judge(session *s, const sv_result *result);
 void run_folder_warn(session *s, const sv_result *result);
 /* The comment lines about engines in a resolved sheet; taken from the context. */
 sv_status run_folder_plan_lines(sv_context *context, const char *sheet, char **ret_lines);
+
+/* ---- inquiry.c: realisations at values of parameters that are chosen as the work goes on ---- */
+
+/* A set of parameter values asked about; its cases point into it. */
+typedef struct asked_point {
+    point at;
+    int64_t n, capacity; /* realisations 0 … n−1 are known */
+    double *values;      /* n × markers; NaN: unresolved */
+} asked_point;
+
+typedef struct inquiry {
+    session *s;
+    sv_run *run;
+    sv_ensemble there; /* what the ledger had at the start */
+    asked_point **asked;
+    int n_asked, capacity;
+    int64_t computed; /* realisations known now, of all points */
+    double deadline;  /* monotonic seconds; 0: none */
+} inquiry;
+
+/* Reads what the ledger of the run holds. */
+sv_status inquiry_open(session *s, sv_run *run, inquiry *ret);
+void inquiry_close(inquiry *q);
+/*
+ * A point at these values; its number is the order of asking, which must be the same whenever the
+ * same question is asked. Realisations of different points are independent: those of point a are
+ * realisations a·2²⁰ and following of its sheet.
+ */
+sv_status inquiry_point(inquiry *q, const sv_assignment *assignments, int n, int *ret_number);
+/* Makes sure that realisations 0 … wanted−1 of a point are known. */
+sv_status inquiry_more(inquiry *q, int number, int64_t wanted);
 
 /* The levels of the spectral flow: are they wanted, can they be written, computing, writing. */
 bool flow_wanted(const options *o, const sv_case *problem);
@@ -181,6 +215,14 @@ int run_map(sv_context *context, const options *o);
 int run_spectrum(sv_context *context, const options *o);
 int run_average(sv_context *context, const options *o);
 int run_merge(sv_context *context, const options *o);
+/* ---- tolerance.c ---- */
+
+sv_status tolerance_search(inquiry *q, sv_tolerance_result *ret);
+void tolerance_free(sv_context *context, sv_tolerance_result *result);
+/* Fills the trend with size from the rows. */
+void tolerance_trend(sv_tolerance_result *result);
+
+int run_tolerance(sv_context *context, const options *o);
 int run_report(sv_context *context, const options *o);
 int run_export(sv_context *context, const options *o);
 int run_info(sv_context *context, const options *o);

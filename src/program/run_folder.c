@@ -94,7 +94,7 @@ sv_status run_folder_open(session *s, sv_run **ret_run)
                                     .kernel = s->kernel,
                                     .markers = markers,
                                     .n_markers = problem->n_markers,
-                                    .n_points = s->n_points,
+                                    .n_points = s->open_ended ? 0 : s->n_points,
                                     .realisations = s->base.realisations,
                                     .task = (int32_t)s->options->task,
                                     .tasks = (int32_t)s->options->tasks,
@@ -108,7 +108,7 @@ sv_status run_folder_open(session *s, sv_run **ret_run)
     return status;
 }
 
-static sv_status write_text(session *s, sv_run *run, const char *name, const char *text)
+sv_status run_folder_put_text(session *s, sv_run *run, const char *name, const char *text)
 {
     char path[1024];
     sv_status status = sv_run_path(s->context, run, name, path, sizeof path);
@@ -122,9 +122,9 @@ sv_status run_folder_write(session *s, sv_run *run, const sv_result *result, cha
     if (status == SV_OK)
         status = sv_result_csv(s->context, result, &csv);
     if (status == SV_OK)
-        status = write_text(s, run, "points.csv", csv);
+        status = run_folder_put_text(s, run, "points.csv", csv);
     if (status == SV_OK)
-        status = write_text(s, run, "summary.json", json);
+        status = run_folder_put_text(s, run, "summary.json", json);
     if (status == SV_OK) {
         *ret_json = json;
         json = NULL;

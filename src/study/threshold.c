@@ -95,8 +95,12 @@ int sv_search_judge(const search *s, const response_point *p, double level)
         double down = hits == 0 ? 1.0 : gsl_cdf_binomial_Q(hits - 1, s->target, (unsigned int)m.n);
         return up < level ? -1 : down < level ? 1 : 0;
     }
-    double degrees = (double)(m.n - 1);
-    double error = sqrt(m.squares / degrees / (double)m.n) + 1e-12 * fabs(s->target) + 1e-300;
+    double degrees = (double)(m.n - 1), variance = m.squares / degrees;
+    if (s->question->discrete) { /* one of the next n + 2 values may differ by one */
+        double n = (double)(m.n + 2);
+        variance = fmax(variance, (n - 1.0) / (n * n));
+    }
+    double error = sqrt(variance / (double)m.n) + 1e-12 * fabs(s->target) + 1e-300;
     double t = (m.mean - s->target) / error;
     return fabs(t) < gsl_cdf_tdist_Pinv(1.0 - level, degrees) ? 0 : t < 0.0 ? -1 : 1;
 }
@@ -346,6 +350,29 @@ static void move(const search *s, const local_fit *fit, const local_root *root, 
                                           : at->centre + at->side);
 }
 
+static void say_end(const search *s, bool always, sv_threshold_answer *answer)
+{
+    answer->state = always ? SV_THRESHOLD_ALWAYS : SV_THRESHOLD_NEVER;
+    answer->value = answer->interval[0] = answer->interval[1] = NAN;
+    if (always)
+        snprintf(answer->reason, sizeof answer->reason, "the criterion holds up to %.6g",
+                 s->question->high);
+    else
+        snprintf(answer->reason, sizeof answer->reason, "the criterion fails already at %.6g",
+                 s->question->low);
+}
+
+/* The search ran into an end of the range, and the end itself is decided. */
+static bool ends_there(const search *s, const local_root *root, sv_threshold_answer *answer)
+{
+    const response_point *first = &s->table.points[0], *last = &s->table.points[s->table.n - 1];
+    bool always = sv_search_judge(s, last, 0.005)<0, never = sv_search_judge(s, first, 0.005)> 0;
+    if (root->exists || (!always && !never))
+        return false;
+    say_end(s, always, answer);
+    return true;
+}
+
 static void give_up(const search *s, sv_threshold_answer *answer)
 {
     answer->state = SV_THRESHOLD_UNDECIDED;
@@ -370,7 +397,7 @@ static sv_status refine(search *s, double low, double high, sv_threshold_answer 
         next_step step = look(s, &fit, &root, &at);
         answer->value = root.value;
         memcpy(answer->interval, root.interval, sizeof answer->interval);
-        if (step == DONE)
+        if (step == DONE || ends_there(s, &root, answer))
             return SV_OK;
         if (round >= MOST_ROUNDS || sv_search_responses(s) >= s->most) {
             give_up(s, answer);
@@ -399,16 +426,8 @@ static sv_status find(search *s, sv_threshold_answer *answer)
         status = first_failure(s, &low, &high);
     if (status != SV_OK)
         return status;
-    if (high < 0) {
-        answer->state = SV_THRESHOLD_ALWAYS;
-        snprintf(answer->reason, sizeof answer->reason, "the criterion holds up to %.6g",
-                 s->question->high);
-        return SV_OK;
-    }
-    if (low < 0) {
-        answer->state = SV_THRESHOLD_NEVER;
-        snprintf(answer->reason, sizeof answer->reason, "the criterion fails already at %.6g",
-                 s->question->low);
+    if (high < 0 || low < 0) {
+        say_end(s, high < 0, answer);
         return SV_OK;
     }
     double ends[2] = {s->table.points[low].parameter, s->table.points[high].parameter};
@@ -458,8 +477,8 @@ sv_status sv_threshold_search(sv_context *context, const sv_threshold_question *
     if (status != SV_OK)
         return status;
     s.target = question->kind == SV_CRITERION_MEAN ? question->within : 1.0 - question->share;
-    double rare = fmin(s.target, 1.0 - s.target);
-    s.looks_end = question->kind == SV_CRITERION_MEAN
+    double rare = s.target < 1.0 ? fmin(s.target, 1.0 - s.target) : 0.5;
+    s.looks_end = question->kind == SV_CRITERION_MEAN && !question->discrete
                       ? MEAN_LOOKS_END
                       : (int64_t)fmin(fmax(8.0 / rare, MEAN_LOOKS_END), SHARE_LOOKS_MOST);
     status = find(&s, &answer);

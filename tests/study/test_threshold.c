@@ -154,6 +154,18 @@ SV_TEST(holds_everywhere_or_nowhere)
     sv_threshold_free(test_context(), &answer);
 }
 
+/* The measure at the end of the range is near the target: it takes responses to decide that the
+ * threshold lies beyond. */
+SV_TEST(a_threshold_just_beyond_the_range)
+{
+    film f = {.share = true, .target = 0.1, .width = 0.3, .threshold = 0.33};
+    sv_threshold_question question = ask_about(&f, 0.01);
+    sv_threshold_answer answer = answer_of(f, question);
+    CHECK_INT(answer.state, SV_THRESHOLD_ALWAYS);
+    CHECK(isnan(answer.value) && isnan(answer.interval[1]) && answer.reason[0] != '\0');
+    sv_threshold_free(test_context(), &answer);
+}
+
 SV_TEST(re_entry_is_seen_and_the_first_failure_counts)
 {
     film f = {.target = 0.05, .width = 0.2, .spread = 0.3, .returns = 0.22};
