@@ -23,7 +23,8 @@ typedef struct plot {
     const sv_tolerance_row *main_row, *series[MOST_SERIES];
     int n_series;
     bool frontier;
-    double top; /* of the axis */
+    double top;      /* of the axis */
+    double from, to; /* of the abscissa */
 } plot;
 
 /* With sizes the primary marker of each, else every marker of the one flake. */
@@ -46,6 +47,13 @@ static void add_number(sv_draft *text, double value)
     sv_draft_add(text, " %s", word);
 }
 
+static void add_abscissa(plot *f, sv_draft *text, double value)
+{
+    f->from = fmin(f->from, value);
+    f->to = fmax(f->to, value);
+    add_number(text, value);
+}
+
 static void add_series(plot *f, sv_draft *text, const sv_tolerance_row *row)
 {
     const double scale = f->result->parameter.scale;
@@ -53,7 +61,7 @@ static void add_series(plot *f, sv_draft *text, const sv_tolerance_row *row)
                  row->marker, (long long)row->cells[0], (long long)row->cells[1]);
     for (int k = 0; k < row->answer.n_points; k++) {
         const sv_threshold_point *p = &row->answer.points[k];
-        add_number(text, scale * p->parameter);
+        add_abscissa(f, text, scale * p->parameter);
         add_number(text, p->measure);
         add_number(text, p->measure - p->standard_error);
         add_number(text, p->measure + p->standard_error);
@@ -81,7 +89,7 @@ static void add_frontier(plot *f, sv_draft *text)
         if (next == NULL)
             break;
         last = next->second;
-        add_number(text, r->second.scale * next->second);
+        add_abscissa(f, text, r->second.scale * next->second);
         add_number(text, r->parameter.scale * next->answer.value);
         add_number(text, r->parameter.scale * next->answer.interval[0]);
         add_number(text, r->parameter.scale * next->answer.interval[1]);
@@ -157,9 +165,11 @@ static void add_curves(plot *f)
     for (int k = 0; k < f->n_series; k++) {
         series_words(f, f->series[k], literal, sizeof literal);
         sv_draft_add(script,
-                     "%s'%s.dat' index %d using 1:2:3:4 with yerrorbars lc rgb '%s' pt %d ps 0.45 "
-                     "lw 0.7 title %s",
-                     k > 0 ? ", \\\n  " : "", name, k, styles[k].colour, styles[k].mark, literal);
+                     "%s'%s.dat' index %d using 1:2:3:4 with yerrorbars lc rgb '%s' pt 0 lw 0.7 "
+                     "notitle, \\\n  '%s.dat' index %d using 1:2 with points lc rgb '%s' pt %d ps "
+                     "0.45 title %s",
+                     k > 0 ? ", \\\n  " : "", name, k, styles[k].colour, name, k, styles[k].colour,
+                     styles[k].mark, literal);
     }
     sv_draft_add(script, "\n");
 }
@@ -196,12 +206,13 @@ static void add_script(plot *f, const sv_headline *headline)
     sv_draft_add(script,
                  "set lmargin at screen %.5f\nset rmargin at screen %.5f\nset tmargin at screen "
                  "%.5f\nset bmargin at screen %.5f\nset border 31 lw 0.6 front\nset tics scale 0.5 "
-                 "in front\nset pointintervalbox 0\nset offsets graph 0.03, graph 0.03, 0, 0\nset "
+                 "in front\nset xrange [%.9g:%.9g]\nset "
                  "ytics offset 0.4,0\nset xtics offset 0,0.2\n"
                  "set xlabel %s offset 0,0.5\nset ylabel %s offset 1.2,0\nset yrange [0:%.9g]\n"
                  "set key at screen %.5f,%.5f right bottom Left reverse horizontal maxrows 1 "
                  "samplen 1.2 font 'Helvetica,6.5'\n",
-                 left_cm / w, 1 - right_cm / w, top / h, (top - panel_cm) / h, x, y,
+                 left_cm / w, 1 - right_cm / w, top / h, (top - panel_cm) / h,
+                 f->from - 0.03 * (f->to - f->from), f->to + 0.03 * (f->to - f->from), x, y,
                  1.08 * (f->top > 0.0 ? f->top : 1.0), 1 - right_cm / w, (top + 0.1) / h);
     if (f->frontier)
         add_budget(f);
@@ -243,7 +254,9 @@ sv_status sv_figure_tolerance(sv_context *context, const char *folder, const cha
 {
     plot f = {.figure = {.context = context, .folder = folder, .name = name},
               .result = result,
-              .main_row = sv_tolerance_main(result)};
+              .main_row = sv_tolerance_main(result),
+              .from = INFINITY,
+              .to = -INFINITY};
     sv_figure_files files;
     if (f.main_row == NULL)
         return SV_FAIL(context, SV_INVALID_INPUT, "a tolerance without a threshold");
