@@ -137,6 +137,61 @@ SV_API double sv_step_error(double delta, int degree);
 /** Smallest odd degree with sv_step_error() ≤ error. */
 SV_API int sv_step_degree(double delta, double error);
 
+/* ------------------------------------------------------- complex products */
+
+/** A factor: element (r, c) is re[r·row + c·column] + i·sign·im[r·row + c·column]. Parts apart
+ * (strides 1 and n) or alternating (2 and 2n, im = re + 1); adjoints by strides and sign. */
+typedef struct sv_factor {
+    const double *re, *im;
+    sv_index row, column; /**< strides */
+    double sign;          /**< 1, or −1: the conjugate */
+} sv_factor;
+
+/** c := weight·a b, or c + weight·a b unless fresh. c overlaps neither factor. */
+typedef struct sv_product_job {
+    sv_index rows, columns, terms; /**< of c, c, and the sums; terms ≥ 1 */
+    sv_factor a, b;
+    const double *turn_re, *turn_im; /**< NULL, or a factor for each term */
+    const sv_index *depth; /**< NULL, or for each index of a row or column of c, not ascending: the
+                                number of terms after which its factor is zero */
+    bool fresh;
+    bool lower; /**< elements above the diagonal are not wanted (some are computed) */
+    double weight;
+    double *c_re, *c_im;
+    sv_index c_row, c_column; /**< strides */
+} sv_product_job;
+
+/** The same in single precision. */
+typedef struct sv_factor_single {
+    const float *re, *im;
+    sv_index row, column;
+    float sign;
+} sv_factor_single;
+typedef struct sv_product_single_job {
+    sv_index rows, columns, terms;
+    sv_factor_single a, b;
+    const float *turn_re, *turn_im;
+    const sv_index *depth;
+    bool fresh;
+    bool lower;
+    float weight;
+    float *c_re, *c_im;
+    sv_index c_row, c_column;
+} sv_product_single_job;
+
+/**
+ * A complex product from three real ones, (a + ib)(c + id) = ac − bd + i((a+b)(c+d) − ac − bd):
+ * three quarters of the work, errors bounded by the norms of the factors instead of element by
+ * element (N. J. Higham, SIAM J. Matrix Anal. Appl. 13, 681 (1992)). Elements differ from the
+ * exact ones by a few roundings times Σ|a||b| (measured in test linalg.product). Sums run in an
+ * order that depends on the shape and the kernel alone.
+ * @return SV_NO_MEMORY, with c untouched
+ */
+SV_API SV_MUST_USE sv_status sv_product(sv_context *context, sv_panel_kernel kernel,
+                                        const sv_product_job *job);
+SV_API SV_MUST_USE sv_status sv_product_single(sv_context *context, sv_panel_kernel kernel,
+                                               const sv_product_single_job *job);
+
 /* ------------------------------------------------------------------ inertia */
 
 /**

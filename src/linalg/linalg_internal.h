@@ -24,4 +24,10 @@ PANEL_COPY(avx2);
 PANEL_COPY(avx512);
 #undef PANEL_COPY
 
+/* Room for the packed parts of a product, in numbers. */
+typedef void sv_product_copy(const sv_product_job *job, double *work);
+typedef void sv_product_single_copy(const sv_product_single_job *job, float *work);
+sv_product_copy sv_product_double_plain, sv_product_double_avx2, sv_product_double_avx512;
+sv_product_single_copy sv_product_single_plain, sv_product_single_avx2, sv_product_single_avx512;
+
 #endif
