@@ -43,9 +43,14 @@ typedef struct sv_record {
     sv_status status; /**< SV_OK, or why the whole realisation failed */
     int64_t sites;
     int64_t vacancies;
-    double seconds;
     int32_t n_outcomes;
     sv_outcome outcomes[SV_MAX_MARKERS]; /**< in the order of sv_case.markers */
+    /* What it cost and who computed it: no two runs agree on these. */
+    double seconds;           /**< wall clock */
+    double processor_seconds; /**< of its thread; of the process where solve.threads > 1 */
+    int64_t peak_bytes;       /**< largest resident memory of the process until then; 0: not known */
+    int32_t rank, thread;     /**< of the worker, from 0 */
+    char host[64];
 } sv_record;
 
 /**
@@ -155,7 +160,7 @@ typedef struct sv_kept_outcome {
     double numerical_error, estimator_error, margin, weakest, sum_over_sites, kappa;
     double highest_occupied, lowest_empty;
     int64_t window_cells, electrons;
-    int32_t reason, engine;
+    int32_t reason, engine, degree;
     sv_verdict verdict;
 } sv_kept_outcome;
 
@@ -184,7 +189,7 @@ SV_API void sv_ensemble_free(sv_context *context, sv_ensemble *ensemble);
 SV_API SV_MUST_USE sv_status sv_ensemble_put(sv_context *context, sv_ensemble *ensemble,
                                              const sv_record *record);
 /** The whole record of a realisation; false when it is not there. `unresolved_within` and
- * `nearest_level` of its outcomes are not kept (NaN). */
+ * `nearest_level` of its outcomes are not kept (NaN), nor is its cost beside `seconds`. */
 SV_API bool sv_ensemble_get(const sv_ensemble *ensemble, int32_t point, int64_t realisation,
                             sv_record *ret_record);
 /** A realisation, or NULL when it is not there. Cheap; the pointer stays good until

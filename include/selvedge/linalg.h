@@ -36,6 +36,8 @@ typedef struct sv_blas_info {
     char kind[32];      /**< "openblas" or "unknown" */
     char threading[16]; /**< "serial", "pthread", "openmp" or "unknown" */
     char kernel[64];    /**< kernel name reported by the library, or "unknown" */
+    char version[32];   /**< of the library, or "unknown" */
+    char cholmod[32];   /**< version of CHOLMOD, which factorises sparse matrices */
     bool threads_safe;  /**< concurrent calls from several threads give right answers */
 } sv_blas_info;
 

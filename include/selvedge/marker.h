@@ -44,6 +44,7 @@ typedef struct sv_outcome {
     double kappa;                          /**< localizer: energy per lattice constant; NaN: none */
     double highest_occupied, lowest_empty; /**< NaN when there is none */
     int64_t electrons;
+    int32_t degree; /**< of the polynomial its projector applied (chebyshev); 0: none */
 } sv_outcome;
 
 /** Which copy of the flake a marker is computed on. */

@@ -102,6 +102,8 @@ SV_API void sv_projector_free(sv_context *context, sv_projector *projector);
 SV_API const sv_levels *sv_projector_levels(const sv_projector *projector);
 /** Name of the engine ("dense"); static text. */
 SV_API const char *sv_projector_engine(const sv_projector *projector);
+/** Degree of the polynomial (chebyshev); 0 where the engine has none. */
+SV_API int sv_projector_degree(const sv_projector *projector);
 
 /**
  * y = P x for a block of columns.

@@ -32,7 +32,10 @@ typedef struct sv_run_identity {
     const char *kernel;        /**< arithmetic kernel (BLAS kind, threading, core) */
     const sv_run_input *inputs;
     int n_inputs;
-    const char *command_line;  /**< for the event table, or NULL */
+    /* Of this writing, for the event that begins it; no part of the identity. */
+    const char *command_line;  /**< or NULL */
+    const char *libraries;     /**< versions of those besides SQLite, one line, or NULL */
+    int threads, ranks;        /**< at work; 0: not known */
     const char *const *markers; /**< names in the order of the outcomes of a record; NULL: not
                                      known, then rows carry positions only */
     int n_markers;
@@ -68,9 +71,35 @@ SV_API SV_MUST_USE sv_status sv_run_load(sv_context *context, sv_run *run, sv_en
 /** Largest realisation number present plus one, over all points (0: none). */
 SV_API SV_MUST_USE sv_status sv_run_extent(sv_context *context, sv_run *run,
                                            int64_t *ret_realisations, int32_t *ret_points);
-/** Records an event (start, stop, continue, identity change) with a note. */
+/**
+ * Records an event with a note. The store itself records `start`, `continue`, `end`, `identity
+ * change`, and `lost` for a writing that left no end (SIGKILL, power); the caller what else happens,
+ * such as `stop` with its cause.
+ */
 SV_API SV_MUST_USE sv_status sv_run_event(sv_context *context, sv_run *run, const char *what,
                                           const char *note);
+
+/** One event of a run. Texts are one line of UTF-8 without control characters. */
+typedef struct sv_run_happening {
+    int64_t number, session; /**< session: number of the start or continue it belongs to */
+    char *time;              /**< UTC, 2026-11-30T12:00:00Z */
+    char *what, *note;
+    /* Of start and continue only, else empty and 0. */
+    char *command_line, *version, *kernel, *libraries, *host;
+    int64_t process, threads, ranks;
+} sv_run_happening;
+
+/** Provenance: all events in order. */
+typedef struct sv_run_history {
+    sv_run_happening *events;
+    sv_index n;
+} sv_run_history;
+
+/** Reads all events. @return SV_STORAGE when one is not as it was written */
+SV_API SV_MUST_USE sv_status sv_run_history_read(sv_context *context, sv_run *run,
+                                                 sv_run_history *ret_history);
+/** Gives it back; safe on a zeroed history and twice. */
+SV_API void sv_run_history_free(sv_context *context, sv_run_history *history);
 /**
  * Value of a meta key, or NULL: "identity" (canonical text), "identity_digest", "program_version",
  * "kernel", "sheet" (resolved sheet), "sheet_digest", "markers", "points", "realisations", "task".

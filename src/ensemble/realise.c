@@ -4,13 +4,33 @@
 
 #include <stdio.h>
 #include <string.h>
+#include <sys/resource.h>
 #include <time.h>
+#include <unistd.h>
 
-static double seconds_now(void)
+static double seconds_of(clockid_t clock)
 {
-    struct timespec now;
-    clock_gettime(CLOCK_MONOTONIC, &now);
+    struct timespec now = {0};
+    clock_gettime(clock, &now);
     return (double)now.tv_sec + 1e-9 * (double)now.tv_nsec;
+}
+
+/* With several threads inside a realisation there is no other at the same time. */
+static clockid_t processor_clock(const sv_case *point)
+{
+    return point->solve.threads > 1 ? CLOCK_PROCESS_CPUTIME_ID : CLOCK_THREAD_CPUTIME_ID;
+}
+
+static void note_cost(const sv_case *point, const double start[2], sv_record *record)
+{
+    struct rusage usage;
+    record->seconds = seconds_of(CLOCK_MONOTONIC) - start[0];
+    record->processor_seconds = seconds_of(processor_clock(point)) - start[1];
+    if (getrusage(RUSAGE_SELF, &usage) == 0)
+        record->peak_bytes = (int64_t)usage.ru_maxrss * 1024; /* Linux counts kilobytes */
+    if (gethostname(record->host, sizeof record->host) != 0)
+        record->host[0] = '\0';
+    record->host[sizeof record->host - 1] = '\0';
 }
 
 /* Failures that belong to this realisation and must not end the run. */
@@ -180,7 +200,7 @@ static sv_status closed_part(sv_context *context, const sv_case *point, sv_index
 sv_status sv_realise(sv_context *context, const sv_case *point, sv_index realisation,
                      double **ret_site_values, sv_sample *ret_sample, sv_record *ret_record)
 {
-    double start = seconds_now();
+    const double start[2] = {seconds_of(CLOCK_MONOTONIC), seconds_of(processor_clock(point))};
     const sv_index drawn = point->first_realisation + realisation;
     sv_record record = {.realisation = drawn, .status = SV_OK, .n_outcomes = point->n_markers};
     double *site_values = NULL;
@@ -198,7 +218,7 @@ sv_status sv_realise(sv_context *context, const sv_case *point, sv_index realisa
         return status;
     }
     record.realisation = realisation;
-    record.seconds = seconds_now() - start;
+    note_cost(point, start, &record);
     if (ret_site_values != NULL)
         *ret_site_values = site_values;
     if (ret_sample != NULL)

@@ -19,6 +19,7 @@ typedef struct crew {
     sv_stop_state *stops;   /* one per point */
     int64_t *next;       /* next realisation to hand out, one per point */
     int64_t done, total; /* for progress */
+    int32_t n_workers;   /* that have begun */
     double last_progress;
     sv_status status; /* first failure */
 } crew;
@@ -113,6 +114,7 @@ static void *work(void *argument)
     crew *c = argument;
     sv_context worker = sv_context_fork(c->context);
     pthread_mutex_lock(&c->mutex);
+    const int32_t thread = c->n_workers++;
     for (;;) {
         int32_t point;
         int64_t realisation;
@@ -133,6 +135,7 @@ static void *work(void *argument)
             break;
         }
         record.point = point;
+        record.thread = thread;
         store(c, &worker, &record);
     }
     pthread_mutex_unlock(&c->mutex);

@@ -199,6 +199,7 @@ static sv_status pack(sv_context *context, words *w, const sv_outcome *o, sv_kep
                             .lowest_empty = o->lowest_empty,
                             .window_cells = o->window_cells,
                             .electrons = o->electrons,
+                            .degree = o->degree,
                             .verdict = o->verdict};
     sv_status status = number_of(context, w, o->reason, &kept.reason);
     if (status == SV_OK)
@@ -295,7 +296,8 @@ bool sv_ensemble_get(const sv_ensemble *ensemble, int32_t point, int64_t realisa
                             .kappa = o->kappa,
                             .highest_occupied = o->highest_occupied,
                             .lowest_empty = o->lowest_empty,
-                            .electrons = o->electrons};
+                            .electrons = o->electrons,
+                            .degree = o->degree};
         snprintf(out->reason, sizeof out->reason, "%s", sv_ensemble_text(ensemble, o->reason));
         snprintf(out->engine, sizeof out->engine, "%s", sv_ensemble_text(ensemble, o->engine));
     }

@@ -7,6 +7,7 @@
 #include <string.h>
 
 #include <cblas.h>
+#include <suitesparse/cholmod.h>
 
 /* dlsym gives an object pointer; ISO C has no cast to a function pointer, memcpy does it. */
 static bool find_function(const char *name, void *ret_function)
@@ -33,10 +34,26 @@ static void ask_threading(sv_blas_info *info)
     info->threads_safe = kind != 0;
 }
 
+/* "OpenBLAS 0.3.21 NO_LAPACKE DYNAMIC_ARCH …": the second word. */
+static void ask_version(sv_blas_info *info)
+{
+    char *(*get_config)(void) = NULL;
+    if (!find_function("openblas_get_config", &get_config))
+        return;
+    const char *word = strchr(get_config(), ' ');
+    if (word != NULL)
+        snprintf(info->version, sizeof info->version, "%.*s", (int)strcspn(word + 1, " "),
+                 word + 1);
+}
+
 void sv_blas_setup(sv_blas_info *ret_info)
 {
-    sv_blas_info info = {
-        .kind = "unknown", .threading = "unknown", .kernel = "unknown", .threads_safe = true};
+    sv_blas_info info = {.kind = "unknown",
+                         .threading = "unknown",
+                         .kernel = "unknown",
+                         .version = "unknown",
+                         .threads_safe = true};
+    int cholmod[3] = {0};
     void (*set_threads)(int) = NULL;
     char *(*get_core)(void) = NULL;
     /* A reference to one BLAS routine keeps the library loaded whatever the linker drops. */
@@ -45,8 +62,11 @@ void sv_blas_setup(sv_blas_info *ret_info)
         snprintf(info.kind, sizeof info.kind, "openblas");
         set_threads(1);
         ask_threading(&info);
+        ask_version(&info);
     }
     if (find_function("openblas_get_corename", &get_core))
         snprintf(info.kernel, sizeof info.kernel, "%s", get_core());
+    (void)cholmod_l_version(cholmod);
+    snprintf(info.cholmod, sizeof info.cholmod, "%d.%d.%d", cholmod[0], cholmod[1], cholmod[2]);
     *ret_info = info;
 }

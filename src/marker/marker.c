@@ -237,6 +237,7 @@ sv_outcome sv_outcome_start(const sv_projector *projector)
     sv_outcome outcome = sv_outcome_blank();
     const sv_levels *levels = sv_projector_levels(projector);
     snprintf(outcome.engine, sizeof outcome.engine, "%s", sv_projector_engine(projector));
+    outcome.degree = sv_projector_degree(projector);
     outcome.electrons = levels->occupied;
     outcome.unresolved_within = levels->gap_resolved ? 0.0 : levels->resolved_from;
     double nearest = INFINITY;

@@ -2,6 +2,7 @@
 /* The table of commands, and the two that only talk about the program itself. */
 #include "program_internal.h"
 
+#include <gnu/libc-version.h>
 #include <limits.h>
 #include <sched.h>
 #include <string.h>
@@ -39,7 +40,8 @@ const command *command_table(int *ret_count)
 
 void kernel_text(const sv_blas_info *blas, char *text, size_t size)
 {
-    snprintf(text, size, "%s %s %s, panels %s", blas->kind, blas->threading, blas->kernel,
+    snprintf(text, size, "%s %s %s %s, cholmod %s, glibc %s, panels %s", blas->kind, blas->version,
+             blas->threading, blas->kernel, blas->cholmod, gnu_get_libc_version(),
              sv_panel_kernel_name(sv_panel_best_kernel()));
 }
 
@@ -56,17 +58,20 @@ int run_info(sv_context *context, const options *o)
     sv_blas_setup(&blas);
     if (o->json) {
         printf("{\"selvedge\": 1, \"command\": \"info\", \"version\": \"%s\",\n"
-               " \"blas\": \"%s\", \"blas_threading\": \"%s\", \"kernel\": \"%s\",\n"
+               " \"blas\": \"%s\", \"blas_version\": \"%s\", \"cholmod_version\": \"%s\",\n"
+               " \"blas_threading\": \"%s\", \"kernel\": \"%s\",\n"
                " \"panel_kernel\": \"%s\", \"threads_safe\": %s, \"threads\": %d,\n"
                " \"engines\": [\"dense\", \"chebyshev\", \"rational\"]}\n",
-               sv_version(), blas.kind, blas.threading, blas.kernel,
+               sv_version(), blas.kind, blas.version, blas.cholmod, blas.threading, blas.kernel,
                sv_panel_kernel_name(sv_panel_best_kernel()), blas.threads_safe ? "true" : "false",
                cores_allowed());
         return 0;
     }
     printf("selvedge   %s\n", sv_version());
-    printf("BLAS       %s, %s, kernel %s%s\n", blas.kind, blas.threading, blas.kernel,
+    printf("BLAS       %s %s, %s, kernel %s%s\n", blas.kind, blas.version, blas.threading,
+           blas.kernel,
            blas.threads_safe ? "" : " (wrong results with several threads: one is used)");
+    printf("CHOLMOD    %s\n", blas.cholmod);
     printf("threads    %d\n", cores_allowed());
     printf("panels     %s\n", sv_panel_kernel_name(sv_panel_best_kernel()));
     printf("engines    dense, chebyshev, rational\n");

@@ -71,7 +71,7 @@ typedef struct session {
     point *points;
     int32_t n_points;
     int threads;
-    char kernel[160], version[100]; /* of the rows: this program's, or those of a run */
+    char kernel[256], version[100]; /* of the rows: this program's, or those of a run */
     const char *plan_lines; /* borrowed: the engines as a run notes them, when not planned here */
     bool inside_run;        /* the sheet is the one in a run folder */
     bool add_map_marker;    /* the map command always computes the local Chern marker */

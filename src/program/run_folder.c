@@ -100,7 +100,9 @@ sv_status run_folder_open(session *s, sv_run **ret_run)
                                     .tasks = (int32_t)s->options->tasks,
                                     .inputs = c.inputs,
                                     .n_inputs = s->base.n_files,
-                                    .command_line = s->options->command_line};
+                                    .command_line = s->options->command_line,
+                                    .threads = s->threads,
+                                    .ranks = 1};
         status = sv_run_open(s->context, s->options->output, &identity, s->options->force, ret_run);
     }
     sv_give(s->context, resolved);

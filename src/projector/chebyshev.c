@@ -164,12 +164,18 @@ static bool chebyshev_is_single(const void *state)
     return ((const chebyshev_state *)state)->single;
 }
 
+static int chebyshev_degree(const void *state)
+{
+    return ((const chebyshev_state *)state)->degree;
+}
+
 static const engine_class chebyshev_class = {.name = "chebyshev",
                                              .free = chebyshev_free,
                                              .apply = chebyshev_apply,
                                              .basis = chebyshev_basis,
                                              .set_single = chebyshev_set_single,
                                              .is_single = chebyshev_is_single,
+                                             .degree = chebyshev_degree,
                                              .restrict_to = chebyshev_restrict};
 
 /* Gap and degree in units of the half width of the spectrum about the Fermi energy. */

@@ -74,6 +74,11 @@ const char *sv_projector_engine(const sv_projector *projector)
     return projector->engine->name;
 }
 
+int sv_projector_degree(const sv_projector *projector)
+{
+    return projector->engine->degree != NULL ? projector->engine->degree(projector->state) : 0;
+}
+
 sv_status sv_projector_apply(sv_context *context, sv_projector *projector, sv_index columns,
                              const sv_complex *x, sv_complex *y)
 {

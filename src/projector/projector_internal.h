@@ -20,6 +20,7 @@ typedef struct engine_class {
     /* Single precision on or off; false: there is no choice. NULL: always double. */
     bool (*set_single)(void *state, bool single);
     bool (*is_single)(const void *state);
+    int (*degree)(const void *state); /* NULL: there is none */
 } engine_class;
 
 struct sv_projector {

@@ -62,7 +62,11 @@ static void harden(sqlite3 *ledger)
 {
     sqlite3_db_config(ledger, SQLITE_DBCONFIG_DEFENSIVE, 1, NULL);
     sqlite3_db_config(ledger, SQLITE_DBCONFIG_TRUSTED_SCHEMA, 0, NULL);
+    sqlite3_db_config(ledger, SQLITE_DBCONFIG_ENABLE_VIEW, 0, NULL);
     sqlite3_limit(ledger, SQLITE_LIMIT_LENGTH, SV_MAX_TEXT_BYTES);
+    sqlite3_limit(ledger, SQLITE_LIMIT_SQL_LENGTH, 1 << 14);
+    sqlite3_limit(ledger, SQLITE_LIMIT_COLUMN, 64);
+    sqlite3_limit(ledger, SQLITE_LIMIT_EXPR_DEPTH, 32);
     sqlite3_limit(ledger, SQLITE_LIMIT_ATTACHED, 0);
 }
 
@@ -95,6 +99,35 @@ static bool journal_is_plain(const char *path)
     return !named;
 }
 
+/*
+ * A ledger of ours has a rollback journal. One that asks for a write-ahead log (bytes 18 and 19 of
+ * the header, SQLite file format, section 1.3) would make SQLite read and write further files.
+ * Read through SQLite's own functions: closing a descriptor of the file would drop its locks.
+ */
+static sv_status check_header(sv_context *context, const sv_run *run, const char *path)
+{
+    sqlite3_vfs *vfs = sqlite3_vfs_find(NULL);
+    unsigned char head[20] = {0};
+    sqlite3_file *file = NULL;
+    sv_status status = sv_take(context, 1, (size_t)vfs->szOsFile, &file);
+    if (status != SV_OK)
+        return status;
+    int code = vfs->xOpen(vfs, path, file, SQLITE_OPEN_READONLY | SQLITE_OPEN_MAIN_DB, NULL);
+    if (code == SQLITE_OK)
+        code = file->pMethods->xRead(file, head, sizeof head, 0);
+    if (code != SQLITE_OK && code != SQLITE_IOERR_SHORT_READ)
+        status = SV_FAIL(context, SV_STORAGE, "cannot read %s/%s: %s", run->folder, SV_LEDGER_NAME,
+                         sqlite3_errstr(code));
+    else if (head[18] > 1 || head[19] > 1)
+        status = SV_FAIL(context, SV_STORAGE,
+                         "%s/%s is damaged or from elsewhere: it asks for a write-ahead log",
+                         run->folder, SV_LEDGER_NAME);
+    if (file->pMethods != NULL)
+        file->pMethods->xClose(file);
+    sv_give(context, file);
+    return status;
+}
+
 /* Ledger and journal must be plain files, so that nothing outside the folder is touched. */
 static sv_status check_files(sv_context *context, const sv_run *run)
 {
@@ -107,6 +140,11 @@ static sv_status check_files(sv_context *context, const sv_run *run)
         return SV_FAIL(context, SV_STORAGE, "cannot open %s: %s", path, strerror(errno));
     if (!S_ISREG(info.st_mode))
         return SV_FAIL(context, SV_STORAGE, "%s is a link or no regular file", path);
+    status = ledger_path(context, run->folder, SV_LEDGER_NAME, path, sizeof path);
+    if (status == SV_OK)
+        status = check_header(context, run, path);
+    if (status != SV_OK)
+        return status;
     status = sv_join_path(context, run->folder, SV_JOURNAL_NAME, path, sizeof path);
     if (status != SV_OK)
         return status;
@@ -240,10 +278,11 @@ sv_status sv_ledger_open_read(sv_context *context, sv_run *run)
 void sv_ledger_close(sv_run *run)
 {
     sqlite3_finalize(run->put_row);
+    sqlite3_finalize(run->put_cost);
     sqlite3_finalize(run->put_outcome);
     sqlite3_finalize(run->get_row);
     sqlite3_finalize(run->get_outcome);
-    run->put_row = run->put_outcome = run->get_row = run->get_outcome = NULL;
+    run->put_row = run->put_cost = run->put_outcome = run->get_row = run->get_outcome = NULL;
     sqlite3_close(run->ledger);
     run->ledger = NULL;
 }

@@ -116,7 +116,7 @@ static sv_status collect(sv_context *context, const sv_record *record, void *use
     char digest[65];
     row_mark mark = {
         .realisation = record->realisation, .point = record->point, .folder = c->folder};
-    sv_record_checksum(record, false, digest);
+    sv_record_checksum(record, digest);
     snprintf(mark.digest, sizeof mark.digest, "%.32s", digest);
     return add_mark(context, c->list, &mark);
 }
@@ -262,7 +262,7 @@ static sv_status join_shard(sv_context *context, sv_run *run, const char *shard,
         sv_run_task(from, &task, &tasks);
         snprintf(note, sizeof note, "%.500s (task %ld of %ld): %lld added, %lld were there", shard,
                  (long)task, (long)tasks, (long long)j.added, (long long)j.present);
-        status = sv_event_add(context, run, "merge", note, &number);
+        status = sv_event_add(context, run, "merge", note, NULL, &number);
     }
     sv_run_close(context, from);
     total->added += j.added;

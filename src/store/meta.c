@@ -1,8 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* What a run is (table meta) and what happened to it (table event). */
+/* What a run is: table meta. */
 #include <stdio.h>
 #include <string.h>
-#include <time.h>
 
 #include "store_internal.h"
 
@@ -12,6 +11,12 @@ const char *sv_run_meta(const sv_run *run, const char *key)
         if (strcmp(run->meta[i].key, key) == 0)
             return run->meta[i].value;
     return NULL;
+}
+
+static void pair_checksum(const char *key, const char *value, char digest[17])
+{
+    const char *const texts[2] = {key, value};
+    sv_texts_checksum(texts, 2, NULL, 0, digest);
 }
 
 void sv_meta_free(sv_context *context, sv_run *run)
@@ -50,17 +55,33 @@ static sv_status keep(sv_context *context, sv_run *run, const char *key, const c
     return SV_OK;
 }
 
+/* As written, and fit to be shown. */
+static bool is_sound(sqlite3_stmt *row, const char *key, const char *value, const char *digest)
+{
+    char expected[17];
+    const int sizes[2] = {sqlite3_column_bytes(row, 0), sqlite3_column_bytes(row, 1)};
+    pair_checksum(key, value, expected);
+    return (size_t)sizes[0] == strlen(key) && (size_t)sizes[1] == strlen(value) &&
+           strcmp(digest, expected) == 0 && sv_text_is_plain(key, (size_t)sizes[0], false) &&
+           sv_text_is_plain(value, (size_t)sizes[1], true);
+}
+
 sv_status sv_meta_load(sv_context *context, sv_run *run)
 {
     sqlite3_stmt *statement = NULL;
     int code = SQLITE_DONE;
-    sv_status status =
-        sv_ledger_prepare(context, run, "SELECT key, value FROM meta ORDER BY key", &statement);
+    sv_status status = sv_ledger_prepare(
+        context, run, "SELECT key, value, checksum FROM meta ORDER BY key", &statement);
     while (status == SV_OK && (code = sqlite3_step(statement)) == SQLITE_ROW) {
         const char *key = (const char *)sqlite3_column_text(statement, 0);
         const char *value = (const char *)sqlite3_column_text(statement, 1);
-        if (key == NULL || value == NULL)
+        const char *digest = (const char *)sqlite3_column_text(statement, 2);
+        if (key == NULL || value == NULL || digest == NULL)
             status = sv_ledger_fail(context, run, "read");
+        else if (!is_sound(statement, key, value, digest))
+            status = SV_FAIL(context, SV_STORAGE,
+                             "%s/%s is damaged: what it says about itself has another checksum",
+                             run->folder, SV_LEDGER_NAME);
         else
             status = keep(context, run, key, value);
     }
@@ -73,14 +94,18 @@ sv_status sv_meta_load(sv_context *context, sv_run *run)
 sv_status sv_meta_set(sv_context *context, sv_run *run, const char *key, const char *value)
 {
     sqlite3_stmt *statement = NULL;
-    sv_status status = sv_ledger_prepare(context, run,
-                                         "INSERT INTO meta (key, value) VALUES (?1, ?2) "
-                                         "ON CONFLICT (key) DO UPDATE SET value = excluded.value",
-                                         &statement);
+    char digest[17];
+    pair_checksum(key, value, digest);
+    sv_status status = sv_ledger_prepare(
+        context, run,
+        "INSERT INTO meta (key, value, checksum) VALUES (?1, ?2, ?3) ON CONFLICT "
+        "(key) DO UPDATE SET value = excluded.value, checksum = excluded.checksum",
+        &statement);
     if (status != SV_OK)
         return status;
     if (sqlite3_bind_text(statement, 1, key, -1, SQLITE_STATIC) != SQLITE_OK ||
         sqlite3_bind_text(statement, 2, value, -1, SQLITE_STATIC) != SQLITE_OK ||
+        sqlite3_bind_text(statement, 3, digest, -1, SQLITE_STATIC) != SQLITE_OK ||
         sqlite3_step(statement) != SQLITE_DONE)
         status = sv_ledger_fail(context, run, "write");
     sqlite3_finalize(statement);
@@ -134,37 +159,4 @@ sv_status sv_meta_read_shape(sv_context *context, sv_run *run)
     run->n_markers = count;
     run->n_points = (int32_t)number;
     return SV_OK;
-}
-
-sv_status sv_event_add(sv_context *context, sv_run *run, const char *what, const char *note,
-                       int64_t *ret_number)
-{
-    sqlite3_stmt *statement = NULL;
-    char now[32];
-    const time_t seconds = time(NULL);
-    struct tm parts;
-    if (gmtime_r(&seconds, &parts) == NULL ||
-        strftime(now, sizeof now, "%Y-%m-%dT%H:%M:%SZ", &parts) == 0)
-        snprintf(now, sizeof now, "unknown");
-    sv_status status = sv_ledger_prepare(
-        context, run, "INSERT INTO event (time, what, note) VALUES (?1, ?2, ?3)", &statement);
-    if (status != SV_OK)
-        return status;
-    if (sqlite3_bind_text(statement, 1, now, -1, SQLITE_STATIC) != SQLITE_OK ||
-        sqlite3_bind_text(statement, 2, what, -1, SQLITE_STATIC) != SQLITE_OK ||
-        sqlite3_bind_text(statement, 3, note, -1, SQLITE_STATIC) != SQLITE_OK ||
-        sqlite3_step(statement) != SQLITE_DONE)
-        status = sv_ledger_fail(context, run, "write");
-    else
-        *ret_number = sqlite3_last_insert_rowid(run->ledger);
-    sqlite3_finalize(statement);
-    return status;
-}
-
-sv_status sv_run_event(sv_context *context, sv_run *run, const char *what, const char *note)
-{
-    int64_t number;
-    if (!run->writing)
-        return SV_FAIL(context, SV_STORAGE, "the run %s is open for reading only", run->folder);
-    return sv_event_add(context, run, what, note == NULL ? "" : note, &number);
 }

@@ -6,14 +6,16 @@
 #include "store_internal.h"
 
 static const char row_sql[] =
-    "INSERT INTO realisation (point, realisation, status, sites, vacancies, seconds, outcomes, "
-    "started_by, checksum) VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9)";
+    "INSERT INTO realisation (point, realisation, status, sites, vacancies, outcomes, checksum) "
+    "VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7)";
+static const char cost_sql[] =
+    "INSERT INTO cost (point, realisation, event, host, rank, thread, seconds, processor_seconds, "
+    "peak_bytes, checksum) VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9, ?10)";
 static const char outcome_sql[] =
     "INSERT INTO outcome (point, realisation, position, marker, verdict, reason, engine, value, "
     "idx, numerical_error, estimator_error, margin, weakest, sum_over_sites, window_cells, "
-    "highest_occupied, lowest_empty, electrons, kappa) VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9, "
-    "?10, "
-    "?11, ?12, ?13, ?14, ?15, ?16, ?17, ?18, ?19)";
+    "highest_occupied, lowest_empty, electrons, kappa, degree) VALUES (?1, ?2, ?3, ?4, ?5, ?6, ?7, "
+    "?8, ?9, ?10, ?11, ?12, ?13, ?14, ?15, ?16, ?17, ?18, ?19, ?20)";
 
 /* SQLite stores NaN as NULL by itself. */
 static bool bind_reals(sqlite3_stmt *statement, int first, const double *values, int count)
@@ -31,27 +33,50 @@ static bool bind_integer(sqlite3_stmt *statement, int column, int64_t value)
 
 static bool bind_text(sqlite3_stmt *statement, int column, const char *text)
 {
-    return sqlite3_bind_text(statement, column, text, -1, SQLITE_STATIC) == SQLITE_OK;
+    char plain[SV_PLAIN_BYTES];
+    const size_t length = sv_text_plain(text, plain, sizeof plain);
+    return sqlite3_bind_text(statement, column, plain, (int)length, SQLITE_TRANSIENT) == SQLITE_OK;
+}
+
+static sv_status step(sv_context *context, sv_run *run, sqlite3_stmt *statement, bool bound)
+{
+    sv_status status = SV_OK;
+    if (!bound || sqlite3_step(statement) != SQLITE_DONE)
+        status = sv_ledger_fail(context, run, "write");
+    sqlite3_reset(statement);
+    return status;
+}
+
+static sv_status insert_cost(sv_context *context, sv_run *run, const sv_record *record)
+{
+    const double seconds[2] = {record->seconds, record->processor_seconds};
+    sqlite3_stmt *statement = run->put_cost;
+    char digest[17];
+    sv_cost_checksum(record, run->session, digest);
+    return step(
+        context, run, statement,
+        bind_integer(statement, 1, record->point) &&
+            bind_integer(statement, 2, record->realisation) &&
+            bind_integer(statement, 3, run->session) && bind_text(statement, 4, record->host) &&
+            bind_integer(statement, 5, record->rank) &&
+            bind_integer(statement, 6, record->thread) && bind_reals(statement, 7, seconds, 2) &&
+            bind_integer(statement, 9, record->peak_bytes) && bind_text(statement, 10, digest));
 }
 
 static sv_status insert_row(sv_context *context, sv_run *run, const sv_record *record)
 {
     sqlite3_stmt *statement = run->put_row;
     char digest[65];
-    sv_record_checksum(record, true, digest);
+    sv_record_checksum(record, digest);
     const bool bound = bind_integer(statement, 1, record->point) &&
                        bind_integer(statement, 2, record->realisation) &&
                        bind_integer(statement, 3, (int64_t)record->status) &&
                        bind_integer(statement, 4, record->sites) &&
                        bind_integer(statement, 5, record->vacancies) &&
-                       bind_reals(statement, 6, &record->seconds, 1) &&
-                       bind_integer(statement, 7, record->n_outcomes) &&
-                       bind_integer(statement, 8, run->session) && bind_text(statement, 9, digest);
-    sv_status status = SV_OK;
-    if (!bound || sqlite3_step(statement) != SQLITE_DONE)
-        status = sv_ledger_fail(context, run, "write");
-    sqlite3_reset(statement);
-    return status;
+                       bind_integer(statement, 6, record->n_outcomes) &&
+                       bind_text(statement, 7, digest);
+    sv_status status = step(context, run, statement, bound);
+    return status == SV_OK ? insert_cost(context, run, record) : status;
 }
 
 static sv_status insert_outcome(sv_context *context, sv_run *run, const sv_record *record,
@@ -72,12 +97,9 @@ static sv_status insert_outcome(sv_context *context, sv_run *run, const sv_recor
         bind_integer(statement, 9, outcome->index) && bind_reals(statement, 10, reals, 5) &&
         bind_integer(statement, 15, outcome->window_cells) &&
         bind_reals(statement, 16, levels, 2) && bind_integer(statement, 18, outcome->electrons) &&
-        bind_reals(statement, 19, &outcome->kappa, 1);
-    sv_status status = SV_OK;
-    if (!bound || sqlite3_step(statement) != SQLITE_DONE)
-        status = sv_ledger_fail(context, run, "write");
-    sqlite3_reset(statement);
-    return status;
+        bind_reals(statement, 19, &outcome->kappa, 1) &&
+        bind_integer(statement, 20, outcome->degree);
+    return step(context, run, statement, bound);
 }
 
 sv_status sv_put_prepare(sv_context *context, sv_run *run)
@@ -85,6 +107,8 @@ sv_status sv_put_prepare(sv_context *context, sv_run *run)
     sv_status status = SV_OK;
     if (run->put_row == NULL)
         status = sv_ledger_prepare(context, run, row_sql, &run->put_row);
+    if (status == SV_OK && run->put_cost == NULL)
+        status = sv_ledger_prepare(context, run, cost_sql, &run->put_cost);
     if (status == SV_OK && run->put_outcome == NULL)
         status = sv_ledger_prepare(context, run, outcome_sql, &run->put_outcome);
     return status;
@@ -123,13 +147,13 @@ void sv_record_difference(const sv_record *was, const sv_record *is, char *text,
         snprintf(text, size, "an error, a margin or a verdict differs");
 }
 
-/* A realisation that is there already must have the same numbers, its time apart. */
+/* A realisation that is there already must have the same numbers, its cost apart. */
 static sv_status compare(sv_context *context, const sv_run *run, const sv_record *old_record,
                          const sv_record *record)
 {
     char was[65], is[65], difference[400];
-    sv_record_checksum(old_record, false, was);
-    sv_record_checksum(record, false, is);
+    sv_record_checksum(old_record, was);
+    sv_record_checksum(record, is);
     if (strcmp(was, is) == 0)
         return SV_OK;
     sv_record_difference(old_record, record, difference, sizeof difference);

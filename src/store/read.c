@@ -6,12 +6,15 @@
 #include "store_internal.h"
 
 static const char row_sql[] =
-    "SELECT status, sites, vacancies, seconds, outcomes, checksum FROM realisation "
-    "WHERE point = ?1 AND realisation = ?2";
+    "SELECT r.status, r.sites, r.vacancies, r.outcomes, r.checksum, c.event, c.host, c.rank, "
+    "c.thread, c.seconds, c.processor_seconds, c.peak_bytes, c.checksum FROM realisation r "
+    "LEFT JOIN cost c ON c.point = r.point AND c.realisation = r.realisation "
+    "WHERE r.point = ?1 AND r.realisation = ?2";
 static const char outcome_sql[] =
     "SELECT position, marker, verdict, reason, engine, value, idx, numerical_error, "
     "estimator_error, margin, weakest, sum_over_sites, window_cells, highest_occupied, "
-    "lowest_empty, electrons, kappa FROM outcome WHERE point = ?1 AND realisation = ?2 ORDER BY "
+    "lowest_empty, electrons, kappa, degree FROM outcome WHERE point = ?1 AND realisation = ?2 "
+    "ORDER BY "
     "position";
 
 static double real_at(sqlite3_stmt *row, int column)
@@ -21,12 +24,13 @@ static double real_at(sqlite3_stmt *row, int column)
     return sqlite3_column_double(row, column);
 }
 
-/* A bounded copy; false when the text is missing, too long, or holds a NUL. */
+/* A bounded copy; false when the text is missing, too long, or not fit to be shown. */
 static bool text_at(sqlite3_stmt *row, int column, char *text, size_t size)
 {
     const char *value = (const char *)sqlite3_column_text(row, column);
     const int bytes = sqlite3_column_bytes(row, column);
-    if (value == NULL || bytes < 0 || (size_t)bytes >= size || strlen(value) != (size_t)bytes)
+    if (value == NULL || bytes < 0 || (size_t)bytes >= size ||
+        !sv_text_is_plain(value, (size_t)bytes, false))
         return false;
     memcpy(text, value, (size_t)bytes + 1);
     return true;
@@ -39,11 +43,33 @@ static sv_status damaged(sv_context *context, const sv_run *run, int32_t point, 
                    run->folder, SV_LEDGER_NAME, (long long)realisation, (long)point, what);
 }
 
+/* Limits that hold for whatever this program can write, wider than any physics. */
+static bool is_count(int64_t number)
+{
+    return number >= 0 && number < INT64_C(1) << 48;
+}
+
+static bool is_error(double value)
+{
+    return isnan(value) || value >= 0.0;
+}
+
+/* A value that counts must be a number that sums and can be an index. */
+static bool is_sane(const sv_outcome *o)
+{
+    const double largest = 1e15;
+    const bool value = o->verdict != SV_RESOLVED || (o->value > -largest && o->value < largest);
+    return value && o->index > -(int64_t)largest && o->index < (int64_t)largest &&
+           is_error(o->numerical_error) && is_error(o->estimator_error) &&
+           is_count(o->window_cells) && is_count(o->electrons) && o->degree >= 0;
+}
+
 static bool read_outcome(sqlite3_stmt *row, sv_outcome *outcome)
 {
-    memset(outcome, 0, sizeof *outcome);
+    *outcome = (sv_outcome){.unresolved_within = (double)NAN, .nearest_level = (double)NAN};
     const sqlite3_int64 verdict = sqlite3_column_int64(row, 2);
-    if (verdict < SV_RESOLVED || verdict > SV_FAILED ||
+    const sqlite3_int64 degree = sqlite3_column_int64(row, 17);
+    if (verdict < SV_RESOLVED || verdict > SV_FAILED || degree < 0 || degree > INT32_MAX ||
         !text_at(row, 3, outcome->reason, sizeof outcome->reason) ||
         !text_at(row, 4, outcome->engine, sizeof outcome->engine))
         return false;
@@ -60,10 +86,30 @@ static bool read_outcome(sqlite3_stmt *row, sv_outcome *outcome)
     outcome->lowest_empty = real_at(row, 14);
     outcome->electrons = sqlite3_column_int64(row, 15);
     outcome->kappa = real_at(row, 16);
-    return true;
+    outcome->degree = (int32_t)degree;
+    return is_sane(outcome);
 }
 
-/* The head of the record; the checksum it should have goes to `digest`. */
+/* What the realisation cost; false when it is not there or not as it was written. */
+static bool read_cost(sqlite3_stmt *row, sv_record *record)
+{
+    char digest[17], expected[17];
+    const sqlite3_int64 rank = sqlite3_column_int64(row, 7), thread = sqlite3_column_int64(row, 8);
+    if (!text_at(row, 6, record->host, sizeof record->host) ||
+        !text_at(row, 12, digest, sizeof digest) || rank < 0 || rank > INT32_MAX || thread < 0 ||
+        thread > INT32_MAX)
+        return false;
+    record->rank = (int32_t)rank;
+    record->thread = (int32_t)thread;
+    record->seconds = real_at(row, 9);
+    record->processor_seconds = real_at(row, 10);
+    record->peak_bytes = sqlite3_column_int64(row, 11);
+    sv_cost_checksum(record, sqlite3_column_int64(row, 5), expected);
+    return strcmp(digest, expected) == 0 && is_error(record->seconds) &&
+           is_error(record->processor_seconds) && is_count(record->peak_bytes);
+}
+
+/* The head of the record and its cost; the checksum it should have goes to `digest`. */
 static sv_status read_row(sv_context *context, sv_run *run, sv_record *record, char digest[65],
                           bool *ret_found)
 {
@@ -74,14 +120,16 @@ static sv_status read_row(sv_context *context, sv_run *run, sv_record *record, c
         return SV_OK;
     if (code != SQLITE_ROW)
         return sv_ledger_fail(context, run, "read");
-    const sqlite3_int64 state = sqlite3_column_int64(row, 0), count = sqlite3_column_int64(row, 4);
-    if (state < 0 || state >= SV_STATUS_COUNT || count < 0 || count > SV_MAX_MARKERS ||
-        !text_at(row, 5, digest, 65))
-        return damaged(context, run, record->point, record->realisation, "a value out of range");
-    record->status = (sv_status)state;
+    const sqlite3_int64 state = sqlite3_column_int64(row, 0), count = sqlite3_column_int64(row, 3);
     record->sites = sqlite3_column_int64(row, 1);
     record->vacancies = sqlite3_column_int64(row, 2);
-    record->seconds = real_at(row, 3);
+    if (state < 0 || state >= SV_STATUS_COUNT || count < 0 || count > SV_MAX_MARKERS ||
+        !is_count(record->sites) || !is_count(record->vacancies) || !text_at(row, 4, digest, 65))
+        return damaged(context, run, record->point, record->realisation, "a value out of range");
+    if (!read_cost(row, record))
+        return damaged(context, run, record->point, record->realisation,
+                       "its cost is missing or has another checksum");
+    record->status = (sv_status)state;
     record->n_outcomes = (int32_t)count;
     return SV_OK;
 }
@@ -150,7 +198,7 @@ sv_status sv_record_read(sv_context *context, sv_run *run, int32_t point, int64_
     if (run->get_outcome != NULL)
         sqlite3_reset(run->get_outcome);
     if (status == SV_OK && found) {
-        sv_record_checksum(&record, true, expected);
+        sv_record_checksum(&record, expected);
         if (strcmp(digest, expected) != 0)
             status = damaged(context, run, point, realisation, "its checksum does not fit");
     }

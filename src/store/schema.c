@@ -1,5 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Tables of the ledger. STRICT tables, append-only by triggers; NaN is stored as NULL. */
+/* Tables of the ledger. STRICT tables, append-only by triggers; NaN is stored as NULL. What two
+ * runs of one sheet must agree on bit for bit stands in `realisation` and `outcome`; what differs
+ * from run to run in `event` and `cost`. */
 #include <string.h>
 
 #include "store_internal.h"
@@ -8,20 +10,33 @@
 #define APPLICATION_ID 1399617127
 #define STRINGIFY(x)   #x
 #define EXPAND(x)      STRINGIFY(x)
-enum { SCHEMA_VERSION = 1 };
+/* 1: seconds among the checksummed fields, eight markers, no costs. */
+#define LAYOUT 2
+enum { SCHEMA_VERSION = LAYOUT };
 
 /* Each text is kept by SQLite word for word, so a foreign schema is seen by comparing. */
 static const char *const statements[] = {
     "CREATE TABLE meta (\n"
     "  key TEXT NOT NULL PRIMARY KEY,\n"
-    "  value TEXT NOT NULL\n"
+    "  value TEXT NOT NULL,\n"
+    "  checksum TEXT NOT NULL\n"
     ") STRICT, WITHOUT ROWID",
 
     "CREATE TABLE event (\n"
     "  number INTEGER NOT NULL PRIMARY KEY,\n"
     "  time TEXT NOT NULL,\n"
     "  what TEXT NOT NULL,\n"
-    "  note TEXT NOT NULL\n"
+    "  note TEXT NOT NULL,\n"
+    "  session INTEGER NOT NULL,\n"
+    "  command_line TEXT NOT NULL,\n"
+    "  program_version TEXT NOT NULL,\n"
+    "  kernel TEXT NOT NULL,\n"
+    "  libraries TEXT NOT NULL,\n"
+    "  host TEXT NOT NULL,\n"
+    "  process INTEGER NOT NULL,\n"
+    "  threads INTEGER NOT NULL,\n"
+    "  ranks INTEGER NOT NULL,\n"
+    "  checksum TEXT NOT NULL\n"
     ") STRICT",
 
     "CREATE TABLE realisation (\n"
@@ -30,9 +45,7 @@ static const char *const statements[] = {
     "  status INTEGER NOT NULL,\n"
     "  sites INTEGER NOT NULL,\n"
     "  vacancies INTEGER NOT NULL,\n"
-    "  seconds REAL,\n"
-    "  outcomes INTEGER NOT NULL CHECK (outcomes BETWEEN 0 AND 8),\n"
-    "  started_by INTEGER NOT NULL REFERENCES event (number),\n"
+    "  outcomes INTEGER NOT NULL CHECK (outcomes BETWEEN 0 AND 16),\n"
     "  checksum TEXT NOT NULL,\n"
     "  PRIMARY KEY (point, realisation)\n"
     ") STRICT, WITHOUT ROWID",
@@ -40,7 +53,7 @@ static const char *const statements[] = {
     "CREATE TABLE outcome (\n"
     "  point INTEGER NOT NULL,\n"
     "  realisation INTEGER NOT NULL,\n"
-    "  position INTEGER NOT NULL CHECK (position BETWEEN 0 AND 7),\n"
+    "  position INTEGER NOT NULL CHECK (position BETWEEN 0 AND 15),\n"
     "  marker TEXT NOT NULL,\n"
     "  verdict INTEGER NOT NULL,\n"
     "  reason TEXT NOT NULL,\n"
@@ -57,7 +70,23 @@ static const char *const statements[] = {
     "  lowest_empty REAL,\n"
     "  electrons INTEGER NOT NULL,\n"
     "  kappa REAL,\n"
+    "  degree INTEGER NOT NULL,\n"
     "  PRIMARY KEY (point, realisation, position),\n"
+    "  FOREIGN KEY (point, realisation) REFERENCES realisation (point, realisation)\n"
+    ") STRICT, WITHOUT ROWID",
+
+    "CREATE TABLE cost (\n"
+    "  point INTEGER NOT NULL,\n"
+    "  realisation INTEGER NOT NULL,\n"
+    "  event INTEGER NOT NULL REFERENCES event (number),\n"
+    "  host TEXT NOT NULL,\n"
+    "  rank INTEGER NOT NULL,\n"
+    "  thread INTEGER NOT NULL,\n"
+    "  seconds REAL,\n"
+    "  processor_seconds REAL,\n"
+    "  peak_bytes INTEGER NOT NULL,\n"
+    "  checksum TEXT NOT NULL,\n"
+    "  PRIMARY KEY (point, realisation),\n"
     "  FOREIGN KEY (point, realisation) REFERENCES realisation (point, realisation)\n"
     ") STRICT, WITHOUT ROWID",
 
@@ -73,6 +102,10 @@ static const char *const statements[] = {
     "BEGIN SELECT RAISE(ABORT, 'the ledger is append-only'); END",
     "CREATE TRIGGER outcome_no_delete BEFORE DELETE ON outcome\n"
     "BEGIN SELECT RAISE(ABORT, 'the ledger is append-only'); END",
+    "CREATE TRIGGER cost_no_update BEFORE UPDATE ON cost\n"
+    "BEGIN SELECT RAISE(ABORT, 'the ledger is append-only'); END",
+    "CREATE TRIGGER cost_no_delete BEFORE DELETE ON cost\n"
+    "BEGIN SELECT RAISE(ABORT, 'the ledger is append-only'); END",
     "CREATE TRIGGER meta_no_delete BEFORE DELETE ON meta\n"
     "BEGIN SELECT RAISE(ABORT, 'what a run is cannot be removed'); END",
 };
@@ -85,10 +118,10 @@ sv_status sv_schema_create(sv_context *context, sv_run *run)
     for (int i = 0; i < N_STATEMENTS && status == SV_OK; i++)
         status = sv_ledger_execute(context, run, statements[i]);
     if (status == SV_OK)
-        status = sv_ledger_execute(
-            context, run,
-            "PRAGMA application_id = " EXPAND(APPLICATION_ID) ";"
-                                                              "PRAGMA user_version = 1");
+        status = sv_ledger_execute(context, run,
+                                   "PRAGMA application_id = " EXPAND(
+                                       APPLICATION_ID) ";"
+                                                       "PRAGMA user_version = " EXPAND(LAYOUT));
     return status;
 }
 
@@ -154,8 +187,11 @@ sv_status sv_schema_check(sv_context *context, sv_run *run)
     if (status == SV_OK)
         status = read_number(context, run, "PRAGMA user_version", &version);
     if (status == SV_OK && version != SCHEMA_VERSION)
-        status = SV_FAIL(context, SV_STORAGE, "%s/%s has layout %lld; this program reads layout %d",
-                         run->folder, SV_LEDGER_NAME, (long long)version, SCHEMA_VERSION);
+        status =
+            SV_FAIL(context, SV_STORAGE,
+                    "%s/%s has layout %lld; this program reads layout %d: use the version that "
+                    "wrote it, or start a new run",
+                    run->folder, SV_LEDGER_NAME, (long long)version, SCHEMA_VERSION);
     if (status == SV_OK)
         status = compare_statements(context, run);
     if (status == SV_OK)

@@ -107,19 +107,20 @@ static sv_status clear_ledger(sv_context *context, const char *folder)
     return SV_OK;
 }
 
-/* Everything about the run in one transaction; `note` is kept with the event. */
+/* Everything about the run in one transaction. */
 sv_status sv_session_begin(sv_context *context, sv_run *run, const sv_run_identity *identity,
                            const char *what, bool create)
 {
-    const char *note = identity->command_line == NULL ? "" : identity->command_line;
     int64_t session = 0;
     sv_status status = sv_ledger_execute(context, run, "BEGIN IMMEDIATE");
     if (status == SV_OK && create)
         status = sv_schema_create(context, run);
     if (status == SV_OK)
         status = set_identity(context, run, identity);
+    if (status == SV_OK && !create)
+        status = sv_event_close_lost(context, run);
     if (status == SV_OK)
-        status = sv_event_add(context, run, what, note, &session);
+        status = sv_event_add(context, run, what, "", identity, &session);
     if (status == SV_OK)
         status = sv_ledger_execute(context, run, "COMMIT");
     if (status == SV_OK)

@@ -21,7 +21,10 @@ enum {
     /* A ledger row never needs more; guards against huge values in a file from elsewhere. */
     SV_MAX_POINTS = 1 << 20,
     SV_MAX_TEXT_BYTES = 1 << 24,
-    SV_MAX_TASKS = 1 << 20
+    SV_MAX_TASKS = 1 << 20,
+    SV_PLAIN_BYTES = 256, /* a reason, an engine, a host */
+    SV_NOTE_BYTES = 4096, /* a text of an event */
+    SV_MAX_FIELDS = 16    /* of one checksum */
 };
 #define SV_MAX_REALISATIONS (INT64_C(1) << 40)
 
@@ -40,7 +43,7 @@ struct sv_run {
     int n_markers;    /* -1: unknown */
     int32_t n_points; /* 0: unknown */
     char markers[SV_MAX_MARKERS][SV_MARKER_NAME_SIZE];
-    sqlite3_stmt *put_row, *put_outcome, *get_row, *get_outcome;
+    sqlite3_stmt *put_row, *put_cost, *put_outcome, *get_row, *get_outcome;
 };
 
 /* file.c */
@@ -78,8 +81,13 @@ sv_status sv_meta_set(sv_context *context, sv_run *run, const char *key, const c
 void sv_meta_free(sv_context *context, sv_run *run);
 sv_status sv_meta_set_shape(sv_context *context, sv_run *run, const sv_run_identity *identity);
 sv_status sv_meta_read_shape(sv_context *context, sv_run *run);
+
+/* event.c */
+/* `session` describes the process when the event begins its writing; NULL for any other. */
 sv_status sv_event_add(sv_context *context, sv_run *run, const char *what, const char *note,
-                       int64_t *ret_number);
+                       const sv_run_identity *session, int64_t *ret_number);
+/* A writing that left no end is noted before the next one begins. */
+sv_status sv_event_close_lost(sv_context *context, sv_run *run);
 
 /* run.c */
 sv_status sv_run_new(sv_context *context, const char *folder, bool writing, sv_run **ret_run);
@@ -114,6 +122,16 @@ sv_status sv_record_insert(sv_context *context, sv_run *run, const sv_record *re
 void sv_record_difference(const sv_record *was, const sv_record *is, char *text, size_t size);
 
 /* checksum.c */
-void sv_record_checksum(const sv_record *record, bool with_seconds, char digest[65]);
+void sv_record_checksum(const sv_record *record, char digest[65]);
+void sv_cost_checksum(const sv_record *record, int64_t event, char digest[17]);
+void sv_texts_checksum(const char *const *texts, int count, const int64_t *numbers, int n_numbers,
+                       char digest[17]);
+
+/* text.c */
+/* One line of well-formed UTF-8: '?' for what is neither. Cut where it does not fit; returns its
+ * length. */
+size_t sv_text_plain(const char *text, char *plain, size_t size);
+/* Is it that already? With `lines` new lines, tabs and marks of direction may stand in it. */
+bool sv_text_is_plain(const char *text, size_t length, bool lines);
 
 #endif

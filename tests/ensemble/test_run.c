@@ -3,6 +3,7 @@
 #include "selvedge/ensemble.h"
 
 #include <stdlib.h>
+#include <unistd.h>
 
 /* A small disordered problem with both markers. */
 typedef struct problem {
@@ -99,6 +100,37 @@ SV_TEST(threads_change_no_bit)
                                    sv_ensemble_outcome(&e[t], 0, k, m)));
     for (int t = 0; t < 3; t++)
         sv_ensemble_free(test_context(), &e[t]);
+    release(&p);
+}
+
+/* What a realisation cost is noted, and by whom it was computed. */
+static sv_status look_at_cost(sv_context *context, const sv_record *record, void *user)
+{
+    int *threads = user;
+    (void)context;
+    char host[64] = "";
+    (void)gethostname(host, sizeof host - 1);
+    CHECK(record->seconds > 0.0 && record->seconds < 100.0);
+    CHECK(record->processor_seconds > 0.0 && record->processor_seconds < record->seconds + 0.01);
+    CHECK(record->peak_bytes > 1000000 && record->peak_bytes % 1024 == 0);
+    CHECK(record->rank == 0 && record->thread >= 0 && record->thread < 2);
+    CHECK_TEXT(record->host, host);
+    threads[record->thread]++;
+    return SV_OK;
+}
+
+SV_TEST(every_realisation_says_what_it_cost)
+{
+    problem p;
+    make(&p, 6, 2.0);
+    sv_ensemble e = {0};
+    int threads[2] = {0, 0};
+    sv_ensemble_options o = {
+        .size = sizeof o, .realisations = 30, .threads = 2, .sink = {look_at_cost, threads}};
+    CHECK_OK(sv_ensemble_init(test_context(), 1, 30, 2, &e));
+    CHECK_OK(sv_ensemble_run(test_context(), &p.point, &o, &e));
+    CHECK(threads[0] > 0 && threads[1] > 0 && threads[0] + threads[1] == 30);
+    sv_ensemble_free(test_context(), &e);
     release(&p);
 }
 

@@ -36,7 +36,8 @@ static sv_record make_record(int32_t point, int64_t realisation, int32_t n_outco
                           .kappa = x + 5.0,
                           .highest_occupied = -x,
                           .lowest_empty = x + 6.0,
-                          .electrons = 500 + k};
+                          .electrons = 500 + k,
+                          .degree = 11 * k};
         snprintf(o->engine, sizeof o->engine, "%s", k == 0 ? "dense" : "chebyshev");
         if ((realisation + k) % 3 == 0)
             snprintf(o->reason, sizeof o->reason, "%.*s a level is %g away",
@@ -71,7 +72,8 @@ static bool same_record(const sv_record *a, const sv_record *b)
                same_real(x->sum_over_sites, y->sum_over_sites) &&
                x->window_cells == y->window_cells && same_real(x->kappa, y->kappa) &&
                same_real(x->highest_occupied, y->highest_occupied) &&
-               same_real(x->lowest_empty, y->lowest_empty) && x->electrons == y->electrons;
+               same_real(x->lowest_empty, y->lowest_empty) && x->electrons == y->electrons &&
+               x->degree == y->degree;
     }
     return same;
 }

@@ -132,4 +132,6 @@ SV_TEST(blas_is_known_and_single_threaded)
     sv_blas_info info;
     sv_blas_setup(&info);
     CHECK(strlen(info.kind) > 0 && strlen(info.kernel) > 0 && strlen(info.threading) > 0);
+    CHECK(strcmp(info.kind, "openblas") != 0 || strchr(info.version, '.') != NULL);
+    CHECK(info.cholmod[0] >= '1' && info.cholmod[0] <= '9' && strchr(info.cholmod, '.') != NULL);
 }

@@ -106,6 +106,7 @@ SV_TEST(parts_of_a_flake_suffice)
     sv_projector *p = NULL;
     CHECK_OK(sv_projector_make(test_context(), &b.sample, &fixture_below_zero, &o, &p));
     CHECK_CLOSE(sv_projector_reach(p), 12.0, 0.0);
+    CHECK_INT(sv_projector_degree(p), 91);
     sv_complex *one = NULL;
     CHECK_OK(sv_take(test_context(), b.sample.n, sizeof *one, &one));
     CHECK_STATUS(SV_INTERNAL, sv_projector_apply(test_context(), p, 1, one, one));
@@ -117,6 +118,7 @@ SV_TEST(parts_of_a_flake_suffice)
     CHECK(part.numerical_error < 1e-3);
     CHECK_CLOSE(part.value, whole.value, part.numerical_error);
     CHECK(fabs(part.value - whole.value) > 1e-12); /* the parts were really used */
+    CHECK_INT(part.degree, 91);
     sv_projector_options dense = options_of(SV_ENGINE_DENSE, 0, 0);
     CHECK_OK(sv_projector_make(test_context(), &b.sample, &fixture_below_zero, &o, &p));
     const sv_index rows[2] = {3, 7};

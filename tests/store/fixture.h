@@ -22,6 +22,9 @@ static inline sv_run_identity fixture_identity(void)
         .program_version = "0.1.0",
         .kernel = "openblas pthread test",
         .command_line = "selvedge average sheet.yaml -o run",
+        .libraries = "invented 1.0",
+        .threads = 2,
+        .ranks = 1,
         .markers = fixture_markers,
         .n_markers = 2,
         .n_points = 3,
@@ -38,6 +41,11 @@ static inline sv_record fixture_record(int32_t point, int64_t realisation)
     record.sites = 1800 - realisation;
     record.vacancies = realisation;
     record.seconds = 0.1 + 1e-3 * (double)realisation;
+    record.processor_seconds = 0.09 + 1e-3 * (double)point;
+    record.peak_bytes = 1000000 + realisation;
+    record.rank = point;
+    record.thread = (int32_t)(realisation % 2);
+    snprintf(record.host, sizeof record.host, "node%d", (int)point);
     record.n_outcomes = 2;
     sv_outcome *chern = &record.outcomes[0], *bott = &record.outcomes[1];
     *chern = (sv_outcome){.verdict = SV_RESOLVED,
@@ -50,7 +58,8 @@ static inline sv_record fixture_record(int32_t point, int64_t realisation)
                           .window_cells = 256,
                           .highest_occupied = -0.5,
                           .lowest_empty = 0.1 + 0.2,
-                          .electrons = 900};
+                          .electrons = 900,
+                          .degree = 41};
     *bott = *chern;
     bott->value = 1;
     bott->index = 1;
@@ -79,7 +88,8 @@ static inline bool same_outcome(const sv_outcome *a, const sv_outcome *b)
            same_real(a->weakest, b->weakest) && same_real(a->sum_over_sites, b->sum_over_sites) &&
            a->window_cells == b->window_cells &&
            same_real(a->highest_occupied, b->highest_occupied) &&
-           same_real(a->lowest_empty, b->lowest_empty) && a->electrons == b->electrons;
+           same_real(a->lowest_empty, b->lowest_empty) && a->electrons == b->electrons &&
+           same_real(a->kappa, b->kappa) && a->degree == b->degree;
 }
 
 static inline bool same_record(const sv_record *a, const sv_record *b)

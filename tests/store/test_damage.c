@@ -125,7 +125,7 @@ static void forge(const char *name, const char *sql)
     fixture_fresh_run(name, 4);
     CHECK_INT(sqlite3_open(fixture_path("ledger.sqlite"), &ledger), SQLITE_OK);
     const int n = read_triggers(ledger, texts);
-    CHECK_INT(n, 7);
+    CHECK_INT(n, 9);
     for (int i = 0; i < n; i++) {
         char drop[100], trigger[64];
         CHECK_INT(sscanf(texts[i], "CREATE TRIGGER %63s", trigger), 1);
@@ -182,15 +182,29 @@ SV_TEST(other_tables_and_other_files_are_refused)
     CHECK_INT(fixture_sql("PRAGMA application_id = 7"), SQLITE_OK);
     CHECK_STATUS(SV_STORAGE, read_all());
     fixture_fresh_run("layout", 1);
-    CHECK_INT(fixture_sql("PRAGMA user_version = 2"), SQLITE_OK);
+    CHECK_INT(fixture_sql("PRAGMA user_version = 1"), SQLITE_OK);
     CHECK_STATUS(SV_STORAGE, read_all());
-    CHECK(strstr(test_context()->error.message, "layout 2") != NULL);
+    CHECK(strstr(test_context()->error.message, "layout 1") != NULL);
     fixture_fresh_run("crowd", 1);
     CHECK_INT(
         fixture_sql("WITH RECURSIVE n(i) AS (SELECT 1 UNION ALL SELECT i + 1 FROM n WHERE i < "
-                    "5000) INSERT INTO meta SELECT 'key' || i, 'x' FROM n"),
+                    "5000) INSERT INTO meta SELECT 'key' || i, 'x', '' FROM n"),
         SQLITE_OK);
     CHECK_STATUS(SV_STORAGE, read_all());
+}
+
+/* A write-ahead log would be read from, and made in, a folder that is only looked at. */
+SV_TEST(a_write_ahead_log_is_refused_before_it_is_used)
+{
+    fixture_fresh_run("wal", 2);
+    CHECK_INT(fixture_sql("PRAGMA journal_mode = WAL"), SQLITE_OK);
+    CHECK(symlink("/dev/zero", fixture_path("ledger.sqlite-wal")) == 0);
+    CHECK_STATUS(SV_STORAGE, read_all());
+    CHECK(strstr(test_context()->error.message, "write-ahead") != NULL);
+    CHECK(access(fixture_path("ledger.sqlite-shm"), F_OK) != 0);
+    const sv_run_identity identity = fixture_identity();
+    sv_run *run = NULL;
+    CHECK_STATUS(SV_STORAGE, sv_run_open(test_context(), fixture_folder, &identity, false, &run));
 }
 
 SV_TEST(links_are_not_followed)

@@ -20,10 +20,13 @@ SV_TEST(rows_cannot_be_changed_or_removed)
     CHECK_INT(fixture_sql("UPDATE event SET note = ''"), SQLITE_CONSTRAINT);
     CHECK_INT(fixture_sql("DELETE FROM event"), SQLITE_CONSTRAINT);
     CHECK_INT(fixture_sql("DELETE FROM meta"), SQLITE_CONSTRAINT);
-    CHECK_INT(fixture_sql("PRAGMA recursive_triggers = ON; INSERT OR REPLACE INTO realisation "
-                          "SELECT point, realisation, status, 1, vacancies, seconds, outcomes, "
-                          "started_by, checksum FROM realisation"),
-              SQLITE_CONSTRAINT);
+    CHECK_INT(fixture_sql("UPDATE cost SET seconds = 0"), SQLITE_CONSTRAINT);
+    CHECK_INT(fixture_sql("DELETE FROM cost"), SQLITE_CONSTRAINT);
+    CHECK_INT(
+        fixture_sql("PRAGMA recursive_triggers = ON; INSERT OR REPLACE INTO realisation "
+                    "SELECT point, realisation, status, 1, vacancies, outcomes, checksum FROM "
+                    "realisation"),
+        SQLITE_CONSTRAINT);
 }
 
 static int read_pragma(const char *name)
@@ -45,7 +48,7 @@ SV_TEST(the_file_says_what_it_is_and_has_no_write_ahead_log)
     struct stat info;
     fixture_fresh_run("format", 1);
     CHECK_INT(read_pragma("PRAGMA application_id"), 0x536c7667);
-    CHECK_INT(read_pragma("PRAGMA user_version"), 1);
+    CHECK_INT(read_pragma("PRAGMA user_version"), 2);
     unsigned char head[20] = {0};
     int file = open(fixture_path("ledger.sqlite"), O_RDONLY);
     CHECK_INT(read(file, head, sizeof head), sizeof head);
