@@ -118,10 +118,9 @@ static sv_status check_record(sv_context *context, const sv_run *run, const sv_r
 {
     if (!run->writing)
         return SV_FAIL(context, SV_STORAGE, "the run %s is open for reading only", run->folder);
-    if (record->point < 0 || record->point >= SV_MAX_POINTS || record->realisation < 0 ||
-        record->realisation >= SV_MAX_REALISATIONS || record->n_outcomes < 0 ||
-        record->n_outcomes > SV_MAX_MARKERS)
-        return SV_FAIL(context, SV_INTERNAL, "point %ld, realisation %lld, %ld outcomes",
+    if (!sv_record_is_sane(record))
+        return SV_FAIL(context, SV_INTERNAL,
+                       "point %ld, realisation %lld, %ld outcomes: a number out of range",
                        (long)record->point, (long long)record->realisation,
                        (long)record->n_outcomes);
     if (run->n_markers >= 0 && record->n_outcomes > run->n_markers)

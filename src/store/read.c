@@ -43,27 +43,6 @@ static sv_status damaged(sv_context *context, const sv_run *run, int32_t point, 
                    run->folder, SV_LEDGER_NAME, (long long)realisation, (long)point, what);
 }
 
-/* Limits that hold for whatever this program can write, wider than any physics. */
-static bool is_count(int64_t number)
-{
-    return number >= 0 && number < INT64_C(1) << 48;
-}
-
-static bool is_error(double value)
-{
-    return isnan(value) || value >= 0.0;
-}
-
-/* A value that counts must be a number that sums and can be an index. */
-static bool is_sane(const sv_outcome *o)
-{
-    const double largest = 1e15;
-    const bool value = o->verdict != SV_RESOLVED || (o->value > -largest && o->value < largest);
-    return value && o->index > -(int64_t)largest && o->index < (int64_t)largest &&
-           is_error(o->numerical_error) && is_error(o->estimator_error) &&
-           is_count(o->window_cells) && is_count(o->electrons) && o->degree >= 0;
-}
-
 static bool read_outcome(sqlite3_stmt *row, sv_outcome *outcome)
 {
     *outcome = (sv_outcome){.unresolved_within = (double)NAN, .nearest_level = (double)NAN};
@@ -87,7 +66,7 @@ static bool read_outcome(sqlite3_stmt *row, sv_outcome *outcome)
     outcome->electrons = sqlite3_column_int64(row, 15);
     outcome->kappa = real_at(row, 16);
     outcome->degree = (int32_t)degree;
-    return is_sane(outcome);
+    return true;
 }
 
 /* What the realisation cost; false when it is not there or not as it was written. */
@@ -105,8 +84,7 @@ static bool read_cost(sqlite3_stmt *row, sv_record *record)
     record->processor_seconds = real_at(row, 10);
     record->peak_bytes = sqlite3_column_int64(row, 11);
     sv_cost_checksum(record, sqlite3_column_int64(row, 5), expected);
-    return strcmp(digest, expected) == 0 && is_error(record->seconds) &&
-           is_error(record->processor_seconds) && is_count(record->peak_bytes);
+    return strcmp(digest, expected) == 0;
 }
 
 /* The head of the record and its cost; the checksum it should have goes to `digest`. */
@@ -124,7 +102,7 @@ static sv_status read_row(sv_context *context, sv_run *run, sv_record *record, c
     record->sites = sqlite3_column_int64(row, 1);
     record->vacancies = sqlite3_column_int64(row, 2);
     if (state < 0 || state >= SV_STATUS_COUNT || count < 0 || count > SV_MAX_MARKERS ||
-        !is_count(record->sites) || !is_count(record->vacancies) || !text_at(row, 4, digest, 65))
+        !text_at(row, 4, digest, 65))
         return damaged(context, run, record->point, record->realisation, "a value out of range");
     if (!read_cost(row, record))
         return damaged(context, run, record->point, record->realisation,
@@ -201,6 +179,8 @@ sv_status sv_record_read(sv_context *context, sv_run *run, int32_t point, int64_
         sv_record_checksum(&record, expected);
         if (strcmp(digest, expected) != 0)
             status = damaged(context, run, point, realisation, "its checksum does not fit");
+        else if (!sv_record_is_sane(&record))
+            status = damaged(context, run, point, realisation, "a value out of range");
     }
     if (status != SV_OK)
         return status;

@@ -121,6 +121,9 @@ sv_status sv_record_insert(sv_context *context, sv_run *run, const sv_record *re
                            bool *ret_new);
 void sv_record_difference(const sv_record *was, const sv_record *is, char *text, size_t size);
 
+/* range.c */
+bool sv_record_is_sane(const sv_record *record);
+
 /* checksum.c */
 void sv_record_checksum(const sv_record *record, char digest[65]);
 void sv_cost_checksum(const sv_record *record, int64_t event, char digest[17]);

@@ -1,6 +1,7 @@
 # SPDX-License-Identifier: GPL-3.0-or-later
 """Tasks and merge: any split, joined in any order, any number of times, is the run of one process."""
 import functools
+import hashlib
 import json
 import os
 import shutil
@@ -235,12 +236,19 @@ def damage_is_found_before_anything_is_written():
     check(not os.path.exists(fresh), "a run from a changed input")
 
 
+def meta_checksum(key, value):
+    """As the ledger has it, so that only the claim itself is at fault."""
+    digests = [hashlib.sha256(text.encode()).hexdigest() for text in (key, value)]
+    return hashlib.sha256("".join(digests).encode()).hexdigest()[:16]
+
+
 @test
 def a_part_that_claims_too_much_is_refused():
     top = folder()
     claims = copy_of(parts(5)[2], top, "claims")
     with sqlite3.connect(os.path.join(claims, "ledger.sqlite")) as writer:
-        writer.execute("update meta set value = '1000000000' where key = 'realisations'")
+        writer.execute("update meta set value = '1000000000', checksum = ? where key = 'realisations'",
+                       [meta_checksum("realisations", "1000000000")])
     refused(os.path.join(top, "fresh"), claims, 6, "speak of 1000000000 realisations")
 
 
@@ -256,7 +264,8 @@ def a_row_that_differs_is_a_failed_check():
     with sqlite3.connect(os.path.join(other, "ledger.sqlite")) as writer:
         writer.execute("attach ? as good", [os.path.join(parts(5)[0], "ledger.sqlite")])
         for key in ("identity", "identity_digest", "sheet", "sheet_digest"):
-            writer.execute("update meta set value = (select value from good.meta where key = ?1) where key = ?1", [key])
+            writer.execute("update meta set (value, checksum) = "
+                           "(select value, checksum from good.meta where key = ?1) where key = ?1", [key])
     shutil.copy(os.path.join(parts(5)[0], "sheet.resolved.yaml"), other)
     refused(place, other, 1, "is not the same in", parts(5)[1])
     refused(fresh, other, 1, "nothing was merged", parts(5)[0])

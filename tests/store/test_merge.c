@@ -157,19 +157,17 @@ SV_TEST(numbers_out_of_range_are_refused)
     CHECK_OK(sv_run_survey(test_context(), folders, 1, &survey));
     CHECK_INT(survey.tasks, 0);
     CHECK_INT(survey.realisations, 0);
-    fixture_sql("INSERT INTO realisation VALUES (3, 0, 0, 1, 0, 0.0, 0, 1, 'x')");
+    CHECK_INT(0, fixture_sql("INSERT INTO realisation VALUES (3, 0, 0, 1, 0, 0, 'x')"));
     CHECK_STATUS(SV_STORAGE, sv_run_survey(test_context(), folders, 1, &survey));
     fixture_fresh_run("far", 1);
-    fixture_sql("INSERT INTO realisation VALUES (0, 1099511627776, 0, 1, 0, 0.0, 0, 1, 'x')");
+    CHECK_INT(0, fixture_sql("INSERT INTO realisation VALUES (0, 1099511627776, 0, 1, 0, 0, 'x')"));
     CHECK_STATUS(SV_STORAGE, sv_run_survey(test_context(), folders, 1, &survey));
     static const char *const words[] = {"0/3", "4/3", "x", "1/", "99999999999/99999999999", "/"};
     for (size_t i = 0; i < sizeof words / sizeof *words; i++) {
-        char sql[200];
         int32_t task, tasks;
         sv_run *run = NULL;
-        snprintf(sql, sizeof sql, "INSERT OR REPLACE INTO meta VALUES ('task', '%s')", words[i]);
         fixture_fresh_run("task", 1);
-        CHECK_INT(fixture_sql(sql), SQLITE_OK);
+        CHECK_INT(fixture_meta("task", words[i]), SQLITE_OK);
         CHECK_OK(sv_run_open_read(test_context(), fixture_folder, &run));
         sv_run_task(run, &task, &tasks);
         CHECK_INT(tasks, 0);
