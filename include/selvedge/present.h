@@ -21,6 +21,8 @@ typedef struct sv_coordinate {
     bool integer;
     const char *unit;  /**< symbol, or NULL */
     const char *label; /**< readable name with unit for axes, or NULL: made from the path */
+    bool pair;         /**< the parameter is a pair [value, second] */
+    double second;
 } sv_coordinate;
 
 /** One point with its summaries, in sweep order. */

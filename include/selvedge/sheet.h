@@ -88,6 +88,8 @@ typedef struct sv_sheet_marker {
 typedef struct sv_sweep_axis {
     char path[200];
     double *values;
+    double *second; /**< of a parameter that is a pair: its second numbers; NULL: single numbers */
+    bool square;    /**< a pair, of which every value is written as one number n for [n, n] */
     sv_index count;
     bool integer;      /**< the parameter is an integer */
     const char *unit;  /**< symbol of the unit the sweep is written in, NULL: none */
@@ -156,11 +158,16 @@ typedef struct sv_setup {
     struct sv_arena_chunk *memory; /**< holds title, files and texts of values */
 } sv_setup;
 
-/** A parameter set to a number: what a sweep does at one point. */
+/** A parameter set to a number, or to a pair of them: what a sweep does at one point. */
 typedef struct sv_assignment {
     const char *path;
     double value;
+    double second; /**< of a pair */
+    bool pair;
 } sv_assignment;
+
+/** What a point of a sweep assigns along an axis. @param number of the value, from 0 */
+SV_API sv_assignment sv_sweep_value(const sv_sweep_axis *axis, sv_index number);
 
 /**
  * The setup of the sheet, at a point of its sweep.

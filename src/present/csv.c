@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* The result of an ensemble as CSV: one row per point and marker. */
 #include <math.h>
+#include <stdio.h>
 #include <string.h>
 
 #include "present_internal.h"
@@ -63,10 +64,16 @@ static void add_head(sv_draft *text, const sv_result *result)
     if (!result->complete)
         sv_draft_add(text, "# Stopped early: some realisations are missing.\n");
     for (int i = 0; result->n_points > 0 && i < result->points[0].n_coordinates; i++) {
-        char column[512];
-        sv_words_column(&result->points[0].coordinates[i], column, sizeof column);
-        add_field(text, column);
-        sv_draft_add(text, ",");
+        const sv_coordinate *coordinate = &result->points[0].coordinates[i];
+        for (int part = 0; part < (coordinate->pair ? 2 : 1); part++) {
+            char column[512], path[256];
+            sv_coordinate one = *coordinate;
+            snprintf(path, sizeof path, "%.200s.%d", coordinate->path, part);
+            one.path = coordinate->pair ? path : coordinate->path;
+            sv_words_column(&one, column, sizeof column);
+            add_field(text, column);
+            sv_draft_add(text, ",");
+        }
     }
     sv_draft_add(text, "marker,realisations,resolved,unresolved,mean,standard_error,interval_low,"
                        "interval_high,confidence,deviation");
@@ -84,9 +91,14 @@ static void add_row(sv_draft *text, const sv_point_result *point, const sv_summa
     const double numbers[] = {summary->mean,        summary->standard_error, summary->interval[0],
                               summary->interval[1], summary->confidence,     summary->deviation};
     for (int i = 0; i < point->n_coordinates; i++) {
-        char word[40];
-        sv_words_value(&point->coordinates[i], word, sizeof word);
-        sv_draft_add(text, "%s,", word);
+        for (int part = 0; part < (point->coordinates[i].pair ? 2 : 1); part++) {
+            char word[40];
+            sv_coordinate one = point->coordinates[i];
+            one.value = part == 0 ? one.value : one.second;
+            one.pair = false;
+            sv_words_value(&one, word, sizeof word);
+            sv_draft_add(text, "%s,", word);
+        }
     }
     sv_draft_add(text, "%s,%lld,%lld,%lld", summary->marker, (long long)summary->realisations,
                  (long long)summary->resolved, (long long)summary->unresolved);

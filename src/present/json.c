@@ -102,7 +102,13 @@ static json_t *make_parameters(sv_json *json, const sv_point_result *point)
     json_t *object = json_object();
     for (int i = 0; i < point->n_coordinates; i++) {
         const sv_coordinate *coordinate = &point->coordinates[i];
-        if (coordinate->integer)
+        const double pair[2] = {coordinate->value, coordinate->second};
+        if (coordinate->pair && coordinate->integer)
+            sv_json_put(json, object, coordinate->path,
+                        json_pack("[I, I]", (json_int_t)pair[0], (json_int_t)pair[1]));
+        else if (coordinate->pair)
+            sv_json_put(json, object, coordinate->path, sv_json_pair(json, pair));
+        else if (coordinate->integer)
             sv_json_put_integer(json, object, coordinate->path, (int64_t)coordinate->value);
         else
             sv_json_put_real(json, object, coordinate->path, coordinate->value);

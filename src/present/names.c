@@ -105,6 +105,9 @@ static const struct {
     {"model.m1", "curvature m1 of the hybridisation"},
     {"model.velocity", "velocity hbar v of the surfaces"},
     {"model.grid", "spacing of the grid"},
+    {"flake.cells", "cells along a side of the flake"},
+    {"flake.size", "length of a side of the flake"},
+    {"flake.side", "length of a side of the flake"},
     {"flake.radius", "radius of the flake"},
     {"flake.inner", "inner radius of the ring"},
     {"flake.outer", "outer radius of the ring"},
@@ -189,10 +192,21 @@ void sv_words_real(double value, char *text, size_t size)
     snprintf(text, size, "%s", word);
 }
 
+static void one_number(const sv_coordinate *coordinate, double value, char *text, size_t size)
+{
+    if (coordinate->integer && fabs(value) < 9e15)
+        snprintf(text, size, "%lld", (long long)value);
+    else
+        sv_words_real(value, text, size);
+}
+
 void sv_words_value(const sv_coordinate *coordinate, char *text, size_t size)
 {
-    if (coordinate->integer && fabs(coordinate->value) < 9e15)
-        snprintf(text, size, "%lld", (long long)coordinate->value);
-    else
-        sv_words_real(coordinate->value, text, size);
+    char second[40];
+    one_number(coordinate, coordinate->value, text, size);
+    if (!coordinate->pair)
+        return;
+    const size_t used = strlen(text);
+    one_number(coordinate, coordinate->second, second, sizeof second);
+    snprintf(text + used, size - used, "x%s", second);
 }

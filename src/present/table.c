@@ -132,7 +132,10 @@ static void print_row(FILE *stream, const sv_point_result *point, const sv_summa
     fprintf(stream, "  ");
     for (int i = 0; i < point->n_coordinates; i++) {
         sv_words_value(&point->coordinates[i], text, sizeof text);
-        print_number(stream, text, point->coordinates[i].value, w.parameter);
+        if (point->coordinates[i].pair)
+            sv_table_cell(stream, text, w.parameter, true);
+        else
+            print_number(stream, text, point->coordinates[i].value, w.parameter);
     }
     snprintf(text, sizeof text, "%lld", (long long)summary->realisations);
     print_number(stream, text, (double)summary->realisations, w.count);

@@ -44,11 +44,15 @@ static void describe_point(const point *p, char *text, size_t size)
 {
     int used = 0;
     text[0] = '\0';
-    for (int c = 0; c < p->n_coordinates && used >= 0 && (size_t)used < size; c++)
-        used += snprintf(text + used, size - (size_t)used, "%s%s = %g%s%s", c > 0 ? ", " : "",
-                         p->coordinates[c].path, p->coordinates[c].value,
-                         p->coordinates[c].unit ? " " : "",
-                         p->coordinates[c].unit ? p->coordinates[c].unit : "");
+    for (int c = 0; c < p->n_coordinates && used >= 0 && (size_t)used < size; c++) {
+        const sv_coordinate *at = &p->coordinates[c];
+        char second[40] = "";
+        if (at->pair)
+            snprintf(second, sizeof second, " x %g", at->second);
+        used +=
+            snprintf(text + used, size - (size_t)used, "%s%s = %g%s%s%s", c > 0 ? ", " : "",
+                     at->path, at->value, second, at->unit ? " " : "", at->unit ? at->unit : "");
+    }
 }
 
 static sv_status draw_map(session *s, const char *folder)
@@ -73,7 +77,7 @@ static sv_status draw_map(session *s, const char *folder)
     const bool blocks = coarse_wanted(&problem);
     sv_coarse coarse = {0};
     sv_plan plan;
-    sv_status planned = sv_case_plan(context, &problem, !blocks, s->base.sampling_error, &plan);
+    sv_status planned = sv_case_plan(context, &problem, !blocks, p->setup.sampling_error, &plan);
     if (planned != SV_OK)
         return planned;
     sv_status status = sv_realise(context, &problem, s->options->realisation,

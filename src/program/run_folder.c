@@ -157,10 +157,10 @@ void run_folder_warn(session *s, const sv_result *result)
     for (int32_t k = 0; k < result->n_points; k++)
         for (int m = 0; m < result->points[k].n_summaries; m++) {
             const sv_summary *summary = &result->points[k].summaries[m];
-            if (summary->exists && summary->numerical_error > s->base.accuracy)
+            if (summary->exists && summary->numerical_error > s->points[k].setup.accuracy)
                 sv_log(s->context, SV_LOG_NOTE,
                        "point %d: numerical error of %s up to %.1e, solve.accuracy asks for %.1e",
-                       k, summary->marker, summary->numerical_error, s->base.accuracy);
+                       k, summary->marker, summary->numerical_error, s->points[k].setup.accuracy);
         }
 }
 

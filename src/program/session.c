@@ -147,23 +147,32 @@ sv_status session_make_point(session *s, point *p)
     return status == SV_OK ? prepare_localizer(s, p) : status;
 }
 
+/* In the unit of the axis; rounding hides the conversion there and back. */
+static double shown_value(const sv_sweep_axis *axis, double value)
+{
+    char text[32];
+    double shown = value;
+    if (axis->unit == NULL)
+        return value;
+    snprintf(text, sizeof text, "%.12g", value * axis->unit_scale);
+    (void)sv_parse_real(text, &shown);
+    return shown;
+}
+
 /* Point number → values of the axes; the last axis runs fastest. */
 static int axis_values(const sv_setup *base, int32_t number, sv_assignment *ret,
                        sv_coordinate *coordinates)
 {
     for (int a = base->n_axes - 1; a >= 0; a--) {
         const sv_sweep_axis *axis = &base->axes[a];
-        double value = axis->values[number % axis->count];
-        double shown = value;
-        if (axis->unit != NULL) { /* rounding hides the conversion there and back */
-            char text[32];
-            snprintf(text, sizeof text, "%.12g", value * axis->unit_scale);
-            (void)sv_parse_real(text, &shown);
-        }
+        ret[a] = sv_sweep_value(axis, number % axis->count);
         number = (int32_t)(number / axis->count);
-        ret[a] = (sv_assignment){axis->path, value};
-        coordinates[a] = (sv_coordinate){
-            .path = axis->path, .value = shown, .integer = axis->integer, .unit = axis->unit};
+        coordinates[a] = (sv_coordinate){.path = axis->path,
+                                         .value = shown_value(axis, ret[a].value),
+                                         .second = shown_value(axis, ret[a].second),
+                                         .pair = axis->second != NULL && !axis->square,
+                                         .integer = axis->integer,
+                                         .unit = axis->unit};
     }
     return base->n_axes;
 }
@@ -285,7 +294,7 @@ sv_status session_plan(session *s, bool site_map)
     for (int32_t k = 0; k < s->n_points; k++) {
         point *p = &s->points[k];
         sv_status status =
-            sv_case_plan(s->context, &p->problem, site_map, s->base.sampling_error, &p->plan);
+            sv_case_plan(s->context, &p->problem, site_map, p->setup.sampling_error, &p->plan);
         if (status != SV_OK)
             return status;
         /* With fewer realisations than threads the cores work inside one realisation. */

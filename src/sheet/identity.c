@@ -146,6 +146,10 @@ static void add_axis(writer *w, const sv_sweep_axis *axis, int number)
 {
     sv_text_add(&w->line, "sweep.%02d = %s ", number, axis->path);
     add_list(w, axis->values, axis->count);
+    if (axis->second != NULL) {
+        sv_text_add(&w->line, " x ");
+        add_list(w, axis->second, axis->count);
+    }
     end_line(w);
 }
 

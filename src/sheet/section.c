@@ -208,16 +208,16 @@ static bool fallback_node(sv_reader *reader, const char *text, const sv_node **r
 }
 
 /* A default falls away when another key of its group is written or swept. */
-static bool is_excluded(const sv_reader *reader, const sv_section *section, const sv_node *map,
+static bool is_excluded(sv_reader *reader, const sv_section *section, const sv_node *map,
                         const sv_key *key)
 {
     const char *group = section->block->exclusive;
     if (group == NULL || !sv_words_hold(group, key->name))
         return false;
     for (int i = 0; i < section->n_fields; i++) {
-        const char *other = section->fields[i].key->name;
-        if (sv_words_hold(group, other) && (sv_node_get(map, other, NULL) != NULL ||
-                                            sv_sweep_first(reader, section, other) != NULL))
+        const sv_key *other = section->fields[i].key;
+        if (sv_words_hold(group, other->name) && (sv_node_get(map, other->name, NULL) != NULL ||
+                                                  sv_sweep_first(reader, section, other) != NULL))
             return true;
     }
     return false;
@@ -233,7 +233,7 @@ static bool read_field(sv_reader *reader, sv_section *section, const sv_node *ma
         return false;
     /* A swept key need not be written: the sheet as written then has the first value. */
     if (value == NULL && key->fallback == NULL && key->type != SV_KEY_TREE)
-        value = sv_sweep_first(reader, section, key->name);
+        value = sv_sweep_first(reader, section, key);
     field->node = value;
     if (value == NULL && key->required)
         return report_missing(reader, section, key, path);

@@ -74,10 +74,9 @@ static sv_status read_tree(sv_context *context, sv_sheet *sheet, const sv_sheet_
 }
 
 /* A number as a sheet would have it: whole ones without exponent, scales with their unit. */
-static const char *assigned_text(sv_reader *reader, const sv_assignment *assignment)
+static const char *number_text(sv_reader *reader, const sv_assignment *assignment, double value)
 {
     char number[64];
-    double value = assignment->value;
     const char *unit = strcmp(assignment->path, "model.lattice_constant") == 0 ? " nm"
                        : strcmp(assignment->path, "model.energy_unit") == 0    ? " eV"
                                                                                : "";
@@ -86,6 +85,15 @@ static const char *assigned_text(sv_reader *reader, const sv_assignment *assignm
     else
         sv_format_real(value, number, sizeof number);
     return sv_reader_text(reader, "%s%s", number, unit);
+}
+
+static const char *assigned_text(sv_reader *reader, const sv_assignment *assignment)
+{
+    const char *first = number_text(reader, assignment, assignment->value);
+    const char *second = number_text(reader, assignment, assignment->second);
+    if (first == NULL || second == NULL || !assignment->pair)
+        return first;
+    return sv_reader_text(reader, "[%s, %s]", first, second);
 }
 
 /* Messages of a point of a sweep stand at its axis and begin with its value. */
@@ -109,18 +117,47 @@ static bool set_prefix(sv_reader *reader, const sv_assignment *assignments, int 
     return prefix != NULL;
 }
 
-static bool assign(sv_reader *reader, const sv_assignment *assignment)
+/* One number of an assignment as a node that stands at the axis. */
+static const sv_node *number_node(sv_reader *reader, const sv_assignment *assignment, double value)
 {
-    sv_node *value = NULL;
-    sv_path path;
-    const char *text = assigned_text(reader, assignment);
-    if (text == NULL || !sv_path_split(reader, assignment->path, &reader->prefix_place, &path))
-        return false;
+    sv_node *node = NULL;
+    const char *text = number_text(reader, assignment, value);
+    if (text == NULL)
+        return NULL;
     sv_mark_point at = {reader->prefix_place.line, reader->prefix_place.column};
     sv_status status = sv_node_scalar(reader->context, reader->arena, text,
-                                      reader->prefix_place.source, at, &value);
+                                      reader->prefix_place.source, at, &node);
     if (status != SV_OK)
-        return sv_report_status(reader, NULL, status);
+        sv_report_status(reader, NULL, status);
+    return node;
+}
+
+static const sv_node *assigned_node(sv_reader *reader, const sv_assignment *assignment)
+{
+    const sv_node *first = number_node(reader, assignment, assignment->value);
+    if (first == NULL || !assignment->pair)
+        return first;
+    sv_node *pair = sv_reader_take(reader, 1, sizeof *pair);
+    const sv_node **items = sv_reader_take(reader, 2, sizeof *items);
+    const sv_node *second = number_node(reader, assignment, assignment->second);
+    if (pair == NULL || items == NULL || second == NULL)
+        return NULL;
+    *pair = *first;
+    pair->kind = SV_NODE_LIST;
+    pair->text = NULL;
+    items[0] = first;
+    items[1] = second;
+    pair->items = items;
+    pair->count = 2;
+    return pair;
+}
+
+static bool assign(sv_reader *reader, const sv_assignment *assignment)
+{
+    sv_path path;
+    const sv_node *value = assigned_node(reader, assignment);
+    if (value == NULL || !sv_path_split(reader, assignment->path, &reader->prefix_place, &path))
+        return false;
     return sv_path_set(reader, reader->root, &path, value, &reader->root);
 }
 
@@ -171,8 +208,7 @@ static sv_status check_ends(sv_context *context, sv_sheet *sheet, const sv_setup
         sv_setup setup = {0};
         for (int i = 0; i < plain->n_axes; i++) {
             const sv_sweep_axis *axis = &plain->axes[i];
-            assignments[i] =
-                (sv_assignment){axis->path, axis->values[end == 0 ? 0 : axis->count - 1]};
+            assignments[i] = sv_sweep_value(axis, end == 0 ? 0 : axis->count - 1);
         }
         sv_status status = build(context, sheet, assignments, plain->n_axes, (pass){sheet, true},
                                  diagnostics, &setup);

@@ -348,10 +348,30 @@ extern const char sv_presets_text[]; /* data/presets.yaml, made at build time */
 /* Fills the model of *root with what its preset says; nothing without one. */
 bool sv_preset_expand(sv_reader *reader, const sv_node **root);
 
-/* ------------------------------------------------------------- sweep.c */
+/* ------------------------------------------------ sweep.c, sweep_target.c */
+
+/* The number a sweep points at: its key row, or one made for a part of a value. */
+typedef struct sv_target {
+    const sv_section *section;
+    const sv_key *row;  /* as in the table */
+    const char *rest;   /* of the path below that row: a component of a pair, a place in a tree */
+    const sv_key *key;  /* reads one number */
+    sv_key part;        /* `key` points here when only a part of a value is swept */
+    const sv_key *pair; /* reads [a, b] where values may be pairs, else NULL */
+    sv_key whole;       /* `pair` points here when it is no row of the table */
+    bool square;        /* one number n stands for [n, n] */
+} sv_target;
+
+/* Finds what the path points at; `node` is the path as written. */
+bool sv_target_find(sv_reader *reader, const char *path, const sv_node *node,
+                    sv_target *ret_target);
+/* Do both point at the same number, or one at a part of the other? */
+bool sv_targets_clash(const sv_target *a, const sv_target *b);
+/* May a key of the flake be one number n for [n, n]? */
+bool sv_target_is_square(const sv_section *section, const sv_key *key);
 
 /* The first value of a sweep over this key, when one is written; else NULL. */
-const sv_node *sv_sweep_first(const sv_reader *reader, const sv_section *section, const char *key);
+const sv_node *sv_sweep_first(sv_reader *reader, const sv_section *section, const sv_key *key);
 bool sv_sweep_read(sv_reader *reader, sv_setup *setup);
 /* Numbers that mean what an axis over the parameter at `path_node` would mean by them. */
 bool sv_sweep_read_numbers(sv_reader *reader, const sv_node *path_node, const sv_node *const *nodes,

@@ -1,5 +1,5 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Sweeps: which key an axis points at, and the numbers it takes. */
+/* Sweeps: the axes and the numbers they take. */
 #include "sheet_internal.h"
 
 #include <float.h>
@@ -9,12 +9,6 @@
 #include <string.h>
 
 enum { MAX_POINTS = 1000000 };
-
-/* The number a sweep points at: its key row, or one made for a part of a value. */
-typedef struct target {
-    const sv_key *key;
-    sv_key part; /* `key` points here when only a part of a value is swept */
-} target;
 
 static const char *scalar_of(const sv_node *map, const char *key)
 {
@@ -31,150 +25,80 @@ const sv_node *sv_sweep_parameter(const sv_node *root, const char *path)
     return NULL;
 }
 
-const sv_node *sv_sweep_first(const sv_reader *reader, const sv_section *section, const char *key)
+/* [n, n] at the place of n. */
+static const sv_node *square_node(sv_reader *reader, const sv_node *node)
+{
+    sv_node *pair = sv_reader_take(reader, 1, sizeof *pair);
+    const sv_node **items = sv_reader_take(reader, 2, sizeof *items);
+    if (pair == NULL || items == NULL)
+        return NULL;
+    *pair = *node;
+    pair->kind = SV_NODE_LIST;
+    pair->text = NULL;
+    items[0] = items[1] = node;
+    pair->items = items;
+    pair->count = 2;
+    return pair;
+}
+
+const sv_node *sv_sweep_first(sv_reader *reader, const sv_section *section, const sv_key *key)
 {
     const sv_node *list = sv_node_get(reader->root, "sweep", NULL);
     for (sv_index i = 0; list != NULL && list->kind == SV_NODE_LIST && i < list->count; i++) {
         const sv_node *axis = list->items[i];
-        if (!sv_path_matches(section, key, scalar_of(axis, "parameter")))
+        if (!sv_path_matches(section, key->name, scalar_of(axis, "parameter")))
             continue;
         const sv_node *from = sv_node_get(axis, "from", NULL);
         const sv_node *values = sv_node_get(axis, "values", NULL);
         if (from == NULL && values != NULL && values->kind == SV_NODE_LIST && values->count > 0)
             from = values->items[0];
+        if (from != NULL && from->kind == SV_NODE_SCALAR && sv_target_is_square(section, key))
+            from = square_node(reader, from);
         return from;
     }
     return NULL;
 }
 
-/* A component of a pair: the same row, read as one number. */
-static bool target_component(const sv_key *key, const char *rest, target *ret_target)
-{
-    bool real = key->type == SV_KEY_REAL_PAIR || key->type == SV_KEY_PLACE;
-    bool integer = key->type == SV_KEY_INTEGER_PAIR || key->type == SV_KEY_INTEGER_OR_PAIR;
-    if ((!real && !integer) || (strcmp(rest, "0") != 0 && strcmp(rest, "1") != 0))
-        return false;
-    ret_target->part = *key;
-    ret_target->part.type = real ? SV_KEY_REAL : SV_KEY_INTEGER;
-    ret_target->key = &ret_target->part;
-    return true;
-}
+/* Numbers of an axis while they are read. */
+typedef struct numbers {
+    sv_index singles, pairs; /* values written either way */
+} numbers;
 
-/* A number inside a nested block, such as model.onsite.a: it must be written in the sheet. */
-static bool target_in_tree(sv_reader *reader, const sv_key *key, const char *path,
-                           const sv_node *node, target *ret_target)
-{
-    sv_path split;
-    double number = 0.0;
-    sv_place place = sv_node_place(node);
-    if (!sv_path_split(reader, path, &place, &split))
-        return false;
-    const sv_node *value = sv_path_get(reader->root, &split);
-    if (value == NULL || value->kind != SV_NODE_SCALAR)
-        return false;
-    bool energy = strcmp(key->name, "onsite") == 0 || strstr(path, ".amplitude") != NULL;
-    sv_quantity quantity;
-    sv_parse_result result =
-        sv_parse_quantity(value->text, energy ? SV_DIM_ENERGY : SV_DIM_NONE, &quantity);
-    if (result != SV_PARSE_OK && sv_parse_real(value->text, &number) != SV_PARSE_OK)
-        return false;
-    ret_target->part = (sv_key){.name = key->name,
-                                .type = SV_KEY_REAL,
-                                .dimension = energy ? SV_DIM_ENERGY : SV_DIM_NONE,
-                                .low = -1e12,
-                                .high = 1e12};
-    ret_target->key = &ret_target->part;
-    return true;
-}
-
-/* The rest of the path after section and key; NULL: another key. Empty: the key itself. */
-static const char *rest_of(const sv_section *section, const char *key, const char *path)
-{
-    char prefix[SV_PATH_SIZE];
-    size_t length = strlen(path);
-    if (sv_path_matches(section, key, path))
-        return "";
-    for (size_t i = length; i-- > 0;) {
-        if (path[i] != '.')
-            continue;
-        snprintf(prefix, sizeof prefix, "%.*s", (int)i, path);
-        if (sv_path_matches(section, key, prefix))
-            return path + i + 1;
-    }
-    return NULL;
-}
-
-static bool is_number(const sv_key *key)
-{
-    return key->type == SV_KEY_REAL || key->type == SV_KEY_INTEGER ||
-           key->type == SV_KEY_AUTO_OR_REAL || key->type == SV_KEY_INTEGER_OR_PAIR;
-}
-
-static bool is_swept_block(const sv_block *block)
-{
-    return block->name[0] != '\0' &&
-           !sv_words_hold("ensemble stop sweep question criterion budget", block->name);
-}
-
-static bool report_not_found(sv_reader *reader, const char *path, const sv_node *node)
-{
-    char hint[600];
-    sv_suggestion suggestion = sv_suggest_start(path);
-    for (const sv_section *s = reader->sections; s != NULL; s = s->next)
-        for (int i = 0; i < s->n_fields && is_swept_block(s->block); i++) {
-            char name[SV_PATH_SIZE];
-            snprintf(name, sizeof name, "%s.%s", s->path, s->fields[i].key->name);
-            if (is_number(s->fields[i].key))
-                sv_suggest_name(&suggestion, name);
-        }
-    sv_suggest_hint(&suggestion, hint, sizeof hint);
-    return sv_report(reader, node, hint, "nothing to sweep at %.100s", path);
-}
-
-static bool target_of_field(sv_reader *reader, const sv_section *section, const sv_key *key,
-                            const char *rest, const char *path, const sv_node *node,
-                            target *ret_target)
-{
-    if (!is_swept_block(section->block))
-        return sv_report(reader, node, NULL, "%s cannot be swept", path);
-    if (*rest == '\0' && is_number(key)) {
-        ret_target->key = key;
-        if (key->type == SV_KEY_REAL || key->type == SV_KEY_INTEGER)
-            return true;
-        ret_target->part = *key;
-        ret_target->part.type = key->type == SV_KEY_AUTO_OR_REAL ? SV_KEY_REAL : SV_KEY_INTEGER;
-        ret_target->key = &ret_target->part;
-        return true;
-    }
-    if (*rest != '\0' && target_component(key, rest, ret_target))
-        return true;
-    if (*rest != '\0' && key->type == SV_KEY_TREE &&
-        target_in_tree(reader, key, path, node, ret_target))
-        return true;
-    return sv_report(reader, node, NULL, "a sweep needs a number, and %.100s is none", path);
-}
-
-static bool find_target(sv_reader *reader, const char *path, const sv_node *node,
-                        target *ret_target)
-{
-    for (const sv_section *s = reader->sections; s != NULL; s = s->next)
-        for (int i = 0; i < s->n_fields; i++) {
-            const sv_key *key = s->fields[i].key;
-            const char *rest = rest_of(s, key->name, path);
-            if (rest != NULL)
-                return target_of_field(reader, s, key, rest, path, node, ret_target);
-        }
-    return report_not_found(reader, path, node);
-}
-
-static bool read_number(sv_reader *reader, const target *aim, const char *path, const sv_node *node,
-                        double *ret_value)
+/* One value: a number, or a pair where the parameter is one. */
+static bool read_number(sv_reader *reader, const sv_target *aim, const char *path,
+                        const sv_node *node, numbers *seen, double ret_value[2])
 {
     sv_value value = {0};
-    if (!sv_value_read(reader, aim->key, path, node, &value))
+    const bool takes_one =
+        aim->pair == NULL || aim->square || aim->row->type == SV_KEY_INTEGER_OR_PAIR;
+    const bool pair = aim->pair != NULL && (node->kind == SV_NODE_LIST || !takes_one);
+    const sv_key *key = pair ? aim->pair : aim->key;
+    if (!sv_value_read(reader, key, path, node, &value))
         return false;
-    *ret_value = aim->key->type == SV_KEY_INTEGER ? (double)value.integer[0] : value.real[0];
+    for (int i = 0; i < 2; i++) {
+        const int at = pair ? i : 0;
+        ret_value[i] =
+            aim->key->type == SV_KEY_INTEGER ? (double)value.integer[at] : value.real[at];
+    }
+    seen->pairs += pair;
+    seen->singles += !pair;
     return true;
+}
+
+/* Single numbers stay single unless the parameter is a pair. */
+static void settle_pairs(const sv_target *aim, const numbers *seen, sv_sweep_axis *axis)
+{
+    axis->square = aim->square && seen->pairs == 0;
+    if (seen->pairs == 0 && !aim->square)
+        axis->second = NULL;
+}
+
+static bool take_values(sv_reader *reader, const sv_target *aim, sv_sweep_axis *axis)
+{
+    axis->values = sv_reader_take(reader, axis->count, sizeof *axis->values);
+    if (aim->pair != NULL)
+        axis->second = sv_reader_take(reader, axis->count, sizeof *axis->second);
+    return axis->values != NULL && (aim->pair == NULL || axis->second != NULL);
 }
 
 /* 0.2·3/10 is 0.06000000000000001 in binary; the nearest number of 15 digits is what is meant. */
@@ -187,20 +111,33 @@ static double round_digits(double value, double scale)
     return strtod(text, NULL);
 }
 
-static void fill_steps(double from, double to, sv_sweep_axis *axis)
+static void fill_steps(double from, double to, sv_index count, double *values)
 {
-    sv_index last = axis->count - 1;
+    sv_index last = count - 1;
     double scale = fmax(fabs(from), fabs(to));
     for (sv_index i = 0; i <= last; i++)
-        axis->values[i] = round_digits(from + (to - from) * (double)i / (double)last, scale);
-    axis->values[0] = from;
-    axis->values[last] = to;
+        values[i] = round_digits(from + (to - from) * (double)i / (double)last, scale);
+    values[0] = from;
+    values[last] = to;
 }
 
-static bool read_steps(sv_reader *reader, const sv_section *section, const target *aim,
+static bool check_whole(sv_reader *reader, const sv_section *section, const sv_sweep_axis *axis,
+                        const double *values)
+{
+    for (sv_index i = 0; axis->integer && i < axis->count; i++)
+        if (values[i] != nearbyint(values[i]))
+            return sv_report(reader, sv_section_node(section, "steps"),
+                             "choose steps so that every value is whole, or give values",
+                             "%s is a whole number, and the sweep gives it %.6g", axis->path,
+                             values[i]);
+    return true;
+}
+
+static bool read_steps(sv_reader *reader, const sv_section *section, const sv_target *aim,
                        sv_sweep_axis *axis)
 {
-    double from = 0.0, to = 0.0;
+    double from[2], to[2];
+    numbers seen = {0};
     const char *missing = sv_section_written(section, "from") == 0    ? "from"
                           : sv_section_written(section, "to") == 0    ? "to"
                           : sv_section_written(section, "steps") == 0 ? "steps"
@@ -210,23 +147,22 @@ static bool read_steps(sv_reader *reader, const sv_section *section, const targe
                          "%s.%s is missing", section->path, missing);
     const sv_node *ends[2] = {sv_section_node(section, "from"), sv_section_node(section, "to")};
     axis->count = sv_section_value(section, "steps")->integer[0];
-    axis->values = sv_reader_take(reader, axis->count, sizeof *axis->values);
-    if (axis->values == NULL || !read_number(reader, aim, axis->path, ends[0], &from) ||
-        !read_number(reader, aim, axis->path, ends[1], &to))
+    if (!take_values(reader, aim, axis) ||
+        !read_number(reader, aim, axis->path, ends[0], &seen, from) ||
+        !read_number(reader, aim, axis->path, ends[1], &seen, to))
         return false;
-    fill_steps(from, to, axis);
-    for (sv_index i = 0; axis->integer && i < axis->count; i++)
-        if (axis->values[i] != nearbyint(axis->values[i]))
-            return sv_report(reader, sv_section_node(section, "steps"),
-                             "choose steps so that every value is whole, or give values",
-                             "%s is a whole number, and the sweep gives it %.6g", axis->path,
-                             axis->values[i]);
-    return true;
+    fill_steps(from[0], to[0], axis->count, axis->values);
+    if (axis->second != NULL)
+        fill_steps(from[1], to[1], axis->count, axis->second);
+    settle_pairs(aim, &seen, axis);
+    return check_whole(reader, section, axis, axis->values) &&
+           (axis->second == NULL || check_whole(reader, section, axis, axis->second));
 }
 
-static bool read_values(sv_reader *reader, const sv_section *section, const target *aim,
+static bool read_values(sv_reader *reader, const sv_section *section, const sv_target *aim,
                         sv_sweep_axis *axis)
 {
+    numbers seen = {0};
     const sv_node *list = sv_section_node(section, "values");
     if (!sv_section_none_of(reader, section, "from to steps", "has no meaning beside values"))
         return false;
@@ -234,65 +170,82 @@ static bool read_values(sv_reader *reader, const sv_section *section, const targ
         return sv_report(reader, list, NULL, "%s.values: expected a list of numbers [a, b, …]",
                          section->path);
     axis->count = list->count;
-    axis->values = sv_reader_take(reader, axis->count, sizeof *axis->values);
-    bool good = axis->values != NULL;
-    for (sv_index i = 0; good && i < axis->count; i++)
-        good = read_number(reader, aim, axis->path, list->items[i], &axis->values[i]);
+    bool good = take_values(reader, aim, axis);
+    for (sv_index i = 0; good && i < axis->count; i++) {
+        double value[2];
+        good = read_number(reader, aim, axis->path, list->items[i], &seen, value);
+        axis->values[i] = value[0];
+        if (axis->second != NULL)
+            axis->second[i] = value[1];
+    }
+    settle_pairs(aim, &seen, axis);
     return good;
 }
 
-/* The unit of the first value that has one: results are shown in it. */
-static void unit_of(const sv_reader *reader, const sv_node *const *nodes, sv_index count,
-                    const target *aim, sv_sweep_axis *axis)
+/* What is written = scale · value, in the unit of the first number that has one. */
+static double base_of(const sv_reader *reader, const sv_key *key)
 {
     double a = reader->lattice_constant;
     double unit = reader->energy_unit > 0.0 ? reader->energy_unit : 1.0;
-    sv_dimension dimension = aim->key->dimension;
-    bool scale = sv_schema_is_scale(aim->key); /* stays in nm or eV */
-    double base = scale                                ? 1.0
-                  : dimension == SV_DIM_LENGTH         ? a
-                  : dimension == SV_DIM_DENSITY        ? 1.0 / (a * a)
-                  : dimension == SV_DIM_VOLUME_DENSITY ? 1.0 / (a * a * a)
-                  : dimension == SV_DIM_ENERGY         ? unit
-                  : dimension == SV_DIM_ENERGY_LENGTH  ? unit
-                  : dimension == SV_DIM_ENERGY_AREA    ? unit
-                                                       : 1.0;
-    axis->unit_scale = 1.0;
-    for (sv_index i = 0; i < count && axis->unit == NULL; i++) {
-        sv_quantity quantity = {0};
-        if (nodes[i]->text == NULL ||
-            sv_parse_quantity(nodes[i]->text, aim->key->dimension, &quantity) != SV_PARSE_OK ||
-            !quantity.has_unit)
-            continue;
-        axis->unit = quantity.unit->symbol;
-        axis->unit_scale = base / quantity.unit->factor;
+    if (sv_schema_is_scale(key)) /* stays in nm or eV */
+        return 1.0;
+    switch (key->dimension) {
+    case SV_DIM_LENGTH:
+        return a;
+    case SV_DIM_DENSITY:
+        return 1.0 / (a * a);
+    case SV_DIM_VOLUME_DENSITY:
+        return 1.0 / (a * a * a);
+    case SV_DIM_ENERGY:
+    case SV_DIM_ENERGY_LENGTH:
+    case SV_DIM_ENERGY_AREA:
+        return unit;
+    default:
+        return 1.0;
     }
 }
 
-static void set_unit(const sv_reader *reader, const sv_section *section, const target *aim,
-                     sv_sweep_axis *axis)
+/* The first number of the node that is written with a unit. */
+static const sv_unit *unit_of(const sv_node *node, sv_dimension dimension)
 {
-    const sv_node *list = sv_section_node(section, "values");
-    const sv_node *ends[2] = {sv_section_node(section, "from"), sv_section_node(section, "to")};
-    bool by_list = sv_section_written(section, "values") > 0;
-    unit_of(reader, by_list ? list->items : ends, by_list ? list->count : 2, aim, axis);
+    sv_quantity quantity = {0};
+    const sv_unit *unit = NULL;
+    for (sv_index i = 0; node->kind == SV_NODE_LIST && i < node->count && unit == NULL; i++)
+        unit = unit_of(node->items[i], dimension);
+    if (node->kind == SV_NODE_SCALAR &&
+        sv_parse_quantity(node->text, dimension, &quantity) == SV_PARSE_OK && quantity.has_unit)
+        unit = quantity.unit;
+    return unit;
 }
 
-static bool read_axis(sv_reader *reader, const sv_section *section, sv_sweep_axis *axis)
+static void set_unit(const sv_reader *reader, const sv_node *const *nodes, int n,
+                     const sv_target *aim, sv_sweep_axis *axis)
 {
-    target aim = {0};
+    const sv_unit *unit = NULL;
+    for (int i = 0; i < n && unit == NULL; i++)
+        unit = unit_of(nodes[i], aim->key->dimension);
+    axis->unit = unit != NULL ? unit->symbol : NULL;
+    axis->unit_scale = unit != NULL ? base_of(reader, aim->key) / unit->factor : 1.0;
+}
+
+static bool read_axis(sv_reader *reader, const sv_section *section, sv_target *aim,
+                      sv_sweep_axis *axis)
+{
     const sv_node *node = sv_section_node(section, "parameter");
     const char *path = sv_section_value(section, "parameter")->text;
     if (strlen(path) >= sizeof axis->path)
         return sv_report(reader, node, NULL, "the path is too long");
-    if (!find_target(reader, path, node, &aim))
+    if (!sv_target_find(reader, path, node, aim))
         return false;
     snprintf(axis->path, sizeof axis->path, "%s", path);
-    axis->integer = aim.key->type == SV_KEY_INTEGER;
-    bool good = sv_section_written(section, "values") > 0 ? read_values(reader, section, &aim, axis)
-                                                          : read_steps(reader, section, &aim, axis);
+    axis->integer = aim->key->type == SV_KEY_INTEGER;
+    const bool by_list = sv_section_written(section, "values") > 0;
+    const sv_node *nodes[2] = {sv_section_node(section, by_list ? "values" : "from"),
+                               sv_section_node(section, "to")};
+    bool good =
+        by_list ? read_values(reader, section, aim, axis) : read_steps(reader, section, aim, axis);
     if (good)
-        set_unit(reader, section, &aim, axis);
+        set_unit(reader, nodes, by_list ? 1 : 2, aim, axis);
     return good;
 }
 
@@ -300,12 +253,14 @@ bool sv_sweep_read(sv_reader *reader, sv_setup *setup)
 {
     const sv_section *section = NULL;
     sv_index points = 1;
+    sv_target aims[2] = {0};
     while ((section = sv_document_find(reader, "sweep", section)) != NULL) {
         sv_sweep_axis *axis = &setup->axes[setup->n_axes];
-        if (!read_axis(reader, section, axis))
+        if (!read_axis(reader, section, &aims[setup->n_axes], axis))
             return false;
-        if (setup->n_axes == 1 && strcmp(axis->path, setup->axes[0].path) == 0)
-            return sv_report(reader, sv_section_node(section, "parameter"), NULL,
+        if (setup->n_axes == 1 && sv_targets_clash(&aims[0], &aims[1]))
+            return sv_report(reader, sv_section_node(section, "parameter"),
+                             "sweep another parameter, or put all values on one axis",
                              "both axes sweep %s", axis->path);
         points *= axis->count;
         setup->n_axes++;
@@ -317,22 +272,38 @@ bool sv_sweep_read(sv_reader *reader, sv_setup *setup)
     return true;
 }
 
+sv_assignment sv_sweep_value(const sv_sweep_axis *axis, sv_index number)
+{
+    const bool pair = axis->second != NULL;
+    return (sv_assignment){.path = axis->path,
+                           .value = axis->values[number],
+                           .second = pair ? axis->second[number] : 0.0,
+                           .pair = pair};
+}
+
 bool sv_sweep_read_numbers(sv_reader *reader, const sv_node *path_node, const sv_node *const *nodes,
                            int n, sv_sweep_axis *axis)
 {
-    target aim = {0};
+    sv_target aim = {0};
+    numbers seen = {0};
     if (strlen(path_node->text) >= sizeof axis->path)
         return sv_report(reader, path_node, NULL, "the path is too long");
     snprintf(axis->path, sizeof axis->path, "%s", path_node->text);
-    if (!find_target(reader, axis->path, path_node, &aim))
+    if (!sv_target_find(reader, axis->path, path_node, &aim))
         return false;
+    if (aim.pair != NULL)
+        return sv_report(reader, path_node, "one of the two: end the path with .0 or .1",
+                         "a single number is needed, and %.100s is a pair", axis->path);
     axis->integer = aim.key->type == SV_KEY_INTEGER;
     axis->count = n;
     axis->values = sv_reader_take(reader, n, sizeof *axis->values);
     bool good = axis->values != NULL;
-    for (int i = 0; good && i < n; i++)
-        good = read_number(reader, &aim, axis->path, nodes[i], &axis->values[i]);
+    for (int i = 0; good && i < n; i++) {
+        double value[2];
+        good = read_number(reader, &aim, axis->path, nodes[i], &seen, value);
+        axis->values[i] = value[0];
+    }
     if (good)
-        unit_of(reader, nodes, n, &aim, axis);
+        set_unit(reader, nodes, n, &aim, axis);
     return good;
 }

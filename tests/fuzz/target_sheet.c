@@ -29,8 +29,7 @@ static void check_sweep(sv_context *context, fuzz_reading *r)
     sv_setup setup = {0};
     const int n = r->setup.n_axes;
     for (int k = 0; k < n; k++)
-        at[k] = (sv_assignment){r->setup.axes[k].path,
-                                r->setup.axes[k].values[r->setup.axes[k].count - 1]};
+        at[k] = sv_sweep_value(&r->setup.axes[k], r->setup.axes[k].count - 1);
     if (n == 0)
         return;
     const sv_status status = sv_sheet_setup(context, r->sheet, at, n, &r->said, &setup);

@@ -116,6 +116,31 @@ SV_TEST(integers_stay_integers_and_odd_titles_stay_texts)
     json_decref(document);
 }
 
+SV_TEST(a_pair_is_a_pair)
+{
+    fixture f;
+    fixture_make(&f);
+    char *csv = NULL;
+    for (int i = 0; i < 3; i++)
+        f.points[i].coordinates[0] = (sv_coordinate){.path = "flake.cells",
+                                                     .value = 10 + i,
+                                                     .second = 12 + i,
+                                                     .pair = true,
+                                                     .integer = true};
+    json_t *document = read_back(&f.result);
+    json_t *point = json_array_get(json_object_get(document, "points"), 1);
+    const json_t *value = json_object_get(json_object_get(point, "parameters"), "flake.cells");
+    CHECK_INT(json_array_size(value), 2);
+    CHECK(json_is_integer(json_array_get(value, 0)));
+    CHECK_INT(json_integer_value(json_array_get(value, 0)), 11);
+    CHECK_INT(json_integer_value(json_array_get(value, 1)), 13);
+    json_decref(document);
+    CHECK_OK(sv_result_csv(test_context(), &f.result, &csv));
+    CHECK(strstr(csv, "\nflake.cells.0,flake.cells.1,marker,") != NULL);
+    CHECK(strstr(csv, "\n11,13,local_chern,") != NULL);
+    sv_give(test_context(), csv);
+}
+
 SV_TEST(no_sweep_is_one_point_without_parameters)
 {
     fixture f;

@@ -51,6 +51,41 @@ SV_TEST(vacancies_are_nested)
     sv_model_free(test_context(), &model);
 }
 
+/* A site has the numbers of its cell whatever the size of the flake around it, so that sizes can be
+ * compared with little noise. */
+SV_TEST(sizes_share_their_fields)
+{
+    sv_model model = fixture_haldane(0.2, 1.0, 0.0);
+    const sv_disorder d[2] = {
+        {.name = "vac", .type = SV_DISORDER_VACANCIES, .on = -1, .has_share = true, .share = 0.1},
+        {.name = "pot", .type = SV_DISORDER_ONSITE, .on = -1, .width = 2.0}};
+    const sv_flake_spec specs[2] = {fixture_cells(&model, 7, 7, false),
+                                    fixture_cells(&model, 11, 9, false)};
+    sv_flake small = fixture_flake(&model, &specs[0]);
+    sv_flake large = fixture_flake(&model, &specs[1]);
+    sv_sample a = drawn(&small, d, 2, 5), b = drawn(&large, d, 2, 5);
+    sv_index shared = 0;
+    for (sv_index r = 0; r < a.n; r++) {
+        const sv_site *site = &small.sites[a.pristine[r]];
+        const sv_cell *cell = &small.cells[site->cell];
+        for (sv_index q = 0; q < b.n; q++) {
+            const sv_site *other = &large.sites[b.pristine[q]];
+            const sv_cell *place = &large.cells[other->cell];
+            if (place->i != cell->i || place->j != cell->j || other->orbital != site->orbital)
+                continue;
+            CHECK_CLOSE(b.potential[q], a.potential[r], 0.0);
+            shared++;
+        }
+    }
+    CHECK_INT(shared, a.n); /* what is vacant in one is vacant in the other */
+    CHECK(a.n < small.n_sites);
+    sv_sample_free(test_context(), &a);
+    sv_sample_free(test_context(), &b);
+    sv_flake_free(test_context(), &small);
+    sv_flake_free(test_context(), &large);
+    sv_model_free(test_context(), &model);
+}
+
 /* A vacancy removes every orbital at its position; on one sublattice it leaves the other alone. */
 SV_TEST(vacancies_remove_positions)
 {

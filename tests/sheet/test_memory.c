@@ -46,7 +46,7 @@ static sv_status use_sheet(sv_context *context, const char *text, sv_diagnostics
     sv_setup plain = {0}, point = {0};
     char *relocated = NULL;
     const char *names[] = {"inputs/x.csv"};
-    sv_assignment at = {"disorder.vac.share", 0.1};
+    sv_assignment at = {.path = "disorder.vac.share", .value = 0.1};
     sv_sheet_options options = reading_options(&override, 1);
     sv_status status = sv_sheet_parse(context, test_scratch("sheet.yaml"), text, strlen(text),
                                       &options, said, &sheet);

@@ -94,7 +94,7 @@ SV_TEST(presets_can_be_set_and_swept)
                           "sweep: [{parameter: model.exchange, values: [10 meV, 40 meV]}]\n",
                           overrides, 2);
     sv_setup point = {0};
-    sv_assignment at = {"model.exchange", 0.04};
+    sv_assignment at = {.path = "model.exchange", .value = 0.04};
     if (is_read(&r)) {
         CHECK_CLOSE(r.setup.model.orbitals[0].onsite, 0.028, 1e-15);
         CHECK_CLOSE(r.setup.lattice_constant, 1.0, 0.0);

@@ -37,7 +37,7 @@ SV_TEST(two_axes_with_units)
         CHECK_CLOSE(r.setup.axes[1].values[1], 12.0, 0.0);
         CHECK_CLOSE(r.setup.energy_unit, 1.0, 0.0);
         sv_setup point = {0};
-        sv_assignment at = {"disorder.pot.width", 0.2};
+        sv_assignment at = {.path = "disorder.pot.width", .value = 0.2};
         CHECK_OK(sv_sheet_setup(test_context(), r.sheet, &at, 1, &r.said, &point));
         CHECK_CLOSE(point.energy_unit, 1.0, 0.0);
         sv_setup_free(test_context(), &point);
@@ -60,7 +60,8 @@ SV_TEST(a_point_is_the_sheet_with_other_numbers)
                   "  - {parameter: flake.cells.0, values: [4, 12]}\n");
     if (is_read(&r)) {
         sv_setup point = {0};
-        sv_assignment at[2] = {{"disorder.vac.share", 0.5}, {"flake.cells.0", 12}};
+        sv_assignment at[2] = {{.path = "disorder.vac.share", .value = 0.5},
+                               {.path = "flake.cells.0", .value = 12}};
         CHECK_OK(sv_sheet_setup(test_context(), r.sheet, at, 2, &r.said, &point));
         CHECK_CLOSE(point.disorder[0].share, 0.5, 0.0);
         CHECK_INT(point.flake.cells[0], 12);
@@ -79,7 +80,7 @@ SV_TEST(faults_of_a_point_stand_at_the_sweep)
                   "sweep: [{parameter: disorder.vac.share, from: 0, to: 0.2, steps: 11}]\n");
     if (is_read(&r)) {
         sv_setup point = {0};
-        sv_assignment at = {"disorder.vac.share", 1.4};
+        sv_assignment at = {.path = "disorder.vac.share", .value = 1.4};
         CHECK_STATUS(SV_INVALID_INPUT,
                      sv_sheet_setup(test_context(), r.sheet, &at, 1, &r.said, &point));
         const sv_diagnostic *item =
@@ -123,8 +124,8 @@ SV_TEST(a_swept_key_may_have_a_default)
                           "  - {parameter: markers.local_chern.window, values: [0.25]}\n");
     if (is_read(&r)) {
         sv_setup point = {0};
-        sv_assignment at[2] = {{r.setup.axes[0].path, r.setup.axes[0].values[2]},
-                               {r.setup.axes[1].path, r.setup.axes[1].values[0]}};
+        sv_assignment at[2] = {sv_sweep_value(&r.setup.axes[0], 2),
+                               sv_sweep_value(&r.setup.axes[1], 0)};
         CHECK_CLOSE(r.setup.occupation.fermi_energy, 0.0, 0.0);
         CHECK_CLOSE(r.setup.axes[0].values[1], 0.0, 0.0);
         CHECK_OK(sv_sheet_setup(test_context(), r.sheet, at, 2, &r.said, &point));
@@ -147,7 +148,8 @@ SV_TEST(numbers_inside_a_custom_model)
     reading r = read_text(sheet);
     if (is_read(&r)) {
         sv_setup point = {0};
-        sv_assignment at[2] = {{"model.onsite.a", 0.5}, {"model.hops.0.amplitude.1", 2.0}};
+        sv_assignment at[2] = {{.path = "model.onsite.a", .value = 0.5},
+                               {.path = "model.hops.0.amplitude.1", .value = 2.0}};
         CHECK_OK(sv_sheet_setup(test_context(), r.sheet, at, 2, &r.said, &point));
         CHECK_CLOSE(point.model.orbitals[0].onsite, 0.5, 0.0);
         CHECK_CLOSE(cimag(point.model.hops[0].amplitude), 2.0, 0.0);
@@ -163,7 +165,7 @@ SV_TEST(a_swept_scale_keeps_its_unit)
                                "to: 10 angstrom, steps: 3}]\n");
     if (is_read(&r)) {
         sv_setup point = {0};
-        sv_assignment at = {"model.lattice_constant", r.setup.axes[0].values[2]};
+        sv_assignment at = sv_sweep_value(&r.setup.axes[0], 2);
         CHECK_CLOSE(at.value, 1.0, 1e-15);
         CHECK_OK(sv_sheet_setup(test_context(), r.sheet, &at, 1, &r.said, &point));
         CHECK_CLOSE(point.flake.radius, 3.0, 1e-14);
@@ -202,4 +204,92 @@ SV_TEST(an_axis_keeps_its_unit)
     sv_setup_free(context, &setup);
     sv_sheet_free(context, sheet);
     sv_diagnostics_free(context, &diagnostics);
+}
+
+/* One number n of a flake's size means n cells along both sides; pairs say otherwise. */
+SV_TEST(sizes_are_numbers_or_pairs)
+{
+    reading r = read_text(MODEL "flake: {shape: rectangle}\n" DISORDER
+                                "sweep: [{parameter: flake.cells, values: [10, 14, 18]}]\n");
+    if (is_read(&r)) {
+        const sv_sweep_axis *axis = &r.setup.axes[0];
+        CHECK(axis->integer && axis->square && axis->second != NULL);
+        CHECK_INT(r.setup.flake.cells[0], 10);
+        CHECK_INT(r.setup.flake.cells[1], 10);
+        CHECK(strstr(r.setup.resolved, "cells: [10, 10]\n") != NULL);
+        CHECK(strstr(r.setup.resolved, "values: [10, 14, 18]\n") != NULL);
+        sv_setup point = {0};
+        sv_assignment at = sv_sweep_value(axis, 2);
+        CHECK(at.pair);
+        CHECK_OK(sv_sheet_setup(test_context(), r.sheet, &at, 1, &r.said, &point));
+        CHECK_INT(point.flake.cells[0], 18);
+        CHECK_INT(point.flake.cells[1], 18);
+        sv_setup_free(test_context(), &point);
+    }
+    reading_free(&r);
+    r = read_text(MODEL "flake: {shape: rectangle, cells: [3, 3]}\n" DISORDER
+                        "sweep: [{parameter: flake.cells, values: [[10, 12], 14]}]\n");
+    if (is_read(&r)) {
+        sv_setup point = {0};
+        sv_assignment at = sv_sweep_value(&r.setup.axes[0], 0);
+        CHECK(!r.setup.axes[0].square);
+        CHECK_CLOSE(r.setup.axes[0].second[1], 14.0, 0.0);
+        CHECK_OK(sv_sheet_setup(test_context(), r.sheet, &at, 1, &r.said, &point));
+        CHECK_INT(point.flake.cells[0], 10);
+        CHECK_INT(point.flake.cells[1], 12);
+        sv_setup_free(test_context(), &point);
+    }
+    reading_free(&r);
+    r = read_text(MODEL
+                  "flake: {shape: rectangle}\n"
+                  "sweep: [{parameter: flake.cells, from: [4, 8], to: [12, 16], steps: 3}]\n");
+    if (is_read(&r)) {
+        CHECK_CLOSE(r.setup.axes[0].values[1], 8.0, 0.0);
+        CHECK_CLOSE(r.setup.axes[0].second[1], 12.0, 0.0);
+    }
+    reading_free(&r);
+}
+
+/* Sizes by a length keep their unit; other shapes have one number. */
+SV_TEST(sizes_as_the_shape_has_them)
+{
+    reading r = read_text(FILM "flake: {shape: rectangle}\n"
+                               "sweep: [{parameter: flake.size, values: [4 nm, 6 nm]}]\n");
+    if (is_read(&r)) {
+        CHECK(r.setup.axes[0].unit != NULL && strcmp(r.setup.axes[0].unit, "nm") == 0);
+        CHECK_CLOSE(r.setup.axes[0].second[1] * r.setup.axes[0].unit_scale, 6.0, 1e-14);
+    }
+    reading_free(&r);
+    r = read_text(MODEL "flake: {shape: disc}\n"
+                        "sweep: [{parameter: flake.radius, values: [4, 5.5]}]\n");
+    if (is_read(&r)) {
+        CHECK(r.setup.axes[0].second == NULL && !r.setup.axes[0].square);
+        CHECK_CLOSE(r.setup.flake.radius, 4.0, 0.0);
+    }
+    reading_free(&r);
+}
+
+/* Pairs of numbers count for the identity of a run as much as single ones. */
+SV_TEST(pairs_are_part_of_the_identity)
+{
+    static const char *const values[3] = {"[10, 14]", "[[10, 10], [14, 14]]",
+                                          "[[10, 10], [14, 12]]"};
+    char *identities[3] = {0};
+    for (int i = 0; i < 3; i++) {
+        char text[400];
+        snprintf(text, sizeof text,
+                 MODEL "flake: {shape: rectangle, cells: [9, 9]}\n"
+                       "sweep: [{parameter: flake.cells, values: %s}]\n",
+                 values[i]);
+        reading r = read_text(text);
+        if (is_read(&r)) {
+            identities[i] = r.setup.identity;
+            r.setup.identity = NULL;
+        }
+        reading_free(&r);
+    }
+    CHECK_TEXT(identities[0], identities[1]);
+    CHECK(strcmp(identities[1], identities[2]) != 0);
+    for (int i = 0; i < 3; i++)
+        sv_give(test_context(), identities[i]);
 }
