@@ -299,7 +299,7 @@ bool sv_sweep_read_numbers(sv_reader *reader, const sv_node *path_node, const sv
     axis->values = sv_reader_take(reader, n, sizeof *axis->values);
     bool good = axis->values != NULL;
     for (int i = 0; good && i < n; i++) {
-        double value[2];
+        double value[2] = {0.0, 0.0};
         good = read_number(reader, &aim, axis->path, nodes[i], &seen, value);
         axis->values[i] = value[0];
     }
