@@ -31,7 +31,8 @@ typedef struct ground {
 
 static sv_status number_of(ground *g, double parameter, int *ret_number)
 {
-    sv_assignment assignments[MOST_ASSIGNMENTS + 1] = {{g->question->axis.path, parameter}};
+    sv_assignment assignments[MOST_ASSIGNMENTS + 1] = {
+        {.path = g->question->axis.path, .value = parameter}};
     for (int k = 0; k < g->n_points; k++)
         if (g->parameters[k] == parameter) {
             *ret_number = g->numbers[k];
@@ -185,13 +186,16 @@ static sv_status search_all(inquiry *q, sv_tolerance_result *result)
             sv_tolerance_row frame = {0};
             if (question->n_sizes > 0) {
                 memcpy(frame.cells, question->sizes[i], sizeof frame.cells);
-                g.fixed[g.n_fixed++] = (sv_assignment){"flake.cells.0", (double)frame.cells[0]};
-                g.fixed[g.n_fixed++] = (sv_assignment){"flake.cells.1", (double)frame.cells[1]};
+                g.fixed[g.n_fixed++] =
+                    (sv_assignment){.path = "flake.cells.0", .value = (double)frame.cells[0]};
+                g.fixed[g.n_fixed++] =
+                    (sv_assignment){.path = "flake.cells.1", .value = (double)frame.cells[1]};
             }
             if (question->budget.count > 0) {
                 frame.has_second = true;
                 frame.second = question->budget.values[k];
-                g.fixed[g.n_fixed++] = (sv_assignment){question->budget.path, frame.second};
+                g.fixed[g.n_fixed++] =
+                    (sv_assignment){.path = question->budget.path, .value = frame.second};
             }
             status = search_flake(&g, &frame, question->budget.count == 0, result);
         }
