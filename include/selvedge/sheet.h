@@ -113,6 +113,18 @@ typedef struct sv_sheet_question {
     int n_sizes; /**< 0: the flake of the sheet alone */
 } sv_sheet_question;
 
+enum { SV_MAX_TEMPERATURES = 16 };
+
+/** The block `plateau`: a marker against the Fermi energy. */
+typedef struct sv_sheet_plateau {
+    double energies[2]; /**< lowest, highest, unit of the model */
+    int64_t points;
+    int marker; /**< number in sv_setup.markers */
+    double within;
+    double kelvin[SV_MAX_TEMPERATURES];
+    int n_temperatures; /**< at least 1 */
+} sv_sheet_plateau;
+
 /** A file the sheet names. */
 typedef struct sv_sheet_file {
     char *path;    /**< as opened */
@@ -140,12 +152,14 @@ typedef struct sv_setup {
     double stop_standard_error; /**< 0: not asked for */
     double stop_share_width;    /**< 0: not asked for */
     double stop_seconds;        /**< of computing, over all points; 0: no limit */
-    int stop_marker; /**< number in `markers` */
+    int stop_marker;            /**< number in `markers` */
     int64_t stop_at_least;
     sv_sweep_axis axes[2];
     int n_axes;
     bool has_question;
     sv_sheet_question question;
+    bool has_plateau;
+    sv_sheet_plateau plateau;
     char engine[16], estimator[16];
     double accuracy, sampling_error;
     sv_sheet_file *files;

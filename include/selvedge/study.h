@@ -116,6 +116,43 @@ typedef struct sv_line {
 /** Weighted least squares, weights 1/error². */
 SV_API sv_line sv_line_fit(const double *x, const double *y, const double *error, int n);
 
+/* ------------------------------------------------------------------ plateau */
+
+/**
+ * Weights of a thermal mean: Σ_k w_k g(E_k) = ∫ g(E) (−∂f/∂E) dE at μ = energies[at], exact for a g
+ * that is straight between the energies; kT = 0 gives g(μ) itself. The marker is averaged over
+ * Fermi energies; a smooth f(H) in its place would not be (P x P y P is not linear in P).
+ * @param thermal_energy  kT, in the unit of the energies
+ * @return false when the window (15 kT either way) reaches beyond the energies
+ */
+SV_API bool sv_thermal_weights(const double *energies, int64_t n, double thermal_energy, int64_t at,
+                               double *ret_weights);
+
+/** A marker at ascending Fermi energies, on the same samples at all of them. */
+typedef struct sv_plateau_input {
+    const double *energies;
+    int64_t n;
+    const double *values; /**< [realisation·n + energy]; NaN: unresolved */
+    int64_t realisations;
+    double clean, within; /**< the band */
+    double about;         /**< energy the window must hold */
+    double confidence;
+    uint64_t seed; /**< of the resampling */
+} sv_plateau_input;
+
+/** Energies about `about` at which the mean is within the band. */
+typedef struct sv_plateau {
+    bool exists; /**< the mean at `about` is within the band */
+    double width, centre, edges[2];
+    double interval[2]; /**< of the width: percentiles of 1,000 resamples of whole realisations; NaN
+                             for one realisation */
+    bool open[2]; /**< the window reaches the first or last energy: the width is a lower bound */
+} sv_plateau;
+/** Edges are interpolated between energies. @return SV_INVALID_INPUT for energies that do not
+ * ascend and bands that make no sense */
+SV_API SV_MUST_USE sv_status sv_plateau_measure(sv_context *context, const sv_plateau_input *input,
+                                                sv_plateau *ret_plateau);
+
 #ifdef __cplusplus
 }
 #endif

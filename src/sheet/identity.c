@@ -265,6 +265,11 @@ sv_status sv_identity_write(sv_reader *reader, const sv_setup *setup, char **ret
         add_rules(&w, &setup->model);
     for (int i = 0; i < setup->n_axes; i++)
         add_axis(&w, &setup->axes[i], i);
+    for (int i = 0; setup->has_plateau && i < setup->plateau.n_temperatures; i++) {
+        sv_text_add(&w.line, "plateau.temperatures.%02d = ", i);
+        add_real(&w, setup->plateau.kelvin[i]);
+        end_line(&w);
+    }
     if (setup->has_question)
         add_question(&w, &setup->question);
     sv_status status = join(&w, ret_text);

@@ -189,6 +189,33 @@ static const sv_key budget_keys[] = {
     {.name = "values", .type = SV_KEY_TREE, .required = true, .doc = "[v1, v2, …] in any order"},
 };
 
+static const sv_key plateau_keys[] = {
+    {.name = "energies",
+     .type = SV_KEY_REAL_PAIR,
+     .dimension = SV_DIM_ENERGY,
+     .low = -1e12,
+     .high = 1e12,
+     .required = true,
+     .doc = "[lowest, highest] Fermi energy"},
+    {.name = "points",
+     .type = SV_KEY_INTEGER,
+     .low = 3,
+     .high = 10001,
+     .fallback = "101",
+     .doc = "number of energies, both ends included"},
+    {.name = "of",
+     .type = SV_KEY_TEXT,
+     .doc = "which marker (may be left out when there is only one)"},
+    {.name = "within",
+     .type = SV_KEY_REAL,
+     .low = 0,
+     .low_open = true,
+     .high = 10,
+     .fallback = "0.05",
+     .doc = "half width of the band about the clean value"},
+    {.name = "temperatures", .type = SV_KEY_TREE, .doc = "[0 K, 4 K, …]; left out: 0 K alone"},
+};
+
 static const sv_key solve_keys[] = {
     {.name = "engine",
      .type = SV_KEY_CHOICE,
@@ -280,6 +307,11 @@ static const sv_block blocks[] = {
      .doc = "the same question at several values of a second parameter",
      .optional_section = true,
      KEYS(budget_keys)},
+    {.parent = "",
+     .name = "plateau",
+     .doc = "for the command plateau: the marker against the Fermi energy",
+     .optional_section = true,
+     KEYS(plateau_keys)},
     {.parent = "", .name = "solve", .doc = "engine and accuracy", KEYS(solve_keys)},
 };
 enum { N_BLOCKS = sizeof blocks / sizeof blocks[0] };

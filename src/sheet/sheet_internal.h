@@ -381,6 +381,8 @@ bool sv_sweep_read_numbers(sv_reader *reader, const sv_node *path_node, const sv
 
 /* The block `question`, where there is one. */
 bool sv_question_read(sv_reader *reader, sv_setup *setup);
+/* The block `plateau`, where there is one. */
+bool sv_plateau_read(sv_reader *reader, sv_setup *setup);
 /* The `parameter` value of the axis that sweeps this path, or NULL. */
 const sv_node *sv_sweep_parameter(const sv_node *root, const char *path);
 
