@@ -111,7 +111,11 @@ SV_API SV_MUST_USE sv_status sv_model_make(sv_context *context, const sv_kind *k
 SV_API SV_MUST_USE sv_status sv_model_begin(sv_context *context, const char *name,
                                             const double a1[2], const double a2[2],
                                             sv_model *ret_model);
-/** Adds an orbital. @return SV_INVALID_INPUT for a repeated or overlong name */
+/**
+ * Adds an orbital. Its name begins with a letter, a digit or `_` and holds no comma, quote or
+ * control character: it is written into tables as it is.
+ * @return SV_INVALID_INPUT for another, a repeated or an overlong name
+ */
 SV_API SV_MUST_USE sv_status sv_model_add_orbital(sv_context *context, sv_model *model,
                                                   const char *name, double x, double y,
                                                   double onsite);

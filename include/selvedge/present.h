@@ -51,6 +51,13 @@ typedef struct sv_result {
  */
 SV_API void sv_format_uncertain(double value, double error, char *text, size_t size);
 
+/**
+ * A text fit to be shown on a terminal: control characters and marks that turn the direction of
+ * writing are written out (`\n`, `\x1b`, `\u202e`), bytes that are no UTF-8 become U+FFFD. Cut
+ * at `size`.
+ */
+SV_API void sv_text_clean(const char *text, char *clean, size_t size);
+
 /** JSON document of an ensemble (contract: "Results"), newline-terminated; taken from context. */
 SV_API SV_MUST_USE sv_status sv_result_json(sv_context *context, const sv_result *result,
                                             char **ret_text);

@@ -2,6 +2,7 @@
 /* The model as an object: building it piece by piece, invariants, geometry, Bloch matrix. */
 #include "selvedge/model.h"
 
+#include <ctype.h>
 #include <math.h>
 #include <stdio.h>
 #include <string.h>
@@ -33,12 +34,29 @@ sv_status sv_model_begin(sv_context *context, const char *name, const double a1[
     return SV_OK;
 }
 
+/* A name that stands in a CSV file without quotes and is no formula to a spreadsheet. */
+static bool is_plain_name(const char *name)
+{
+    const unsigned char *at = (const unsigned char *)name;
+    if (*at < 0x80 && !isalnum(*at) && *at != '_')
+        return false;
+    for (; *at != '\0'; at++)
+        if (*at < 0x20 || *at == 0x7f || *at == ',' || *at == '"' ||
+            (at[0] == 0xC2 && at[1] < 0xA0)) /* U+0080 to U+009F */
+            return false;
+    return true;
+}
+
 sv_status sv_model_add_orbital(sv_context *context, sv_model *model, const char *name, double x,
                                double y, double onsite)
 {
     if (name[0] == '\0' || strlen(name) >= sizeof model->orbitals[0].name)
         return SV_FAIL(context, SV_INVALID_INPUT, "an orbital name has 1 to %zu characters",
                        sizeof model->orbitals[0].name - 1);
+    if (!is_plain_name(name))
+        return SV_FAIL(context, SV_INVALID_INPUT,
+                       "an orbital name begins with a letter, a digit or _ and holds no comma, "
+                       "quote or control character");
     if (strcmp(name, "any") == 0)
         return SV_FAIL(context, SV_INVALID_INPUT, "\"any\" stands for all orbitals");
     if (sv_model_find_orbital(model, name) >= 0)

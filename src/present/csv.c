@@ -10,7 +10,7 @@
 static void add_field(sv_draft *text, const char *field)
 {
     char clean[1024];
-    sv_words_clean(field, clean, sizeof clean);
+    sv_text_clean(field, clean, sizeof clean);
     const bool formula = clean[0] != '\0' && strchr("=+-@", clean[0]) != NULL;
     if (!formula && strpbrk(clean, ",\"") == NULL) {
         sv_draft_add(text, "%s", clean);
@@ -49,7 +49,7 @@ static void add_real(sv_draft *text, double value)
 static void add_head(sv_draft *text, const sv_result *result)
 {
     char clean[512];
-    sv_words_clean(result->title, clean, sizeof clean);
+    sv_text_clean(result->title, clean, sizeof clean);
     sv_draft_add(text, "# %s\n", clean);
     sv_draft_add(
         text,

@@ -54,7 +54,7 @@ static void blank_date(char *data, size_t size)
 static void add_escaped(sv_draft *text, const char *word)
 {
     char clean[1024];
-    sv_words_clean(word, clean, sizeof clean);
+    sv_text_clean(word, clean, sizeof clean);
     for (const char *c = clean; *c != '\0'; c++) {
         if (*c == '<')
             sv_draft_add(text, "&lt;");

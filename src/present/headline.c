@@ -29,7 +29,7 @@ void sv_headline_make(const char *title, const char *note, sv_headline *ret_head
 {
     char clean[1024];
     sv_headline out = {.n_lines = 1};
-    sv_words_clean(title, clean, sizeof clean);
+    sv_text_clean(title, clean, sizeof clean);
     size_t split = sv_words_width(clean) > TITLE_COLUMNS ? wrap_at(clean) : 0;
     if (split > 0) {
         snprintf(out.lines[0], sizeof out.lines[0], "%.*s", (int)split, clean);

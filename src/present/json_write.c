@@ -53,9 +53,24 @@ void sv_json_put_text(sv_json *json, json_t *object, const char *key, const char
     sv_give(json->context, repaired);
 }
 
+/* Within a text: escapes stay, characters that would act on a terminal become escapes. */
+static const char *copy_character(sv_draft *text, const char *dump)
+{
+    const char *rest = dump;
+    const uint32_t code = sv_words_next(&rest);
+    if (code == '\\' && *rest != '\0')
+        rest++;
+    else if (sv_words_is_control(code)) {
+        sv_draft_add(text, "\\u%04x", (unsigned)code);
+        return rest;
+    }
+    sv_draft_add_bytes(text, dump, (size_t)(rest - dump));
+    return rest;
+}
+
 /* Jansson writes 17 digits; the shortest text of the same number is kinder to the eye. A number is
  * told from text by the quotes around texts. */
-static void shorten_numbers(sv_draft *text, const char *dump)
+static void tidy(sv_draft *text, const char *dump)
 {
     bool quoted = false;
     while (*dump != '\0') {
@@ -74,9 +89,8 @@ static void shorten_numbers(sv_draft *text, const char *dump)
                 continue;
             }
         }
-        if (*dump == '\\' && quoted && dump[1] != '\0') {
-            sv_draft_add_bytes(text, dump, 2);
-            dump += 2;
+        if (quoted && *dump != '"') {
+            dump = copy_character(text, dump);
             continue;
         }
         quoted ^= *dump == '"';
@@ -94,7 +108,7 @@ sv_status sv_json_finish(sv_json *json, json_t *document, char **ret_text)
     json_decref(document);
     if (dump == NULL)
         return SV_FAIL(json->context, SV_NO_MEMORY, "no memory for a JSON document");
-    shorten_numbers(&text, dump);
+    tidy(&text, dump);
     sv_draft_add_bytes(&text, "\n", 1);
     free(dump);
     return sv_draft_finish(&text, ret_text);

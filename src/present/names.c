@@ -148,7 +148,7 @@ static void describe_path(const char *path, char *text, size_t size)
     if (split_disorder(path, name, sizeof name, &key))
         for (size_t i = 0; i < sizeof disorder_keys / sizeof *disorder_keys; i++)
             if (strcmp(key, disorder_keys[i].key) == 0) {
-                sv_words_clean(name, clean, sizeof clean);
+                sv_text_clean(name, clean, sizeof clean);
                 fill_in(disorder_keys[i].words, clean, text, size);
                 return;
             }
@@ -157,14 +157,14 @@ static void describe_path(const char *path, char *text, size_t size)
             snprintf(text, size, "%s", known_paths[i].words);
             return;
         }
-    sv_words_clean(path, text, size);
+    sv_text_clean(path, text, size);
 }
 
 void sv_words_parameter(const sv_coordinate *coordinate, char *text, size_t size)
 {
     char words[300];
     if (coordinate->label != NULL) {
-        sv_words_clean(coordinate->label, text, size);
+        sv_text_clean(coordinate->label, text, size);
         return;
     }
     describe_path(coordinate->path, words, sizeof words);
@@ -175,7 +175,7 @@ void sv_words_parameter(const sv_coordinate *coordinate, char *text, size_t size
 void sv_words_column(const sv_coordinate *coordinate, char *text, size_t size)
 {
     char clean[400];
-    sv_words_clean(coordinate->path, clean, sizeof clean);
+    sv_text_clean(coordinate->path, clean, sizeof clean);
     snprintf(text, size, "%s%s%s%s", clean, coordinate->unit != NULL ? " [" : "",
              coordinate->unit != NULL ? coordinate->unit : "", coordinate->unit != NULL ? "]" : "");
 }

@@ -27,8 +27,8 @@ void sv_draft_drop(sv_draft *text);
 
 /* Next code point of a UTF-8 text; 0xFFFD for a byte that is none. Moves *text on. */
 uint32_t sv_words_next(const char **text);
-/* Copy in which control characters are written out (\n, \x1b) and bad bytes are U+FFFD. */
-void sv_words_clean(const char *text, char *clean, size_t size);
+/* Controls, line and paragraph separators, and marks that turn the direction of writing. */
+bool sv_words_is_control(uint32_t code);
 /* Copy with bad bytes as U+FFFD, control characters kept (JSON escapes them itself). */
 sv_status sv_words_repair(sv_context *context, const char *text, char **ret_text);
 /* Columns a text takes on a terminal. */

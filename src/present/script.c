@@ -56,7 +56,7 @@ void sv_script_literal(const char *text, char *literal, size_t size)
 {
     char clean[1024];
     size_t used = 0;
-    sv_words_clean(text, clean, sizeof clean);
+    sv_text_clean(text, clean, sizeof clean);
     literal[used++] = '\'';
     for (const char *c = clean; *c != '\0' && used + 4 < size; c++) {
         if (*c == '\'') { /* the typographic one needs no quoting; 5.4 misreads quotes at a start */

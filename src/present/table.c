@@ -185,7 +185,7 @@ static void print_wrapped(FILE *stream, const char *text)
 {
     char clean[1024];
     int used = 0;
-    sv_words_clean(text, clean, sizeof clean);
+    sv_text_clean(text, clean, sizeof clean);
     char *rest = NULL;
     for (char *word = strtok_r(clean, " ", &rest); word != NULL;
          word = strtok_r(NULL, " ", &rest)) {

@@ -59,8 +59,7 @@ static size_t encode(uint32_t code, char bytes[5])
     return n;
 }
 
-/* Controls, line and paragraph separators, and marks that turn the direction of writing. */
-static bool is_control(uint32_t code)
+bool sv_words_is_control(uint32_t code)
 {
     return code < 0x20 || (code >= 0x7F && code < 0xA0) || (code >= 0x200B && code <= 0x200F) ||
            (code >= 0x2028 && code <= 0x202E) || (code >= 0x2060 && code <= 0x206F) ||
@@ -69,7 +68,7 @@ static bool is_control(uint32_t code)
 
 static size_t spell(uint32_t code, char word[16])
 {
-    if (!is_control(code))
+    if (!sv_words_is_control(code))
         return encode(code, word);
     const char letter = code == '\n' ? 'n' : code == '\t' ? 't' : code == '\r' ? 'r' : '\0';
     if (letter != '\0')
@@ -77,7 +76,7 @@ static size_t spell(uint32_t code, char word[16])
     return (size_t)snprintf(word, 16, code < 0x100 ? "\\x%02x" : "\\u%04x", (unsigned)code);
 }
 
-void sv_words_clean(const char *text, char *clean, size_t size)
+void sv_text_clean(const char *text, char *clean, size_t size)
 {
     size_t used = 0;
     char word[16];
@@ -125,7 +124,7 @@ int sv_words_width(const char *text)
 void sv_words_fit(const char *text, int columns, char *fitted, size_t size)
 {
     char clean[1024], word[5];
-    sv_words_clean(text, clean, sizeof clean);
+    sv_text_clean(text, clean, sizeof clean);
     const bool cut = sv_words_width(clean) > columns;
     const int room = cut ? columns - 2 : columns;
     const char *rest = clean;

@@ -40,7 +40,7 @@ static int print_json(session *s, const forecast *f, const film_length *film)
     if (presets_json(s->context, s->sheet, &preset) == SV_OK)
         json_object_set_new(root, "preset", preset);
     json_object_set_new(root, "film", film_json(film));
-    json_dumpf(root, stdout, JSON_INDENT(1));
+    json_dumpf(root, stdout, JSON_INDENT(1) | JSON_ENSURE_ASCII);
     fputc('\n', stdout);
     json_decref(root);
     return 0;

@@ -131,7 +131,7 @@ static sv_status print_json(session *s, const merge *m, int64_t missing, const c
                             json_pack("{s:I, s:I, s:I, s:I}", "folders", (json_int_t)m->n_shards,
                                       "added", (json_int_t)m->added, "present",
                                       (json_int_t)m->present, "missing", (json_int_t)missing));
-        out = json_dumps(document, JSON_INDENT(1) | JSON_REAL_PRECISION(17));
+        out = json_dumps(document, JSON_INDENT(1) | JSON_REAL_PRECISION(17) | JSON_ENSURE_ASCII);
     }
     if (out != NULL)
         puts(out);

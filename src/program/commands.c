@@ -108,6 +108,8 @@ int run_help(sv_context *context, const options *o)
         print_help(&table[k], stdout);
         return 0;
     }
-    fprintf(stderr, "selvedge: error: no help on \"%s\"\n", o->files[0]);
+    char clean[200];
+    sv_text_clean(o->files[0], clean, sizeof clean);
+    fprintf(stderr, "selvedge: error: no help on \"%s\"\n", clean);
     return sv_status_exit_code(SV_USAGE);
 }

@@ -13,7 +13,9 @@ static void log_to_stderr(sv_log_level level, const char *message, void *user)
     const options *o = user;
     if (o->quiet || (level == SV_LOG_DETAIL && o->verbose == 0))
         return;
-    fprintf(stderr, "selvedge: %s%s\n", level == SV_LOG_WARNING ? "warning: " : "", message);
+    char clean[2000];
+    sv_text_clean(message, clean, sizeof clean);
+    fprintf(stderr, "selvedge: %s%s\n", level == SV_LOG_WARNING ? "warning: " : "", clean);
 }
 
 /* A full disk or a closed pipe shows only when the stream is closed. */

@@ -70,12 +70,13 @@ enum { N_ROWS = sizeof option_rows / sizeof option_rows[0] };
  */
 static int SV_PRINTF(3, 4) usage_error(const command *c, const char *hint, const char *format, ...)
 {
+    char message[1000], clean[2000];
     va_list args;
-    fprintf(stderr, "selvedge: error: ");
     va_start(args, format);
-    vfprintf(stderr, format, args);
+    vsnprintf(message, sizeof message, format, args);
     va_end(args);
-    fputc('\n', stderr);
+    sv_text_clean(message, clean, sizeof clean);
+    fprintf(stderr, "selvedge: error: %s\n", clean);
     if (hint != NULL)
         fprintf(stderr, "hint: did you mean %s?\n", hint);
     fprintf(stderr, "usage: selvedge %s %s; see selvedge %s%s--help\n", c ? c->name : "COMMAND",

@@ -9,9 +9,11 @@
 
 int fail_exit(const sv_context *context, sv_status status)
 {
-    const sv_error *error = &context->error;
-    if (error->message[0] != '\0')
-        fprintf(stderr, "selvedge: error: %s\n", error->message);
+    /* Names of files and words of a ledger may hold anything. */
+    char clean[2 * sizeof context->error.message];
+    sv_text_clean(context->error.message, clean, sizeof clean);
+    if (clean[0] != '\0')
+        fprintf(stderr, "selvedge: error: %s\n", clean);
     else if (status != SV_INVALID_INPUT && status != SV_REFUSED) /* those have been shown */
         fprintf(stderr, "selvedge: error: %s\n", sv_status_text(status));
     return sv_status_exit_code(status);

@@ -10,8 +10,7 @@ enum { SHOWN_BEFORE = 60, SHOWN_WIDTH = 150 };
 static const char *const severity_names[] = {"error", "warning", "note"};
 static const char *const severity_colours[] = {"\033[1;31m", "\033[1;35m", "\033[1;36m"};
 
-/* Control characters, and those that change the direction of writing. */
-static bool must_escape(uint32_t code)
+bool sv_must_escape(uint32_t code)
 {
     return code < 0x20 || (code >= 0x7F && code < 0xA0) || (code >= 0x200B && code <= 0x200F) ||
            (code >= 0x2028 && code <= 0x202E) || (code >= 0x2060 && code <= 0x206F) ||
@@ -27,7 +26,7 @@ static size_t show_character(const char *text, size_t size, char shown[16], int 
         *ret_width = snprintf(shown, 16, "\\x%02x", (unsigned char)text[0]);
     else if (code == '\t')
         *ret_width = snprintf(shown, 16, " ");
-    else if (must_escape(code))
+    else if (sv_must_escape(code))
         *ret_width = snprintf(shown, 16, code < 0x100 ? "\\x%02x" : "\\u%04x", code);
     else {
         *ret_width = 1;

@@ -42,24 +42,19 @@ void sv_emit_scalar(sv_text *text, const char *value)
         return;
     }
     sv_text_add(text, "\"");
-    for (const char *at = value; *at != '\0'; at++) {
-        unsigned char c = (unsigned char)*at;
-        if (c == '"' || c == '\\')
-            sv_text_add(text, "\\%c", c);
-        else if (c == '\n')
+    const char *end = value + strlen(value);
+    for (const char *at = value; at < end;) {
+        uint32_t code = 0;
+        const int length = sv_utf8_read(at, (size_t)(end - at), &code);
+        if (*at == '"' || *at == '\\')
+            sv_text_add(text, "\\%c", *at);
+        else if (*at == '\n')
             sv_text_add(text, "\\n");
-        else if (c < 0x20 || c == 0x7F)
-            sv_text_add(text, "\\x%02x", c);
-        else if (c == 0xC2 && (unsigned char)at[1] < 0xA0) /* U+0080 to U+009F */
-            sv_text_add(text, "\\x%02x", (unsigned char)*++at);
-        else if (c == 0xE2 && (unsigned char)at[1] == 0x80 && (at[2] & 0xFE) == 0xA8) {
-            sv_text_add(text, "\\u20%02x", 0x28 + (at[2] & 1)); /* line separators */
-            at += 2;
-        } else if (c == 0xEF && (unsigned char)at[1] == 0xBB && (unsigned char)at[2] == 0xBF) {
-            sv_text_add(text, "\\ufeff");
-            at += 2;
-        } else
-            sv_text_add_bytes(text, at, 1);
+        else if (length > 0 && sv_must_escape(code))
+            sv_text_add(text, code < 0x100 ? "\\x%02x" : "\\u%04x", code);
+        else
+            sv_text_add_bytes(text, at, length > 0 ? (size_t)length : 1);
+        at += length > 0 ? length : 1;
     }
     sv_text_add(text, "\"");
 }

@@ -70,6 +70,8 @@ typedef struct sv_mark_point {
 
 /* Length of the UTF-8 character at `text` and its code point; 0 when it is not well formed. */
 int sv_utf8_read(const char *text, size_t size, uint32_t *ret_code);
+/* Control characters, and those that change the direction of writing. */
+bool sv_must_escape(uint32_t code);
 /* Line and column (in characters) of a byte offset. */
 sv_mark_point sv_source_locate(const char *text, size_t size, size_t offset);
 /* The nth line (from 1) without its end; NULL when there is none. */

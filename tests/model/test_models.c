@@ -83,6 +83,22 @@ SV_TEST(faulty_models_are_refused)
     CHECK_STATUS(SV_INVALID_INPUT, sv_model_add_orbital(c, &m, "a", 0.5, 0, 0));
     CHECK_STATUS(SV_INVALID_INPUT, sv_model_add_orbital(c, &m, "any", 0.5, 0, 0));
     CHECK_STATUS(SV_INVALID_INPUT, sv_model_add_orbital(c, &m, "", 0.5, 0, 0));
+    /* These would be formulas, further columns or commands in the tables that name orbitals. */
+    static const char *const refused[] = {"=1+1",
+                                          "+a",
+                                          "-a",
+                                          "@a",
+                                          "a,b",
+                                          "a\"b",
+                                          "a\nb",
+                                          "\x1b[m",
+                                          "a\x7f",
+                                          " a",
+                                          "'a",
+                                          "a\xC2\x9B"
+                                          "31m"};
+    for (size_t i = 0; i < sizeof refused / sizeof *refused; i++)
+        CHECK_STATUS(SV_INVALID_INPUT, sv_model_add_orbital(c, &m, refused[i], 0.5, 0, 0));
     CHECK_OK(sv_model_add_orbital(c, &m, "b", 0.5, 0, 0));
     CHECK_OK(sv_model_add_hop(c, &m, 0, 1, 1, 0, 1.0));
     CHECK_STATUS(SV_INVALID_INPUT, sv_model_add_hop(c, &m, 0, 1, 1, 0, 1.0));
