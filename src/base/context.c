@@ -27,9 +27,14 @@ void sv_context_init(sv_context *context)
 
 sv_context sv_context_fork(const sv_context *context)
 {
-    sv_context fork = *context;
-    fork.error = (sv_error){.status = SV_OK};
-    return fork;
+    /* The error record is not even read: another thread may be writing into it. */
+    return (sv_context){.allocator = context->allocator,
+                        .log = context->log,
+                        .log_user = context->log_user,
+                        .progress = context->progress,
+                        .progress_user = context->progress_user,
+                        .cancel = context->cancel,
+                        .cancel_user = context->cancel_user};
 }
 
 void sv_context_take_error(sv_context *to, const sv_context *from)
