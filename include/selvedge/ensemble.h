@@ -120,11 +120,28 @@ typedef struct sv_stop_state {
 SV_API bool sv_stop_add(sv_stop_state *state, const sv_stop_rule *rule, sv_verdict verdict,
                         double value, double seconds);
 
-/** Where finished realisations go. Called from one thread at a time. */
+/** Where finished realisations go. Called from the thread that called sv_ensemble_run(). */
 typedef struct sv_sink {
     sv_status (*put)(sv_context *context, const sv_record *record, void *user);
     void *user;
+    /** Stores several at once, all or none; NULL: `put` is called for each. */
+    sv_status (*put_many)(sv_context *context, const sv_record *records, int n, void *user);
 } sv_sink;
+
+/**
+ * Several processes that compute one ensemble. Rank 0 calls sv_ensemble_run(), the others
+ * sv_team_help() with the same points. Both functions are called from one thread and do not wait.
+ */
+typedef struct sv_team {
+    int rank, size;
+    /** Sends a message of up to some 10 kB; the bytes may be reused at once. */
+    sv_status (*send)(sv_context *context, int to, const void *message, size_t bytes, void *user);
+    /** Takes a message that is waiting, in the order its sender sent them; *ret_bytes = 0 without
+     * one. */
+    sv_status (*receive)(sv_context *context, int *ret_from, void *message, size_t room,
+                         size_t *ret_bytes, void *user);
+    void *user;
+} sv_team;
 
 /** Settings of a run over all points. */
 typedef struct sv_ensemble_options {
@@ -134,6 +151,7 @@ typedef struct sv_ensemble_options {
     sv_stop_rule stop;
     sv_sink sink;
     double time_limit; /**< seconds, 0: none */
+    const sv_team *team; /**< other processes that help, or NULL */
     int32_t task, tasks; /**< compute only what belongs to task `task` (from 1) of `tasks`; 0 of 0:
                               everything */
 } sv_ensemble_options;
@@ -204,13 +222,23 @@ SV_API const char *sv_ensemble_text(const sv_ensemble *ensemble, int32_t number)
 
 /**
  * Computes what is missing; what is there (sv_ensemble_put(), sv_run_load()) is skipped.
- * The result does not depend on the number of threads or the order of completion.
+ * The result does not depend on the number of threads and processes or the order of completion.
+ * The calling thread hands out, stores and reports; `threads` others compute.
  * @return SV_INTERRUPTED on cancel or time limit (records so far are kept), SV_STORAGE when the
  *         sink refuses, or the status of a failed draw
  */
 SV_API SV_MUST_USE sv_status sv_ensemble_run(sv_context *context, const sv_case *points,
                                              const sv_ensemble_options *options,
                                              sv_ensemble *ensemble);
+
+/**
+ * Computes realisations for rank 0 of a team until it says that there are no more. The points must be
+ * those rank 0 has. Waiting costs a look for messages every millisecond.
+ * @return SV_OK when rank 0 ended it, whatever the reason; SV_INTERNAL for a message that is none,
+ *         or the status of the team's functions. A failure to compute is told to rank 0.
+ */
+SV_API SV_MUST_USE sv_status sv_team_help(sv_context *context, const sv_team *team,
+                                          const sv_case *points, int32_t n_points, int threads);
 
 /**
  * Number of leading realisations of a point that count: up to the first gap, cut by the stop

@@ -65,6 +65,9 @@ SV_API void sv_run_close(sv_context *context, sv_run *run);
 
 /** Appends one realisation, durable when it returns (sv_sink.put with user = sv_run). */
 SV_API SV_MUST_USE sv_status sv_run_put(sv_context *context, const sv_record *record, void *run);
+/** Appends several in one transaction: all durable when it returns, or none (sv_sink.put_many). */
+SV_API SV_MUST_USE sv_status sv_run_put_many(sv_context *context, const sv_record *records, int n,
+                                             void *run);
 /** Reads every realisation that fits the ensemble (point, realisation in range). */
 SV_API SV_MUST_USE sv_status sv_run_load(sv_context *context, sv_run *run, sv_ensemble *ensemble,
                                          sv_index *ret_loaded);

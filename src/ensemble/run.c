@@ -1,30 +1,35 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Realisations over worker threads. What is computed depends on the sheet alone; the threads only
- * decide when. */
+/* An ensemble over threads and processes. What is computed depends on the sheet alone; the workers
+ * only decide when. One thread hands out, stores and reports; others compute. */
 #include "ensemble_internal.h"
 
 #include <math.h>
-#include <pthread.h>
 #include <string.h>
 #include <time.h>
 
-/* Shared by the workers; everything below `mutex` is guarded by it. */
+enum { MOST_AT_ONCE = 256 }; /* results stored in one step */
+
+/* The desk where work is handed out and results come in: one thread's. */
 typedef struct crew {
     const sv_case *points;
     const sv_ensemble_options *options;
     sv_ensemble *ensemble;
-    sv_context *context; /* of the caller: progress, log, sink */
-    double deadline;     /* monotonic seconds, 0: none */
-    pthread_mutex_t mutex;
-    sv_stop_state *stops;   /* one per point */
-    int64_t *next;       /* next realisation to hand out, one per point */
-    int64_t done, total; /* for progress */
-    int32_t n_workers;   /* that have begun */
+    sv_context *context;
+    double deadline;      /* monotonic seconds, 0: none */
+    sv_stop_state *stops; /* one per point */
+    int64_t *next;        /* next realisation to hand out, one per point */
+    int64_t done, total;  /* for progress */
+    int64_t handed;       /* handed out, not back */
     double last_progress;
-    sv_status status; /* first failure */
+    pool *pool;
+    team_desk *team;
+    sv_record *fresh; /* results not stored yet, room for MOST_AT_ONCE */
+    int n_fresh;
+    bool sink_failed;
+    sv_status status; /* why nothing more is handed out */
 } crew;
 
-static double seconds_now(void)
+double sv_seconds_now(void)
 {
     struct timespec now;
     clock_gettime(CLOCK_MONOTONIC, &now);
@@ -45,7 +50,7 @@ static bool is_wanted(const crew *c, int32_t point, int64_t realisation)
 }
 
 /* Hands out the next missing realisation of the first point that still needs one. */
-static bool next_work(crew *c, int32_t *ret_point, int64_t *ret_realisation)
+static bool next_work(crew *c, pool_job *ret_job)
 {
     const sv_ensemble *e = c->ensemble;
     for (int32_t p = 0; p < e->n_points; p++) {
@@ -55,8 +60,7 @@ static bool next_work(crew *c, int32_t *ret_point, int64_t *ret_realisation)
             c->next[p]++;
         if (c->next[p] == e->realisations)
             continue;
-        *ret_point = p;
-        *ret_realisation = c->next[p]++;
+        *ret_job = (pool_job){p, c->next[p]++};
         return true;
     }
     return false;
@@ -73,95 +77,164 @@ static void settle(crew *c, int32_t point)
 
 static void report(crew *c, bool force)
 {
-    double now = seconds_now();
+    double now = sv_seconds_now();
     if (!force && now - c->last_progress < 0.1)
         return;
     c->last_progress = now;
     sv_progress(c->context, "realisations", c->done, c->total);
 }
 
-static void fail_crew(crew *c, const sv_context *worker, sv_status status)
+static void keep(crew *c, const sv_record *record)
 {
-    if (c->status != SV_OK)
-        return;
-    c->status = status;
-    sv_context_take_error(c->context, worker);
-}
-
-static void store(crew *c, sv_context *worker, const sv_record *record)
-{
-    sv_status status = SV_OK;
-    if (c->options->sink.put != NULL)
-        status = c->options->sink.put(worker, record, c->options->sink.user);
-    if (status == SV_OK)
-        status = sv_ensemble_put(worker, c->ensemble, record);
+    sv_status status = sv_ensemble_put(c->context, c->ensemble, record);
     if (status != SV_OK) {
-        fail_crew(c, worker, status);
+        c->status = status;
         return;
     }
     c->done++;
     settle(c, record->point);
+}
+
+/* Stores what came in: together where the sink can, so that a slow disk is waited for once. */
+static void store(crew *c)
+{
+    const sv_sink *sink = &c->options->sink;
+    const int n = c->n_fresh;
+    c->n_fresh = 0;
+    if (n == 0 || c->sink_failed)
+        return;
+    sv_status status = SV_OK;
+    if (sink->put_many != NULL)
+        status = sink->put_many(c->context, c->fresh, n, sink->user);
+    for (int k = 0; k < n && status == SV_OK; k++) {
+        if (sink->put_many == NULL && sink->put != NULL)
+            status = sink->put(c->context, &c->fresh[k], sink->user);
+        if (status == SV_OK)
+            keep(c, &c->fresh[k]);
+    }
+    if (status != SV_OK) {
+        c->status = status;
+        c->sink_failed = true;
+    }
     report(c, false);
 }
 
-static bool out_of_time(const crew *c)
+static void take_result(void *user, const sv_record *record)
 {
-    return c->deadline > 0.0 && seconds_now() >= c->deadline;
+    crew *c = user;
+    c->fresh[c->n_fresh++] = *record;
+    c->handed--;
+    if (c->n_fresh == MOST_AT_ONCE)
+        store(c);
 }
 
-static void *work(void *argument)
+/* The share of what is left that one of the processes may have waiting. */
+static int64_t fair_share(const crew *c)
 {
-    crew *c = argument;
-    sv_context worker = sv_context_fork(c->context);
-    pthread_mutex_lock(&c->mutex);
-    const int32_t thread = c->n_workers++;
+    const int64_t size = c->options->team != NULL ? c->options->team->size : 1;
+    const int64_t left = c->total - c->done - c->handed;
+    /* What is handed out ahead may turn out to lie beyond the end. */
+    if (c->options->stop.active)
+        return c->options->threads;
+    return left > 2 * size ? left / (2 * size) : 1;
+}
+
+/* For another process: `ahead` jobs are waiting there already. */
+static bool next_for_team(void *user, int64_t ahead, pool_job *ret_job)
+{
+    crew *c = user;
+    if (c->status != SV_OK || (ahead > 0 && ahead >= fair_share(c)) || !next_work(c, ret_job))
+        return false;
+    c->handed++;
+    return true;
+}
+
+static void fill_pool(crew *c)
+{
+    pool_job job;
+    for (int wants = pool_wants(c->pool, fair_share(c)); wants > 0 && next_work(c, &job); wants--) {
+        c->handed++;
+        pool_give(c->pool, job);
+    }
+}
+
+static void look_for_stop(crew *c)
+{
+    if (c->status != SV_OK)
+        return;
+    if (sv_cancelled(c->context) || (c->deadline > 0.0 && sv_seconds_now() >= c->deadline))
+        c->status = SV_INTERRUPTED;
+    else
+        c->status = pool_status(c->context, c->pool);
+}
+
+static void pump(crew *c)
+{
+    sv_record record;
+    while (pool_next(c->pool, &record))
+        take_result(c, &record);
+    if (c->team != NULL) {
+        sv_status status = desk_poll(c->context, c->team);
+        if (c->status == SV_OK)
+            c->status = status;
+    }
+    store(c);
+}
+
+/* How long nothing need be looked at: results of threads wake the desk, messages do not. */
+static double patience(const crew *c)
+{
+    double seconds = c->team != NULL ? 0.001 : 0.1;
+    if (c->deadline > 0.0 && c->status == SV_OK)
+        seconds = fmax(0.0, fmin(seconds, c->deadline - sv_seconds_now()));
+    return seconds;
+}
+
+static bool is_busy(const crew *c)
+{
+    return pool_busy(c->pool) > 0 || (c->team != NULL && desk_busy(c->team) > 0);
+}
+
+/* What is running ends, or is given up when the caller wants so; nobody works after that. */
+static void wind_up(crew *c)
+{
+    bool told = false;
     for (;;) {
-        int32_t point;
-        int64_t realisation;
-        if (c->status != SV_OK || !next_work(c, &point, &realisation))
-            break;
-        if (sv_cancelled(&worker) || out_of_time(c)) {
-            (void)SV_FAIL(&worker, SV_INTERRUPTED, "stopped with %lld of %lld realisations done",
-                          (long long)c->done, (long long)c->total);
-            fail_crew(c, &worker, SV_INTERRUPTED);
-            break;
+        bool abort_running = c->status != SV_OK && sv_cancelled(c->context);
+        pool_stop(c->pool, abort_running);
+        if (c->team != NULL && !told) {
+            sv_status status = desk_stop(c->context, c->team, abort_running);
+            if (c->status == SV_OK)
+                c->status = status;
+            told = true;
         }
-        pthread_mutex_unlock(&c->mutex);
-        sv_record record;
-        sv_status status = sv_realise(&worker, &c->points[point], realisation, NULL, NULL, &record);
-        pthread_mutex_lock(&c->mutex);
-        if (status != SV_OK) {
-            fail_crew(c, &worker, status);
+        pump(c);
+        if (pool_busy(c->pool) == 0 && (c->team == NULL || desk_empty(c->team)))
             break;
-        }
-        record.point = point;
-        record.thread = thread;
-        store(c, &worker, &record);
+        pool_wait(c->pool, patience(c));
     }
-    pthread_mutex_unlock(&c->mutex);
-    return NULL;
+    pump(c); /* what came out at the very end */
 }
 
-static sv_status start_threads(sv_context *context, crew *c)
+static sv_status work(crew *c)
 {
-    pthread_t *threads = NULL;
-    int started = 0;
-    sv_status status = sv_take(context, c->options->threads, sizeof *threads, &threads);
-    if (status != SV_OK)
-        return status;
-    /* The calling thread is one of the crew: with one thread no other is started. */
-    for (int k = 1; k < c->options->threads; k++) {
-        if (pthread_create(&threads[started], NULL, work, c) != 0)
-            break; /* fewer threads, same result */
-        started++;
+    for (;;) {
+        look_for_stop(c);
+        if (c->status != SV_OK)
+            break;
+        fill_pool(c);
+        pump(c);
+        if (c->status == SV_OK && !is_busy(c)) {
+            pump(c);
+            fill_pool(c);
+            if (!is_busy(c))
+                break;
+        }
+        pool_wait(c->pool, patience(c));
     }
-    work(c);
-    for (int k = 0; k < started; k++)
-        pthread_join(threads[k], NULL);
-    sv_give(context, threads);
-    /* Said at the end: others may have finished theirs after the first one noticed. */
+    wind_up(c);
     if (c->status == SV_INTERRUPTED)
-        return SV_FAIL(context, SV_INTERRUPTED, "stopped with %lld of %lld realisations done",
+        return SV_FAIL(c->context, SV_INTERRUPTED, "stopped with %lld of %lld realisations done",
                        (long long)c->done, (long long)c->total);
     return c->status;
 }
@@ -181,11 +254,8 @@ static void count_what_is_there(crew *c)
     }
 }
 
-sv_status sv_ensemble_run(sv_context *context, const sv_case *points,
-                          const sv_ensemble_options *options, sv_ensemble *ensemble)
+static sv_status check_options(sv_context *context, const sv_ensemble_options *options)
 {
-    crew c = {.points = points, .options = options, .ensemble = ensemble, .context = context};
-    sv_status status;
     if (options->tasks < 0 || options->task < 0 || options->task > options->tasks ||
         (options->tasks > 0 && (options->task == 0 || options->stop.active)))
         return SV_FAIL(context, SV_INVALID_INPUT, "task %ld of %ld%s", (long)options->task,
@@ -194,22 +264,38 @@ sv_status sv_ensemble_run(sv_context *context, const sv_case *points,
                                             : "");
     if (options->threads < 1)
         return SV_FAIL(context, SV_INVALID_INPUT, "%d threads", options->threads);
+    return SV_OK;
+}
+
+sv_status sv_ensemble_run(sv_context *context, const sv_case *points,
+                          const sv_ensemble_options *options, sv_ensemble *ensemble)
+{
+    crew c = {.points = points, .options = options, .ensemble = ensemble, .context = context};
+    sv_status status = check_options(context, options);
+    if (status != SV_OK)
+        return status;
     if ((status = sv_take(context, ensemble->n_points, sizeof *c.stops, &c.stops)) != SV_OK ||
-        (status = sv_take(context, ensemble->n_points, sizeof *c.next, &c.next)) != SV_OK)
+        (status = sv_take(context, ensemble->n_points, sizeof *c.next, &c.next)) != SV_OK ||
+        (status = sv_take(context, MOST_AT_ONCE, sizeof *c.fresh, &c.fresh)) != SV_OK)
         goto out;
-    if (pthread_mutex_init(&c.mutex, NULL) != 0) {
-        status = SV_FAIL(context, SV_INTERNAL, "no mutex");
+    if (options->team != NULL && options->team->size > 1)
+        status = desk_open(context, options->team, (desk_calls){next_for_team, take_result, &c},
+                           &c.team);
+    if (status == SV_OK)
+        status = pool_start(context, points, options->threads, &c.pool);
+    if (status != SV_OK)
         goto out;
-    }
     if (options->time_limit > 0.0)
-        c.deadline = seconds_now() + options->time_limit;
+        c.deadline = sv_seconds_now() + options->time_limit;
     count_what_is_there(&c);
     report(&c, true);
-    status = start_threads(context, &c);
+    status = work(&c);
     report(&c, true);
-    pthread_mutex_destroy(&c.mutex);
 out:
+    pool_end(context, c.pool);
+    desk_close(context, c.team);
     sv_give(context, c.stops);
     sv_give(context, c.next);
+    sv_give(context, c.fresh);
     return status;
 }

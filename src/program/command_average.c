@@ -2,6 +2,7 @@
 /* selvedge average: the ensemble and its sweep, into a run folder that can be continued. */
 #include "program_internal.h"
 
+#include <stdlib.h>
 #include <string.h>
 #include <time.h>
 #include <unistd.h>
@@ -13,23 +14,30 @@ static double seconds_now(void)
     return (double)now.tv_sec + 1e-9 * (double)now.tv_nsec;
 }
 
+static sv_status cases_make(session *s, sv_case **ret_cases)
+{
+    sv_status status = sv_take(s->context, s->n_points, sizeof **ret_cases, ret_cases);
+    for (int32_t k = 0; k < s->n_points && status == SV_OK; k++)
+        (*ret_cases)[k] = s->points[k].problem;
+    return status;
+}
+
 static sv_status compute(session *s, sv_run *run, sv_ensemble *ensemble)
 {
     sv_context *context = s->context;
     const options *o = s->options;
     sv_progress_bar bar;
     sv_case *cases = NULL;
-    sv_status status = sv_take(context, s->n_points, sizeof *cases, &cases);
+    sv_status status = cases_make(s, &cases);
     if (status != SV_OK)
         return status;
-    for (int32_t k = 0; k < s->n_points; k++)
-        cases[k] = s->points[k].problem;
     sv_ensemble_options work = {.size = sizeof work,
                                 .realisations = ensemble->realisations,
                                 .threads = s->threads,
                                 .stop = session_stop_rule(s),
-                                .sink = {sv_run_put, run},
+                                .sink = {sv_run_put, run, sv_run_put_many},
                                 .time_limit = o->time_limit,
+                                .team = launch_team(),
                                 .task = (int32_t)o->task,
                                 .tasks = (int32_t)o->tasks};
     sv_progress_bar_init(&bar, stderr, isatty(fileno(stderr)));
@@ -39,6 +47,12 @@ static sv_status compute(session *s, sv_run *run, sv_ensemble *ensemble)
     }
     status = sv_ensemble_run(context, cases, &work, ensemble);
     context->progress = NULL;
+    /* These may have struck before the other ranks could be told. */
+    if (status == SV_NO_MEMORY || status == SV_REFUSED || status == SV_INTERNAL) {
+        if (launch_team() != NULL)
+            fail_exit(context, status);
+        launch_abort(status);
+    }
     sv_progress_bar_end(&bar);
     sv_give(context, cases);
     return status;
@@ -89,6 +103,41 @@ static sv_status show_results(session *s, sv_run *run, const sv_ensemble *ensemb
     return status;
 }
 
+/* Do all ranks of a job compute the same thing? The first failure of any of them is everybody's. */
+static sv_status agree(session *s, sv_status status)
+{
+    char *plans = NULL, *text = NULL, digest[65] = "";
+    if (launch_team() == NULL)
+        return status;
+    if (status == SV_OK)
+        status = session_plan_text(s, &plans);
+    if (status == SV_OK && asprintf(&text, "%s\n%s\n%s\n%s\n%s", s->version, s->kernel,
+                                    s->options->command_line, s->base.identity, plans) < 0) {
+        text = NULL;
+        status = SV_FAIL(s->context, SV_NO_MEMORY, "out of memory");
+    }
+    if (text != NULL)
+        sv_digest(text, strlen(text), digest);
+    free(text);
+    sv_give(s->context, plans);
+    return launch_agree(s->context, status, digest);
+}
+
+/* What the other ranks do: rank 0 keeps the run. */
+static sv_status help_rank_0(session *s)
+{
+    sv_case *cases = NULL;
+    sv_status status = cases_make(s, &cases);
+    status = launch_agree(s->context, status, "");
+    if (status == SV_OK) {
+        status = sv_team_help(s->context, launch_team(), cases, s->n_points, s->threads);
+        if (status != SV_OK)
+            launch_abort(status);
+    }
+    sv_give(s->context, cases);
+    return status;
+}
+
 static sv_status average(session *s)
 {
     sv_context *context = s->context;
@@ -105,6 +154,7 @@ static sv_status average(session *s)
         status = sv_run_load(context, run, &ensemble, &loaded);
     if (status == SV_OK && loaded > 0)
         sv_log(context, SV_LOG_NOTE, "continuing: %lld realisations are there", (long long)loaded);
+    status = launch_agree(context, status, ""); /* the run is open: all may begin */
     if (status == SV_OK)
         status = computed = compute(s, run, &ensemble);
     sv_error error = context->error;
@@ -154,8 +204,12 @@ int run_average(sv_context *context, const options *o)
         status = check_task(&s);
         if (status == SV_OK)
             status = session_plan(&s, false);
+    }
+    if (!o->dry_run) {
+        status = agree(&s, status);
         if (status == SV_OK)
-            status = average(&s);
+            status =
+                launch_team() != NULL && launch_team()->rank > 0 ? help_rank_0(&s) : average(&s);
     }
     session_close(&s);
     return status == SV_OK ? 0 : fail_exit(context, status);

@@ -60,11 +60,11 @@ int run_info(sv_context *context, const options *o)
         printf("{\"selvedge\": 1, \"command\": \"info\", \"version\": \"%s\",\n"
                " \"blas\": \"%s\", \"blas_version\": \"%s\", \"cholmod_version\": \"%s\",\n"
                " \"blas_threading\": \"%s\", \"kernel\": \"%s\",\n"
-               " \"panel_kernel\": \"%s\", \"threads_safe\": %s, \"threads\": %d,\n"
+               " \"panel_kernel\": \"%s\", \"threads_safe\": %s, \"threads\": %d, \"mpi\": %s,\n"
                " \"engines\": [\"dense\", \"chebyshev\", \"rational\"]}\n",
                sv_version(), blas.kind, blas.version, blas.cholmod, blas.threading, blas.kernel,
                sv_panel_kernel_name(sv_panel_best_kernel()), blas.threads_safe ? "true" : "false",
-               cores_allowed());
+               cores_allowed(), launch_knows_mpi() ? "true" : "false");
         return 0;
     }
     printf("selvedge   %s\n", sv_version());
@@ -74,6 +74,7 @@ int run_info(sv_context *context, const options *o)
     printf("CHOLMOD    %s\n", blas.cholmod);
     printf("threads    %d\n", cores_allowed());
     printf("panels     %s\n", sv_panel_kernel_name(sv_panel_best_kernel()));
+    printf("MPI        %s\n", launch_knows_mpi() ? "yes" : "no (built without)");
     printf("engines    dense, chebyshev, rational\n");
     int count;
     const sv_marker *markers = sv_marker_table(&count);

@@ -37,8 +37,13 @@ int main(int argc, char **argv)
     mallopt(M_MMAP_THRESHOLD, 1 << 25); /* the most that is accepted */
     mallopt(M_TRIM_THRESHOLD, 1 << 30);
     signal(SIGXFSZ, SIG_IGN);
+    launch_begin(&argc, &argv);
     int code = options_parse(argc, argv, &o);
-    if (code < 0) {
+    const sv_team *team = launch_team();
+    /* The other ranks of a job take part in an ensemble; anything else is done by rank 0. */
+    const bool helps = team == NULL || team->rank == 0 ||
+                       (o.command != NULL && o.command->run == run_average && !o.dry_run);
+    if (code < 0 && helps) {
         sv_context_init(&context);
         context.log = log_to_stderr;
         context.log_user = &o;
@@ -47,5 +52,5 @@ int main(int argc, char **argv)
         code = o.command->run(&context, &o);
     }
     options_free(&o);
-    return close_output(code);
+    return launch_end(close_output(code));
 }

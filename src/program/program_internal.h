@@ -209,6 +209,22 @@ bool wants_progress(const options *o);
 void signals_install(void);
 bool signals_stop_requested(void *user);
 
+/* Processes of one job: launch_mpi.c, or launch_none.c for a build without MPI. */
+/* Joins the others when a launcher has started this process; only rank 0 has an output then. */
+void launch_begin(int *argc, char ***argv);
+/* The job, or NULL when this is the only process. */
+const sv_team *launch_team(void);
+/* Ranks on this machine, this one among them. */
+int launch_neighbours(void);
+/* All ranks compare: SV_OK when all are well and have the same digest, else what is wrong, with the
+ * message at rank 0. Every rank must call it. */
+sv_status launch_agree(sv_context *context, sv_status own, const char *digest);
+/* Ends the whole job at once: for what cannot be told to the others. */
+void launch_abort(sv_status status);
+bool launch_knows_mpi(void);
+/* The exit code of rank 0, at all ranks. */
+int launch_end(int code);
+
 int run_check(sv_context *context, const options *o);
 int run_draw(sv_context *context, const options *o);
 int run_map(sv_context *context, const options *o);

@@ -49,6 +49,9 @@ static int default_threads(void)
 {
     cpu_set_t set;
     int cores = sched_getaffinity(0, sizeof set, &set) == 0 ? CPU_COUNT(&set) : 1;
+    long share = sysconf(_SC_NPROCESSORS_ONLN) / launch_neighbours();
+    if (launch_neighbours() > 1 && share < cores)
+        cores = (int)share; /* ranks that are not bound share the machine */
     return cores < 1 ? 1 : cores;
 }
 
@@ -300,7 +303,8 @@ sv_status session_plan(session *s, bool site_map)
         if (status != SV_OK)
             return status;
         /* With fewer realisations than threads the cores work inside one realisation. */
-        p->problem.solve.threads = s->base.realisations < s->threads ? s->threads : 1;
+        const int64_t work = s->n_points * s->base.realisations;
+        p->problem.solve.threads = work < s->threads ? (int)(s->threads / work) : 1;
         if (strcmp(before, p->plan.reason) != 0)
             sv_log(s->context, SV_LOG_DETAIL, "point %d: engine %s", k, p->plan.reason);
         before = p->plan.reason;

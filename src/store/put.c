@@ -180,21 +180,29 @@ sv_status sv_record_insert(sv_context *context, sv_run *run, const sv_record *re
     return status;
 }
 
-sv_status sv_run_put(sv_context *context, const sv_record *record, void *user)
+sv_status sv_run_put_many(sv_context *context, const sv_record *records, int n, void *user)
 {
     sv_run *run = user;
     bool is_new;
-    sv_status status = check_record(context, run, record);
+    sv_status status = SV_OK;
+    for (int k = 0; k < n && status == SV_OK; k++)
+        status = check_record(context, run, &records[k]);
     if (status == SV_OK)
         status = sv_put_prepare(context, run);
     if (status == SV_OK)
         status = sv_ledger_execute(context, run, "BEGIN IMMEDIATE");
     if (status != SV_OK)
         return status;
-    status = sv_record_insert(context, run, record, &is_new);
+    for (int k = 0; k < n && status == SV_OK; k++)
+        status = sv_record_insert(context, run, &records[k], &is_new);
     if (status == SV_OK)
         status = sv_ledger_execute(context, run, "COMMIT");
     if (status != SV_OK && sqlite3_get_autocommit(run->ledger) == 0)
         sqlite3_exec(run->ledger, "ROLLBACK", NULL, NULL, NULL);
     return status;
+}
+
+sv_status sv_run_put(sv_context *context, const sv_record *record, void *user)
+{
+    return sv_run_put_many(context, record, 1, user);
 }

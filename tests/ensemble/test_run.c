@@ -241,7 +241,8 @@ SV_TEST(a_settled_point_computes_no_more)
     sv_stop_rule rule = {.active = true, .marker = 0, .standard_error = 0.01, .at_least = 5};
     CHECK_OK(sv_ensemble_init(test_context(), 1, 50, 2, &e));
     CHECK_OK(run(&p, 50, 1, rule, &out, &e));
-    CHECK_INT(out.calls, 20);
+    /* One that runs and one that waits may be beyond the end when the rule comes to hold. */
+    CHECK(out.calls >= 20 && out.calls <= 23);
     sv_ensemble_free(test_context(), &e);
     release(&p);
 }

@@ -174,3 +174,21 @@ SV_TEST(numbers_out_of_range_are_refused)
         sv_run_close(test_context(), run);
     }
 }
+
+SV_TEST(several_records_are_stored_together_or_not_at_all)
+{
+    sv_run *run = NULL;
+    const sv_run_identity identity = fixture_identity();
+    int64_t realisations = -1;
+    int32_t points = -1;
+    sv_record records[3] = {fixture_record(0, 0), fixture_record(0, 1), fixture_record(0, 1)};
+    CHECK_OK(sv_run_open(test_context(), test_scratch("many"), &identity, false, &run));
+    records[2].sites++; /* the second one again, with another answer */
+    CHECK_STATUS(SV_STORAGE, sv_run_put_many(test_context(), records, 3, run));
+    CHECK_OK(sv_run_extent(test_context(), run, &realisations, &points));
+    CHECK_INT(realisations, 0);
+    CHECK_OK(sv_run_put_many(test_context(), records, 2, run));
+    CHECK_OK(sv_run_extent(test_context(), run, &realisations, &points));
+    CHECK_INT(realisations, 2);
+    sv_run_close(test_context(), run);
+}
