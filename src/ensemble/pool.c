@@ -21,7 +21,7 @@ struct pool {
     pthread_mutex_t mutex; /* guards everything below */
     pthread_cond_t work, news;
     pthread_t *threads;
-    int n_threads;
+    int n_threads, n_begun;
     pool_job queue[QUEUE]; /* a ring */
     int first, waiting, running;
     bool closing, aborting;
@@ -37,7 +37,7 @@ static bool is_aborted(void *user)
     return __atomic_load_n(&p->aborting, __ATOMIC_RELAXED) || sv_cancelled(p->owner);
 }
 
-static void compute(pool *p, sv_context *worker, pool_job job)
+static void compute(pool *p, sv_context *worker, pool_job job, int32_t thread)
 {
     finished *f = NULL;
     sv_status status = sv_take(worker, 1, sizeof *f, &f);
@@ -55,6 +55,7 @@ static void compute(pool *p, sv_context *worker, pool_job job)
         return;
     }
     f->record.point = job.point;
+    f->record.thread = thread;
     p->seconds += f->record.seconds;
     p->count++;
     *p->last = f;
@@ -66,6 +67,7 @@ static void *work(void *argument)
     pool *p = argument;
     sv_context worker = sv_context_fork(&p->context);
     pthread_mutex_lock(&p->mutex);
+    const int32_t thread = p->n_begun++;
     for (;;) {
         while (p->waiting == 0 && !p->closing)
             pthread_cond_wait(&p->work, &p->mutex);
@@ -75,7 +77,7 @@ static void *work(void *argument)
         p->first = (p->first + 1) % QUEUE;
         p->waiting--;
         p->running++;
-        compute(p, &worker, job);
+        compute(p, &worker, job, thread);
         p->running--;
         pthread_cond_signal(&p->news);
     }

@@ -21,7 +21,7 @@ typedef enum word {
 } word;
 
 typedef struct head {
-    uint32_t protocol, layout; /* layout: size of an outcome */
+    uint32_t protocol, layout; /* layout: size of a record */
     uint32_t word, count;      /* count: jobs wanted, jobs sent, or a flag */
 } head;
 
@@ -33,19 +33,52 @@ typedef struct message {
             int32_t status;
             char text[1000];
         } failure;
-        unsigned char record[offsetof(sv_record, outcomes) + SV_MAX_MARKERS * sizeof(sv_outcome)];
+        unsigned char record[sizeof(sv_record)];
     } body;
 } message;
 
-static size_t record_size(const sv_record *record)
+/* A record on its way: as it lies in memory, without the outcomes it has not. */
+enum {
+    RECORD_HEAD = offsetof(sv_record, outcomes),
+    RECORD_TAIL = RECORD_HEAD + sizeof(((sv_record *)0)->outcomes)
+};
+
+static size_t record_size(int32_t n_outcomes)
 {
-    return offsetof(sv_record, outcomes) + (size_t)record->n_outcomes * sizeof record->outcomes[0];
+    return sizeof(sv_record) - (size_t)(SV_MAX_MARKERS - n_outcomes) * sizeof(sv_outcome);
+}
+
+static void pack_record(const sv_record *record, unsigned char *to)
+{
+    const size_t outcomes = (size_t)record->n_outcomes * sizeof(sv_outcome);
+    const unsigned char *from = (const unsigned char *)record;
+    memcpy(to, from, RECORD_HEAD + outcomes);
+    memcpy(to + RECORD_HEAD + outcomes, from + RECORD_TAIL, sizeof *record - RECORD_TAIL);
+}
+
+/* False when the bytes are no record. */
+static bool unpack_record(const unsigned char *from, size_t size, sv_record *ret_record)
+{
+    sv_record record;
+    unsigned char *to = (unsigned char *)&record;
+    memset(&record, 0, sizeof record);
+    if (size < RECORD_HEAD)
+        return false;
+    memcpy(to, from, RECORD_HEAD);
+    if (record.n_outcomes < 0 || record.n_outcomes > SV_MAX_MARKERS ||
+        record_size(record.n_outcomes) != size)
+        return false;
+    const size_t outcomes = (size_t)record.n_outcomes * sizeof(sv_outcome);
+    memcpy(to + RECORD_HEAD, from + RECORD_HEAD, outcomes);
+    memcpy(to + RECORD_TAIL, from + RECORD_HEAD + outcomes, sizeof record - RECORD_TAIL);
+    *ret_record = record;
+    return true;
 }
 
 static sv_status send(sv_context *context, const sv_team *team, int to, message *m, word what,
                       uint32_t count, size_t body)
 {
-    m->head = (head){PROTOCOL, (uint32_t)sizeof(sv_outcome), (uint32_t)what, count};
+    m->head = (head){PROTOCOL, (uint32_t)sizeof(sv_record), (uint32_t)what, count};
     return team->send(context, to, m, sizeof m->head + body, team->user);
 }
 
@@ -60,7 +93,7 @@ static sv_status receive(sv_context *context, const sv_team *team, message *m, i
     if (!*ret_got)
         return status;
     if (bytes < sizeof m->head || m->head.protocol != PROTOCOL ||
-        m->head.layout != sizeof(sv_outcome))
+        m->head.layout != sizeof(sv_record))
         return SV_FAIL(context, SV_INTERNAL, "rank %d speaks another language than rank %d",
                        *ret_from, team->rank);
     *ret_body = bytes - sizeof m->head;
@@ -123,11 +156,7 @@ static sv_status serve(sv_context *context, team_desk *d, int rank)
 static sv_status take_record(sv_context *context, team_desk *d, int rank, size_t body)
 {
     sv_record record;
-    memset(&record, 0, sizeof record);
-    if (body <= sizeof record)
-        memcpy(&record, d->message->body.record, body);
-    if (body < offsetof(sv_record, outcomes) || record.n_outcomes < 0 ||
-        record.n_outcomes > SV_MAX_MARKERS || record_size(&record) != body)
+    if (!unpack_record(d->message->body.record, body, &record))
         return SV_FAIL(context, SV_INTERNAL, "a result of %zu bytes from rank %d", body, rank);
     d->members[rank].busy--;
     d->calls.take(d->calls.user, &record);
@@ -239,8 +268,9 @@ static sv_status hand_in(sv_context *context, helper *h)
     sv_record record;
     sv_status status = SV_OK;
     while (status == SV_OK && pool_next(h->pool, &record)) {
-        const size_t size = record_size(&record);
-        memcpy(h->message->body.record, &record, size);
+        const size_t size = record_size(record.n_outcomes);
+        record.rank = h->team->rank;
+        pack_record(&record, h->message->body.record);
         status = send(context, h->team, 0, h->message, WORD_RESULT, 1, size);
     }
     return status;
