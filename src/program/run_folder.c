@@ -79,6 +79,7 @@ static sv_status resolved_text(session *s, const copies *c, char **ret_text)
 sv_status run_folder_open(session *s, sv_run **ret_run)
 {
     copies c = {0};
+    const sv_team *team = launch_team();
     char *resolved = NULL;
     const char *markers[SV_MAX_MARKERS];
     const sv_case *problem = &s->points[0].problem;
@@ -102,7 +103,7 @@ sv_status run_folder_open(session *s, sv_run **ret_run)
                                     .n_inputs = s->base.n_files,
                                     .command_line = s->options->command_line,
                                     .threads = s->threads,
-                                    .ranks = 1};
+                                    .ranks = team != NULL ? team->size : 1};
         status = sv_run_open(s->context, s->options->output, &identity, s->options->force, ret_run);
     }
     sv_give(s->context, resolved);
