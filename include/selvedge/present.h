@@ -258,6 +258,42 @@ SV_API SV_MUST_USE sv_status sv_figure_tolerance(sv_context *context, const char
                                                  const sv_tolerance_result *result,
                                                  sv_figure_files *ret_files);
 
+/* ------------------------------------------------------------------ plateau */
+
+/** k_B in eV/K: 1.380649e-23 J/K over 1.602176634e-19 J/eV, both exact in the SI since 2019. */
+#define SV_BOLTZMANN_EV (1.380649e-23 / 1.602176634e-19)
+
+/** A marker against the Fermi energy; energies in the unit of the model. All borrowed. */
+typedef struct sv_plateau_result {
+    const char *title, *marker;
+    double clean, within, confidence;
+    double energy_unit; /**< eV per unit of the model; 0: none known */
+    const double *energies, *mean, *standard_error; /**< n values; NaN where nothing is resolved */
+    int64_t n, realisations, unresolved;
+    const double *kelvin, *thermal, *thermal_error; /**< [temperature·n + energy]; NaN where the
+                                                         thermal window reaches beyond the energies */
+    const double *thermal_width; /**< of the window at each temperature; NaN: none */
+    int n_temperatures;
+    sv_plateau plateau; /**< at 0 K */
+    const double *density_energies, *density; /**< states per site and energy */
+    sv_index n_density;
+    double seconds;
+} sv_plateau_result;
+
+/** The document of contract `plateau`. Given back by sv_give(). */
+SV_API SV_MUST_USE sv_status sv_plateau_json(sv_context *context, const sv_plateau_result *result,
+                                             char **ret_text);
+/** One line per energy: mean and standard error at 0 K and at each temperature. */
+SV_API SV_MUST_USE sv_status sv_plateau_csv(sv_context *context, const sv_plateau_result *result,
+                                            char **ret_text);
+/** The window in plain words. */
+SV_API void sv_plateau_print(const sv_plateau_result *result, FILE *stream);
+/** Mean with its band and the thermal means, over the density of states. @return as
+ *  sv_figure_map() */
+SV_API SV_MUST_USE sv_status sv_figure_plateau(sv_context *context, const char *folder,
+                                               const char *name, const sv_plateau_result *result,
+                                               sv_figure_files *ret_files);
+
 /* ----------------------------------------------------------------- progress */
 
 /** Progress display of the terminal: bar, counts, time to go. */
