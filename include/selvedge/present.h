@@ -267,14 +267,15 @@ SV_API SV_MUST_USE sv_status sv_figure_tolerance(sv_context *context, const char
 typedef struct sv_plateau_result {
     const char *title, *marker;
     double clean, within, confidence;
-    double energy_unit; /**< eV per unit of the model; 0: none known */
+    double energy_unit;                             /**< eV per unit of the model; 0: none known */
     const double *energies, *mean, *standard_error; /**< n values; NaN where nothing is resolved */
     int64_t n, realisations, unresolved;
-    const double *kelvin, *thermal, *thermal_error; /**< [temperature·n + energy]; NaN where the
-                                                         thermal window reaches beyond the energies */
+    const double *kelvin, *thermal,
+        *thermal_error;          /**< [temperature·n + energy]; NaN where the
+                                      thermal window reaches beyond the energies */
     const double *thermal_width; /**< of the window at each temperature; NaN: none */
     int n_temperatures;
-    sv_plateau plateau; /**< at 0 K */
+    sv_plateau plateau;                       /**< at 0 K */
     const double *density_energies, *density; /**< states per site and energy */
     sv_index n_density;
     double seconds;

@@ -6,13 +6,14 @@
 #include "figure_internal.h"
 
 static const double width_cm = 8.6, left_cm = 1.5, right_cm = 0.35, foot_cm = 1.05;
-static const double panel_cm = 4.2, density_cm = 1.9, gap_cm = 0.2, top_air_cm = 0.15, key_cm = 0.45;
+static const double panel_cm = 4.2, density_cm = 1.9, gap_cm = 0.2, top_air_cm = 0.15,
+                    key_cm = 0.45;
 enum { MOST_CURVES = 6 };
 
 /* Okabe and Ito's colours with a dash of their own, coldest first. */
 static const struct {
     const char *colour, *dash;
-} styles[MOST_CURVES] = {{"#0072b2", "1"},     {"#d55e00", "(8,4)"},    {"#009e73", "(3,3)"},
+} styles[MOST_CURVES] = {{"#0072b2", "1"},         {"#d55e00", "(8,4)"},  {"#009e73", "(3,3)"},
                          {"#cc79a7", "(8,3,2,3)"}, {"#e69f00", "(14,4)"}, {"#56b4e9", "(2,2)"}};
 
 typedef struct plot {
@@ -91,10 +92,11 @@ static void add_curves(plot *f, double top)
                  f->low - air, f->high + air, label, 1 - right_cm / f->figure.width_cm,
                  (top + 0.1) / f->figure.height_cm, name);
     for (int t = 0; t < r->n_temperatures && t < MOST_CURVES; t++)
-        sv_draft_add(script,
-                     ", \\\n  '%s.dat' index 0 using 1:%d with lines lc rgb '%s' lw 0.9 dt %s title "
-                     "'%.4g K'",
-                     name, 5 + t, styles[t].colour, styles[t].dash, r->kelvin[t]);
+        sv_draft_add(
+            script,
+            ", \\\n  '%s.dat' index 0 using 1:%d with lines lc rgb '%s' lw 0.9 dt %s title "
+            "'%.4g K'",
+            name, 5 + t, styles[t].colour, styles[t].dash, r->kelvin[t]);
     sv_draft_add(script, "\n");
 }
 
@@ -104,7 +106,7 @@ static void add_density(plot *f, double top)
     add_panel(f, top, density_cm);
     sv_draft_add(script,
                  "unset object\nunset key\nset yrange [0:*]\nset format x '%%g'\nset ytics "
-                 "autofreq\nset ylabel 'states' offset 1.2,0\nset xlabel '%s' offset 0,0.5\n"
+                 "(0)\nset ylabel 'states' offset 1.2,0\nset xlabel '%s' offset 0,0.5\n"
                  "plot '%s.dat' index 1 using 1:2 with filledcurves y1=0 fc rgb '#9a9a9a' fs solid "
                  "0.6 noborder notitle\n",
                  f->result->energy_unit > 0.0 ? "Fermi energy [meV]"
@@ -139,8 +141,9 @@ static sv_status draw(plot *f, sv_figure_files *files)
     const sv_plateau_result *r = f->result;
     sv_headline headline;
     char note[300];
-    snprintf(note, sizeof note, "%lld realisations, band of 2 standard errors; grey: within %.3g of "
-                                "%.4g\ndensity of states of realisation 0",
+    snprintf(note, sizeof note,
+             "%lld realisations, band: 2 standard errors\ngrey: within %.3g of %.4g; states of "
+             "realisation 0",
              (long long)r->realisations, r->within, r->clean);
     sv_headline_make(r->title, note, &headline);
     f->figure.title = r->title;

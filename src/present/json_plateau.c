@@ -22,8 +22,7 @@ static json_t *make_window(sv_json *json, const sv_plateau_result *result)
                 isfinite(p->interval[0]) ? sv_json_pair(json, p->interval) : json_null());
     sv_json_put_real(json, object, "confidence", result->confidence);
     sv_json_put_real(json, object, "centre", p->centre);
-    sv_json_put(json, object, "edges",
-                p->exists ? sv_json_pair(json, p->edges) : json_null());
+    sv_json_put(json, object, "edges", p->exists ? sv_json_pair(json, p->edges) : json_null());
     for (int k = 0; k < 2; k++)
         sv_json_push(json, open, json_boolean(p->open[k]));
     sv_json_put(json, object, "beyond_range", open);
@@ -120,8 +119,9 @@ static void print_window(const sv_plateau_result *result, FILE *stream)
     print_energy(result, p->edges[0], from, sizeof from);
     print_energy(result, p->edges[1], to, sizeof to);
     if (!p->exists) {
-        fprintf(stream, "No plateau: at the Fermi energy of the sheet the mean is not within %.3g "
-                        "of %.4g.\n",
+        fprintf(stream,
+                "No plateau: at the Fermi energy of the sheet the mean is not within %.3g "
+                "of %.4g.\n",
                 result->within, result->clean);
         return;
     }
@@ -141,8 +141,7 @@ void sv_plateau_print(const sv_plateau_result *result, FILE *stream)
     if (title[0] != '\0')
         fprintf(stream, "%s\n", title);
     fprintf(stream, "%s against the Fermi energy: %lld energies, %lld realisations\n\n",
-            sv_words_marker(result->marker), (long long)result->n,
-            (long long)result->realisations);
+            sv_words_marker(result->marker), (long long)result->n, (long long)result->realisations);
     print_window(result, stream);
     for (int t = 0; t < result->n_temperatures; t++) {
         print_energy(result, result->thermal_width[t], width, sizeof width);
@@ -150,7 +149,8 @@ void sv_plateau_print(const sv_plateau_result *result, FILE *stream)
             fprintf(stream, "At %.4g K (kT = %.3g meV) the window is %s.\n", result->kelvin[t],
                     1e3 * SV_BOLTZMANN_EV * result->kelvin[t], width);
         else if (result->kelvin[t] > 0.0)
-            fprintf(stream, "At %.4g K there is no window, or it is wider than the energies show.\n",
+            fprintf(stream,
+                    "At %.4g K there is no window, or it is wider than the energies show.\n",
                     result->kelvin[t]);
     }
     if (result->unresolved > 0)

@@ -86,6 +86,8 @@ static sv_status show_results(session *s, sv_run *run, const sv_ensemble *ensemb
     sv_result result = {0};
     sv_stop_rule stop = session_stop_rule(s);
     char *json = NULL;
+    if (s->conclude != NULL)
+        return s->conclude(s, run, ensemble, seconds);
     sv_status status = result_make(s, ensemble, &stop, &result);
     result.seconds = seconds;
     if (status == SV_OK)
@@ -187,7 +189,12 @@ static sv_status check_task(session *s)
 
 int run_average(sv_context *context, const options *o)
 {
-    session s = {0};
+    return average_and_conclude(context, o, NULL);
+}
+
+int average_and_conclude(sv_context *context, const options *o, ensemble_conclusion *conclude)
+{
+    session s = {.conclude = conclude};
     forecast f;
     if (o->output == NULL && !o->dry_run) {
         fprintf(stderr, "selvedge: error: average needs a run folder\nhint: give -o RUN\n");

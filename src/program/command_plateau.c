@@ -15,15 +15,16 @@ typedef struct numbers {
 
 static void numbers_free(sv_context *context, numbers *d)
 {
-    double *all[] = {d->energies, d->values,        d->mean,   d->error,            d->weights,
-                     d->thermal,  d->thermal_error, d->widths, d->density_energies, d->density};
+    double *all[] = {d->energies,         d->values,  d->mean,          d->error,
+                     d->weights,          d->thermal, d->thermal_error, d->widths,
+                     d->density_energies, d->density};
     for (size_t k = 0; k < sizeof all / sizeof all[0]; k++)
         sv_give(context, all[k]);
     *d = (numbers){0};
 }
 
-static sv_status numbers_take(sv_context *context, int64_t n, int64_t realisations, int temperatures,
-                              numbers *d)
+static sv_status numbers_take(sv_context *context, int64_t n, int64_t realisations,
+                              int temperatures, numbers *d)
 {
     struct {
         int64_t size;
@@ -119,8 +120,8 @@ static sv_status width_of(session *s, const sv_plateau_input *in, const double *
     one.values = curve;
     one.realisations = 1;
     sv_status status = sv_plateau_measure(s->context, &one, &plateau);
-    *ret_width = plateau.exists && !plateau.open[0] && !plateau.open[1] ? plateau.width
-                                                                        : (double)NAN;
+    *ret_width =
+        plateau.exists && !plateau.open[0] && !plateau.open[1] ? plateau.width : (double)NAN;
     return status;
 }
 
@@ -274,14 +275,16 @@ static sv_status make_sweep(session *s, char *sweep, size_t size)
                              SV_FAIL(s->context, SV_INVALID_INPUT,
                                      "the sheet has no block `plateau` with the energies wanted"));
     if (s->base.n_axes > 0)
-        return session_blame(s, "sweep",
-                             SV_FAIL(s->context, SV_INVALID_INPUT,
-                                     "plateau sweeps the Fermi energy itself: leave out the sweep"));
+        return session_blame(
+            s, "sweep",
+            SV_FAIL(s->context, SV_INVALID_INPUT,
+                    "plateau sweeps the Fermi energy itself: leave out the sweep"));
     if (s->base.occupation.by != SV_BY_ENERGY)
-        return session_blame(s, "occupation",
-                             SV_FAIL(s->context, SV_INVALID_INPUT,
-                                     "plateau varies the Fermi energy: give occupation.fermi_energy, "
-                                     "inside the plateau looked for"));
+        return session_blame(
+            s, "occupation",
+            SV_FAIL(s->context, SV_INVALID_INPUT,
+                    "plateau varies the Fermi energy: give occupation.fermi_energy, "
+                    "inside the plateau looked for"));
     snprintf(sweep, size,
              "sweep=[{parameter: occupation.fermi_energy, from: %.17g, to: %.17g, steps: %lld}]",
              asked->energies[0], asked->energies[1], (long long)asked->points);

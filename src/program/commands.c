@@ -24,6 +24,8 @@ static const command commands[] = {
      "jqvCJP", 2, INT_MAX, run_merge},
     {"tolerance", "SHEET -o RUN", "the largest disorder that still meets a stated criterion",
      SHEET_OPTIONS "ojPFT", 1, 1, run_tolerance},
+    {"plateau", "SHEET -o RUN", "a marker against the Fermi energy and temperature",
+     SHEET_OPTIONS "ojPFT", 1, 1, run_plateau},
     {"report", "RUN", "figures of a finished or unfinished run", "okjqvCJP", 1, 1, run_report},
     {"export", "SHEET", "writes the Hamiltonian and the sites of one realisation",
      SHEET_OPTIONS "kHLF", 1, 1, run_export},

@@ -59,6 +59,11 @@ typedef struct point {
     sv_plan plan; /* of its engine, in words */
 } point;
 
+struct session;
+/* Makes of a computed ensemble what a command is for, in place of the summaries. */
+typedef sv_status ensemble_conclusion(struct session *s, sv_run *run, const sv_ensemble *ensemble,
+                                      double seconds);
+
 /* A sheet opened for work. */
 typedef struct session {
     sv_context *context;
@@ -75,8 +80,9 @@ typedef struct session {
     const char *plan_lines; /* borrowed: the engines as a run notes them, when not planned here */
     bool inside_run;        /* the sheet is the one in a run folder */
     bool add_map_marker;    /* the map command always computes the local Chern marker */
-    bool open_ended;        /* its points are chosen as the work goes on */
-    bool levels_only;       /* the spectrum command computes no marker: other needs of memory */
+    ensemble_conclusion *conclude; /* or NULL: summaries of all points */
+    bool open_ended;               /* its points are chosen as the work goes on */
+    bool levels_only; /* the spectrum command computes no marker: other needs of memory */
 } session;
 
 /* Reads the sheet and builds all points of its sweep (`with_sweep`) or the sheet as written. */
@@ -239,6 +245,9 @@ void tolerance_free(sv_context *context, sv_tolerance_result *result);
 void tolerance_trend(sv_tolerance_result *result);
 
 int run_tolerance(sv_context *context, const options *o);
+int run_plateau(sv_context *context, const options *o);
+/* As run_average() up to the results. */
+int average_and_conclude(sv_context *context, const options *o, ensemble_conclusion *conclude);
 int run_report(sv_context *context, const options *o);
 int run_export(sv_context *context, const options *o);
 int run_info(sv_context *context, const options *o);
