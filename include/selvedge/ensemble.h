@@ -34,6 +34,7 @@ typedef struct sv_case {
                                     share none */
     sv_marker_request markers[SV_MAX_MARKERS];
     int n_markers;
+    bool site_maps; /**< records carry the local Chern marker of every site */
 } sv_case;
 
 /** One realisation of one point: what the ledger keeps. */
@@ -45,6 +46,9 @@ typedef struct sv_record {
     int64_t vacancies;
     int32_t n_outcomes;
     sv_outcome outcomes[SV_MAX_MARKERS]; /**< in the order of sv_case.markers */
+    struct sv_site_record *maps; /**< for the maps of the ensemble, or NULL. Taken from the context
+                                       by sv_realise(), given back by its caller; not kept in an
+                                       sv_ensemble */
     /* What it cost and who computed it: no two runs agree on these. */
     double seconds;           /**< wall clock */
     double processor_seconds; /**< of its thread; of the process where solve.threads > 1 */
@@ -59,6 +63,8 @@ typedef struct sv_record {
  * @param site_values  n values of the local Chern marker or NULL
  * @param ret_sample   if not NULL, receives the sample of the open flake (give back with
  *                     sv_sample_free())
+ * @param ret_record   its `maps` (sv_site_record_free()) are there only for a point with site_maps,
+ *                     and only when ret_site_values and ret_sample are NULL
  * @return SV_NO_MEMORY, SV_INTERRUPTED, SV_INVALID_INPUT, SV_INTERNAL
  */
 SV_API SV_MUST_USE sv_status sv_realise(sv_context *context, const sv_case *point,
@@ -247,6 +253,64 @@ SV_API SV_MUST_USE sv_status sv_team_help(sv_context *context, const sv_team *te
 SV_API int64_t sv_ensemble_counted(const sv_ensemble *ensemble, int32_t point,
                                    const sv_stop_rule *stop, bool *ret_settled);
 
+/* ------------------------------------------ the marker of each site over the ensemble */
+
+/** Fixed point of the maps: a marker m is the integer nearest to m·2^SV_SITE_BITS. */
+enum { SV_SITE_BITS = 36, SV_SITE_FAN = 64, SV_SITE_LEVELS = 6, SV_MOST_ENTRIES = 400000 };
+/** In place of the value of an entry that is vacant, or whose value a map would leave blank. */
+#define SV_SITE_ABSENT INT64_MIN
+
+/**
+ * What one realisation adds to the maps of its point. Entries: the sites of the pristine flake in
+ * their order, then its cells when a cell has several sites; adatoms count in cells only. The value of a cell is the sum over the
+ * sites it has left; none when all are gone or one of them has no value.
+ */
+typedef struct sv_site_record {
+    sv_index n;       /**< entries; 0: the marker of this realisation is not resolved */
+    int64_t *values;  /**< fixed point, magnitude below 4096·2^36, or SV_SITE_ABSENT */
+    int64_t counted;  /**< leading realisations of the point known to count when this one came in:
+                           the store may sum over them for good. 0 is always right */
+} sv_site_record;
+
+/** Entries of a flake: sites, and cells when they differ from sites. */
+SV_API sv_index sv_site_entries(const sv_flake *flake);
+/** Number of entries before the first cell, or −1 when cells have no entries of their own. */
+SV_API sv_index sv_site_first_cell(const sv_flake *flake);
+/**
+ * Packs the marker of each site of a sample.
+ * @param values  sample->n numbers; NaN: no value
+ */
+SV_API SV_MUST_USE sv_status sv_site_record_make(sv_context *context, const sv_sample *sample,
+                                                 const double *values, sv_site_record **ret_record);
+SV_API void sv_site_record_free(sv_context *context, sv_site_record *record);
+
+__extension__ typedef __int128 sv_wide; /**< as GCC and Clang have it on 64-bit machines */
+
+/**
+ * Exact sums over realisations. Integer addition is associative, so the order of realisations, the
+ * number of workers and the way partial sums are joined leave no trace in any bit. Room for 2^31
+ * realisations.
+ */
+typedef struct sv_site_sum {
+    sv_index n;           /**< entries */
+    int64_t realisations; /**< added, those without values included */
+    int64_t *count;       /**< per entry: realisations in which it has a value */
+    sv_wide *sum;         /**< of the fixed-point values */
+    sv_wide *square;      /**< of their squares */
+} sv_site_sum;
+
+/** An empty sum over n entries. */
+SV_API SV_MUST_USE sv_status sv_site_sum_init(sv_context *context, sv_index n,
+                                              sv_site_sum *ret_sum);
+/** Gives it back; safe on a zeroed sum and twice in a row. */
+SV_API void sv_site_sum_free(sv_context *context, sv_site_sum *sum);
+/** Adds a realisation. @return SV_INVALID_INPUT when it has another number of entries */
+SV_API SV_MUST_USE sv_status sv_site_sum_add(sv_context *context, sv_site_sum *sum,
+                                             const sv_site_record *record);
+/** sum += other. @return SV_INVALID_INPUT when the numbers of entries differ */
+SV_API SV_MUST_USE sv_status sv_site_sum_join(sv_context *context, sv_site_sum *sum,
+                                              const sv_site_sum *other);
+
 /* -------------------------------------------------------------- statistics */
 
 /** Moments of a series in its order (compensated sums about the mean). */
@@ -259,6 +323,9 @@ typedef struct sv_moments {
     double kurtosis; /**< excess, k₄/k₂²; NaN for n < 4 and constant series */
 } sv_moments;
 SV_API sv_moments sv_moments_of(const double *values, int64_t n);
+/** Moments of an entry of the maps over the realisations in which it has a value; exact up to the
+ * rounding of each value to 2^−37. NaN mean for n = 0. */
+SV_API sv_moments sv_site_moments(const sv_site_sum *sum, sv_index entry);
 /** Lag-1 autocorrelation Σ(x_i−m)(x_{i+1}−m)/Σ(x_i−m)²; NaN for a constant series. */
 SV_API double sv_autocorrelation(const double *values, int64_t n);
 /** Student interval of a mean. @return SV_UNDEFINED for n < 2 */

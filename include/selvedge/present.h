@@ -25,6 +25,17 @@ typedef struct sv_coordinate {
     double second;
 } sv_coordinate;
 
+/** What the maps of one point come to. Deviations are of the marker of a cell. */
+typedef struct sv_site_summary {
+    bool exists;          /**< false: the sheet asks for no maps, or none are there */
+    int64_t realisations; /**< in the sums */
+    double deviation;     /**< root mean square over the cells with two values or more; NaN: none */
+    double largest;       /**< NaN: none */
+    int64_t present;      /**< realisations in which that cell has a value */
+    int32_t cell[2];
+    double at[2]; /**< its centre, lattice constants */
+} sv_site_summary;
+
 /** One point with its summaries, in sweep order. */
 typedef struct sv_point_result {
     sv_coordinate coordinates[SV_MAX_AXES];
@@ -33,6 +44,7 @@ typedef struct sv_point_result {
     double mean_sites, mean_vacancies; /**< over the realisations counted; NaN without any */
     sv_summary summaries[SV_MAX_MARKERS];
     int n_summaries;
+    sv_site_summary sites;
 } sv_point_result;
 
 /** All a table, a JSON document or a sweep figure needs. */
@@ -106,6 +118,30 @@ SV_API SV_MUST_USE sv_status sv_survey_csv(sv_context *context, const sv_survey 
 SV_API SV_MUST_USE sv_status sv_flow_csv(sv_context *context, const sv_flow_trace *trace,
                                          char **ret_text);
 
+/** The local Chern marker of each site over the ensemble of one point. All borrowed. */
+typedef struct sv_site_map {
+    const char *title;
+    const char *note; /**< shown under the title of figures, or NULL */
+    const sv_flake *flake;
+    const sv_case *point;   /**< for the window */
+    const sv_site_sum *sum; /**< sv_site_entries(flake) entries */
+    double lattice_constant; /**< nm, 0: none */
+} sv_site_map;
+/** Moments of the marker of a cell: the sum over the sites it has left in a realisation. */
+SV_API sv_moments sv_site_map_cell(const sv_site_map *map, sv_index cell);
+/** The largest deviation and where; the first of equal ones. */
+SV_API sv_site_summary sv_site_map_summary(const sv_site_map *map);
+/**
+ * One row per site of the pristine flake:
+ * point,site,cell_i,cell_j,orbital,x,y,mean,deviation,standard_error,present and the same four of its
+ * cell, cell_mean … cell_present. Positions in lattice constants; present: realisations in which it has
+ * a value; empty: does not exist.
+ * @param head  begin with the names of the columns
+ * @param[out] ret_text taken from the context
+ */
+SV_API SV_MUST_USE sv_status sv_site_map_csv(sv_context *context, const sv_site_map *map,
+                                             int32_t point, bool head, char **ret_text);
+
 /** The spectrum of one realisation. */
 typedef struct sv_spectrum_result {
     const char *title;
@@ -129,6 +165,10 @@ SV_API void sv_spectrum_print(const sv_spectrum_result *result, bool colour, FIL
  * @param[out] ret_rgb sRGB, 0 … 255
  */
 SV_API void sv_palette_colour(double position, uint8_t ret_rgb[3]);
+/** Colour of a number that has no sign, such as a deviation: lightness falls in even steps from the
+ * neutral centre of sv_palette_colour(), in hues that the marker maps do not have.
+ * @param position 0 … 1, clipped */
+SV_API void sv_palette_amount(double position, uint8_t ret_rgb[3]);
 
 /** Paths of the files of one figure; empty when not made. */
 typedef struct sv_figure_files {
@@ -179,6 +219,10 @@ SV_API SV_MUST_USE sv_status sv_figure_spectrum(sv_context *context, const char 
 SV_API SV_MUST_USE sv_status sv_figure_probes(sv_context *context, const char *folder,
                                               const char *name, const sv_map_result *map,
                                               sv_figure_files *ret_files);
+/** Mean, or deviation, of the marker of each cell over an ensemble, as sv_figure_map(). */
+SV_API SV_MUST_USE sv_status sv_figure_site_map(sv_context *context, const char *folder,
+                                                const char *name, const sv_site_map *map,
+                                                bool deviation, sv_figure_files *ret_files);
 /** Index and gap along a line of probe points (with the certified bound between them), or against
  *  κ (`kappas`), as two panels. */
 SV_API SV_MUST_USE sv_status sv_figure_profile(sv_context *context, const char *folder,

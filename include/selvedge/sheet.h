@@ -154,6 +154,7 @@ typedef struct sv_setup {
     double stop_seconds;        /**< of computing, over all points; 0: no limit */
     int stop_marker;            /**< number in `markers` */
     int64_t stop_at_least;
+    bool site_maps; /**< the marker of every site over the ensemble */
     sv_sweep_axis axes[2];
     int n_axes;
     bool has_question;

@@ -63,7 +63,11 @@ SV_API SV_MUST_USE sv_status sv_run_open_read(sv_context *context, const char *f
 /** Closes; records the event `end`. NULL is allowed. */
 SV_API void sv_run_close(sv_context *context, sv_run *run);
 
-/** Appends one realisation, durable when it returns (sv_sink.put with user = sv_run). */
+/**
+ * Appends one realisation, durable when it returns (sv_sink.put with user = sv_run). With
+ * record->maps its values go into the sums of the maps in the same transaction: the sums hold
+ * exactly the realisations the ledger has, after any interruption.
+ */
 SV_API SV_MUST_USE sv_status sv_run_put(sv_context *context, const sv_record *record, void *run);
 /** Appends several in one transaction: all durable when it returns, or none (sv_sink.put_many). */
 SV_API SV_MUST_USE sv_status sv_run_put_many(sv_context *context, const sv_record *records, int n,
@@ -74,6 +78,24 @@ SV_API SV_MUST_USE sv_status sv_run_load(sv_context *context, sv_run *run, sv_en
 /** Largest realisation number present plus one, over all points (0: none). */
 SV_API SV_MUST_USE sv_status sv_run_extent(sv_context *context, sv_run *run,
                                            int64_t *ret_realisations, int32_t *ret_points);
+/**
+ * The maps of a point: exact sums over its realisations 0 … counted−1. Kept as one row per
+ * realisation (8 bytes an entry) until 64 of them that follow each other count for good; then one sum (36
+ * bytes an entry) replaces them, 64 such sums become one, and so on: up to 10^6 realisations at most
+ * about 7.5 kB an entry.
+ * @param entries  sv_site_entries() of the flake
+ * @param[out] ret_sum  its `realisations` may be below `counted` by up to a block, when a stop rule has
+ *                      been tightened since those were joined
+ * @return SV_STORAGE when a row is damaged or of another flake
+ */
+SV_API SV_MUST_USE sv_status sv_run_load_sites(sv_context *context, sv_run *run, int32_t point,
+                                               int64_t counted, sv_index entries,
+                                               sv_site_sum *ret_sum);
+/** Joins what counts for good, as sv_run_put() does by itself in an uninterrupted run. */
+SV_API SV_MUST_USE sv_status sv_run_fold_sites(sv_context *context, sv_run *run, int32_t point,
+                                               int64_t counted);
+/** Do the sums of the maps hold as many realisations as there are? @return SV_STORAGE if not */
+SV_API SV_MUST_USE sv_status sv_run_check_sites(sv_context *context, sv_run *run);
 /**
  * Records an event with a note. The store itself records `start`, `continue`, `end`, `identity
  * change`, and `lost` for a writing that left no end (SIGKILL, power); the caller what else happens,

@@ -4,6 +4,8 @@
 
 #include "selvedge/ensemble.h"
 
+__extension__ typedef unsigned __int128 sv_wide_bits; /* sums modulo 2^128 */
+
 /* Takes in the realisations that follow without a gap, up to the one where the rule holds. */
 void sv_stop_advance(sv_stop_state *state, const sv_ensemble *ensemble, int32_t point,
                      const sv_stop_rule *rule);

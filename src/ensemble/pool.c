@@ -225,7 +225,8 @@ void pool_end(sv_context *context, pool *p)
     for (int k = 0; k < p->n_threads; k++)
         pthread_join(p->threads[k], NULL);
     while (p->results != NULL)
-        (void)pool_next(p, &record);
+        if (pool_next(p, &record))
+            sv_site_record_free(context, record.maps);
     pthread_mutex_destroy(&p->mutex);
     pthread_cond_destroy(&p->work);
     pthread_cond_destroy(&p->news);

@@ -140,14 +140,16 @@ static sv_status markers_on(sv_context *context, const sv_case *point, const sv_
     return status;
 }
 
+/* `strict`: a sample that cannot be drawn is a failure, not an unresolved realisation. */
 static sv_status open_part(sv_context *context, const sv_case *point, sv_index realisation,
-                           double **ret_site_values, sv_sample *ret_sample, sv_record *record)
+                           bool strict, double **ret_site_values, sv_sample *ret_sample,
+                           sv_record *record)
 {
     sv_sample sample = {0};
     double *site_values = NULL;
     sv_status status = sv_sample_draw(context, point->open_flake, point->disorder,
                                       point->n_disorder, point->seed, realisation, &sample);
-    if (status == SV_UNDEFINED && ret_sample == NULL) {
+    if (status == SV_UNDEFINED && !strict) {
         mark_failed(context, point, SV_OPEN_COPY, record);
         return SV_OK;
     }
@@ -197,6 +199,26 @@ static sv_status closed_part(sv_context *context, const sv_case *point, sv_index
     return status;
 }
 
+/* The row of the local Chern marker when it has a value, else NULL. */
+static const sv_outcome *resolved_chern(const sv_case *point, const sv_record *record)
+{
+    const int marker = sv_marker_find("local_chern");
+    for (int k = 0; k < point->n_markers; k++)
+        if (point->markers[k].marker == marker && record->outcomes[k].verdict == SV_RESOLVED)
+            return &record->outcomes[k];
+    return NULL;
+}
+
+/* What the maps of the ensemble keep; a realisation without the marker counts as one without
+ * values. */
+static sv_status keep_sites(sv_context *context, const sv_case *point, const sv_sample *sample,
+                            const double *values, sv_record *record)
+{
+    if (sample->n > 0 && resolved_chern(point, record) != NULL)
+        return sv_site_record_make(context, sample, values, &record->maps);
+    return sv_take(context, 1, sizeof *record->maps, &record->maps);
+}
+
 sv_status sv_realise(sv_context *context, const sv_case *point, sv_index realisation,
                      double **ret_site_values, sv_sample *ret_sample, sv_record *ret_record)
 {
@@ -206,15 +228,22 @@ sv_status sv_realise(sv_context *context, const sv_case *point, sv_index realisa
     double *site_values = NULL;
     sv_sample sample = {0};
     sv_status status = SV_OK;
+    const bool maps = point->site_maps && ret_site_values == NULL && ret_sample == NULL;
     bool want_open = ret_site_values != NULL || ret_sample != NULL || any_on(point, SV_OPEN_COPY);
     if (want_open)
-        status = open_part(context, point, drawn, ret_site_values ? &site_values : NULL,
-                           ret_sample ? &sample : NULL, &record);
+        status = open_part(context, point, drawn, ret_sample != NULL,
+                           maps || ret_site_values ? &site_values : NULL,
+                           maps || ret_sample ? &sample : NULL, &record);
+    if (status == SV_OK && maps)
+        status = keep_sites(context, point, &sample, site_values, &record);
     if (status == SV_OK)
         status = closed_part(context, point, drawn, &record);
-    if (status != SV_OK) {
+    if (status != SV_OK || maps) {
         sv_give(context, site_values);
         sv_sample_free(context, &sample);
+    }
+    if (status != SV_OK) {
+        sv_site_record_free(context, record.maps);
         return status;
     }
     record.realisation = realisation;

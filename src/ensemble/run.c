@@ -95,14 +95,25 @@ static void keep(crew *c, const sv_record *record)
     settle(c, record->point);
 }
 
+/* The values of the maps have no place in the ensemble. */
+static void drop_maps(crew *c, int n)
+{
+    for (int k = 0; k < n; k++) {
+        sv_site_record_free(c->context, c->fresh[k].maps);
+        c->fresh[k].maps = NULL;
+    }
+}
+
 /* Stores what came in: together where the sink can, so that a slow disk is waited for once. */
 static void store(crew *c)
 {
     const sv_sink *sink = &c->options->sink;
     const int n = c->n_fresh;
     c->n_fresh = 0;
-    if (n == 0 || c->sink_failed)
+    if (n == 0 || c->sink_failed) {
+        drop_maps(c, n);
         return;
+    }
     sv_status status = SV_OK;
     if (sink->put_many != NULL)
         status = sink->put_many(c->context, c->fresh, n, sink->user);
@@ -116,6 +127,7 @@ static void store(crew *c)
         c->status = status;
         c->sink_failed = true;
     }
+    drop_maps(c, n);
     report(c, false);
 }
 
@@ -123,6 +135,8 @@ static void take_result(void *user, const sv_record *record)
 {
     crew *c = user;
     c->fresh[c->n_fresh++] = *record;
+    if (record->maps != NULL)
+        record->maps->counted = c->stops[record->point].counted;
     c->handed--;
     if (c->n_fresh == MOST_AT_ONCE)
         store(c);

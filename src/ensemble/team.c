@@ -8,12 +8,13 @@
 #include <string.h>
 
 /* Messages of two builds never mix: a rank of another layout is refused at its first word. */
-enum { PROTOCOL = 1, MOST_JOBS = 512, JOB_BYTES = 12 };
+enum { PROTOCOL = 2, MOST_VALUES = 1024, MOST_JOBS = 512, JOB_BYTES = 12 };
 
 typedef enum word {
     WORD_READY = 1,
     WORD_WANT,
     WORD_RESULT,
+    WORD_MAPS, /* values of the result that follows, in pieces */
     WORD_FAILED,
     WORD_END,
     WORD_JOBS,
@@ -33,6 +34,10 @@ typedef struct message {
             int32_t status;
             char text[1000];
         } failure;
+        struct {
+            int64_t total, first; /* of the realisation, of this piece; head.count values follow */
+            int64_t values[MOST_VALUES];
+        } maps;
         unsigned char record[sizeof(sv_record)];
     } body;
 } message;
@@ -106,6 +111,8 @@ typedef struct member {
     int64_t busy; /* jobs there */
     int wants;
     bool ready, gone;
+    sv_site_record *maps; /* of its next result, as far as it has come */
+    int64_t got;
 } member;
 
 struct team_desk {
@@ -153,12 +160,43 @@ static sv_status serve(sv_context *context, team_desk *d, int rank)
     return send(context, d->team, rank, d->message, WORD_JOBS, count, (size_t)count * JOB_BYTES);
 }
 
+static sv_status take_maps(sv_context *context, team_desk *d, int rank, size_t body)
+{
+    member *who = &d->members[rank];
+    const int64_t count = d->message->head.count;
+    const size_t before = offsetof(message, body.maps.values) - offsetof(message, body);
+    const int64_t total = d->message->body.maps.total, first = d->message->body.maps.first;
+    sv_status status = SV_OK;
+    if (body < before || count > MOST_VALUES || body != before + (size_t)count * 8 || total < 0 ||
+        total > SV_MOST_ENTRIES || first < 0 || first + count > total ||
+        (first > 0 && (who->maps == NULL || who->got != first || who->maps->n != total)))
+        return SV_FAIL(context, SV_INTERNAL, "values of a map out of place from rank %d", rank);
+    if (first == 0) {
+        sv_site_record_free(context, who->maps);
+        who->maps = NULL;
+        status = sv_take(context, 1, sizeof *who->maps, &who->maps);
+        if (status == SV_OK)
+            status = sv_take_raw(context, total, sizeof *who->maps->values, &who->maps->values);
+        if (status != SV_OK)
+            return status;
+        who->maps->n = total;
+    }
+    memcpy(who->maps->values + first, d->message->body.maps.values, (size_t)count * 8);
+    who->got = first + count;
+    return SV_OK;
+}
+
 static sv_status take_record(sv_context *context, team_desk *d, int rank, size_t body)
 {
     sv_record record;
     if (!unpack_record(d->message->body.record, body, &record))
         return SV_FAIL(context, SV_INTERNAL, "a result of %zu bytes from rank %d", body, rank);
-    d->members[rank].busy--;
+    member *who = &d->members[rank];
+    if (who->maps != NULL && who->got != who->maps->n)
+        return SV_FAIL(context, SV_INTERNAL, "a map of rank %d came in part only", rank);
+    record.maps = who->maps; /* never the address that came */
+    who->maps = NULL;
+    who->busy--;
     d->calls.take(d->calls.user, &record);
     return SV_OK;
 }
@@ -186,6 +224,8 @@ static sv_status take_message(sv_context *context, team_desk *d, int from, size_
         return SV_OK;
     case WORD_RESULT:
         return take_record(context, d, from, body);
+    case WORD_MAPS:
+        return take_maps(context, d, from, body);
     case WORD_FAILED:
         return take_failure(context, d, from);
     case WORD_END:
@@ -249,6 +289,8 @@ void desk_close(sv_context *context, team_desk *d)
 {
     if (d == NULL)
         return;
+    for (int r = 0; d->members != NULL && r < d->team->size; r++)
+        sv_site_record_free(context, d->members[r].maps);
     sv_give(context, d->members);
     sv_give(context, d->message);
     sv_give(context, d);
@@ -263,12 +305,36 @@ typedef struct helper {
     bool asked, stopping, failed;
 } helper;
 
+static sv_status send_maps(sv_context *context, helper *h, const sv_site_record *maps)
+{
+    const size_t before = offsetof(message, body.maps.values) - offsetof(message, body);
+    sv_status status = SV_OK;
+    int64_t first = 0;
+    do {
+        const int64_t left = maps->n - first, count = left < MOST_VALUES ? left : MOST_VALUES;
+        h->message->body.maps.total = maps->n;
+        h->message->body.maps.first = first;
+        if (count > 0)
+            memcpy(h->message->body.maps.values, maps->values + first, (size_t)count * 8);
+        status = send(context, h->team, 0, h->message, WORD_MAPS, (uint32_t)count,
+                      before + (size_t)count * 8);
+        first += count;
+    } while (status == SV_OK && first < maps->n);
+    return status;
+}
+
 static sv_status hand_in(sv_context *context, helper *h)
 {
     sv_record record;
     sv_status status = SV_OK;
     while (status == SV_OK && pool_next(h->pool, &record)) {
         const size_t size = record_size(record.n_outcomes);
+        if (record.maps != NULL)
+            status = send_maps(context, h, record.maps);
+        sv_site_record_free(context, record.maps);
+        record.maps = NULL;
+        if (status != SV_OK)
+            break;
         record.rank = h->team->rank;
         pack_record(&record, h->message->body.record);
         status = send(context, h->team, 0, h->message, WORD_RESULT, 1, size);

@@ -17,10 +17,14 @@ void sv_headline_make(const char *title, const char *note, sv_headline *ret_head
 double sv_headline_height(const sv_headline *headline); /* centimetres */
 void sv_headline_add(const sv_headline *headline, sv_figure *figure);
 
+/* What a map is of: one realisation, or an ensemble. */
+typedef enum sv_map_kind { SV_MAP_SAMPLE, SV_MAP_MEAN, SV_MAP_DEVIATION } sv_map_kind;
+
 /* Everything the parts of a map share. */
 typedef struct sv_map_figure {
     sv_figure figure;
     const sv_map_result *map;
+    sv_map_kind kind;
     const sv_outcome *outcome; /* of the local Chern marker, or NULL */
     bool *window;
     sv_raster raster;
@@ -60,6 +64,8 @@ double sv_round_length(double longest);
 /* The colours −1 … 1 as a palette. */
 void sv_script_palette(sv_draft *script);
 
+/* figure_map.c: lines and raster of a map into its files */
+sv_status sv_map_write_data(sv_map_figure *f, sv_figure_files *files);
 /* figure_map_script.c */
 void sv_map_choose_layout(sv_map_figure *f);
 void sv_map_add_script(sv_map_figure *f);

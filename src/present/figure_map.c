@@ -26,7 +26,7 @@ static sv_status find_marker(sv_context *context, sv_map_figure *f)
     return SV_OK;
 }
 
-static sv_status write_data(sv_map_figure *f, sv_figure_files *files)
+sv_status sv_map_write_data(sv_map_figure *f, sv_figure_files *files)
 {
     sv_draft text = {.context = f->figure.context};
     char path[512], *data = NULL;
@@ -106,7 +106,7 @@ sv_status sv_figure_map(sv_context *context, const char *folder, const char *nam
         f.range = choose_range(&f);
         sv_raster_frame(&f.raster, f.low, f.high);
         sv_map_choose_layout(&f);
-        status = write_data(&f, &files);
+        status = sv_map_write_data(&f, &files);
     }
     if (status == SV_OK) {
         sv_map_add_script(&f);

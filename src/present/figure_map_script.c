@@ -23,17 +23,25 @@ void sv_map_choose_layout(sv_map_figure *f)
         f->low_cm += 0.5 * (2.2 - f->scale * y);
 }
 
-void sv_script_palette(sv_draft *script)
+static void add_palette(sv_draft *script, bool amount)
 {
     sv_draft_add(script, "set palette maxcolors 0\nset palette defined (");
     for (int k = 0; k < PALETTE_STOPS; k++) {
         uint8_t rgb[3];
-        sv_palette_colour(2.0 * k / (PALETTE_STOPS - 1) - 1, rgb);
+        if (amount)
+            sv_palette_amount((double)k / (PALETTE_STOPS - 1), rgb);
+        else
+            sv_palette_colour(2.0 * k / (PALETTE_STOPS - 1) - 1, rgb);
         sv_draft_add(script, "%s%d '#%02x%02x%02x'", k > 0 ? ", " : "", k, rgb[0], rgb[1], rgb[2]);
         if (k % 4 == 3)
             sv_draft_add(script, "\\\n  ");
     }
     sv_draft_add(script, ")\n");
+}
+
+void sv_script_palette(sv_draft *script)
+{
+    add_palette(script, false);
 }
 
 /* A triangle at an end of the colour bar: the colour goes on beyond. */
@@ -49,6 +57,26 @@ static void add_bar_end(sv_map_figure *f, int number, double x, double width, do
                  "'#333333' lw 0.5\n",
                  number, x / w, base / h, (x + width) / w, base / h, (x + width / 2) / w, tip / h,
                  x / w, base / h, rgb[0], rgb[1], rgb[2]);
+}
+
+/* From 0 to a round number; nothing lies beyond it. */
+static void add_amount_bar(sv_map_figure *f)
+{
+    const double w = f->figure.width_cm, h = f->figure.height_cm, x = w - 1.5, width = 0.28;
+    const double picture = h - foot_cm - f->head_cm, length = fmin(picture, 5.0);
+    const double low = foot_cm + 0.5 * (picture - length);
+    sv_draft *script = &f->figure.script;
+    sv_draft_add(script,
+                 "set style line 9 lc rgb '#333333' lw 0.5\nset colorbox user origin screen "
+                 "%.5f,%.5f size screen %.5f,%.5f border 9\nset cbrange [0:%.6g]\n"
+                 "set cbtics out nomirror scale 0.4 offset -0.6,0 font ',7' ('0' 0, '%.3g' %.6g, "
+                 "'%.3g' %.6g)\n",
+                 x / w, low / h, width / w, length / h, f->range, 0.5 * f->range, 0.5 * f->range,
+                 f->range, f->range);
+    sv_draft_add(script,
+                 "set label 11 'deviation of the marker per cell' at screen %.5f,%.5f center "
+                 "rotate by 90 font ',7'\n",
+                 (w - 0.24) / w, (low + 0.5 * length) / h);
 }
 
 static void add_bar(sv_map_figure *f)
@@ -70,10 +98,11 @@ static void add_bar(sv_map_figure *f)
     sv_draft_add(script, ")\n");
     add_bar_end(f, 11, x, width, low + length, low + length + tip, 1);
     add_bar_end(f, 12, x, width, low, low - tip, -1);
-    sv_draft_add(script,
-                 "set label 11 'local Chern marker per cell' at screen %.5f,%.5f center rotate by "
-                 "90 font ',7'\n",
-                 (w - 0.24) / w, (low + 0.5 * length) / h);
+    sv_draft_add(
+        script,
+        "set label 11 '%s marker per cell' at screen %.5f,%.5f center rotate by "
+        "90 font ',7'\n",
+        f->kind == SV_MAP_MEAN ? "mean" : "local Chern", (w - 0.24) / w, (low + 0.5 * length) / h);
     sv_draft_add(script,
                  "set label 12 '> %.3g' at screen %.5f,%.5f left font ',6' tc rgb '#404040'\n"
                  "set label 13 '< \xE2\x88\x92%.3g' at screen %.5f,%.5f left font ',6' tc rgb "
@@ -172,9 +201,12 @@ void sv_map_add_script(sv_map_figure *f)
     const double x = f->high[0] - f->low[0], y = f->high[1] - f->low[1];
     sv_draft *script = &f->figure.script;
     sv_draft_add(script,
-                 "# Map of the local Chern marker; draw it again with: gnuplot %s.gp\n"
+                 "# Map of the %slocal Chern marker; draw it again with: gnuplot %s.gp\n"
                  "# %s.bin: %d x %d values as 32-bit floats, rows from below; NaN: outside "
                  "or vacant.\n",
+                 f->kind == SV_MAP_DEVIATION ? "deviation over the ensemble of the "
+                 : f->kind == SV_MAP_MEAN    ? "mean over the ensemble of the "
+                                             : "",
                  f->figure.name, f->figure.name, f->raster.nx, f->raster.ny);
     sv_script_terminals(&f->figure);
     sv_draft_add(script,
@@ -185,10 +217,14 @@ void sv_map_add_script(sv_map_figure *f)
                  f->left_cm / w, (f->left_cm + f->scale * x) / w, f->low_cm / h,
                  (f->low_cm + f->scale * y) / h, f->low[0], f->high[0], f->low[1], f->high[1]);
     sv_headline_add(&f->headline, &f->figure);
-    sv_script_palette(script);
-    add_bar(f);
+    add_palette(script, f->kind == SV_MAP_DEVIATION);
+    if (f->kind == SV_MAP_DEVIATION)
+        add_amount_bar(f);
+    else
+        add_bar(f);
     add_scale_bar(f);
-    add_legend(f);
+    if (f->kind == SV_MAP_SAMPLE)
+        add_legend(f);
     add_plot(f);
     sv_draft_add(script, "unset output\n}\n");
 }

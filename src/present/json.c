@@ -129,6 +129,30 @@ static void put_units(sv_json *json, json_t *object, const sv_point_result *poin
         json_decref(units);
 }
 
+/* Where the marker differs most from one realisation to the next. */
+static json_t *make_sites(sv_json *json, const sv_site_summary *sites)
+{
+    json_t *object = json_object(), *largest = json_object(), *cell = json_array();
+    sv_json_put_integer(json, object, "realisations", sites->realisations);
+    sv_json_put_real(json, object, "deviation", sites->deviation);
+    if (!isfinite(sites->largest)) {
+        sv_json_put(json, object, "largest_deviation", json_null());
+        sv_json_put_text(json, object, "reason", "no cell has a value in two realisations or more");
+        json_decref(largest);
+        json_decref(cell);
+        return object;
+    }
+    sv_json_put_real(json, largest, "value", sites->largest);
+    for (int k = 0; k < 2; k++)
+        sv_json_push(json, cell, json_integer(sites->cell[k]));
+    sv_json_put(json, largest, "cell", cell);
+    sv_json_put_real(json, largest, "x", sites->at[0]);
+    sv_json_put_real(json, largest, "y", sites->at[1]);
+    sv_json_put_integer(json, largest, "realisations", sites->present);
+    sv_json_put(json, object, "largest_deviation", largest);
+    return object;
+}
+
 static json_t *make_point(sv_json *json, const sv_point_result *point)
 {
     json_t *object = json_object(), *markers = json_object(), *inventory = json_object();
@@ -142,6 +166,8 @@ static json_t *make_point(sv_json *json, const sv_point_result *point)
         sv_json_put(json, markers, point->summaries[i].marker,
                     make_marker(json, &point->summaries[i]));
     sv_json_put(json, object, "markers", markers);
+    if (point->sites.exists)
+        sv_json_put(json, object, "site_maps", make_sites(json, &point->sites));
     return object;
 }
 

@@ -18,6 +18,8 @@ typedef struct side {
 static const side below = {4.15, 4.78, 0.135}; /* sky to indigo */
 static const side above = {1.25, 0.62, 0.135}; /* sand to rust */
 
+static const side amount = {1.95, 3.55, 0.115}; /* straw to teal */
+
 /* A point of the curve, 0 ≤ s ≤ 1: lightness falls, chroma rises and falls back somewhat. */
 static void curve_at(const side *arm, double s, double lab[3])
 {
@@ -55,5 +57,12 @@ void sv_palette_colour(double position, uint8_t ret_rgb[3])
     const side *arm = position < 0 ? &below : &above;
     double lab[3];
     curve_at(arm, fmin(fabs(position), 1.0), lab);
+    to_rgb(lab, ret_rgb);
+}
+
+void sv_palette_amount(double position, uint8_t ret_rgb[3])
+{
+    double lab[3];
+    curve_at(&amount, fmin(fmax(position, 0.0), 1.0), lab);
     to_rgb(lab, ret_rgb);
 }

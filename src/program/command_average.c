@@ -91,6 +91,8 @@ static sv_status show_results(session *s, sv_run *run, const sv_ensemble *ensemb
     sv_status status = result_make(s, ensemble, &stop, &result);
     result.seconds = seconds;
     if (status == SV_OK)
+        status = site_maps_add(s, run, true, &result);
+    if (status == SV_OK)
         run_folder_warn(s, &result);
     if (status == SV_OK)
         status = run_folder_write(s, run, &result, &json);

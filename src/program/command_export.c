@@ -30,14 +30,43 @@ static sv_status export_one(session *s)
     return status;
 }
 
+/* The maps of a run, where the other exports are of a sheet. */
+static int export_maps(sv_context *context, const options *o)
+{
+    session s = {0};
+    sv_run *run = NULL;
+    sv_ensemble ensemble = {0};
+    sv_result result = {0};
+    sv_status status = may_write(context, o, o->maps);
+    if (status == SV_OK)
+        status = report_open(context, o, &s, &run);
+    if (status == SV_OK)
+        status = report_load(&s, run, &ensemble, &result);
+    if (status == SV_OK)
+        status = site_maps_write(&s, run, &result, o->maps);
+    result_free(context, &result);
+    sv_ensemble_free(context, &ensemble);
+    session_close(&s);
+    sv_run_close(context, run);
+    return status == SV_OK ? 0 : fail_exit(context, status);
+}
+
 int run_export(sv_context *context, const options *o)
 {
     session s = {0};
-    if (o->hamiltonian == NULL && o->sites == NULL) {
+    if (o->hamiltonian == NULL && o->sites == NULL && o->maps == NULL) {
         fprintf(stderr, "selvedge: error: nothing to export\n"
-                        "hint: give --hamiltonian FILE, --sites FILE, or both\n");
+                        "hint: give --hamiltonian FILE, --sites FILE, or both; --maps FILE of a "
+                        "run folder\n");
         return sv_status_exit_code(SV_USAGE);
     }
+    if (o->maps != NULL && (o->hamiltonian != NULL || o->sites != NULL)) {
+        fprintf(stderr, "selvedge: error: --maps is of a run folder, --hamiltonian and --sites are "
+                        "of a sheet\n");
+        return sv_status_exit_code(SV_USAGE);
+    }
+    if (o->maps != NULL)
+        return export_maps(context, o);
     if (o->hamiltonian != NULL && o->sites != NULL && strcmp(o->hamiltonian, o->sites) == 0) {
         fprintf(stderr, "selvedge: error: --hamiltonian and --sites name the same file\n");
         return sv_status_exit_code(SV_USAGE);

@@ -160,6 +160,8 @@ static sv_status join(session *s, merge *m)
     if (status == SV_OK)
         status = result_make(s, &ensemble, &stop, &result);
     if (status == SV_OK)
+        status = site_maps_add(s, run, true, &result);
+    if (status == SV_OK)
         status = run_folder_write(s, run, &result, &json);
     if (status == SV_OK) {
         const int64_t missing = warn_of_missing(s, m, &ensemble);

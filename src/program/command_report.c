@@ -39,8 +39,7 @@ static int32_t map_point(const session *s)
     return s->n_points > 1 ? s->n_points / 2 : 0;
 }
 
-/* "disorder.pot.width = 4, …" of a point of a sweep; empty without one. */
-static void describe_point(const point *p, char *text, size_t size)
+void describe_point(const point *p, char *text, size_t size)
 {
     int used = 0;
     text[0] = '\0';
@@ -166,15 +165,12 @@ static sv_status draw_sweep(session *s, const sv_result *result, const char *fol
     return status;
 }
 
-static sv_status report(session *s, sv_run *run)
+sv_status report_load(session *s, sv_run *run, sv_ensemble *ensemble, sv_result *result)
 {
     sv_context *context = s->context;
-    sv_ensemble ensemble = {0};
-    sv_result result = {0};
     sv_index loaded = 0;
     int64_t realisations;
     int32_t points;
-    char folder[1024];
     sv_stop_rule stop = session_stop_rule(s);
     sv_status status = run_folder_check_identity(s, run);
     if (status == SV_OK)
@@ -189,11 +185,23 @@ static sv_status report(session *s, sv_run *run)
                          (long long)realisations, s->n_points);
     if (status == SV_OK)
         status = sv_ensemble_init(context, s->n_points, realisations,
-                                  s->points[0].problem.n_markers, &ensemble);
+                                  s->points[0].problem.n_markers, ensemble);
     if (status == SV_OK)
-        status = sv_run_load(context, run, &ensemble, &loaded);
+        status = sv_run_load(context, run, ensemble, &loaded);
     if (status == SV_OK)
-        status = result_make(s, &ensemble, &stop, &result);
+        status = result_make(s, ensemble, &stop, result);
+    if (status == SV_OK)
+        status = site_maps_add(s, run, false, result);
+    return status;
+}
+
+static sv_status report(session *s, sv_run *run)
+{
+    sv_context *context = s->context;
+    sv_ensemble ensemble = {0};
+    sv_result result = {0};
+    char folder[1024];
+    sv_status status = report_load(s, run, &ensemble, &result);
     if (status == SV_OK && !s->options->quiet && !s->options->json)
         sv_result_print(&result, wants_colour(s->options, stdout), stdout);
     if (status == SV_OK)
@@ -203,19 +211,21 @@ static sv_status report(session *s, sv_run *run)
     if (status == SV_OK)
         status = draw_map(s, folder);
     if (status == SV_OK)
+        status = site_maps_draw(s, run, &result, folder, tell_figure);
+    if (status == SV_OK)
         status = draw_survey(s, folder);
     result_free(context, &result);
     sv_ensemble_free(context, &ensemble);
     return status;
 }
 
-int run_report(sv_context *context, const options *o)
+sv_status report_open(sv_context *context, const options *o, session *s, sv_run **ret_run)
 {
-    session s = {0};
     sv_run *run = NULL;
     char sheet[1024];
     int32_t task = 0, tasks = 0;
     sv_status status = sv_run_open_read(context, o->files[0], &run);
+    *ret_run = run;
     if (status == SV_OK)
         sv_run_task(run, &task, &tasks);
     if (status == SV_OK && tasks > 0)
@@ -225,7 +235,15 @@ int run_report(sv_context *context, const options *o)
     if (status == SV_OK)
         status = sv_run_path(context, run, "sheet.resolved.yaml", sheet, sizeof sheet);
     if (status == SV_OK)
-        status = session_open(context, o, sheet, true, true, &s);
+        status = session_open(context, o, sheet, true, true, s);
+    return status;
+}
+
+int run_report(sv_context *context, const options *o)
+{
+    session s = {0};
+    sv_run *run = NULL;
+    sv_status status = report_open(context, o, &s, &run);
     if (status == SV_OK)
         status = report(&s, run);
     session_close(&s);

@@ -27,6 +27,7 @@ typedef enum option_id {
     OPT_PROBES = 'B',
     OPT_BLOCKS = 'M',
     OPT_FLOW = 'W',
+    OPT_MAPS = 'm',
     OPT_TASK = 'A',
     OPT_HELP = 'h'
 } option_id;
@@ -62,6 +63,7 @@ static const option_row option_rows[] = {
     {OPT_PROBES, false, "probes", "FILE", "write the probe points of the localizer (CSV)"},
     {OPT_BLOCKS, false, "blocks", "FILE", "write the blocks of a coarse map (CSV)"},
     {OPT_FLOW, false, "flow", "FILE", "write the levels of the spectral flow (CSV)"},
+    {OPT_MAPS, false, "maps", "FILE", "write mean and deviation of the marker of each site (CSV)"},
     {OPT_HELP, true, "help", NULL, "this text"},
 };
 enum { N_ROWS = sizeof option_rows / sizeof option_rows[0] };
@@ -234,6 +236,9 @@ static bool apply(options *o, option_id id, const char *value)
         return is_file_name(value);
     case OPT_FLOW:
         o->flow = value;
+        return is_file_name(value);
+    case OPT_MAPS:
+        o->maps = value;
         return is_file_name(value);
     case OPT_BLOCKS:
         o->blocks = value;

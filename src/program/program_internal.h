@@ -17,7 +17,7 @@ typedef struct options {
     const struct command *command;
     const char **files;
     int n_files;
-    const char *output, *hamiltonian, *sites, *csv, *probes, *blocks, *flow;
+    const char *output, *hamiltonian, *sites, *csv, *probes, *blocks, *flow, *maps;
     int64_t realisation;
     int64_t threads; /* 0: as many as the affinity mask allows */
     double time_limit;
@@ -203,6 +203,19 @@ bool coarse_wanted(const sv_case *problem);
 sv_status coarse_compute(session *s, const sv_case *problem, const sv_sample *sample,
                          sv_index realisation, sv_coarse *ret);
 sv_status coarse_write_csv(session *s, const sv_coarse *map, const char *path);
+/* The maps of an ensemble (site_maps.c), from a run whose result is made: what they come to, joined as
+ * far as they count when the run is being written; a table of all sites; figures. */
+sv_status site_maps_add(session *s, sv_run *run, bool writing, sv_result *result);
+sv_status site_maps_write(session *s, sv_run *run, sv_result *result, const char *path);
+sv_status site_maps_draw(session *s, sv_run *run, sv_result *result, const char *folder,
+                         figure_teller tell);
+/* "disorder.pot.width = 4, …" of a point of a sweep; empty without one. */
+void describe_point(const point *p, char *text, size_t size);
+/* Opens a run folder for reading and the sheet in it; *ret_run is to be closed in any case. */
+sv_status report_open(sv_context *context, const options *o, session *s, sv_run **ret_run);
+/* The realisations a run folder open for reading holds, and their summaries. */
+sv_status report_load(session *s, sv_run *run, sv_ensemble *ensemble, sv_result *result);
+
 /* A text into a file that appears only when it is complete. */
 sv_status write_csv_text(sv_context *context, const char *path, const char *text);
 

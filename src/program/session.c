@@ -148,6 +148,7 @@ sv_status session_make_point(session *s, point *p)
                                      ? SV_ESTIMATOR_RANDOM_PHASE
                                      : SV_ESTIMATOR_AUTO;
     p->problem.seed = setup->seed;
+    p->problem.site_maps = setup->site_maps;
     status = set_markers(s, setup, &p->problem);
     return status == SV_OK ? prepare_localizer(s, p) : status;
 }
@@ -298,8 +299,8 @@ sv_status session_plan(session *s, bool site_map)
     const char *before = "";
     for (int32_t k = 0; k < s->n_points; k++) {
         point *p = &s->points[k];
-        sv_status status =
-            sv_case_plan(s->context, &p->problem, site_map, p->setup.sampling_error, &p->plan);
+        sv_status status = sv_case_plan(s->context, &p->problem, site_map || p->problem.site_maps,
+                                        p->setup.sampling_error, &p->plan);
         if (status != SV_OK)
             return status;
         /* With fewer realisations than threads the cores work inside one realisation. */

@@ -138,7 +138,9 @@ static void add_value(writer *w, const sv_section *section, int i, int depth)
     if (field->key->type == SV_KEY_FILE && w->names != NULL) {
         sv_text_add(&w->text, " ");
         sv_emit_scalar(&w->text, w->names[w->n_files++]);
-    } else if (field->node != NULL)
+    } else if (field->key->type == SV_KEY_FLAG) /* as text it would be quoted */
+        sv_text_add(&w->text, value->integer[0] != 0 ? " true" : " false");
+    else if (field->node != NULL)
         add_tree(w, field->node, depth);
     else if (field->key->fallback != NULL && field->key->fallback[0] != '\0')
         sv_text_add(&w->text, " %s", field->key->fallback);

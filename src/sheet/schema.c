@@ -92,6 +92,10 @@ static const sv_key ensemble_keys[] = {
      .high = 4294967295.0,
      .fallback = "1",
      .doc = "of all random numbers"},
+    {.name = "site_maps",
+     .type = SV_KEY_FLAG,
+     .fallback = "false",
+     .doc = "mean and deviation of the local Chern marker of every site; every site is computed"},
 };
 
 static const sv_key stop_keys[] = {

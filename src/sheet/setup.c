@@ -132,6 +132,21 @@ static bool use_stop(sv_reader *reader, const sv_section *stop, sv_setup *setup)
     return find_stop_marker(reader, stop, setup);
 }
 
+/* Maps are of one marker. */
+static bool use_site_maps(sv_reader *reader, const sv_section *ensemble, sv_setup *setup)
+{
+    setup->site_maps = sv_section_value(ensemble, "site_maps")->integer[0] != 0;
+    bool found = !setup->site_maps;
+    for (int i = 0; i < setup->n_markers; i++)
+        found = found ||
+                strcmp(reader->sheet->markers[setup->markers[i].kind].name, "local_chern") == 0;
+    return found ||
+           sv_report(reader, sv_section_node(ensemble, "site_maps"),
+                     "add local_chern to the markers",
+                     "ensemble.site_maps is the map of local_chern, which is not among the "
+                     "markers");
+}
+
 bool sv_setup_ensemble(sv_reader *reader, sv_setup *setup)
 {
     const sv_section *root = sv_document_find(reader, "", NULL);
@@ -149,6 +164,7 @@ bool sv_setup_ensemble(sv_reader *reader, sv_setup *setup)
     setup->sampling_error = sv_section_value(solve, "sampling_error")->real[0];
     bool good = use_occupation(reader, setup);
     good = use_markers(reader, setup) && good;
+    good = good && use_site_maps(reader, ensemble, setup);
     if (!good || stop == NULL)
         return good;
     return use_stop(reader, stop, setup);

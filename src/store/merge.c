@@ -258,6 +258,8 @@ static sv_status join_shard(sv_context *context, sv_run *run, const char *shard,
         status = check_same_run(context, from, run);
     if (status == SV_OK)
         status = each_row(context, from, join_row, &j);
+    if (status == SV_OK)
+        status = sv_site_merge(context, from, run);
     if (status == SV_OK) {
         sv_run_task(from, &task, &tasks);
         snprintf(note, sizeof note, "%.500s (task %ld of %ld): %lld added, %lld were there", shard,
@@ -281,6 +283,8 @@ sv_status sv_run_merge(sv_context *context, sv_run *run, const char *const *shar
         return status;
     for (int k = 0; k < n && status == SV_OK; k++)
         status = join_shard(context, run, shards[k], &total);
+    if (status == SV_OK)
+        status = sv_site_check_joined(context, run);
     if (status == SV_OK)
         status = sv_ledger_execute(context, run, "COMMIT");
     if (status != SV_OK) {

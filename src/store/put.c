@@ -177,6 +177,8 @@ sv_status sv_record_insert(sv_context *context, sv_run *run, const sv_record *re
     status = insert_row(context, run, record);
     for (int i = 0; i < record->n_outcomes && status == SV_OK; i++)
         status = insert_outcome(context, run, record, i);
+    if (status == SV_OK && record->maps != NULL)
+        status = sv_site_put(context, run, record->point, record->realisation, record->maps);
     return status;
 }
 

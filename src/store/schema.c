@@ -39,6 +39,15 @@ static const char *const statements[] = {
     "  checksum TEXT NOT NULL\n"
     ") STRICT",
 
+    "CREATE TABLE site_sum (\n"
+    "  point INTEGER NOT NULL CHECK (point >= 0),\n"
+    "  level INTEGER NOT NULL CHECK (level BETWEEN 0 AND 5),\n"
+    "  block INTEGER NOT NULL CHECK (block >= 0),\n"
+    "  data BLOB NOT NULL,\n"
+    "  checksum TEXT NOT NULL,\n"
+    "  PRIMARY KEY (point, level, block)\n"
+    ") STRICT",
+
     "CREATE TABLE realisation (\n"
     "  point INTEGER NOT NULL CHECK (point >= 0),\n"
     "  realisation INTEGER NOT NULL CHECK (realisation >= 0),\n"
@@ -106,6 +115,12 @@ static const char *const statements[] = {
     "BEGIN SELECT RAISE(ABORT, 'the ledger is append-only'); END",
     "CREATE TRIGGER cost_no_delete BEFORE DELETE ON cost\n"
     "BEGIN SELECT RAISE(ABORT, 'the ledger is append-only'); END",
+    "CREATE TRIGGER site_sum_no_update BEFORE UPDATE ON site_sum\n"
+    "BEGIN SELECT RAISE(ABORT, 'the ledger is append-only'); END",
+    "CREATE TRIGGER site_sum_no_loss BEFORE DELETE ON site_sum\n"
+    "WHEN NOT EXISTS (SELECT 1 FROM site_sum WHERE point = OLD.point AND level = OLD.level + 1 AND "
+    "block = OLD.block / 64)\n"
+    "BEGIN SELECT RAISE(ABORT, 'sums over sites go only into a sum that holds them'); END",
     "CREATE TRIGGER meta_no_delete BEFORE DELETE ON meta\n"
     "BEGIN SELECT RAISE(ABORT, 'what a run is cannot be removed'); END",
 };

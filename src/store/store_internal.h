@@ -124,6 +124,37 @@ void sv_record_difference(const sv_record *was, const sv_record *is, char *text,
 /* range.c */
 bool sv_record_is_sane(const sv_record *record);
 
+/* site_pack.c: the maps as bytes. The unpackers add to a sum; false: no such bytes can be. */
+enum { SV_SITE_SUM_BYTES = 36 };
+void sv_site_pack_values(const sv_site_record *record, unsigned char *bytes);
+void sv_site_pack_sums(const sv_site_sum *sum, unsigned char *bytes);
+bool sv_site_unpack_values(const unsigned char *bytes, size_t size, sv_site_sum *sum);
+bool sv_site_unpack_sums(const unsigned char *bytes, size_t size, int64_t most, sv_site_sum *sum);
+
+/* site.c: both inside a transaction of the caller */
+typedef struct sv_site_place {
+    int32_t point;
+    int level;
+    int64_t block;
+} sv_site_place;
+sv_status sv_site_put(sv_context *context, sv_run *run, int32_t point, int64_t realisation,
+                      const sv_site_record *record);
+sv_status sv_site_fold(sv_context *context, sv_run *run, int32_t point, int64_t counted);
+enum { SV_SITE_HEAD_BYTES = 24 };
+/* The data of a row behind SV_SITE_HEAD_BYTES of room, its checksum looked at; *ret_bytes stays NULL
+ * when there is no such row. */
+sv_status sv_site_get_row(sv_context *context, sv_run *run, const sv_site_place *at,
+                          unsigned char **ret_bytes, size_t *ret_size);
+/* Writes a row; fills the room before its data. */
+sv_status sv_site_put_row(sv_context *context, sv_run *run, const sv_site_place *at,
+                          unsigned char *bytes, size_t size);
+/* Takes off the 64 rows that a row above them holds. @param first of the lower level */
+sv_status sv_site_drop_rows(sv_context *context, sv_run *run, const sv_site_place *first);
+/* site_merge.c: the sums of a shard into those of a run, in a transaction of the caller */
+sv_status sv_site_merge(sv_context *context, sv_run *from, sv_run *run);
+/* sv_run_check_sites() where a run has sums at all. */
+sv_status sv_site_check_joined(sv_context *context, sv_run *run);
+
 /* checksum.c */
 void sv_record_checksum(const sv_record *record, char digest[65]);
 void sv_cost_checksum(const sv_record *record, int64_t event, char digest[17]);

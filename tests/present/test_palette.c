@@ -108,3 +108,22 @@ SV_TEST(steps_look_even)
         CHECK(most / least < 1.3);
     }
 }
+
+/* A deviation has no sign: darker is more, and no colour is one of the marker maps' sides. */
+SV_TEST(amounts_darken_from_the_same_centre)
+{
+    uint8_t before[3], rgb[3], end[3];
+    sv_palette_colour(0, before);
+    sv_palette_amount(-1, rgb);
+    CHECK(memcmp(before, rgb, 3) == 0);
+    for (int k = 1; k <= 32; k++) {
+        sv_palette_amount(k / 32.0, rgb);
+        /* Luma as in ITU-R BT.601, value recalled from memory. */
+        CHECK(0.299 * rgb[0] + 0.587 * rgb[1] + 0.114 * rgb[2] <
+              0.299 * before[0] + 0.587 * before[1] + 0.114 * before[2] - 1);
+        CHECK(k < 8 || (rgb[1] > rgb[0] && rgb[1] > rgb[2] - 12));
+        memcpy(before, rgb, 3);
+    }
+    sv_palette_amount(9, end);
+    CHECK(memcmp(end, rgb, 3) == 0);
+}

@@ -125,7 +125,7 @@ static void forge(const char *name, const char *sql)
     fixture_fresh_run(name, 4);
     CHECK_INT(sqlite3_open(fixture_path("ledger.sqlite"), &ledger), SQLITE_OK);
     const int n = read_triggers(ledger, texts);
-    CHECK_INT(n, 9);
+    CHECK_INT(n, 11);
     for (int i = 0; i < n; i++) {
         char drop[100], trigger[64];
         CHECK_INT(sscanf(texts[i], "CREATE TRIGGER %63s", trigger), 1);
