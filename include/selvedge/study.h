@@ -153,6 +153,157 @@ typedef struct sv_plateau {
 SV_API SV_MUST_USE sv_status sv_plateau_measure(sv_context *context, const sv_plateau_input *input,
                                                 sv_plateau *ret_plateau);
 
+/* ------------------------------------------------------------- finite size */
+
+enum { SV_SCALING_SIZES = 32, SV_SCALING_ORDER = 9, SV_SCALING_REASONS = 8 };
+
+/** All realisations of one size at one parameter. */
+typedef struct sv_scaling_point {
+    double size, parameter;
+    const double *values; /**< sv_scaling_data.realisations of them, by realisation number; NaN: not
+                               there, or unresolved. Borrowed */
+} sv_scaling_point;
+
+/**
+ * Curves of several sizes. The same realisation number at two points stands for the same random
+ * numbers: whatever is correlated that way is accounted for.
+ */
+typedef struct sv_scaling_data {
+    const sv_scaling_point *points; /**< in any order, no pair twice */
+    sv_index n_points;
+    int64_t realisations;
+    double quantum; /**< smallest change of one value, 1 for an index; 0: continuous. A mean of n
+                         equal values gets the standard error quantum/n instead of 0 */
+    double floor;   /**< least standard error of a mean (its numerical error); 0: none */
+} sv_scaling_data;
+
+typedef enum sv_correction {
+    SV_CORRECTION_NONE,
+    SV_CORRECTION_FIXED, /**< L^{−y} with y given */
+    SV_CORRECTION_FREE   /**< y fitted; needs four sizes */
+} sv_correction;
+
+/** How to look. Start from sv_scaling_options_default(). */
+typedef struct sv_scaling_options {
+    size_t size;
+    double range[2]; /**< of the parameter; NaN: automatic, see sv_scaling_study() */
+    int order;       /**< of F, 1 … SV_SCALING_ORDER; 0: automatic */
+    sv_correction correction;
+    double exponent;   /**< y of SV_CORRECTION_FIXED, above 0 */
+    int resamples;     /**< of the bootstrap, at least 50 */
+    uint64_t seed;     /**< of its random numbers */
+    double confidence; /**< of the intervals */
+} sv_scaling_options;
+/** Automatic range and order, no correction, 400 resamples, 95 %. */
+SV_API sv_scaling_options sv_scaling_options_default(void);
+
+/** A number with half the central 68 % and the central interval of its bootstrap distribution; NaN
+ *  where it does not exist, an end of the interval may be infinite. */
+typedef struct sv_scaling_estimate {
+    double value, standard_error, interval[2];
+} sv_scaling_estimate;
+
+/** Where the curves of two sizes cross. */
+typedef struct sv_scaling_crossing {
+    double sizes[2];
+    bool found;
+    char reason[200];       /**< why not */
+    sv_scaling_estimate at; /**< the parameter */
+    double height;          /**< the common mean there */
+    double evidence[2];     /**< sum of the differences below and above, in standard errors */
+} sv_scaling_crossing;
+
+/** The collapse with one size left out. */
+typedef struct sv_scaling_without {
+    double size;
+    bool fitted;
+    double critical, nu;
+    double shift[2]; /**< of p_c and of 1/ν against the whole fit, in standard errors of the shift */
+} sv_scaling_without;
+
+/** One mean in the figure of the collapse. */
+typedef struct sv_scaling_row {
+    double size, parameter, mean, standard_error;
+    bool used;                       /**< inside the range of the collapse */
+    double x, collapsed, fitted;     /**< (p−p_c) L^{1/ν}; mean less its correction; F(x) */
+    double residual;                 /**< (mean − fit)/standard_error */
+} sv_scaling_row;
+
+/** mean = F[(p−p_c) L^{1/ν}] + L^{−y} G[(p−p_c) L^{1/ν}] */
+typedef struct sv_scaling_collapse {
+    bool fitted;  /**< there are numbers, to be trusted only when decided */
+    bool decided; /**< none of the reasons against holds */
+    int n_reasons;
+    char reasons[SV_SCALING_REASONS][240];
+    sv_scaling_estimate critical, nu, exponent; /**< exponent: NaN unless free */
+    int order, correction_order; /**< of F and G (−1: no G) */
+    int n_points, n_parameters;
+    double range[2];          /**< of the parameters used */
+    double reach;             /**< largest |x| used */
+    double chi_square;        /**< Σ residual² */
+    int degrees_of_freedom;   /**< n_points − n_parameters: were the points independent */
+    double scale, effective;  /**< under the correlations of the data chi_square is distributed as
+                                   scale · χ² of `effective` degrees of freedom */
+    double p_value;
+    int resamples, failed; /**< failed: of the bootstrap's refits */
+    sv_scaling_without without[SV_SCALING_SIZES]; /**< ascending sizes; from three sizes on */
+    int n_without;
+} sv_scaling_collapse;
+
+/** All answers. Owned: rows, curve. */
+typedef struct sv_scaling {
+    double confidence;
+    int n_sizes;
+    double sizes[SV_SCALING_SIZES]; /**< ascending */
+    int64_t least, most;            /**< realisations with a value at a point */
+    sv_scaling_crossing crossings[SV_SCALING_SIZES]; /**< of neighbouring sizes */
+    int n_crossings;
+    double drift;    /**< last crossing − first, NaN below two */
+    double drift_z;  /**< in standard errors */
+    sv_scaling_estimate crossing; /**< p_c from crossings: weighted mean, or that of the largest
+                                       pair when they drift (|drift_z| > 2); NaN: none found */
+    sv_scaling_collapse collapse;
+    sv_scaling_row *rows; /**< by size, then parameter */
+    sv_index n_rows;
+    double *curve; /**< x, F(x) of n_curve values of x over the range used */
+    int n_curve;
+} sv_scaling;
+
+/**
+ * Crossings and collapse of curves of different sizes near a continuous transition.
+ *
+ * *Crossing* of two sizes: of all splits of the common parameters the one whose sums of differences
+ * below and above are best established with opposite signs; both must exceed two standard errors.
+ * The root of a parabola fitted, weighted, to the differences at up to three parameters on each
+ * side (a line when there are fewer than five).
+ *
+ * *Collapse*: least squares, weighted with the standard errors, in p_c, 1/ν, the coefficients of the
+ * polynomial F, and with a correction those of G (order 1) and y, by Levenberg and Marquardt from
+ * the best cells of a grid over (p_c, ν, y) whose linear part is solved exactly. Order of F: that of
+ * the smallest χ² + 2 tr(PΣ), P the projection on the columns of the Jacobian, Σ the correlations of
+ * the means (for independent points Mallows' C_p; B. Efron, J. Am. Stat. Assoc. 99, 619 (2004)),
+ * and two more, so that what F leaves out stays below the errors. Automatic range: all parameters,
+ * then one less at the end farther from p_c, until the p-value is 0.05 and those two orders exist.
+ *
+ * *Errors*: the bootstrap resamples realisation numbers, at all points at once, and refits. χ² is
+ * judged with the covariance of the realisations: its first two moments give scale and effective
+ * degrees of freedom (J. N. K. Rao, A. J. Scott, Ann. Stat. 12, 46 (1984), second order).
+ *
+ * *Refusal*: reasons in words when there are fewer than three sizes, p_c is not inside the range,
+ * the interval of ν is not bounded within [0.1, 20], the p-value is below 1e-3, more than a tenth of
+ * the resamples fail, smallest and largest size do not cross, or leaving out the smallest size moves
+ * p_c or 1/ν by more than 3.3 standard errors of the shift.
+ * @param[out] ret_scaling give back with sv_scaling_free()
+ * @return SV_INVALID_INPUT for a table that is none (sizes not positive, a pair twice, more than
+ *         SV_SCALING_SIZES sizes, options out of range); SV_INTERRUPTED; never because the data
+ *         cannot decide
+ */
+SV_API SV_MUST_USE sv_status sv_scaling_study(sv_context *context, const sv_scaling_data *data,
+                                              const sv_scaling_options *options,
+                                              sv_scaling *ret_scaling);
+/** Safe on a zeroed struct and twice in a row. */
+SV_API void sv_scaling_free(sv_context *context, sv_scaling *scaling);
+
 #ifdef __cplusplus
 }
 #endif
