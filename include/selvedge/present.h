@@ -47,6 +47,13 @@ typedef struct sv_point_result {
     sv_site_summary sites;
 } sv_point_result;
 
+/** Curves of several flake sizes compared, and what came out. */
+typedef struct sv_finite_size {
+    const char *marker;
+    sv_coordinate size, parameter; /**< the axes; their values mean nothing */
+    sv_scaling scaling;            /**< in the units of the axes */
+} sv_finite_size;
+
 /** All a table, a JSON document or a sweep figure needs. */
 typedef struct sv_result {
     const char *title;
@@ -54,6 +61,7 @@ typedef struct sv_result {
     int32_t n_points;
     double seconds; /**< of this invocation; kept outside `points` */
     bool complete;  /**< false: stopped early */
+    sv_finite_size *finite_size; /**< or NULL */
 } sv_result;
 
 /**
@@ -209,6 +217,11 @@ SV_API SV_MUST_USE sv_status sv_figure_sample(sv_context *context, const char *f
 SV_API SV_MUST_USE sv_status sv_figure_sweep(sv_context *context, const char *folder,
                                              const char *name, const sv_result *result,
                                              sv_figure_files *ret_files);
+/** Curves of all sizes with their crossing, their collapse, and the residuals of it in standard
+ *  errors. @return SV_INVALID_INPUT without result->finite_size; else as sv_figure_map() */
+SV_API SV_MUST_USE sv_status sv_figure_scaling(sv_context *context, const char *folder,
+                                               const char *name, const sv_result *result,
+                                               sv_figure_files *ret_files);
 /** Density of states with Fermi energy and gap; below, the levels next to the Fermi energy. */
 SV_API SV_MUST_USE sv_status sv_figure_spectrum(sv_context *context, const char *folder,
                                                 const char *name, const sv_spectrum_result *result,

@@ -125,6 +125,18 @@ typedef struct sv_sheet_plateau {
     int n_temperatures; /**< at least 1 */
 } sv_sheet_plateau;
 
+/** The block `finite_size`: where do the curves of different sizes cross? */
+typedef struct sv_sheet_finite_size {
+    int marker;     /**< number in sv_setup.markers */
+    int size_axis;  /**< number in sv_setup.axes; the other one is the parameter */
+    double range[2]; /**< of the parameter, in the unit of its axis; NaN: not given */
+    int order;       /**< 0: not given */
+    char correction[8]; /**< none, fixed, free */
+    double exponent;    /**< of a fixed correction, NaN otherwise */
+    int resamples;
+    double confidence;
+} sv_sheet_finite_size;
+
 /** A file the sheet names. */
 typedef struct sv_sheet_file {
     char *path;    /**< as opened */
@@ -157,6 +169,8 @@ typedef struct sv_setup {
     bool site_maps; /**< the marker of every site over the ensemble */
     sv_sweep_axis axes[2];
     int n_axes;
+    bool has_finite_size;
+    sv_sheet_finite_size finite_size;
     bool has_question;
     sv_sheet_question question;
     bool has_plateau;

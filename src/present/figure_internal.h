@@ -14,6 +14,9 @@ typedef struct sv_headline {
 
 /* Lines of the note are separated by newlines. */
 void sv_headline_make(const char *title, const char *note, sv_headline *ret_headline);
+/* As wide as so many columns of a page. */
+void sv_headline_make_wide(const char *title, const char *note, int columns,
+                           sv_headline *ret_headline);
 double sv_headline_height(const sv_headline *headline); /* centimetres */
 void sv_headline_add(const sv_headline *headline, sv_figure *figure);
 

@@ -181,6 +181,8 @@ sv_status sv_result_json(sv_context *context, const sv_result *result, char **re
     for (int32_t i = 0; i < result->n_points; i++)
         sv_json_push(&json, points, make_point(&json, &result->points[i]));
     sv_json_put(&json, document, "points", points);
+    if (result->finite_size != NULL)
+        sv_scaling_put(&json, document, result->finite_size);
     sv_json_put(&json, document, "complete", json_boolean(result->complete));
     sv_json_put_real(&json, timings, "seconds", result->seconds);
     sv_json_put(&json, document, "timings", timings);

@@ -70,6 +70,11 @@ json_t *sv_json_pair(sv_json *json, const double pair[2]);
 /* Writes and gives back the document. */
 sv_status sv_json_finish(sv_json *json, json_t *document, char **ret_text);
 
+/* ------------------------------------------------------------- scaling.c */
+
+void sv_scaling_put(sv_json *json, json_t *document, const sv_finite_size *study);
+void sv_scaling_print(const sv_finite_size *study, bool colour, FILE *stream);
+
 /* -------------------------------------------------------------- survey.c */
 
 void sv_survey_put(sv_json *json, json_t *marker, const sv_survey *survey);
@@ -92,6 +97,8 @@ void sv_coarse_print(const sv_coarse *map, FILE *stream);
 /* One cell of a table: padded to `width` columns, then two spaces. */
 void sv_table_cell(FILE *stream, const char *text, int width, bool right);
 void sv_table_heading(FILE *stream, const char *text, bool colour);
+/* Over as many lines as it takes, broken at spaces, indented. */
+void sv_table_wrapped(FILE *stream, const char *text);
 
 /* -------------------------------------------------------------- raster.c */
 

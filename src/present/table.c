@@ -180,28 +180,6 @@ static void print_index_sentence(FILE *stream, const sv_result *result, int mark
             (long long)first->index);
 }
 
-/* Small print over as many lines as it takes, broken at spaces. */
-static void print_wrapped(FILE *stream, const char *text)
-{
-    char clean[1024];
-    int used = 0;
-    sv_text_clean(text, clean, sizeof clean);
-    char *rest = NULL;
-    for (char *word = strtok_r(clean, " ", &rest); word != NULL;
-         word = strtok_r(NULL, " ", &rest)) {
-        char fitted[512];
-        sv_words_fit(word, LINE_COLUMNS - 4, fitted, sizeof fitted);
-        const int width = sv_words_width(fitted);
-        if (used + 1 + width > LINE_COLUMNS) {
-            fprintf(stream, "\n");
-            used = 0;
-        }
-        fprintf(stream, "%s%s", used == 0 ? "  " : " ", fitted);
-        used += width + (used == 0 ? 2 : 1);
-    }
-    fprintf(stream, "\n");
-}
-
 /* The first reason of the block stands for all. */
 static void print_reason(FILE *stream, const sv_result *result, int marker)
 {
@@ -211,11 +189,11 @@ static void print_reason(FILE *stream, const sv_result *result, int marker)
         const sv_summary *summary = &result->points[i].summaries[marker];
         if (!summary->exists && !none) {
             snprintf(text, sizeof text, "None: %s.", summary->reason);
-            print_wrapped(stream, text);
+            sv_table_wrapped(stream, text);
             none = true;
         } else if (summary->exists && summary->unresolved > 0 && !open) {
             snprintf(text, sizeof text, "Unresolved, for one: %s.", summary->unresolved_reason);
-            print_wrapped(stream, text);
+            sv_table_wrapped(stream, text);
             open = true;
         }
     }
@@ -246,6 +224,8 @@ void sv_result_print(const sv_result *result, bool colour, FILE *stream)
     }
     for (int i = 0; i < result->points[0].n_summaries; i++)
         print_block(stream, result, i, colour);
+    if (result->finite_size != NULL)
+        sv_scaling_print(result->finite_size, colour, stream);
     fprintf(stream, "\n  n: realisations; 0.9981(4) means 0.9981 with a standard error of 0.0004."
                     "\n  The interval is where the mean over all disorder lies with 95 %% "
                     "confidence.\n");

@@ -148,6 +148,17 @@ static sv_status draw_survey(session *s, const char *folder)
     return status;
 }
 
+static sv_status draw_scaling(session *s, const sv_result *result, const char *folder)
+{
+    sv_figure_files files;
+    if (result->finite_size == NULL)
+        return SV_OK;
+    sv_status status = sv_figure_scaling(s->context, folder, "finite_size", result, &files);
+    if (status == SV_OK)
+        name_figure(&files, "finite size");
+    return status;
+}
+
 static sv_status draw_sweep(session *s, const sv_result *result, const char *folder)
 {
     sv_figure_files files;
@@ -208,6 +219,8 @@ static sv_status report(session *s, sv_run *run)
         status = figure_folder(s, run, folder, sizeof folder);
     if (status == SV_OK)
         status = draw_sweep(s, &result, folder);
+    if (status == SV_OK)
+        status = draw_scaling(s, &result, folder);
     if (status == SV_OK)
         status = draw_map(s, folder);
     if (status == SV_OK)

@@ -137,6 +137,9 @@ int fail_exit(const sv_context *context, sv_status status);
 sv_status result_make(session *s, const sv_ensemble *ensemble, const sv_stop_rule *stop,
                       sv_result *ret);
 void result_free(sv_context *context, sv_result *result);
+/* The study that the block `finite_size` asks for; nothing without one. */
+sv_status finite_size_make(session *s, const sv_ensemble *ensemble, const sv_result *result,
+                           sv_finite_size **ret_study);
 sv_stop_rule session_stop_rule(const session *s);
 
 /* A run folder for the ensemble of a session (run_folder.c): opened for writing, the resolved sheet

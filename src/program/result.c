@@ -46,6 +46,8 @@ sv_status result_make(session *s, const sv_ensemble *ensemble, const sv_stop_rul
     sv_status status = sv_take(s->context, s->n_points, sizeof *result.points, &result.points);
     for (int32_t k = 0; status == SV_OK && k < s->n_points; k++)
         status = fill_point(s, ensemble, stop, k, &result.points[k], &result.complete);
+    if (status == SV_OK)
+        status = finite_size_make(s, ensemble, &result, &result.finite_size);
     if (status != SV_OK) {
         result_free(s->context, &result);
         return status;
@@ -60,5 +62,8 @@ void result_free(sv_context *context, sv_result *result)
         for (int m = 0; m < result->points[k].n_summaries; m++)
             sv_summary_free(context, &result->points[k].summaries[m]);
     sv_give(context, result->points);
+    if (result->finite_size != NULL)
+        sv_scaling_free(context, &result->finite_size->scaling);
+    sv_give(context, result->finite_size);
     *result = (sv_result){0};
 }

@@ -11,7 +11,7 @@
  * gives counts by its values. */
 static const char EXEMPT_KEYS[] =
     "ensemble.realisations ensemble.threads model.preset question.most";
-static const char EXEMPT_BLOCKS[] = "ensemble.stop";
+static const char EXEMPT_BLOCKS[] = "ensemble.stop finite_size";
 
 static bool is_exempt(const sv_section *section, const char *key)
 {

@@ -213,6 +213,7 @@ bool sv_setup_build(sv_reader *reader, sv_setup *setup)
     good = sv_setup_ensemble(reader, setup) && good;
     good = good && (is_point || sv_question_read(reader, setup));
     good = good && (is_point || sv_plateau_read(reader, setup));
+    good = good && (is_point || sv_finite_size_read(reader, setup));
     if (!good || !sv_reader_good(reader))
         return false;
     if (reader->geometry && !sv_setup_geometry(reader, setup))

@@ -379,6 +379,11 @@ bool sv_sweep_read(sv_reader *reader, sv_setup *setup);
 bool sv_sweep_read_numbers(sv_reader *reader, const sv_node *path_node, const sv_node *const *nodes,
                            int n, sv_sweep_axis *axis);
 
+/* ------------------------------------------------------- finite_size.c */
+
+/* The block `finite_size`, where there is one; after markers and sweep. */
+bool sv_finite_size_read(sv_reader *reader, sv_setup *setup);
+
 /* ---------------------------------------------------------- question.c */
 
 /* The block `question`, where there is one. */

@@ -77,7 +77,8 @@ static bool is_pair(const sv_key *key)
 static bool is_swept_block(const sv_block *block)
 {
     return block->name[0] != '\0' &&
-           !sv_words_hold("ensemble stop sweep question criterion budget plateau", block->name);
+           !sv_words_hold("ensemble stop sweep question criterion budget plateau finite_size",
+                          block->name);
 }
 
 /* Sizes of a flake; elsewhere [n, n] is no more likely to be meant than anything else. */
