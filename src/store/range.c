@@ -23,7 +23,8 @@ static bool outcome_is_sane(const sv_outcome *o)
     return o->verdict >= SV_RESOLVED && o->verdict <= SV_FAILED && value &&
            o->index > -(int64_t)largest && o->index < (int64_t)largest &&
            is_error(o->numerical_error) && is_error(o->estimator_error) &&
-           is_count(o->window_cells) && is_count(o->electrons) && o->degree >= 0;
+           is_count(o->window_cells) && (o->electrons == -1 || is_count(o->electrons)) &&
+           o->degree >= 0; /* −1 electrons: not counted */
 }
 
 bool sv_record_is_sane(const sv_record *record)
