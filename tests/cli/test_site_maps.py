@@ -4,6 +4,7 @@ import csv
 import functools
 import json
 import os
+import shutil
 import signal
 import subprocess
 import tempfile
@@ -11,7 +12,7 @@ import time
 
 import numpy
 
-from harness import check, close, contains, equal, folder, main, read, run, test, write
+from harness import check, close, contains, equal, folder, main, read, run, run_any, test, write
 
 # A transaction per realisation: in memory where there is such a place, no test here cuts the power.
 if os.access("/dev/shm", os.W_OK):
@@ -124,6 +125,21 @@ def threads_and_steps_leave_no_trace():
         for n in steps:
             average(sheet, place, "-n", str(n), "-j", str(threads))
         equal(maps(place), expected, "maps of %d threads" % threads)
+
+
+@test
+def ranks_leave_no_trace():
+    if shutil.which("mpirun") is None or not run("info", "--json").json().get("mpi"):
+        print("# no MPI: not tried")
+        return
+    sheet, _, expected = alone()
+    place = os.path.join(folder(), "run")
+    done = run_any(["mpirun", "-n", "2", os.environ["SELVEDGE"], "average", sheet, "-o", place, "-q", "-j", "1"],
+                   env={"OMPI_ALLOW_RUN_AS_ROOT": "1", "OMPI_ALLOW_RUN_AS_ROOT_CONFIRM": "1",
+                        "OMPI_MCA_btl": "self,vader", "OMPI_MCA_rmaps_base_oversubscribe": "1",
+                        "OMPI_MCA_plm_rsh_agent": ""})
+    equal(done.code, 0, "exit code of the ranks\n" + done.err)
+    equal(maps(place), expected, "maps of two ranks")
 
 
 @test
