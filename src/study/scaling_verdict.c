@@ -74,14 +74,14 @@ void sv_scaling_refuse(sv_scaling *s, const sv_scaling_options *options,
     if (s->n_sizes >= 2 && !widest->found)
         add_reason(c, "the curves of %.6g and %.6g do not cross: %s", widest->sizes[0],
                    widest->sizes[1], widest->reason);
+    if (least_values < LEAST_VALUES)
+        add_reason(c, "a mean of only %lld realisations: its error needs at least %d",
+                   (long long)least_values, LEAST_VALUES);
     if (!c->fitted) {
         add_reason(c, "no fit: it needs three parameters at least and three means more than its "
                       "own parameters");
         return;
     }
-    if (least_values < LEAST_VALUES)
-        add_reason(c, "a mean of only %lld realisations: its error needs at least %d",
-                   (long long)least_values, LEAST_VALUES);
     judge_errors(s, c);
     judge_fit(c);
     judge_smallest(c);
