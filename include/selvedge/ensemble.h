@@ -239,7 +239,7 @@ SV_API SV_MUST_USE sv_status sv_ensemble_run(sv_context *context, const sv_case 
 
 /**
  * Computes realisations for rank 0 of a team until it says that there are no more. The points must be
- * those rank 0 has. Waiting costs a look for messages every millisecond.
+ * those rank 0 has. Waiting costs a look for messages every five milliseconds.
  * @return SV_OK when rank 0 ended it, whatever the reason; SV_INTERNAL for a message that is none,
  *         or the status of the team's functions. A failure to compute is told to rank 0.
  */

@@ -20,12 +20,12 @@ typedef struct crew {
     int64_t *next;        /* next realisation to hand out, one per point */
     int64_t done, total;  /* for progress */
     int64_t handed;       /* handed out, not back */
-    double last_progress;
+    double last_progress, last_store;
     pool *pool;
     team_desk *team;
     sv_record *fresh; /* results not stored yet, room for MOST_AT_ONCE */
     int n_fresh;
-    bool sink_failed;
+    bool sink_failed, winding_up;
     sv_status status; /* why nothing more is handed out */
 } crew;
 
@@ -104,13 +104,24 @@ static void drop_maps(crew *c, int n)
     }
 }
 
+/* Is it time to store what came in? A kill costs at most so much work; the stop rule waits for
+ * nothing. */
+static bool store_is_due(const crew *c)
+{
+    const double pause = 0.2;
+    return c->n_fresh == MOST_AT_ONCE || c->winding_up || c->options->stop.active ||
+           sv_seconds_now() - c->last_store >= pause;
+}
+
 /* Stores what came in: together where the sink can, so that a slow disk is waited for once. */
 static void store(crew *c)
 {
     const sv_sink *sink = &c->options->sink;
     const int n = c->n_fresh;
+    if (n == 0 || !store_is_due(c))
+        return;
     c->n_fresh = 0;
-    if (n == 0 || c->sink_failed) {
+    if (c->sink_failed) {
         drop_maps(c, n);
         return;
     }
@@ -128,6 +139,7 @@ static void store(crew *c)
         c->sink_failed = true;
     }
     drop_maps(c, n);
+    c->last_store = sv_seconds_now();
     report(c, false);
 }
 
@@ -198,7 +210,7 @@ static void pump(crew *c)
 /* How long nothing need be looked at: results of threads wake the desk, messages do not. */
 static double patience(const crew *c)
 {
-    double seconds = c->team != NULL ? 0.001 : 0.1;
+    double seconds = c->team != NULL ? 0.005 : 0.1;
     if (c->deadline > 0.0 && c->status == SV_OK)
         seconds = fmax(0.0, fmin(seconds, c->deadline - sv_seconds_now()));
     return seconds;
@@ -213,6 +225,7 @@ static bool is_busy(const crew *c)
 static void wind_up(crew *c)
 {
     bool told = false;
+    c->winding_up = true;
     for (;;) {
         bool abort_running = c->status != SV_OK && sv_cancelled(c->context);
         pool_stop(c->pool, abort_running);

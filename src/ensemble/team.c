@@ -416,7 +416,7 @@ static sv_status help(sv_context *context, helper *h, int32_t n_points)
                 return status;
             return send(context, h->team, 0, h->message, WORD_END, 0, 0);
         }
-        pool_wait(h->pool, 0.001);
+        pool_wait(h->pool, 0.005);
     }
 }
 
