@@ -455,7 +455,8 @@ typedef struct sv_split {
     double columns;            /**< sampled columns or vectors per realisation, as run */
     double step, most;         /**< they come in blocks of `step`, at most `most` */
     double estimator_error;    /**< of one realisation at `columns` */
-    double disorder_deviation; /**< of the marker, without the estimator's part */
+    double disorder_deviation; /**< of the marker, without the estimator's part; no smaller than
+                                    what can be told from none */
     double seconds_fixed, seconds_per_column;
     double best_columns;
     double work;         /**< for the same error of the mean, relative to `columns` */

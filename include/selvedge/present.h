@@ -45,6 +45,8 @@ typedef struct sv_point_result {
     sv_summary summaries[SV_MAX_MARKERS];
     int n_summaries;
     sv_site_summary sites;
+    bool has_split; /**< the window was sampled, and `split` says how it might be better */
+    sv_split split;
 } sv_point_result;
 
 /** Curves of several flake sizes compared, and what came out. */
@@ -54,11 +56,21 @@ typedef struct sv_finite_size {
     sv_scaling scaling;            /**< in the units of the axes */
 } sv_finite_size;
 
+/** Two points compared, and why. */
+typedef struct sv_compared {
+    sv_comparison comparison;
+    bool first;     /**< with the first point of the sweep */
+    bool neighbour; /**< with the one before it along an axis */
+} sv_compared;
+
 /** All a table, a JSON document or a sweep figure needs. */
 typedef struct sv_result {
     const char *title;
     sv_point_result *points;
     int32_t n_points;
+    sv_compared *comparisons; /**< with the first point, then along the axes; all markers of a pair
+                                   follow each other */
+    int32_t n_comparisons;
     double seconds; /**< of this invocation; kept outside `points` */
     bool complete;  /**< false: stopped early */
     sv_finite_size *finite_size; /**< or NULL */
@@ -84,6 +96,9 @@ SV_API SV_MUST_USE sv_status sv_result_json(sv_context *context, const sv_result
 /** CSV of all points: one row per point and marker, a header with the parameter paths. */
 SV_API SV_MUST_USE sv_status sv_result_csv(sv_context *context, const sv_result *result,
                                            char **ret_text);
+/** CSV of the comparisons: one row per pair of points and marker. */
+SV_API SV_MUST_USE sv_status sv_comparisons_csv(sv_context *context, const sv_result *result,
+                                                char **ret_text);
 /** Table for a terminal, at most 80 columns. */
 SV_API void sv_result_print(const sv_result *result, bool colour, FILE *stream);
 

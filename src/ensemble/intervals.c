@@ -80,8 +80,8 @@ bool sv_interval_warning(const sv_moments *m, const sv_peaks *peaks, char *messa
         double seen[2];
         sv_exact_interval(0, m->n, 0.90, seen); /* its upper end alone: one-sided 95 % */
         snprintf(message, size,
-                 "all %lld values are the same: another value of up to %.2g %% of the realisations "
-                 "would not have been seen",
+                 "all %lld values are the same: others in up to %.2g %% of the realisations "
+                 "may be unseen",
                  (long long)m->n, 100.0 * seen[1]);
     } else if (m->n < FEW_VALUES) {
         snprintf(message, size,

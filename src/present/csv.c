@@ -79,10 +79,25 @@ static void add_head(sv_draft *text, const sv_result *result)
                        "interval_high,confidence,deviation");
     for (int i = 0; i < SV_N_QUANTILES; i++)
         sv_draft_add(text, ",quantile_%.2f", sv_quantile_levels()[i]);
-    sv_draft_add(text,
-                 ",bounds_low,bounds_high,shares,numerical_error,estimator_error,"
-                 "%ssmallest_margin,engine,reason\n",
-                 any_estimated(result) ? "disorder_deviation," : "");
+    sv_draft_add(
+        text,
+        ",bounds_low,bounds_high,shares,numerical_error,estimator_error,"
+        "%ssmallest_margin,engine,reason,skewness,corrected_low,corrected_high,bca_low,bca_high,"
+        "warning\n",
+        any_estimated(result) ? "disorder_deviation," : "");
+}
+
+/* Later columns of the table, behind those that were there first. */
+static void add_spread(sv_draft *text, const sv_summary *summary)
+{
+    const double numbers[] = {summary->skewness, summary->interval_corrected[0],
+                              summary->interval_corrected[1], summary->interval_bca[0],
+                              summary->interval_bca[1]};
+    const bool exists = summary->exists;
+    for (size_t i = 0; i < sizeof numbers / sizeof *numbers; i++)
+        add_real(text, exists && (i == 0 || !summary->is_index) ? numbers[i] : (double)NAN);
+    sv_draft_add(text, ",");
+    add_field(text, exists ? summary->warning : "");
 }
 
 static void add_row(sv_draft *text, const sv_point_result *point, const sv_summary *summary,
@@ -123,6 +138,7 @@ static void add_row(sv_draft *text, const sv_point_result *point, const sv_summa
     add_field(text, !summary->exists          ? summary->reason
                     : summary->unresolved > 0 ? summary->unresolved_reason
                                               : "");
+    add_spread(text, summary);
     sv_draft_add(text, "\n");
 }
 

@@ -27,6 +27,7 @@ static json_t *make_shares(sv_json *json, const sv_summary *summary)
         sv_json_put_integer(json, object, "count", share->count);
         sv_json_put_real(json, object, "share", share->share);
         sv_json_put(json, object, "interval", sv_json_pair(json, share->interval));
+        sv_json_put(json, object, "exact_interval", sv_json_pair(json, share->exact_interval));
         sv_json_push(json, array, object);
     }
     return array;
@@ -49,12 +50,10 @@ static void put_mean(sv_json *json, json_t *object, const sv_summary *summary)
     const bool spread = isfinite(summary->standard_error);
     sv_json_put_real(json, object, "mean", summary->mean);
     sv_json_put_real(json, object, "standard_error", summary->standard_error);
-    sv_json_put(json, object, "interval",
-                isfinite(summary->interval[0]) ? sv_json_pair(json, summary->interval)
-                                               : json_null());
+    sv_json_put_range(json, object, "interval", summary->interval);
     sv_json_put_real(json, object, "confidence", summary->confidence);
     sv_json_put_real(json, object, "deviation", spread ? summary->deviation : (double)NAN);
-    sv_json_put_real(json, object, "skewness", summary->skewness);
+    sv_spread_put(json, object, summary);
     if (!spread)
         sv_json_put_text(json, object, "reason",
                          "a standard error needs at least two resolved realisations");
@@ -97,7 +96,7 @@ static json_t *make_marker(sv_json *json, const sv_summary *summary)
     return object;
 }
 
-static json_t *make_parameters(sv_json *json, const sv_point_result *point)
+json_t *sv_json_parameters(sv_json *json, const sv_point_result *point)
 {
     json_t *object = json_object();
     for (int i = 0; i < point->n_coordinates; i++) {
@@ -156,7 +155,7 @@ static json_t *make_sites(sv_json *json, const sv_site_summary *sites)
 static json_t *make_point(sv_json *json, const sv_point_result *point)
 {
     json_t *object = json_object(), *markers = json_object(), *inventory = json_object();
-    sv_json_put(json, object, "parameters", make_parameters(json, point));
+    sv_json_put(json, object, "parameters", sv_json_parameters(json, point));
     put_units(json, object, point);
     sv_json_put_integer(json, object, "realisations", point->realisations);
     sv_json_put_real(json, inventory, "sites", point->mean_sites);
@@ -171,6 +170,31 @@ static json_t *make_point(sv_json *json, const sv_point_result *point)
     return object;
 }
 
+/* What a sampled window costs depends on the machine, so it stands with the timings. */
+static void put_splits(sv_json *json, json_t *timings, const sv_result *result)
+{
+    json_t *array = json_array();
+    for (int32_t i = 0; i < result->n_points; i++) {
+        const sv_split *split = &result->points[i].split;
+        if (!result->points[i].has_split)
+            continue;
+        json_t *object = json_object();
+        sv_json_put_integer(json, object, "point", i);
+        sv_json_put_real(json, object, "columns", split->columns);
+        sv_json_put_real(json, object, "disorder_deviation", split->disorder_deviation);
+        sv_json_put_real(json, object, "best_columns", split->best_columns);
+        sv_json_put_real(json, object, "realisations", split->realisations);
+        sv_json_put_real(json, object, "work", split->work);
+        sv_json_put_real(json, object, "seconds_fixed", split->seconds_fixed);
+        sv_json_put_real(json, object, "seconds_per_column", split->seconds_per_column);
+        sv_json_push(json, array, object);
+    }
+    if (json_array_size(array) > 0)
+        sv_json_put(json, timings, "split", array);
+    else
+        json_decref(array);
+}
+
 sv_status sv_result_json(sv_context *context, const sv_result *result, char **ret_text)
 {
     sv_json json = {.context = context};
@@ -183,8 +207,10 @@ sv_status sv_result_json(sv_context *context, const sv_result *result, char **re
     sv_json_put(&json, document, "points", points);
     if (result->finite_size != NULL)
         sv_scaling_put(&json, document, result->finite_size);
+    sv_comparisons_put(&json, document, result);
     sv_json_put(&json, document, "complete", json_boolean(result->complete));
     sv_json_put_real(&json, timings, "seconds", result->seconds);
+    put_splits(&json, timings, result);
     sv_json_put(&json, document, "timings", timings);
     return sv_json_finish(&json, document, ret_text);
 }

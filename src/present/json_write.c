@@ -32,6 +32,12 @@ json_t *sv_json_pair(sv_json *json, const double pair[2])
     return array;
 }
 
+void sv_json_put_range(sv_json *json, json_t *object, const char *key, const double pair[2])
+{
+    sv_json_put(json, object, key,
+                isfinite(pair[0]) && isfinite(pair[1]) ? sv_json_pair(json, pair) : json_null());
+}
+
 void sv_json_put_real(sv_json *json, json_t *object, const char *key, double value)
 {
     sv_json_put(json, object, key, sv_json_real(value));

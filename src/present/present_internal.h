@@ -67,6 +67,8 @@ void sv_json_put_integer(sv_json *json, json_t *object, const char *key, int64_t
 void sv_json_put_text(sv_json *json, json_t *object, const char *key, const char *value);
 json_t *sv_json_real(double value);
 json_t *sv_json_pair(sv_json *json, const double pair[2]);
+/* A pair, or null when it does not exist. */
+void sv_json_put_range(sv_json *json, json_t *object, const char *key, const double pair[2]);
 /* Writes and gives back the document. */
 sv_status sv_json_finish(sv_json *json, json_t *document, char **ret_text);
 
@@ -74,6 +76,19 @@ sv_status sv_json_finish(sv_json *json, json_t *document, char **ret_text);
 
 void sv_scaling_put(sv_json *json, json_t *document, const sv_finite_size *study);
 void sv_scaling_print(const sv_finite_size *study, bool colour, FILE *stream);
+
+/* ---------------------------------------------------------------- json.c */
+
+json_t *sv_json_parameters(sv_json *json, const sv_point_result *point);
+
+/* --------------------------------------------------------- json_spread.c */
+
+void sv_spread_put(sv_json *json, json_t *object, const sv_summary *summary);
+
+/* --------------------------------------------------------- comparisons.c */
+
+void sv_comparisons_put(sv_json *json, json_t *document, const sv_result *result);
+void sv_comparisons_sentence(const sv_result *result, const char *marker, FILE *stream);
 
 /* -------------------------------------------------------------- survey.c */
 

@@ -6,7 +6,7 @@
 
 #include "present_internal.h"
 
-enum { UNRESOLVED_COLUMNS = 10, INTERVAL_COLUMNS = 21, LINE_COLUMNS = 79 };
+enum { UNRESOLVED_COLUMNS = 10, INTERVAL_COLUMNS = 21, LINE_COLUMNS = 79, FEW_VALUES = 10 };
 
 /* Column widths: one parameter gets room for its whole name. */
 typedef struct widths {
@@ -124,6 +124,29 @@ static void print_estimator(FILE *stream, const sv_summary *summary)
     print_remark(stream, remark);
 }
 
+/* Why the interval of the row is not to be trusted, and what to use instead. That there are too few
+ * values to tell is said once, under the table. */
+static bool warns(const sv_summary *summary)
+{
+    return summary->exists && summary->warning[0] != '\0' && summary->resolved >= FEW_VALUES;
+}
+
+static void print_warning(FILE *stream, const sv_summary *summary)
+{
+    char remark[300], pair[80];
+    if (!warns(summary))
+        return;
+    format_pair(summary->interval_corrected, summary->standard_error, pair, sizeof pair);
+    if (isnan(summary->skewness))
+        snprintf(remark, sizeof remark, "! all the same: others in up to %.2g %% may be unseen",
+                 100.0 * (1.0 - pow(0.05, 1.0 / (double)summary->resolved)));
+    else if (summary->peaks.apart)
+        snprintf(remark, sizeof remark, "! two-peaked: use %s, or the histogram", pair);
+    else
+        snprintf(remark, sizeof remark, "! skewed (%.2g): use %s", summary->skewness, pair);
+    print_remark(stream, remark);
+}
+
 static void print_row(FILE *stream, const sv_point_result *point, const sv_summary *summary,
                       bool colour)
 {
@@ -150,6 +173,7 @@ static void print_row(FILE *stream, const sv_point_result *point, const sv_summa
     print_unresolved(stream, summary, colour);
     if (sv_words_estimated(summary))
         print_estimator(stream, summary);
+    print_warning(stream, summary);
 }
 
 /* How far the index of the first point stays the one of most realisations. */
@@ -213,6 +237,27 @@ static void print_block(FILE *stream, const sv_result *result, int marker, bool 
     print_reason(stream, result, marker);
     if (first->is_index)
         print_index_sentence(stream, result, marker);
+    sv_comparisons_sentence(result, first->marker, stream);
+}
+
+/* Warnings of the intervals, each explained once. */
+static void print_legend_of_warnings(FILE *stream, const sv_result *result)
+{
+    bool uneven = false, few = false;
+    for (int32_t k = 0; k < result->n_points; k++)
+        for (int m = 0; m < result->points[k].n_summaries; m++) {
+            const sv_summary *summary = &result->points[k].summaries[m];
+            uneven = uneven || (warns(summary) && !isnan(summary->skewness));
+            few = few || (summary->exists && !summary->is_index && summary->resolved > 1 &&
+                          summary->resolved < FEW_VALUES);
+        }
+    if (uneven)
+        fprintf(stream,
+                "  !: the interval covers less than 95 %%; the one to use instead is corrected "
+                "for\n  skewness (docs/statistics.md).\n");
+    if (few)
+        fprintf(stream, "  Fewer than 10 realisations do not show whether they are skewed: "
+                        "their\n  intervals are for normal values.\n");
 }
 
 void sv_result_print(const sv_result *result, bool colour, FILE *stream)
@@ -229,6 +274,7 @@ void sv_result_print(const sv_result *result, bool colour, FILE *stream)
     fprintf(stream, "\n  n: realisations; 0.9981(4) means 0.9981 with a standard error of 0.0004."
                     "\n  The interval is where the mean over all disorder lies with 95 %% "
                     "confidence.\n");
+    print_legend_of_warnings(stream, result);
     if (!result->complete)
         fprintf(stream, "  Stopped early: some realisations are missing; the same command goes "
                         "on.\n");

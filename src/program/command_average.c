@@ -93,7 +93,11 @@ static sv_status show_results(session *s, sv_run *run, const sv_ensemble *ensemb
     if (status == SV_OK)
         status = site_maps_add(s, run, true, &result);
     if (status == SV_OK)
+        status = split_advise(s, ensemble, &result);
+    if (status == SV_OK)
         run_folder_warn(s, &result);
+    if (status == SV_OK)
+        split_tell(s, &result);
     if (status == SV_OK)
         status = run_folder_write(s, run, &result, &json);
     if (status == SV_OK && s->options->json)

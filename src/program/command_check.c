@@ -137,11 +137,13 @@ int run_check(sv_context *context, const options *o)
         sv_give(context, plans);
         printf("#\n# forecast\n");
         print_forecast(&f, &s, "#   ", stdout);
+        status = split_forecast(&s, stdout);
         print_film(&s);
         defects_print(&s.base, stdout);
         fputs(sample, stdout);
         film_print(&film, s.n_points, stdout);
-        status = presets_print_sources(context, s.sheet, stdout);
+        if (status == SV_OK)
+            status = presets_print_sources(context, s.sheet, stdout);
         code = status == SV_OK ? code : fail_exit(context, status);
     }
     film_warn(context, &film);

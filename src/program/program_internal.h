@@ -140,6 +140,8 @@ void result_free(sv_context *context, sv_result *result);
 /* The study that the block `finite_size` asks for; nothing without one. */
 sv_status finite_size_make(session *s, const sv_ensemble *ensemble, const sv_result *result,
                            sv_finite_size **ret_study);
+/* Adds the comparisons of its points (compare.c); none for a single point or a huge sweep. */
+sv_status comparisons_make(session *s, const sv_ensemble *ensemble, sv_result *result);
 sv_stop_rule session_stop_rule(const session *s);
 
 /* A run folder for the ensemble of a session (run_folder.c): opened for writing, the resolved sheet
@@ -268,6 +270,15 @@ int run_report(sv_context *context, const options *o);
 int run_export(sv_context *context, const options *o);
 int run_info(sv_context *context, const options *o);
 int run_help(sv_context *context, const options *o);
+
+/* ------------------------------------------------------------ split.c */
+
+/* Fills has_split and split of the points whose window was sampled. */
+sv_status split_advise(session *s, const sv_ensemble *ensemble, sv_result *result);
+/* A note for each point where another split saves a tenth of the work. */
+void split_tell(session *s, const sv_result *result);
+/* A comment for `check`: what spread the planned number of columns is best for. */
+sv_status split_forecast(session *s, FILE *stream);
 
 /* ---------------------------------------------------------- defects.c */
 

@@ -39,6 +39,24 @@ static sv_status fill_point(session *s, const sv_ensemble *ensemble, const sv_st
     return SV_OK;
 }
 
+/* Bootstrap intervals for all, unless that is more than a few seconds of random numbers. */
+static sv_status add_bootstrap(session *s, const sv_ensemble *ensemble, sv_result *result)
+{
+    const int64_t resamples = 2000;
+    const double most_draws = 5e8;
+    double draws = 0.0;
+    sv_status status = SV_OK;
+    for (int32_t k = 0; k < result->n_points; k++)
+        draws += (double)result->points[k].realisations * result->points[k].n_summaries;
+    if (draws * (double)resamples > most_draws)
+        return SV_OK;
+    for (int32_t k = 0; status == SV_OK && k < result->n_points; k++)
+        for (int m = 0; status == SV_OK && m < result->points[k].n_summaries; m++)
+            status = sv_summary_bootstrap(s->context, ensemble, &s->points[k].problem, k, m,
+                                          resamples, &result->points[k].summaries[m]);
+    return status;
+}
+
 sv_status result_make(session *s, const sv_ensemble *ensemble, const sv_stop_rule *stop,
                       sv_result *ret)
 {
@@ -48,6 +66,10 @@ sv_status result_make(session *s, const sv_ensemble *ensemble, const sv_stop_rul
         status = fill_point(s, ensemble, stop, k, &result.points[k], &result.complete);
     if (status == SV_OK)
         status = finite_size_make(s, ensemble, &result, &result.finite_size);
+    if (status == SV_OK)
+        status = add_bootstrap(s, ensemble, &result);
+    if (status == SV_OK)
+        status = comparisons_make(s, ensemble, &result);
     if (status != SV_OK) {
         result_free(s->context, &result);
         return status;
@@ -65,5 +87,6 @@ void result_free(sv_context *context, sv_result *result)
     if (result->finite_size != NULL)
         sv_scaling_free(context, &result->finite_size->scaling);
     sv_give(context, result->finite_size);
+    sv_give(context, result->comparisons);
     *result = (sv_result){0};
 }

@@ -120,12 +120,16 @@ sv_status run_folder_put_text(session *s, sv_run *run, const char *name, const c
 
 sv_status run_folder_write(session *s, sv_run *run, const sv_result *result, char **ret_json)
 {
-    char *json = NULL, *csv = NULL;
+    char *json = NULL, *csv = NULL, *comparisons = NULL;
     sv_status status = sv_result_json(s->context, result, &json);
     if (status == SV_OK)
         status = sv_result_csv(s->context, result, &csv);
+    if (status == SV_OK && result->n_comparisons > 0)
+        status = sv_comparisons_csv(s->context, result, &comparisons);
     if (status == SV_OK)
         status = run_folder_put_text(s, run, "points.csv", csv);
+    if (status == SV_OK && comparisons != NULL)
+        status = run_folder_put_text(s, run, "comparisons.csv", comparisons);
     if (status == SV_OK)
         status = run_folder_put_text(s, run, "summary.json", json);
     if (status == SV_OK) {
@@ -134,6 +138,7 @@ sv_status run_folder_write(session *s, sv_run *run, const sv_result *result, cha
     }
     sv_give(s->context, json);
     sv_give(s->context, csv);
+    sv_give(s->context, comparisons);
     return status;
 }
 

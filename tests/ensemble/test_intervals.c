@@ -212,5 +212,5 @@ SV_TEST(warnings)
     CHECK(warns(x, 100, "two-peaked: 7 of 100 values about 0.103, the others about 1.05"));
     for (int k = 0; k < 100; k++)
         x[k] = 0.3; /* 1 − 0.05^(1/100) = 2.95 % */
-    CHECK(warns(x, 100, "all 100 values are the same: another value of up to 3 %"));
+    CHECK(warns(x, 100, "all 100 values are the same: others in up to 3 %"));
 }

@@ -105,6 +105,13 @@ SV_TEST(what_counts)
     CHECK(state.counted == 60 && state.judged == 40 && state.resolved == 20);
     CHECK(state.mean == 1.0 && state.squares == 0.0 && state.counts[0] == 20);
     CHECK_CLOSE(state.seconds, 15.0, 1e-12);
+    /* 61 values that agree are enough for 0.06; half as many unresolved ones spoil the share */
+    state = (sv_stop_state){0};
+    rule.share_width = 0.06;
+    bool holds = false;
+    for (int k = 0; k < 120; k++)
+        holds = sv_stop_add(&state, &rule, k % 3 == 0 ? SV_UNRESOLVED : SV_RESOLVED, 1.0, 0.0);
+    CHECK(!holds && state.resolved == 80);
 }
 
 /* Time ends what precision would not, but not before at_least. */

@@ -15,6 +15,7 @@
 typedef struct fixture {
     sv_point_result points[3];
     sv_index_share shares[3][2];
+    sv_compared comparisons[2];
     sv_result result;
 } fixture;
 
@@ -30,6 +31,19 @@ static inline void fixture_fill_chern(sv_summary *s, int i)
                       .standard_error = 0.0004,
                       .interval = {0.9973 - 0.25 * i, 0.9989 - 0.25 * i},
                       .confidence = 0.95,
+                      .skewness = -2.5,
+                      .kurtosis = 7.5,
+                      .interval_corrected = {0.9962 - 0.25 * i, 0.9987 - 0.25 * i},
+                      .interval_bca = {0.9964 - 0.25 * i, 0.9988 - 0.25 * i},
+                      .resamples = 2000,
+                      .peaks = {.explained = 0.7, .n_low = 30, .low = 0.98, .high = 1.0},
+                      .quantile_intervals = {{(double)NAN, 0.15},
+                                             {0.15, 0.25},
+                                             {0.25, 0.35},
+                                             {0.35, 0.45},
+                                             {0.45, (double)NAN}},
+                      .histogram = {.low = 0.9, .width = 0.05, .n_bins = 2, .counts = {40, 160}},
+                      .disorder_deviation = 0.0057,
                       .quantiles = {0.1, 0.2, 0.3, 0.4, 0.5},
                       .bounds = {(double)NAN, (double)NAN},
                       .numerical_error = 2e-8,
@@ -70,9 +84,28 @@ static inline void fixture_make(fixture *f)
         fixture_fill_chern(&point->summaries[0], i);
         fixture_fill_bott(&point->summaries[1], f->shares[i], i);
     }
+    for (int m = 0; m < 2; m++)
+        f->comparisons[m] = (sv_compared){.comparison = {.point = 2,
+                                                         .marker = m == 0 ? "local_chern" : "bott",
+                                                         .is_index = m == 1,
+                                                         .pairs = 197,
+                                                         .difference = -0.5,
+                                                         .standard_error = 0.0125,
+                                                         .interval = {-0.525, -0.475},
+                                                         .p_value = 0.0625,
+                                                         .adjusted_p_value = 0.03125,
+                                                         .correlation = 0.75,
+                                                         .unpaired_error = 0.025,
+                                                         .unpaired_p_value = 0.5,
+                                                         .index = 1,
+                                                         .lost = 100,
+                                                         .gained = 4},
+                                          .first = true};
     f->result = (sv_result){.title = "Invented vacancies",
                             .points = f->points,
                             .n_points = 3,
+                            .comparisons = f->comparisons,
+                            .n_comparisons = 2,
                             .seconds = 1.5,
                             .complete = true};
 }

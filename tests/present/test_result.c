@@ -64,6 +64,68 @@ SV_TEST(the_json_has_the_shape_of_the_contract)
     json_decref(document);
 }
 
+SV_TEST(the_spread_over_realisations)
+{
+    fixture f;
+    fixture_make(&f);
+    snprintf(f.points[1].summaries[0].warning, 200, "skewed (-2.5) for 200 values");
+    json_t *document = read_back(&f.result);
+    json_t *chern = marker_of(document, 0, "local_chern");
+    CHECK(number(chern, "skewness") == -2.5 && number(chern, "kurtosis") == 7.5);
+    CHECK(json_real_value(json_array_get(json_object_get(chern, "interval_corrected"), 0)) ==
+          0.9962);
+    CHECK(json_real_value(json_array_get(json_object_get(chern, "interval_bca"), 1)) == 0.9988);
+    CHECK_INT(json_integer_value(json_object_get(chern, "resamples")), 2000);
+    CHECK(json_object_get(chern, "warning") == NULL);
+    CHECK_TEXT(json_string_value(json_object_get(marker_of(document, 1, "local_chern"), "warning")),
+               "skewed (-2.5) for 200 values");
+    const json_t *intervals = json_object_get(chern, "quantile_intervals");
+    CHECK(json_is_null(json_array_get(json_object_get(intervals, "0.05"), 0)));
+    CHECK(json_real_value(json_array_get(json_object_get(intervals, "0.25"), 1)) == 0.25);
+    const json_t *histogram = json_object_get(chern, "histogram");
+    CHECK(number(histogram, "low") == 0.9 && number(histogram, "width") == 0.05);
+    CHECK_INT(json_array_size(json_object_get(histogram, "counts")), 2);
+    CHECK_INT(json_integer_value(json_array_get(json_object_get(histogram, "counts"), 1)), 160);
+    const json_t *peaks = json_object_get(chern, "two_peaks");
+    CHECK(json_is_false(json_object_get(peaks, "apart")) && number(peaks, "explained") == 0.7);
+    CHECK_INT(json_integer_value(json_array_get(json_object_get(peaks, "counts"), 1)), 170);
+    CHECK_CLOSE(number(json_object_get(chern, "error_parts"), "disorder"), 0.0057 / sqrt(200.0),
+                1e-18);
+    json_t *bott = marker_of(document, 1, "bott");
+    const json_t *share = json_array_get(json_object_get(bott, "shares"), 0);
+    CHECK(json_real_value(json_array_get(json_object_get(share, "exact_interval"), 1)) == 0.21);
+    CHECK(json_object_get(bott, "histogram") == NULL && number(bott, "skewness") == -2.5);
+    json_decref(document);
+}
+
+SV_TEST(comparisons_of_points)
+{
+    fixture f;
+    fixture_make(&f);
+    f.comparisons[1].neighbour = true;
+    json_t *document = read_back(&f.result);
+    const json_t *rows = json_object_get(document, "comparisons");
+    CHECK_INT(json_array_size(rows), 2);
+    const json_t *row = json_array_get(rows, 1);
+    CHECK_TEXT(json_string_value(json_object_get(row, "marker")), "bott");
+    CHECK_INT(json_array_size(json_object_get(row, "against")), 2);
+    CHECK(number(json_object_get(row, "parameters"), "disorder.vac.share") == 0.06);
+    CHECK(number(json_object_get(row, "other_parameters"), "disorder.vac.share") == 0.02);
+    CHECK(number(row, "difference") == -0.5 && number(row, "p_value") == 0.0625);
+    CHECK(number(json_object_get(row, "unpaired"), "standard_error") == 0.025);
+    CHECK_INT(json_integer_value(json_object_get(row, "lost")), 100);
+    CHECK(json_object_get(json_array_get(rows, 0), "lost") == NULL);
+    json_decref(document);
+    char *text = NULL;
+    CHECK_OK(sv_comparisons_csv(test_context(), &f.result, &text));
+    CHECK(strstr(text,
+                 "\nlocal_chern,first,2,0,197,-0.5,0.0125,-0.525,-0.475,0.0625,0.03125,0.75,0.025,"
+                 "0.5,,,\n") != NULL);
+    CHECK(strstr(text, "\nbott,first neighbour,2,0,197,") != NULL);
+    CHECK(strstr(text, ",0.5,1,100,4\n") != NULL);
+    sv_give(test_context(), text);
+}
+
 SV_TEST(what_does_not_exist_is_null_with_a_reason)
 {
     fixture f;
@@ -241,6 +303,39 @@ SV_TEST(the_table_says_the_numbers_in_80_columns)
     free(text);
     text = print_table(&f.result, true);
     CHECK(strstr(text, "\033[1m") != NULL && widest_line(text) <= 80);
+    free(text);
+}
+
+SV_TEST(the_table_warns_of_intervals)
+{
+    fixture f;
+    fixture_make(&f);
+    sv_summary *s = &f.points[1].summaries[0];
+    char *text = print_table(&f.result, false);
+    CHECK(strstr(text, "!") == NULL && strstr(text, "Fewer than 10") == NULL);
+    CHECK(strstr(text, "Differs from the first point from disorder.vac.share = 0.06 on: -0.500(13) "
+                       "in\n  the same realisations; apart, the error would be 0.025.\n") != NULL);
+    CHECK(strstr(text, "100 of 197 realisations lost the index 1, 4 gained it.") != NULL);
+    free(text);
+    snprintf(s->warning, sizeof s->warning, "skewed (-2.5) for 200 values: too much");
+    text = print_table(&f.result, false);
+    CHECK(strstr(text, "      ! skewed (-2.5): use [0.74620, 0.74870]\n") != NULL);
+    CHECK(strstr(text, "!: the interval covers less") != NULL && widest_line(text) <= 80);
+    free(text);
+    s->peaks.apart = true;
+    text = print_table(&f.result, false);
+    CHECK(strstr(text, "! two-peaked: use [0.74620, 0.74870]") != NULL);
+    free(text);
+    s->skewness = (double)NAN; /* 1 − 0.05^(1/200) */
+    text = print_table(&f.result, false);
+    CHECK(strstr(text, "! all the same: others in up to 1.5 % may be unseen") != NULL);
+    CHECK(strstr(text, "!: the interval") == NULL);
+    free(text);
+    s->resolved = 9;
+    f.comparisons[0].comparison.adjusted_p_value = 0.05;
+    text = print_table(&f.result, false);
+    CHECK(strstr(text, "!") == NULL && strstr(text, "Fewer than 10 realisations") != NULL);
+    CHECK(strstr(text, "same realisations;") == NULL && widest_line(text) <= 80);
     free(text);
 }
 
