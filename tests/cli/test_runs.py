@@ -202,7 +202,7 @@ def a_run_stops_when_its_time_is_used_up():
     ledger = sqlite3.connect(os.path.join(place, "ledger.sqlite"))
     for number, count in enumerate(counts):
         seconds = [row[0] for row in ledger.execute(
-            "SELECT seconds FROM realisation WHERE point = ? ORDER BY realisation", (number,))]
+            "SELECT seconds FROM cost WHERE point = ? ORDER BY realisation", (number,))]
         close(sum(seconds[:count - 1]), 0.2, 0.2 if count == 4 else 0.05, "seconds of point %d" % number)
         check(sum(seconds[:count]) >= 0.2 or count == 4, "stopped early")
     # The records decide: the same again counts the same.
