@@ -254,7 +254,8 @@ static sv_status work(crew *c)
         if (c->status == SV_OK && !is_busy(c)) {
             pump(c);
             fill_pool(c);
-            if (!is_busy(c))
+            /* What was handed out may be done already, with its result not yet taken in. */
+            if (c->handed == 0)
                 break;
         }
         pool_wait(c->pool, patience(c));
