@@ -161,14 +161,14 @@ static void add_collapse(scaling_figure *f)
                  c->correction_order >= 0 ? ", corrected" : "");
     sv_draft_add(script, "set xrange [%.9g:%.9g] noextend\n", -1.04 * c->reach, 1.04 * c->reach);
     if (!c->decided)
-        sv_draft_add(script, "set label 1 'not decided: not to be quoted' at graph 0.03,0.94 left "
+        sv_draft_add(script, "set label 9 'not decided: not to be quoted' at graph 0.03,0.94 left "
                              "font 'Helvetica,7' tc rgb '#b04000' front\n");
     sv_draft_add(script,
                  "plot \\\n  '%s.dat' index %d using 1:2 with lines lc rgb '#d55e00' lw 0.9 "
                  "notitle, \\\n",
                  f->figure.name, f->s->n_sizes);
     add_points(f, "($8 > 0 ? $4 : NaN)", "$5", "$3", false);
-    sv_draft_add(script, "unset label 1\n");
+    sv_draft_add(script, "unset label 9\n");
     add_panel(f, true, f->top_cm - panel_cm - gap_cm, rest_cm);
     double tall = 3.0;
     for (sv_index i = 0; i < f->s->n_rows; i++)
@@ -191,7 +191,7 @@ static void add_nothing(scaling_figure *f)
     sv_draft *script = &f->figure.script;
     const double x = (left_cm + 1.5 * f->half_cm + middle_cm) / f->figure.width_cm;
     sv_draft_add(script,
-                 "set label 1 'no collapse could be fitted' at screen %.5f,%.5f center font "
+                 "set label 9 'no collapse could be fitted' at screen %.5f,%.5f center font "
                  "'Helvetica,7' tc rgb '#606060'\n",
                  x, (f->top_cm - 0.5 * panel_cm) / f->figure.height_cm);
 }
