@@ -228,7 +228,11 @@ SV_API SV_MUST_USE sv_status sv_figure_sample(sv_context *context, const char *f
                                               const char *name, const char *ending,
                                               const sv_sample_result *result,
                                               sv_figure_files *ret_files);
-/** Sweep curve with error bars and the quantised values marked. Needs one axis. */
+/** Curves of a family that can be told apart. */
+enum { SV_MOST_CURVES = 6 };
+/** Sweep curves with error bars and the quantised values marked: one per marker, or with two axes
+ *  a family, one curve per value of an axis with at most six (a size before others); else not
+ *  drawn, with a reason. */
 SV_API SV_MUST_USE sv_status sv_figure_sweep(sv_context *context, const char *folder,
                                              const char *name, const sv_result *result,
                                              sv_figure_files *ret_files);
@@ -237,6 +241,16 @@ SV_API SV_MUST_USE sv_status sv_figure_sweep(sv_context *context, const char *fo
 SV_API SV_MUST_USE sv_status sv_figure_scaling(sv_context *context, const char *folder,
                                                const char *name, const sv_result *result,
                                                sv_figure_files *ret_files);
+/**
+ * The mean of a marker over the two axes of a sweep: a raster of diverging colours about 0, lines
+ * where the mean, interpolated between the points, crosses a half-integer, the nearest integer
+ * written in each region, the points, unresolved shares as crosses, missing values hatched.
+ * @param marker number of the summary
+ * @return SV_INVALID_INPUT when the result has no two axes, four points, or no such marker
+ */
+SV_API SV_MUST_USE sv_status sv_figure_phase(sv_context *context, const char *folder,
+                                             const char *name, const sv_result *result, int marker,
+                                             sv_figure_files *ret_files);
 /** Density of states with Fermi energy and gap; below, the levels next to the Fermi energy. */
 SV_API SV_MUST_USE sv_status sv_figure_spectrum(sv_context *context, const char *folder,
                                                 const char *name, const sv_spectrum_result *result,

@@ -35,65 +35,115 @@ static void add_bar(sv_draft *text, double low, double high)
     add_number(text, drawn ? high : (double)NAN);
 }
 
-/* Power of ten taken out of the axis when its numbers are too long for tick labels. */
-static int axis_exponent(const sv_result *result)
+/* The curves of a figure: one, or one per value of the other axis. */
+typedef struct curves {
+    const sv_result *result;
+    sv_axis axis; /* along the curves */
+    int across;   /* the other axis, or -1 */
+    int count;
+    int32_t first[SV_MOST_CURVES]; /* the first point of each curve */
+    int32_t *order;                /* points by curve, ascending along it */
+    int32_t start[SV_MOST_CURVES + 1];
+} curves;
+
+static bool same_value(const sv_coordinate *a, const sv_coordinate *b)
 {
-    double largest = 0.0;
-    for (int32_t i = 0; i < result->n_points; i++)
-        largest = fmax(largest, fabs(result->points[i].coordinates[0].value));
-    bool short_enough = largest == 0.0 || (largest < 1e5 && largest >= 1e-3);
-    return short_enough ? 0 : (int)floor(log10(largest));
+    return a->value == b->value && (!a->pair || a->second == b->second);
 }
 
-static double axis_value(const sv_result *result, int32_t point)
+/* How many values an axis has, each kept by its first point; SV_MOST_CURVES + 1: too many. */
+static int count_values(const sv_result *result, int axis, int32_t first[SV_MOST_CURVES])
 {
-    return result->points[point].coordinates[0].value / pow(10.0, axis_exponent(result));
-}
-
-/* cm^-2 as cm⁻², and the power of ten in the same way. */
-static void raise_exponents(const char *plain, char *text, size_t size)
-{
-    static const char *const raised[] = {"\u2070", "\u00b9", "\u00b2", "\u00b3", "\u2074",
-                                         "\u2075", "\u2076", "\u2077", "\u2078", "\u2079"};
-    size_t used = 0;
-    bool up = false;
-    for (; *plain != '\0' && used + 5 < size; plain++) {
-        if (*plain == '^') {
-            up = true;
-            continue;
-        }
-        up = up && (*plain == '-' || (*plain >= '0' && *plain <= '9'));
-        char one[2] = {*plain, '\0'};
-        const char *sign = !up ? one : *plain == '-' ? "\u207b" : raised[*plain - '0'];
-        used += (size_t)snprintf(text + used, size - used, "%s", sign);
-    }
-    text[used] = '\0';
-}
-
-/* "vacancy density (growth) [10¹³ cm⁻²]" */
-static void axis_name(const sv_result *result, char *text, size_t size)
-{
-    const sv_coordinate *c = &result->points[0].coordinates[0];
-    char plain[400], power[440];
-    int exponent = axis_exponent(result);
-    sv_words_parameter(c, plain, sizeof plain);
-    if (exponent != 0 && c->unit != NULL && strrchr(plain, '[') != NULL) {
-        int head = (int)(strrchr(plain, '[') - plain);
-        snprintf(power, sizeof power, "%.*s[10^%d %s", head, plain, exponent, plain + head + 1);
-    } else if (exponent != 0) {
-        snprintf(power, sizeof power, "%s [10^%d]", plain, exponent);
-    } else {
-        snprintf(power, sizeof power, "%s", plain);
-    }
-    raise_exponents(power, text, size);
-}
-
-static void add_block(sv_draft *text, const sv_result *result, int marker)
-{
-    sv_draft_add(text, "\n\n# %s\n", result->points[0].summaries[marker].marker);
+    int n = 0;
     for (int32_t i = 0; i < result->n_points; i++) {
-        const sv_summary *s = &result->points[i].summaries[marker];
-        sv_draft_add(text, "%.12g", axis_value(result, i));
+        int k = 0;
+        while (k < n && !same_value(&result->points[first[k]].coordinates[axis],
+                                    &result->points[i].coordinates[axis]))
+            k++;
+        if (k == SV_MOST_CURVES)
+            return SV_MOST_CURVES + 1;
+        if (k == n)
+            first[n++] = i;
+    }
+    return n;
+}
+
+/* The axis of few values: sizes before all others, else the shorter one; -1: none. */
+static int choose_across(const sv_result *result)
+{
+    int32_t first[SV_MOST_CURVES];
+    int n[2];
+    for (int a = 0; a < 2; a++)
+        n[a] = count_values(result, a, first);
+    for (int a = 0; a < 2; a++)
+        if (n[a] <= SV_MOST_CURVES && n[1 - a] > 1 &&
+            strncmp(result->points[0].coordinates[a].path, "flake.", 6) == 0)
+            return a;
+    const int shorter = n[0] < n[1] ? 0 : 1;
+    return n[shorter] <= SV_MOST_CURVES && n[1 - shorter] > 1 ? shorter : -1;
+}
+
+static bool goes_before(const curves *c, int32_t a, int32_t b)
+{
+    return sv_axis_value(&c->axis, &c->result->points[a]) <
+           sv_axis_value(&c->axis, &c->result->points[b]);
+}
+
+/* Points of every curve, put in order one by one. */
+static void fill_order(curves *c)
+{
+    int32_t used = 0;
+    for (int k = 0; k < c->count; k++) {
+        c->start[k] = used;
+        for (int32_t i = 0; i < c->result->n_points; i++) {
+            const sv_point_result *points = c->result->points;
+            if (c->across >= 0 && !same_value(&points[c->first[k]].coordinates[c->across],
+                                              &points[i].coordinates[c->across]))
+                continue;
+            int32_t at = used++;
+            for (; at > c->start[k] && goes_before(c, i, c->order[at - 1]); at--)
+                c->order[at] = c->order[at - 1];
+            c->order[at] = i;
+        }
+    }
+    c->start[c->count] = used;
+}
+
+static sv_status make_curves(sv_context *context, const sv_result *result, curves *ret)
+{
+    curves c = {.result = result, .across = -1, .count = 1};
+    if (result->points[0].n_coordinates == 2) {
+        c.across = choose_across(result);
+        c.count = count_values(result, c.across, c.first);
+    }
+    sv_axis_make(result, c.across == 0 ? 1 : 0, &c.axis);
+    sv_status status = sv_take(context, result->n_points, sizeof *c.order, &c.order);
+    if (status != SV_OK)
+        return status;
+    fill_order(&c);
+    *ret = c;
+    return SV_OK;
+}
+
+/* "bott", or "bott 2" of several curves. */
+static void block_name(const curves *c, int marker, int curve, char *text, size_t size)
+{
+    const char *name = c->result->points[0].summaries[marker].marker;
+    if (c->across < 0)
+        snprintf(text, size, "%s", name);
+    else
+        snprintf(text, size, "%s %d", name, curve);
+}
+
+static void add_block(sv_draft *text, const curves *c, int marker, int curve)
+{
+    char name[160];
+    block_name(c, marker, curve, name, sizeof name);
+    sv_draft_add(text, "\n\n# %s\n", name);
+    for (int32_t k = c->start[curve]; k < c->start[curve + 1]; k++) {
+        const sv_point_result *point = &c->result->points[c->order[k]];
+        const sv_summary *s = &point->summaries[marker];
+        sv_draft_add(text, "%.12g", sv_axis_value(&c->axis, point));
         add_number(text, s->exists ? s->mean : (double)NAN);
         add_bar(text, s->exists ? s->interval[0] : (double)NAN, s->interval[1]);
         add_bar(text, s->exists && s->unresolved > 0 ? s->bounds[0] : (double)NAN, s->bounds[1]);
@@ -101,15 +151,16 @@ static void add_block(sv_draft *text, const sv_result *result, int marker)
     }
 }
 
-static sv_status write_data(sv_figure *figure, const sv_result *result, sv_figure_files *files)
+static sv_status write_data(sv_figure *figure, const curves *c, sv_figure_files *files)
 {
     sv_draft text = {.context = figure->context};
     char *data = NULL;
     sv_draft_add(&text, "# Means over disorder. NaN: does not exist.\n"
                         "# Columns: parameter, mean, interval of the mean, bounds with the "
                         "unresolved, unresolved, n.\n");
-    for (int i = 0; i < result->points[0].n_summaries; i++)
-        add_block(&text, result, i);
+    for (int i = 0; i < c->result->points[0].n_summaries; i++)
+        for (int k = 0; k < c->count; k++)
+            add_block(&text, c, i, k);
     const size_t size = (size_t)text.size;
     sv_status status = sv_draft_finish(&text, &data);
     if (status == SV_OK)
@@ -173,29 +224,66 @@ static void add_integers(sv_draft *script, const char *marker, const double rang
                      k < 0 ? -k : k, k);
 }
 
-static void add_panel_plot(sv_draft *script, const sv_figure *figure, const sv_summary *summary,
-                           int number)
+/* Curves of a family differ in colour, mark and dashes; a single one has those of its marker. */
+static void add_curve_plot(sv_draft *script, const sv_figure *figure, const curves *c, int number,
+                           int curve)
 {
-    const char *colour = styles[number % 8].colour, *marker = summary->marker;
-    sv_draft_add(script, "plot \\\n");
-    if (summary->is_index)
+    static const char *const dashes[SV_MOST_CURVES] = {
+        "", " dt (6,3)", " dt (2,2)", " dt (8,3,2,3)", " dt (12,4)", " dt (4,2,1,2)"};
+    const int style = c->across < 0 ? number % 8 : curve;
+    const char *colour = styles[style].colour, *dash = c->across < 0 ? "" : dashes[curve];
+    char marker[160];
+    block_name(c, number, curve, marker, sizeof marker);
+    if (curve > 0)
+        sv_draft_add(script, ", \\\n");
+    if (c->result->points[0].summaries[number].is_index)
         sv_draft_add(script,
                      "  '%s.dat' index '%s' using 1:5:(0):($6-$5) with vectors nohead lc rgb "
                      "'#b8b8b8' lw 3 notitle, \\\n",
                      figure->name, marker);
     /* Bars as arrows with flat ends: error-bar styles would cut gaps around the marks. */
     sv_draft_add(script,
-                 "  '%s.dat' index '%s' using 1:2 with lines lc rgb '%s' lw 0.5 notitle, \\\n"
+                 "  '%s.dat' index '%s' using 1:2 with lines lc rgb '%s' lw 0.6%s notitle, \\\n"
                  "  '%s.dat' index '%s' using 1:3:(0):($4-$3) with vectors heads size graph "
                  "0.008,90 lc rgb '%s' lw 0.8 notitle, \\\n"
-                 "  '%s.dat' index '%s' using 1:2 with points lc rgb '%s' pt %d ps 0.45 notitle\n",
-                 figure->name, marker, colour, figure->name, marker, colour, figure->name, marker,
-                 colour, styles[number % 8].mark);
+                 "  '%s.dat' index '%s' using 1:2 with points lc rgb '%s' pt %d ps 0.45 notitle",
+                 figure->name, marker, colour, dash, figure->name, marker, colour, figure->name,
+                 marker, colour, styles[style].mark);
 }
 
-static void add_panel(sv_figure *figure, const sv_result *result, int number, double top_cm,
-                      bool lowest)
+/* What the curves stand for: the name of the axis, below it a mark and a value for each. */
+static double legend_height(const curves *c)
 {
+    return c->across < 0 ? 0.0 : 0.72;
+}
+
+static void add_legend(sv_figure *figure, const curves *c, double top_cm)
+{
+    const double w = figure->width_cm, h = figure->height_cm;
+    const double room = w - left_cm - right_cm;
+    char name[400], literal[500], word[80];
+    sv_axis axis;
+    if (c->across < 0)
+        return;
+    sv_axis_make(c->result, c->across, &axis);
+    sv_words_parameter(&c->result->points[0].coordinates[c->across], name, sizeof name);
+    sv_script_literal(name, literal, sizeof literal);
+    sv_draft_add(&figure->script, "set label 20 %s at screen %.5f,%.5f left font ',7'\n", literal,
+                 left_cm / w, (top_cm - 0.17) / h);
+    for (int k = 0; k < c->count; k++) {
+        sv_words_value(&c->result->points[c->first[k]].coordinates[c->across], word, sizeof word);
+        sv_script_literal(word, literal, sizeof literal);
+        sv_draft_add(&figure->script,
+                     "set label %d %s at screen %.5f,%.5f left font ',7' point pt %d ps 0.55 lc "
+                     "rgb '%s' offset 0.7,-0.2\n",
+                     21 + k, literal, (left_cm + 0.1 + room * k / c->count) / w, (top_cm - 0.5) / h,
+                     styles[k].mark, styles[k].colour);
+    }
+}
+
+static void add_panel(sv_figure *figure, const curves *c, int number, double top_cm, bool lowest)
+{
+    const sv_result *result = c->result;
     const sv_summary *summary = &result->points[0].summaries[number];
     sv_draft *script = &figure->script;
     const double h = figure->height_cm;
@@ -212,16 +300,19 @@ static void add_panel(sv_figure *figure, const sv_result *result, int number, do
         sv_draft_add(script, "set format x '%%g'\nset xlabel xname offset 0,0.4\n");
     else
         sv_draft_add(script, "set format x ''\nunset xlabel\n");
-    add_panel_plot(script, figure, summary, number);
-    sv_draft_add(script, "unset label\n");
+    sv_draft_add(script, "plot \\\n");
+    for (int k = 0; k < c->count; k++)
+        add_curve_plot(script, figure, c, number, k);
+    sv_draft_add(script, "\nunset label\n");
 }
 
-static void add_axis(sv_figure *figure, const sv_result *result)
+static void add_axis(sv_figure *figure, const curves *c)
 {
+    const sv_result *result = c->result;
     double low = INFINITY, high = -INFINITY;
     for (int32_t i = 0; i < result->n_points; i++) {
-        low = fmin(low, axis_value(result, i));
-        high = fmax(high, axis_value(result, i));
+        low = fmin(low, sv_axis_value(&c->axis, &result->points[i]));
+        high = fmax(high, sv_axis_value(&c->axis, &result->points[i]));
     }
     const double air = high > low ? 0.04 * (high - low) : 1;
     const double w = figure->width_cm;
@@ -233,13 +324,12 @@ static void add_axis(sv_figure *figure, const sv_result *result)
                  left_cm / w, 1 - right_cm / w, low - air, high + air);
 }
 
-static void add_script(sv_figure *figure, const sv_result *result, const sv_headline *headline)
+static void add_script(sv_figure *figure, const curves *c, const sv_headline *headline)
 {
     sv_draft *script = &figure->script;
-    const int n = result->points[0].n_summaries;
-    char name[400], literal[500];
-    axis_name(result, name, sizeof name);
-    sv_script_literal(name, literal, sizeof literal);
+    const int n = c->result->points[0].n_summaries;
+    char literal[600];
+    sv_script_literal(c->axis.name, literal, sizeof literal);
     sv_draft_add(script,
                  "# Markers along a sweep; draw it again with: gnuplot %s.gp\n"
                  "xname = %s\n",
@@ -247,10 +337,12 @@ static void add_script(sv_figure *figure, const sv_result *result, const sv_head
     sv_script_terminals(figure);
     sv_draft_add(script, "set multiplot\n");
     sv_headline_add(headline, figure);
-    add_axis(figure, result);
-    double top = figure->height_cm - sv_headline_height(headline) - top_air_cm;
+    add_axis(figure, c);
+    double top = figure->height_cm - sv_headline_height(headline);
+    add_legend(figure, c, top);
+    top -= legend_height(c) + top_air_cm;
     for (int i = 0; i < n; i++, top -= panel_cm + gap_cm)
-        add_panel(figure, result, i, top, i == n - 1);
+        add_panel(figure, c, i, top, i == n - 1);
     sv_draft_add(script, "unset multiplot\nunset output\n}\n");
 }
 
@@ -268,17 +360,8 @@ static bool has_unresolved_index(const sv_result *result)
 /* What bars and marks mean; the second line only where something is unresolved. */
 static void choose_note(const sv_result *result, char *note, size_t size)
 {
-    int64_t least = INT64_MAX, most = 0;
     char count[64];
-    for (int32_t i = 0; i < result->n_points; i++) {
-        least = result->points[i].realisations < least ? result->points[i].realisations : least;
-        most = result->points[i].realisations > most ? result->points[i].realisations : most;
-    }
-    if (least == most)
-        snprintf(count, sizeof count, "%lld", (long long)most);
-    else
-        snprintf(count, sizeof count, "%lld to %lld", (long long)least, (long long)most);
-    if (most == 1) {
+    if (sv_words_realisations(result, count, sizeof count) == 1) {
         snprintf(note, size, "one realisation at each point, no error bars");
         return;
     }
@@ -288,8 +371,9 @@ static void choose_note(const sv_result *result, char *note, size_t size)
                                           : "");
 }
 
-static sv_status draw(sv_figure *figure, const sv_result *result, sv_figure_files *files)
+static sv_status draw(sv_figure *figure, const curves *c, sv_figure_files *files)
 {
+    const sv_result *result = c->result;
     char note[200];
     sv_headline headline;
     choose_note(result, note, sizeof note);
@@ -298,12 +382,12 @@ static sv_status draw(sv_figure *figure, const sv_result *result, sv_figure_file
     figure->title = result->title;
     figure->description = note;
     figure->width_cm = width_cm;
-    figure->height_cm =
-        sv_headline_height(&headline) + top_air_cm + n * panel_cm + (n - 1) * gap_cm + foot_cm;
-    sv_status status = write_data(figure, result, files);
+    figure->height_cm = sv_headline_height(&headline) + legend_height(c) + top_air_cm +
+                        n * panel_cm + (n - 1) * gap_cm + foot_cm;
+    sv_status status = write_data(figure, c, files);
     if (status != SV_OK)
         return status;
-    add_script(figure, result, &headline);
+    add_script(figure, c, &headline);
     return sv_figure_draw(figure, files);
 }
 
@@ -312,15 +396,23 @@ sv_status sv_figure_sweep(sv_context *context, const char *folder, const char *n
 {
     sv_figure figure = {.context = context, .folder = folder, .name = name};
     sv_figure_files files;
+    curves c = {0};
     sv_status status = sv_figure_begin(&figure, &files);
     if (status != SV_OK)
         return status;
-    if (result->n_points < 2 || result->points[0].n_coordinates != 1 ||
+    if (result->n_points < 2 || result->points[0].n_coordinates < 1 ||
         result->points[0].n_summaries == 0)
         snprintf(files.reason, sizeof files.reason,
                  "a sweep curve needs one swept parameter with at least two points");
+    else if (result->points[0].n_coordinates == 2 && choose_across(result) < 0)
+        snprintf(files.reason, sizeof files.reason,
+                 "curves of a sweep over two parameters need one with at most %d values",
+                 SV_MOST_CURVES);
     else
-        status = draw(&figure, result, &files);
+        status = make_curves(context, result, &c);
+    if (status == SV_OK && c.count > 0)
+        status = draw(&figure, &c, &files);
+    sv_give(context, c.order);
     sv_draft_drop(&figure.script);
     if (status == SV_OK)
         *ret_files = files;

@@ -210,3 +210,17 @@ void sv_words_value(const sv_coordinate *coordinate, char *text, size_t size)
     one_number(coordinate, coordinate->second, second, sizeof second);
     snprintf(text + used, size - used, "x%s", second);
 }
+
+int64_t sv_words_realisations(const sv_result *result, char *text, size_t size)
+{
+    int64_t least = INT64_MAX, most = 0;
+    for (int32_t i = 0; i < result->n_points; i++) {
+        least = result->points[i].realisations < least ? result->points[i].realisations : least;
+        most = result->points[i].realisations > most ? result->points[i].realisations : most;
+    }
+    if (least == most)
+        snprintf(text, size, "%lld", (long long)most);
+    else
+        snprintf(text, size, "%lld to %lld", (long long)least, (long long)most);
+    return most;
+}

@@ -48,6 +48,8 @@ const char *sv_words_weakest(const char *name);
 void sv_words_parameter(const sv_coordinate *coordinate, char *text, size_t size);
 /* Path with its unit in brackets, for column heads. */
 void sv_words_column(const sv_coordinate *coordinate, char *text, size_t size);
+/* "200", or "50 to 200" where points differ. @return the largest */
+int64_t sv_words_realisations(const sv_result *result, char *text, size_t size);
 void sv_words_real(double value, char *text, size_t size);
 /* A parameter value: an integer without decimals, else the shortest text. */
 void sv_words_value(const sv_coordinate *coordinate, char *text, size_t size);

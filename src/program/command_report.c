@@ -24,8 +24,12 @@ static sv_status figure_folder(session *s, sv_run *run, char *path, size_t size)
     return SV_OK;
 }
 
-static void name_figure(const sv_figure_files *files, const char *what)
+/* Names the files of a figure, or says why there are none; the first failure is kept for the end.
+ */
+static void name_figure(const session *s, const sv_figure_files *files, const char *what)
 {
+    if (!files->drawn && s->undrawn != NULL && (*s->undrawn)[0] == '\0')
+        snprintf(*s->undrawn, sizeof *s->undrawn, "%.80s not drawn: %s", what, files->reason);
     if (files->drawn)
         printf("%s\n  %s\n  %s\n  %s\n", what, files->svg, files->pdf, files->png);
     else
@@ -101,7 +105,7 @@ static sv_status draw_map(session *s, const char *folder)
         map.note = where[0] != '\0' ? where : blocks ? "means over blocks of cells, sampled" : NULL;
         status = sv_figure_map(context, folder, "marker_map", &map, &files);
         if (status == SV_OK)
-            name_figure(&files, what);
+            name_figure(s, &files, what);
     }
     sv_coarse_free(context, &coarse);
     sv_give(context, values);
@@ -111,8 +115,7 @@ static sv_status draw_map(session *s, const char *folder)
 
 static void tell_figure(const session *s, const sv_figure_files *files, const char *what)
 {
-    (void)s;
-    name_figure(files, what);
+    name_figure(s, files, what);
 }
 
 /* The localizer at many points, on the sample of the map. */
@@ -155,8 +158,21 @@ static sv_status draw_scaling(session *s, const sv_result *result, const char *f
         return SV_OK;
     sv_status status = sv_figure_scaling(s->context, folder, "finite_size", result, &files);
     if (status == SV_OK)
-        name_figure(&files, "finite size");
+        name_figure(s, &files, "finite size");
     return status;
+}
+
+/* Two values of both axes at least make a map. */
+static bool is_plane(const session *s)
+{
+    return s->base.n_axes == 2 && s->base.axes[0].count > 1 && s->base.axes[1].count > 1;
+}
+
+/* Two points, and with two axes one that is short. */
+static bool has_curves(const session *s)
+{
+    return s->n_points > 1 && (s->base.n_axes == 1 || s->base.axes[0].count <= SV_MOST_CURVES ||
+                               s->base.axes[1].count <= SV_MOST_CURVES);
 }
 
 static sv_status draw_sweep(session *s, const sv_result *result, const char *folder)
@@ -166,13 +182,22 @@ static sv_status draw_sweep(session *s, const sv_result *result, const char *fol
         printf("sweep figure: none, the run has no sweep\n");
         return SV_OK;
     }
-    if (s->base.n_axes > 1) {
-        printf("sweep figure: none, the run has two axes; see points.csv\n");
-        return SV_OK;
+    sv_status status = SV_OK;
+    if (has_curves(s))
+        status = sv_figure_sweep(s->context, folder, "sweep", result, &files);
+    else
+        printf("sweep curves: none, they need two points and an axis with at most %d values\n",
+               SV_MOST_CURVES);
+    if (status == SV_OK && has_curves(s))
+        name_figure(s, &files, s->base.n_axes > 1 ? "sweep, a curve for each value" : "sweep");
+    for (int m = 0; status == SV_OK && is_plane(s) && m < result->points[0].n_summaries; m++) {
+        char name[100], what[140];
+        snprintf(name, sizeof name, "phase_%s", result->points[0].summaries[m].marker);
+        snprintf(what, sizeof what, "%s over both axes", result->points[0].summaries[m].marker);
+        status = sv_figure_phase(s->context, folder, name, result, m, &files);
+        if (status == SV_OK)
+            name_figure(s, &files, what);
     }
-    sv_status status = sv_figure_sweep(s->context, folder, "sweep", result, &files);
-    if (status == SV_OK)
-        name_figure(&files, "sweep");
     return status;
 }
 
@@ -211,7 +236,8 @@ static sv_status report(session *s, sv_run *run)
     sv_context *context = s->context;
     sv_ensemble ensemble = {0};
     sv_result result = {0};
-    char folder[1024];
+    char folder[1024], undrawn[400] = "";
+    s->undrawn = &undrawn;
     sv_status status = report_load(s, run, &ensemble, &result);
     if (status == SV_OK && !s->options->quiet && !s->options->json)
         sv_result_print(&result, wants_colour(s->options, stdout), stdout);
@@ -227,6 +253,9 @@ static sv_status report(session *s, sv_run *run)
         status = site_maps_draw(s, run, &result, folder, tell_figure);
     if (status == SV_OK)
         status = draw_survey(s, folder);
+    if (status == SV_OK && undrawn[0] != '\0')
+        status = SV_FAIL(context, SV_STORAGE, "%s", undrawn);
+    s->undrawn = NULL;
     result_free(context, &result);
     sv_ensemble_free(context, &ensemble);
     return status;

@@ -59,6 +59,143 @@ SV_TEST(a_sweep_needs_an_axis)
     CHECK(!files.drawn && strstr(files.reason, "one swept parameter") != NULL);
 }
 
+/* Three sizes by four widths, means that cross one half between the second and the third width. */
+static void make_plane(fixture *f, sv_point_result points[12])
+{
+    static const double means[4] = {1.0, 0.75, 0.25, -0.75};
+    fixture_make(f);
+    for (int i = 0; i < 12; i++) {
+        points[i] = f->points[0];
+        points[i].n_coordinates = 2;
+        points[i].coordinates[0] = (sv_coordinate){.path = "flake.cells",
+                                                   .value = 10 + 2 * (i / 4),
+                                                   .second = 10 + 2 * (i / 4),
+                                                   .integer = true};
+        points[i].coordinates[1] =
+            (sv_coordinate){.path = "disorder.pot.width", .value = 1 + i % 4};
+        points[i].summaries[0].mean = means[i % 4];
+    }
+    f->result.points = points;
+    f->result.n_points = 12;
+}
+
+/* Lines "x y" of a block of the data, in order. */
+static int block_of(const char *data, const char *name, double (*at)[2], int most)
+{
+    int n = 0;
+    const char *line = strstr(data, name);
+    for (line = line != NULL ? strchr(line, '\n') : NULL; line != NULL && n < most;
+         line = strchr(line + 1, '\n')) {
+        if (strncmp(line, "\n\n\n", 3) == 0)
+            break;
+        if (line[1] != '\n' && sscanf(line, "%lf %lf", &at[n][0], &at[n][1]) == 2 &&
+            isfinite(at[n][1]))
+            n++;
+    }
+    return n;
+}
+
+SV_TEST(two_axes_are_a_map)
+{
+    fixture f;
+    sv_point_result points[12];
+    sv_figure_files files = {.drawn = false};
+    size_t size;
+    double at[40][2];
+    make_plane(&f, points);
+    points[5].summaries[0].unresolved = 50;
+    points[6].summaries[0].exists = false;
+    choose_folder("phase");
+    CHECK_OK(sv_figure_phase(test_context(), folder, "map", &f.result, 0, &files));
+    check_files(&files, "map");
+    char *data = slurp(files.data, &size);
+    CHECK(strstr(data, "\n12 2 0.75 0.0004 0.25 200\n") != NULL);
+    CHECK(strstr(data, "\n12 3 11 13 2.5 3.5 0\n") != NULL); /* the hatched one */
+    free(data);
+    /* Linear between 0.75 and 0.25: one half lies at 2.5, minus one half at 3.75. */
+    points[6].summaries[0].exists = true;
+    CHECK_OK(sv_figure_phase(test_context(), folder, "map", &f.result, 0, &files));
+    data = slurp(files.data, &size);
+    const int n = block_of(data, "# boundary\n# pairs", at, 40);
+    CHECK_INT(n, 8);
+    int low = 0;
+    for (int i = 0; i < n; i++) {
+        const bool lower = fabs(at[i][1] - 2.5) < 1e-9;
+        CHECK(lower || fabs(at[i][1] - 3.75) < 1e-9);
+        CHECK(at[i][0] >= 10 && at[i][0] <= 14);
+        low += lower;
+    }
+    CHECK_INT(low, 4);
+    CHECK_INT(block_of(data, "# labels\n", at, 40), 3); /* regions of 1, 0 and -1 */
+    free(data);
+    CHECK_STATUS(SV_INVALID_INPUT,
+                 sv_figure_phase(test_context(), folder, "map", &f.result, 9, &files));
+    f.points[0].n_coordinates = 1;
+    f.result.points = f.points;
+    CHECK_STATUS(SV_INVALID_INPUT,
+                 sv_figure_phase(test_context(), folder, "map", &f.result, 0, &files));
+}
+
+/* Opposite corners alike: the middle decides which of them belong together. */
+SV_TEST(a_saddle_goes_by_its_middle)
+{
+    for (int high = 0; high < 2; high++) {
+        fixture f;
+        sv_point_result points[12];
+        sv_figure_files files = {.drawn = false};
+        size_t size;
+        double at[8][2];
+        make_plane(&f, points);
+        f.result.n_points = 4;
+        for (int i = 0; i < 4; i++) {
+            points[i].coordinates[0].value = 10 + 2 * (i / 2);
+            points[i].coordinates[1].value = 1 + i % 2;
+            points[i].summaries[0].mean =
+                (i == 0 || i == 3) ? (high ? 0.9 : 0.6) : (high ? 0.4 : 0.1);
+        }
+        choose_folder("saddle");
+        CHECK_OK(sv_figure_phase(test_context(), folder, "map", &f.result, 0, &files));
+        char *data = slurp(files.data, &size);
+        CHECK_INT(block_of(data, "# boundary\n# pairs", at, 8), 4);
+        /* Both ends of a piece lie by the corner it cuts off: (12, 1) when the middle is high. */
+        bool by_low_corner = false;
+        for (int k = 0; k < 4; k += 2)
+            by_low_corner = by_low_corner ||
+                            (at[k][0] + at[k + 1][0] > 22 && at[k][1] + at[k + 1][1] < 3 &&
+                             fmax(at[k][1], at[k + 1][1]) < 2 && fmin(at[k][0], at[k + 1][0]) > 10);
+        double sides = 0; /* ends of the first piece away from the corner (10, 1) */
+        for (int k = 0; k < 2; k++)
+            sides += (at[k][0] - 10) / 2 + (at[k][1] - 1);
+        CHECK(high ? by_low_corner : sides < 1.0);
+        free(data);
+    }
+}
+
+SV_TEST(a_short_axis_makes_a_family)
+{
+    fixture f;
+    sv_point_result points[12];
+    sv_figure_files files = {.drawn = false};
+    size_t size;
+    double at[40][2];
+    make_plane(&f, points);
+    choose_folder("family");
+    CHECK_OK(sv_figure_sweep(test_context(), folder, "curves", &f.result, &files));
+    check_files(&files, "curves");
+    char *data = slurp(files.data, &size), *script = slurp(files.script, &size);
+    for (int k = 0; k < 3; k++) {
+        char name[40];
+        snprintf(name, sizeof name, "# local_chern %d\n", k);
+        CHECK_INT(block_of(data, name, at, 40), 4);
+        CHECK_CLOSE(at[3][0], 4.0, 0.0);
+        CHECK_CLOSE(at[3][1], -0.75, 0.0);
+    }
+    CHECK(strstr(data, "# bott 2\n") != NULL && strstr(data, "# bott 3\n") == NULL);
+    CHECK(strstr(script, "'14' at screen") != NULL);
+    free(data);
+    free(script);
+}
+
 SV_TEST(markers_that_are_nowhere_leave_an_empty_panel)
 {
     fixture f;
