@@ -207,6 +207,8 @@ int average_and_conclude(sv_context *context, const options *o, ensemble_conclus
         return sv_status_exit_code(SV_USAGE);
     }
     sv_status status = session_open(context, o, o->files[0], false, true, &s);
+    if (status == SV_OK)
+        status = session_try_windows(&s);
     if (status == SV_OK && o->dry_run) {
         status = session_plan(&s, false);
         if (status == SV_OK)

@@ -27,13 +27,16 @@ static json_t *film_json(const film_length *film)
 static int print_json(session *s, const forecast *f, const film_length *film)
 {
     json_t *root = json_pack(
-        "{s:i, s:s, s:s, s:s, s:{s:I, s:i, s:I, s:s, s:f, s:f, s:f, s:i, s:f, s:f, s:f}}",
+        "{s:i, s:s, s:s, s:s, s:{s:I, s:i, s:I, s:s, s:f, s:f, s:f, s:i, s:f, s:f, s:f, s:f, s:f, "
+        "s:f, s:b}}",
         "selvedge", 1, "command", "check", "title", s->base.title, "resolved", s->base.resolved,
         "forecast", "sites", (json_int_t)f->sites, "points", (int)s->n_points, "realisations",
         (json_int_t)f->realisations, "engine", s->points[0].plan.reason, "memory_bytes_per_thread",
         f->bytes_per_thread, "memory_bytes_program", f->bytes_before, "memory_bytes_available",
         f->bytes_available, "threads", s->threads, "seconds_before", f->seconds_before,
-        "seconds_per_realisation", f->seconds_per_realisation, "seconds", f->seconds);
+        "seconds_per_realisation", f->seconds_per_realisation, "seconds", f->seconds,
+        "bytes_ledger", f->bytes_ledger, "probes", f->probes, "seconds_probes", f->seconds_probes,
+        "upper_bound", (int)s->base.has_stop);
     if (root == NULL)
         return sv_status_exit_code(SV_NO_MEMORY);
     json_t *preset = NULL;
@@ -85,28 +88,6 @@ static sv_status describe_sample(session *s, char text[400])
     return status == SV_UNDEFINED ? SV_OK : status;
 }
 
-/* Has every window of every point a cell? */
-static sv_status try_windows(session *s)
-{
-    for (int32_t k = 0; k < s->n_points; k++) {
-        const sv_case *problem = &s->points[k].problem;
-        for (int m = 0; m < problem->n_markers; m++) {
-            bool *inside = NULL;
-            sv_index cells;
-            const int marker = problem->markers[m].marker;
-            if (marker != sv_marker_find("local_chern") && marker != sv_marker_find("spin_chern"))
-                continue;
-            sv_status status =
-                sv_flake_window(s->context, problem->open_flake,
-                                problem->markers[m].values[0].real[0], &inside, &cells);
-            if (status != SV_OK)
-                return status;
-            sv_give(s->context, inside);
-        }
-    }
-    return SV_OK;
-}
-
 int run_check(sv_context *context, const options *o)
 {
     session s = {0};
@@ -116,7 +97,7 @@ int run_check(sv_context *context, const options *o)
     int code = 0;
     sv_status status = session_open(context, o, o->files[0], false, true, &s);
     if (status == SV_OK)
-        status = session_blame(&s, "flake", try_windows(&s));
+        status = session_try_windows(&s);
     if (status == SV_OK)
         status = session_blame(&s, "disorder", describe_sample(&s, sample));
     if (status == SV_OK)

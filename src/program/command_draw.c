@@ -148,5 +148,7 @@ int run_draw(sv_context *context, const options *o)
     if (status == SV_OK)
         status = draw_figure(&s, &where);
     session_close(&s);
+    if (status == SV_UNDEFINED) /* computed: nothing is left to draw */
+        status = SV_UNDECIDED;
     return status == SV_OK ? 0 : fail_exit(context, status);
 }

@@ -174,9 +174,13 @@ int run_map(sv_context *context, const options *o)
     session s = {.add_map_marker = true};
     sv_status status = session_open(context, o, o->files[0], false, false, &s);
     if (status == SV_OK)
+        status = session_try_windows(&s);
+    if (status == SV_OK)
         status = session_plan(&s, wants_every_site(&s.points[0].problem));
     if (status == SV_OK)
         status = map_one(&s);
     session_close(&s);
+    if (status == SV_UNDEFINED) /* computed: there is nothing left that could have a marker */
+        status = SV_UNDECIDED;
     return status == SV_OK ? 0 : fail_exit(context, status);
 }

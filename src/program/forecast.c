@@ -154,6 +154,21 @@ static double planned_bytes(const session *s, const point *p)
     return fmax(bytes[0], bytes[1]);
 }
 
+/* A run folder's ledger (measured: 300 bytes a realisation with two markers). */
+static const double LEDGER_BYTES = 20e3, ROW_BYTES = 120.0, OUTCOME_BYTES = 90.0;
+
+/* The probes of a map of the sheet as written. */
+static sv_status forecast_probes(session *s, cost_model *costs, forecast *f)
+{
+    double seconds = 0.0;
+    f->probes = s->n_points > 0 ? survey_probes(&s->points[0].problem) : 0.0;
+    if (f->probes <= 0.0)
+        return SV_OK;
+    sv_status status = cost_of_probe(s, &s->points[0], costs, &seconds);
+    f->seconds_probes = f->probes * seconds / s->threads;
+    return status;
+}
+
 sv_status session_forecast(session *s, bool calibrate, forecast *ret)
 {
     forecast f = {.bytes_available = memory_available(), .bytes_before = PROGRAM_BYTES};
@@ -172,8 +187,12 @@ sv_status session_forecast(session *s, bool calibrate, forecast *ret)
     }
     if (bytes > 0.0)
         f.bytes_per_thread = bytes;
+    if (status == SV_OK && calibrate)
+        status = forecast_probes(s, &costs, &f);
     f.realisations = (int64_t)s->n_points * s->base.realisations;
     f.seconds = f.seconds_before + all / s->threads;
+    f.bytes_ledger = LEDGER_BYTES + (double)f.realisations *
+                                        (ROW_BYTES + OUTCOME_BYTES * (double)s->base.n_markers);
     if (status == SV_OK)
         *ret = f;
     return status;
@@ -200,13 +219,21 @@ void print_forecast(const forecast *f, const session *s, const char *prefix, FIL
     time_text(f->seconds, all, sizeof all);
     fprintf(stream, "%ssites         %lld (largest flake)\n", prefix, (long long)f->sites);
     fprintf(stream, "%spoints        %d\n", prefix, s->n_points);
-    fprintf(stream, "%srealisations  %lld over all points\n", prefix, (long long)f->realisations);
+    fprintf(stream, "%srealisations  %s%lld over all points%s\n", prefix,
+            s->base.has_stop ? "at most " : "", (long long)f->realisations,
+            s->base.has_stop ? " (there is a stop rule)" : "");
     fprintf(
         stream,
         "%smemory        %.3g MB per thread, %d threads, and %.2g MB; %.3g GB in this machine\n",
         prefix, f->bytes_per_thread / 1e6, s->threads, f->bytes_before / 1e6,
         f->bytes_available / 1e9);
-    fprintf(stream,
-            "%stime          about %s per realisation, about %s in all, if nothing else runs\n",
-            prefix, one, all);
+    fprintf(stream, "%stime          %s %s per realisation, %s %s in all, if nothing else runs\n",
+            prefix, "about", one, s->base.has_stop ? "at most about" : "about", all);
+    fprintf(stream, "%sledger        %s %.2g MB\n", prefix,
+            s->base.has_stop ? "at most about" : "about", f->bytes_ledger / 1e6);
+    if (f->probes > 0.0) {
+        time_text(f->seconds_probes, all, sizeof all);
+        fprintf(stream, "%sprobes        %.0f of the localizer: a map takes about %s more\n",
+                prefix, f->probes, all);
+    }
 }

@@ -240,6 +240,16 @@ static sv_status add_closed(session *s, const point *p, cost_model *costs, doubl
     return status;
 }
 
+sv_status cost_of_probe(session *s, const point *p, cost_model *costs, double *ret_seconds)
+{
+    double seconds = 0.0;
+    sv_status status =
+        add_scaled(s, TRIAL_LOCALIZER, (double)p->open.n_sites, 1.5, costs, &seconds);
+    if (status == SV_OK)
+        *ret_seconds = seconds;
+    return status;
+}
+
 sv_status cost_of_point(session *s, const point *p, cost_model *costs, double *ret_seconds)
 {
     double seconds = 0.0;

@@ -96,6 +96,8 @@ sv_status session_blame(session *s, const char *key, sv_status status);
 void session_close(session *s);
 /* Flakes, markers and options of a point whose setup is filled. */
 sv_status session_make_point(session *s, point *p);
+/* Has every window of every point a cell? An error is shown at the flake. */
+sv_status session_try_windows(session *s);
 /* Settles the engine of every point (tries realisation 0 of each). */
 sv_status session_plan(session *s, bool site_map);
 /* The plans of all points as comment lines of a sheet; taken from the context. */
@@ -112,6 +114,8 @@ typedef struct forecast {
     double seconds_before;          /* reading the sheet, settling the engines */
     double seconds_per_realisation; /* of the costliest point, on one thread */
     double seconds;                 /* whole ensemble on `threads` */
+    double bytes_ledger;            /* of a run with all its realisations */
+    double probes, seconds_probes;  /* localizer at many points: a map, on `threads` */
 } forecast;
 sv_status session_forecast(session *s, bool calibrate, forecast *ret);
 /* How many projectors one realisation needs: one per boundary asked for. */
@@ -128,6 +132,8 @@ typedef struct cost_model {
 } cost_model;
 /* Processor seconds one realisation of a point takes; runs the trials it needs. */
 sv_status cost_of_point(session *s, const point *p, cost_model *costs, double *ret_seconds);
+/* Processor seconds of one probe of the localizer. */
+sv_status cost_of_probe(session *s, const point *p, cost_model *costs, double *ret_seconds);
 void print_forecast(const forecast *f, const session *s, const char *prefix, FILE *stream);
 
 /* Arithmetic kernel of this machine as text: part of the identity of a run. */
@@ -201,6 +207,8 @@ sv_status flow_write_csv(session *s, const sv_flow_trace *trace, const char *pat
  * drawn. Each figure is told to the caller. */
 typedef void (*figure_teller)(const session *s, const sv_figure_files *files, const char *what);
 bool survey_wanted(const sv_case *problem);
+/* How many probes it has, those over kappa included; 0 without one. */
+double survey_probes(const sv_case *problem);
 sv_status survey_compute(session *s, const sv_case *problem, const sv_sample *sample,
                          sv_survey *ret);
 sv_status survey_write_csv(session *s, const sv_survey *survey, const char *path);

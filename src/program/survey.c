@@ -2,6 +2,7 @@
 /* The localizer at many points: what the map and report commands do with it. */
 #include "program_internal.h"
 
+#include <string.h>
 #include <unistd.h>
 
 static const sv_marker_request *survey_request(const sv_case *problem)
@@ -17,6 +18,25 @@ static const sv_marker_request *survey_request(const sv_case *problem)
 bool survey_wanted(const sv_case *problem)
 {
     return survey_request(problem) != NULL;
+}
+
+/* First number of a key of the localizer times the second, 0: not written. */
+static double product_of(const sv_marker_request *request, const char *name)
+{
+    const sv_kind *kind = &sv_marker_table(&(int){0})[request->marker].kind;
+    for (int i = 0; i < kind->n_keys; i++) {
+        const sv_value *value = &request->values[i];
+        if (strcmp(kind->keys[i].name, name) == 0 && value->present)
+            return (double)value->integer[0] * (value->count > 1 ? (double)value->integer[1] : 1.0);
+    }
+    return 0.0;
+}
+
+double survey_probes(const sv_case *problem)
+{
+    const sv_marker_request *request = survey_request(problem);
+    return request == NULL ? 0.0
+                           : product_of(request, "points") + product_of(request, "kappa_points");
 }
 
 sv_status survey_compute(session *s, const sv_case *problem, const sv_sample *sample,

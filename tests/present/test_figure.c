@@ -157,16 +157,13 @@ SV_TEST(a_saddle_goes_by_its_middle)
         CHECK_OK(sv_figure_phase(test_context(), folder, "map", &f.result, 0, &files));
         char *data = slurp(files.data, &size);
         CHECK_INT(block_of(data, "# boundary\n# pairs", at, 8), 4);
-        /* Both ends of a piece lie by the corner it cuts off: (12, 1) when the middle is high. */
-        bool by_low_corner = false;
-        for (int k = 0; k < 4; k += 2)
-            by_low_corner = by_low_corner ||
-                            (at[k][0] + at[k + 1][0] > 22 && at[k][1] + at[k + 1][1] < 3 &&
-                             fmax(at[k][1], at[k + 1][1]) < 2 && fmin(at[k][0], at[k + 1][0]) > 10);
-        double sides = 0; /* ends of the first piece away from the corner (10, 1) */
-        for (int k = 0; k < 2; k++)
-            sides += (at[k][0] - 10) / 2 + (at[k][1] - 1);
-        CHECK(high ? by_low_corner : sides < 1.0);
+        /* The middle of a piece lies by the corner it cuts off: (12, 1) and (10, 2) when the middle
+         * is high, else the other two. */
+        for (int k = 0; k < 4; k += 2) {
+            const double x = 0.5 * (at[k][0] + at[k + 1][0]) - 11;
+            const double y = 0.5 * (at[k][1] + at[k + 1][1]) - 1.5;
+            CHECK(high ? x * y < 0 : x * y > 0);
+        }
         free(data);
     }
 }
