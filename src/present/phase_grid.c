@@ -182,19 +182,27 @@ static sv_index flood(const sv_phase_grid *g, int marker, sv_index start, uint8_
     return tail;
 }
 
-/* The member nearest to the middle of the region, counted in steps of the axes. */
-static sv_index middle_of(const sv_phase_grid *g, const sv_index *members, sv_index n)
+/* How far a mean is from an integer: small inside a region, large by its border. */
+static double off_integer(const sv_phase_grid *g, int marker, sv_index k)
 {
-    double x = 0.0, y = 0.0, least = INFINITY;
+    const double mean = sv_phase_mean(g, marker, (int)(k % g->n[0]), (int)(k / g->n[0]));
+    return fabs(mean - nearbyint(mean));
+}
+
+/* Of the members well inside the region the one nearest to its middle, in steps of the axes. */
+static sv_index middle_of(const sv_phase_grid *g, int marker, const sv_index *members, sv_index n)
+{
+    double x = 0.0, y = 0.0, least = INFINITY, inside = INFINITY;
     sv_index best = members[0];
     for (sv_index k = 0; k < n; k++) {
         x += (double)(members[k] % g->n[0]) / (double)n;
         y += (double)(members[k] / g->n[0]) / (double)n;
+        inside = fmin(inside, off_integer(g, marker, members[k]));
     }
     for (sv_index k = 0; k < n; k++) {
         const double away =
             hypot((double)(members[k] % g->n[0]) - x, (double)(members[k] / g->n[0]) - y);
-        if (away < least - 1e-9) {
+        if (away < least - 1e-9 && off_integer(g, marker, members[k]) < inside + 0.1) {
             least = away;
             best = members[k];
         }
@@ -215,7 +223,7 @@ sv_status sv_phase_add_labels(sv_context *context, sv_draft *text, const sv_phas
         const double mean = sv_phase_mean(g, marker, (int)(k % g->n[0]), (int)(k / g->n[0]));
         if (seen[k] || !isfinite(mean))
             continue;
-        const sv_index n = flood(g, marker, k, seen, queue), at = middle_of(g, queue, n);
+        const sv_index n = flood(g, marker, k, seen, queue), at = middle_of(g, marker, queue, n);
         sv_draft_add(text, "%.9g %.9g %ld\n", g->values[0][at % g->n[0]],
                      g->values[1][at / g->n[0]], lround(mean));
     }

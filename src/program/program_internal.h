@@ -82,10 +82,8 @@ typedef struct session {
     bool add_map_marker;    /* the map command always computes the local Chern marker */
     ensemble_conclusion *conclude; /* or NULL: summaries of all points */
     bool open_ended;               /* its points are chosen as the work goes on */
+    char (*undrawn)[400];          /* report: the first figure that could not be drawn, or NULL */
     bool levels_only; /* the spectrum command computes no marker: other needs of memory */
-    bool open_ended;        /* its points are chosen as the work goes on */
-    char (*undrawn)[400];   /* report: the first figure that could not be drawn, or NULL */
-    bool levels_only;       /* the spectrum command computes no marker: other needs of memory */
 } session;
 
 /* Reads the sheet and builds all points of its sweep (`with_sweep`) or the sheet as written. */
