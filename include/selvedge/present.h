@@ -398,6 +398,19 @@ SV_API void sv_progress_bar_show(const char *phase, sv_index done, sv_index tota
 /** Clears the line. */
 SV_API void sv_progress_bar_end(sv_progress_bar *bar);
 
+/** What `info RUN` shows. All borrowed. */
+typedef struct sv_provenance {
+    const char *folder;
+    const sv_run *run;
+    const sv_run_history *history;
+    const sv_run_health *health;
+} sv_provenance;
+
+/** Provenance, health and cost of a run as JSON. */
+SV_API SV_MUST_USE sv_status sv_provenance_json(sv_context *context, const sv_provenance *p,
+                                                char **ret_text);
+SV_API void sv_provenance_print(const sv_provenance *p, FILE *stream);
+
 #ifdef __cplusplus
 }
 #endif

@@ -125,6 +125,54 @@ SV_API SV_MUST_USE sv_status sv_run_history_read(sv_context *context, sv_run *ru
                                                  sv_run_history *ret_history);
 /** Gives it back; safe on a zeroed history and twice. */
 SV_API void sv_run_history_free(sv_context *context, sv_run_history *history);
+
+/** An engine that computed outcomes of a marker. */
+typedef struct sv_engine_use {
+    char name[16];
+    int64_t count;
+    int32_t degrees[2]; /**< lowest and highest; 0: none */
+} sv_engine_use;
+
+enum { SV_HEALTH_ENGINES = 4 };
+
+/** Numerical health of one marker over all rows of a run. */
+typedef struct sv_marker_health {
+    char marker[64];        /**< name; empty: not known */
+    int64_t verdicts[4];    /**< by sv_verdict */
+    double numerical_error; /**< largest stated by a resolved outcome; NaN: none is */
+    int32_t worst_point;    /**< where */
+    int64_t worst_realisation;
+    sv_engine_use engines[SV_HEALTH_ENGINES];
+    int n_engines;
+} sv_marker_health;
+
+/** What one process computed. */
+typedef struct sv_worker_cost {
+    char host[64]; /**< empty: not known, or one of too many */
+    int32_t rank;
+    int64_t realisations, peak_bytes;
+    double seconds, processor_seconds;
+} sv_worker_cost;
+
+/** Health and cost of a run. */
+typedef struct sv_run_health {
+    int64_t realisations; /**< rows, over all points */
+    int64_t failed;       /**< of them as a whole */
+    sv_marker_health markers[SV_MAX_MARKERS];
+    int n_markers;
+    double seconds, processor_seconds; /**< sums over realisations */
+    double longest;                    /**< seconds of the longest one */
+    int32_t longest_point;
+    int64_t longest_realisation, peak_bytes;
+    sv_worker_cost *workers; /**< in the order of their first row */
+    sv_index n_workers;
+} sv_run_health;
+
+/** Reads every row with its checksums and adds up. @return SV_STORAGE for damage */
+SV_API SV_MUST_USE sv_status sv_run_health_read(sv_context *context, sv_run *run,
+                                                sv_run_health *ret_health);
+/** Gives it back; safe on a zeroed health and twice. */
+SV_API void sv_run_health_free(sv_context *context, sv_run_health *health);
 /**
  * Value of a meta key, or NULL: "identity" (canonical text), "identity_digest", "program_version",
  * "kernel", "sheet" (resolved sheet), "sheet_digest", "markers", "points", "realisations", "task".

@@ -165,6 +165,7 @@ static sv_status average(session *s)
     status = launch_agree(context, status, ""); /* the run is open: all may begin */
     if (status == SV_OK)
         status = computed = compute(s, run, &ensemble);
+    run_folder_note_end(s, run, computed);
     sv_error error = context->error;
     if (status == SV_OK || computed == SV_INTERRUPTED) {
         status = SV_OK;

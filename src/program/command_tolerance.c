@@ -87,6 +87,7 @@ static sv_status tolerance(session *s)
         status = inquiry_open(s, run, &q);
     if (status == SV_OK)
         status = search_with_progress(&q, &result);
+    run_folder_note_end(s, run, status);
     result.seconds = seconds_now() - start;
     if (status == SV_OK)
         status = write_results(s, run, &result);

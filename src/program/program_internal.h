@@ -155,6 +155,8 @@ sv_stop_rule session_stop_rule(const session *s);
  * in it checked against its ledger, its points.csv and summary.json written, its result judged. */
 sv_status run_folder_open(session *s, sv_run **ret_run);
 sv_status run_folder_check_identity(session *s, const sv_run *run);
+/* Notes in the run why a computation ended before its time; nothing for SV_OK. */
+void run_folder_note_end(session *s, sv_run *run, sv_status computed);
 sv_status run_folder_write(session *s, sv_run *run, const sv_result *result, char **ret_json);
 /* A text into a file of the run folder. */
 sv_status run_folder_put_text(session *s, sv_run *run, const char *name, const char *text);
@@ -241,6 +243,8 @@ bool wants_progress(const options *o);
 /* Stop requests from signals. */
 void signals_install(void);
 bool signals_stop_requested(void *user);
+/* Name of the signal that asked, or NULL. */
+const char *signals_name(void);
 
 /* Processes of one job: launch_mpi.c, or launch_none.c for a build without MPI. */
 /* Joins the others when a launcher has started this process; only rank 0 has an output then. */

@@ -118,6 +118,26 @@ sv_status run_folder_put_text(session *s, sv_run *run, const char *name, const c
     return status == SV_OK ? sv_write_file(s->context, path, text, strlen(text)) : status;
 }
 
+void run_folder_note_end(session *s, sv_run *run, sv_status computed)
+{
+    char note[1100];
+    const sv_error error = s->context->error;
+    const char *name = signals_name();
+    if (run == NULL || computed == SV_OK)
+        return;
+    if (computed != SV_INTERRUPTED)
+        snprintf(note, sizeof note, "%s", error.message);
+    else if (name != NULL)
+        snprintf(note, sizeof note, "%s: %s", name, error.message);
+    else
+        snprintf(note, sizeof note, "time limit of %g s: %s", s->options->time_limit,
+                 error.message);
+    const char *what = computed == SV_INTERRUPTED ? "stop" : "failure";
+    if (sv_run_event(s->context, run, what, note) != SV_OK)
+        sv_log(s->context, SV_LOG_WARNING, "%s", s->context->error.message);
+    s->context->error = error; /* of the computation: the one to tell */
+}
+
 sv_status run_folder_write(session *s, sv_run *run, const sv_result *result, char **ret_json)
 {
     char *json = NULL, *csv = NULL, *comparisons = NULL;

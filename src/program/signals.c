@@ -8,11 +8,11 @@
 
 /* A signal handler can reach nothing but static data; only the program, never the library, has
  * this one. */
-static volatile sig_atomic_t stop_requested;
+static volatile sig_atomic_t stop_requested; /* number of the signal */
 
 static void request_stop(int number)
 {
-    stop_requested = 1;
+    stop_requested = number;
     signal(number, SIG_DFL);
 }
 
@@ -25,6 +25,15 @@ void signals_install(void)
     action.sa_flags = SA_RESTART;
     for (size_t k = 0; k < sizeof numbers / sizeof numbers[0]; k++)
         sigaction(numbers[k], &action, NULL);
+}
+
+const char *signals_name(void)
+{
+    const int number = (int)stop_requested;
+    return number == SIGINT    ? "SIGINT"
+           : number == SIGTERM ? "SIGTERM"
+           : number == SIGUSR1 ? "SIGUSR1"
+                               : NULL;
 }
 
 bool signals_stop_requested(void *user)

@@ -21,9 +21,12 @@ sv_status sv_ledger_fail(sv_context *context, const sv_run *run, const char *wha
     if ((code & 0xff) == SQLITE_NOMEM)
         return SV_FAIL(context, SV_NO_MEMORY, "out of memory at %s/%s", run->folder,
                        SV_LEDGER_NAME);
+    /* A write that is cut short leaves no reason. */
+    const char *why = reason != 0                  ? strerror(reason)
+                      : code == SQLITE_IOERR_WRITE ? "disk full, or a limit on the size of files"
+                                                   : "";
     return SV_FAIL(context, SV_STORAGE, "cannot %s %s/%s: %s%s%s", what, run->folder,
-                   SV_LEDGER_NAME, sqlite3_errmsg(run->ledger), reason != 0 ? ": " : "",
-                   reason != 0 ? strerror(reason) : "");
+                   SV_LEDGER_NAME, sqlite3_errmsg(run->ledger), *why != '\0' ? ": " : "", why);
 }
 
 sv_status sv_ledger_execute(sv_context *context, sv_run *run, const char *sql)

@@ -22,6 +22,10 @@ _failures = []
 _folders = []
 
 
+class Skip(Exception):
+    """Raised by a test that cannot be made here, with the reason."""
+
+
 def test(function):
     """Registers a test; its name becomes the TAP description."""
     _tests.append(function)
@@ -111,13 +115,16 @@ def run(*arguments, code=None, **options):
 
 def _run_one(number, function):
     _failures.clear()
+    skipped = ""
     try:
         function()
+    except Skip as reason:
+        skipped = " # SKIP %s" % reason
     except Exception:  # a test that breaks has failed
         _failures.append(traceback.format_exc())
     for failure in _failures:
         print("\n".join("# " + line for line in failure.splitlines()))
-    print("%sok %d - %s" % ("not " if _failures else "", number, function.__name__), flush=True)
+    print("%sok %d - %s%s" % ("not " if _failures else "", number, function.__name__, skipped), flush=True)
     return not _failures
 
 

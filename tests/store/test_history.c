@@ -4,6 +4,7 @@
 #include <unistd.h>
 
 #include "fixture.h"
+#include "selvedge/present.h"
 
 static sv_run *open_writing(const char *command_line)
 {
@@ -152,5 +153,55 @@ SV_TEST(texts_are_stored_fit_to_be_shown)
         CHECK_TEXT(o == NULL ? "" : sv_ensemble_text(&e, o->reason), plain[k]);
     }
     sv_ensemble_free(context, &e);
+    sv_run_close(context, run);
+}
+
+static char *print_to_text(const sv_provenance *provenance)
+{
+    char *text = NULL;
+    size_t size = 0;
+    FILE *stream = open_memstream(&text, &size);
+    sv_provenance_print(provenance, stream);
+    fclose(stream);
+    return text;
+}
+
+/* Sums by hand: 3 points of 4 realisations, of each point realisation 1 unresolved for bott;
+ * seconds 0.1 + 0.001 k, processor 0.09 + 0.001 point, peak 10^6 + k, one host per point. */
+SV_TEST(health_and_cost_are_added_up)
+{
+    sv_context *context = test_context();
+    sv_run *run = NULL;
+    sv_run_health h = {0};
+    sv_run_history history = {0};
+    char *json = NULL;
+    fixture_fresh_run("health", 4);
+    CHECK_OK(sv_run_open_read(context, fixture_folder, &run));
+    CHECK_OK(sv_run_health_read(context, run, &h));
+    CHECK_OK(sv_run_history_read(context, run, &history));
+    CHECK(h.realisations == 12 && h.failed == 0 && h.n_markers == 2);
+    CHECK_TEXT(h.markers[1].marker, "bott");
+    CHECK(h.markers[0].verdicts[SV_RESOLVED] == 12 && h.markers[1].verdicts[SV_RESOLVED] == 9);
+    CHECK_INT(h.markers[1].verdicts[SV_UNRESOLVED], 3);
+    CHECK_CLOSE(h.markers[1].numerical_error, 1e-13, 0.0); /* the infinite one is unresolved */
+    CHECK(h.markers[0].n_engines == 1 && h.markers[0].engines[0].count == 12);
+    CHECK(h.markers[0].engines[0].degrees[0] == 41 && h.markers[0].engines[0].degrees[1] == 41);
+    CHECK_CLOSE(h.seconds, 12 * 0.1 + 3 * 0.006, 1e-12);
+    CHECK_CLOSE(h.processor_seconds, 12 * 0.09 + 4 * 0.003, 1e-12);
+    CHECK(h.peak_bytes == 1000003 && h.n_workers == 3 && h.workers[2].realisations == 4);
+    CHECK_TEXT(h.workers[2].host, "node2");
+    CHECK(h.longest_realisation == 3 && h.longest_point == 0);
+    const sv_provenance provenance = {
+        .folder = "the/folder", .run = run, .history = &history, .health = &h};
+    CHECK_OK(sv_provenance_json(context, &provenance, &json));
+    char *text = print_to_text(&provenance);
+    CHECK(strstr(json, "\"unresolved\": 3") != NULL && strstr(json, "\"process\": ") != NULL);
+    CHECK(strstr(text, "node2") != NULL && strstr(text, "dense, degree 41") != NULL);
+    CHECK(strstr(text, "selvedge average sheet.yaml -o run") != NULL);
+    free(text);
+    sv_give(context, json);
+    sv_run_history_free(context, &history);
+    sv_run_health_free(context, &h);
+    sv_run_health_free(context, &h);
     sv_run_close(context, run);
 }
