@@ -415,7 +415,7 @@ void print_help(const command *one, FILE *stream)
             "response frays\n\nusage: selvedge COMMAND [OPTIONS] FILE\n\n",
             sv_version());
     for (int k = 0; k < count; k++)
-        fprintf(stream, "  %-8s %s\n", table[k].name, table[k].doc);
+        fprintf(stream, "  %-9s %s\n", table[k].name, table[k].doc);
     fprintf(stream, "\nselvedge COMMAND --help has the options of a command, selvedge help keys "
                     "the keys of a sheet.\n\nexit codes: 0 done, 1 could not be decided, 2 usage, "
                     "3 invalid input, 4 storage,\n5 numerical failure, 6 refused, 7 stopped early "
