@@ -97,7 +97,7 @@ SV_API SV_MUST_USE sv_status sv_case_plan(sv_context *context, sv_case *point, b
  *                   values that are all the same must be 4·at_least. Of an index instead
  *                   max(s², (Σ(x − m)² + 2)/(n + 1))/n: as if two more realisations were one off.
  *   share_width     of Wilson's 95 % interval of the share of the most frequent index.
- * Coverage of the intervals under the rule: docs/statistics.md.
+ * Coverage of the intervals under the rule: data/manual/statistics.md.
  */
 typedef struct sv_stop_rule {
     bool active;
@@ -334,7 +334,7 @@ SV_API sv_status sv_student_interval(const sv_moments *moments, double confidenc
 /**
  * Student's interval corrected for skewness γ: the quantiles ±t of g(T) = T + γT²/(3√n) +
  * γ²T³/(27n) + γ/(6√n), T = √n (mean − μ)/deviation, turned back to μ. Without skewness it is
- * Student's. What it covers stands in docs/statistics.md.
+ * Student's. What it covers stands in data/manual/statistics.md.
  * @return SV_UNDEFINED for n < 3
  * Reference: P. Hall, J. R. Stat. Soc. B 54, 221 (1992) (value recalled from memory)
  */

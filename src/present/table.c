@@ -254,7 +254,7 @@ static void print_legend_of_warnings(FILE *stream, const sv_result *result)
     if (uneven)
         fprintf(stream,
                 "  !: the interval covers less than 95 %%; the one to use instead is corrected "
-                "for\n  skewness (docs/statistics.md).\n");
+                "for\n  skewness (data/manual/statistics.md).\n");
     if (few)
         fprintf(stream, "  Fewer than 10 realisations do not show whether they are skewed: "
                         "their\n  intervals are for normal values.\n");

@@ -146,7 +146,7 @@ def a_dry_run_writes_nothing():
 
 
 def believed_error(marker, n):
-    """Standard error of the stop rule (docs/statistics.md): skewed values count as wider."""
+    """Standard error of the stop rule (data/manual/statistics.md): skewed values count as wider."""
     plain = marker["skewness"] * (n - 2) / (n * (n - 1)) ** 0.5
     return marker["standard_error"] * (1 + 5 * plain ** 2 / n) ** 0.5
 

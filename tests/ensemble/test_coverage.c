@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* How often the intervals contain the truth, by simulation: 20,000 synthetic ensembles a row. The
- * rows are printed; docs/statistics.md holds them, and the test compares. */
+ * rows are printed; data/manual/statistics.md holds them, and the test compares. */
 #include "selvedge/ensemble.h"
 #include "testing.h"
 
@@ -98,7 +98,7 @@ static void read_manual(void)
 {
     size_t size;
     if (manual == NULL)
-        CHECK_OK(sv_read_file(test_context(), test_data("../docs/statistics.md"), 1 << 20, &manual,
+        CHECK_OK(sv_read_file(test_context(), test_data("../data/manual/statistics.md"), 1 << 20, &manual,
                               &size));
 }
 
