@@ -30,8 +30,8 @@ typedef double _Complex sv_complex;
 #endif
 
 #if defined(__GNUC__)
-#define SV_API __attribute__((visibility("default")))
-#define SV_MUST_USE __attribute__((warn_unused_result))
+#define SV_API                __attribute__((visibility("default")))
+#define SV_MUST_USE           __attribute__((warn_unused_result))
 #define SV_PRINTF(fmt, first) __attribute__((format(printf, fmt, first)))
 #else
 #define SV_API
@@ -125,10 +125,12 @@ SV_API void sv_context_take_error(sv_context *to, const sv_context *from);
 /** Writes the error record and returns `status`. Use the SV_FAIL macro. */
 SV_API sv_status sv_fail_at(sv_context *context, sv_status status, const char *file, int line,
                             const char *format, ...) SV_PRINTF(5, 6);
-#define SV_FAIL(context, status, ...) sv_fail_at((context), (status), __FILE__, __LINE__, __VA_ARGS__)
+#define SV_FAIL(context, status, ...)                                                              \
+    sv_fail_at((context), (status), __FILE__, __LINE__, __VA_ARGS__)
 
 /** Hands a message to the log callback; nothing without one. */
-SV_API void sv_log(sv_context *context, sv_log_level level, const char *format, ...) SV_PRINTF(3, 4);
+SV_API void sv_log(sv_context *context, sv_log_level level, const char *format, ...)
+    SV_PRINTF(3, 4);
 /** Tells the progress callback how far the work is. */
 SV_API void sv_progress(sv_context *context, const char *phase, sv_index done, sv_index total);
 /** True when the caller asked to stop; the function that sees it returns SV_INTERRUPTED. */
@@ -160,16 +162,16 @@ SV_API SV_MUST_USE sv_status sv_reserve(sv_context *context, void *array, sv_ind
 
 /** What a quantity measures. Angles and shares have units too (deg, %). */
 typedef enum sv_dimension {
-    SV_DIM_NONE = 0,   /**< a pure number; `%` and `ppm` allowed */
-    SV_DIM_ENERGY,     /**< inside: electronvolt when written with a unit */
-    SV_DIM_LENGTH,     /**< inside: nanometre when written with a unit */
-    SV_DIM_DENSITY,    /**< per area; inside: nm^-2 when written with a unit */
-    SV_DIM_ANGLE,      /**< inside: radian */
-    SV_DIM_TEMPERATURE, /**< inside: kelvin */
-    SV_DIM_ENERGY_LENGTH, /**< ħ times a velocity; inside: eV nm, in a model: energy unit × nm */
-    SV_DIM_ENERGY_AREA,   /**< inside: eV nm², in a model: energy unit × nm² */
+    SV_DIM_NONE = 0,       /**< a pure number; `%` and `ppm` allowed */
+    SV_DIM_ENERGY,         /**< inside: electronvolt when written with a unit */
+    SV_DIM_LENGTH,         /**< inside: nanometre when written with a unit */
+    SV_DIM_DENSITY,        /**< per area; inside: nm^-2 when written with a unit */
+    SV_DIM_ANGLE,          /**< inside: radian */
+    SV_DIM_TEMPERATURE,    /**< inside: kelvin */
+    SV_DIM_ENERGY_LENGTH,  /**< ħ times a velocity; inside: eV nm, in a model: energy unit × nm */
+    SV_DIM_ENERGY_AREA,    /**< inside: eV nm², in a model: energy unit × nm² */
     SV_DIM_VOLUME_DENSITY, /**< inside: nm^-3 when written with a unit */
-    SV_DIM_TIME           /**< inside: second */
+    SV_DIM_TIME            /**< inside: second */
 } sv_dimension;
 
 /** One row of the table of units: value_in_base = factor · value. */
@@ -192,7 +194,8 @@ SV_API const char *sv_dimension_name(sv_dimension dimension);
 SV_API const sv_unit *sv_unit_table(size_t *ret_count);
 /** Row of a symbol, or NULL. */
 SV_API const sv_unit *sv_unit_find(const char *symbol);
-/** Space-separated symbols of one dimension, for messages. @param[out] text at least `size` bytes */
+/** Space-separated symbols of one dimension, for messages. @param[out] text at least `size` bytes
+ */
 SV_API void sv_unit_list(sv_dimension dimension, char *text, size_t size);
 
 typedef enum sv_parse_result {
@@ -223,22 +226,22 @@ SV_API void sv_format_real(double value, char *text, size_t size);
 
 /** How the value of a sheet key is written. */
 typedef enum sv_key_type {
-    SV_KEY_REAL = 1,     /**< number, unit allowed per dimension → real[0] */
-    SV_KEY_INTEGER,      /**< → integer[0] */
-    SV_KEY_TEXT,         /**< → text */
-    SV_KEY_CHOICE,       /**< one of `choices` → text */
-    SV_KEY_FLAG,         /**< true or false → integer[0] */
-    SV_KEY_FILE,         /**< path beside the sheet → text (resolved path), digest */
-    SV_KEY_REAL_PAIR,    /**< [x, y] → real[0..1] */
-    SV_KEY_INTEGER_PAIR, /**< [i, j] → integer[0..1] */
+    SV_KEY_REAL = 1,        /**< number, unit allowed per dimension → real[0] */
+    SV_KEY_INTEGER,         /**< → integer[0] */
+    SV_KEY_TEXT,            /**< → text */
+    SV_KEY_CHOICE,          /**< one of `choices` → text */
+    SV_KEY_FLAG,            /**< true or false → integer[0] */
+    SV_KEY_FILE,            /**< path beside the sheet → text (resolved path), digest */
+    SV_KEY_REAL_PAIR,       /**< [x, y] → real[0..1] */
+    SV_KEY_INTEGER_PAIR,    /**< [i, j] → integer[0..1] */
     SV_KEY_INTEGER_OR_PAIR, /**< n or [n1, n2] → integer[0..count-1] */
-    SV_KEY_AUTO_OR_REAL, /**< the word auto (has_auto) or a number → real[0] */
-    SV_KEY_PLACE,        /**< the word centre (has_auto) or [x, y] → real[0..1] */
-    SV_KEY_REAL_LIST,    /**< [a, b, …] → list, count */
-    SV_KEY_TREE,         /**< nested block, read by code of its own */
-    SV_KEY_CHOICE_PAIR,  /**< one of `choices` for both, or [a, b] → integer[0..1], row numbers */
-    SV_KEY_POINTS,       /**< [[x, y], …] → list, count numbers */
-    SV_KEY_LOOPS         /**< [[[x, y], …], …] → list, count numbers: points of a loop, x, y, … */
+    SV_KEY_AUTO_OR_REAL,    /**< the word auto (has_auto) or a number → real[0] */
+    SV_KEY_PLACE,           /**< the word centre (has_auto) or [x, y] → real[0..1] */
+    SV_KEY_REAL_LIST,       /**< [a, b, …] → list, count */
+    SV_KEY_TREE,            /**< nested block, read by code of its own */
+    SV_KEY_CHOICE_PAIR, /**< one of `choices` for both, or [a, b] → integer[0..1], row numbers */
+    SV_KEY_POINTS,      /**< [[x, y], …] → list, count numbers */
+    SV_KEY_LOOPS /**< [[[x, y], …], …] → list, count numbers: points of a loop, x, y, … */
 } sv_key_type;
 
 /** One row of a key table: drives validation, defaults, help, `check` and the JSON Schema. */
@@ -246,12 +249,12 @@ typedef struct sv_key {
     const char *name;
     sv_key_type type;
     sv_dimension dimension;
-    double low, high;      /**< admissible range, both ends included unless open */
-    bool low_open;         /**< low itself is not admissible */
-    const char *choices;   /**< space-separated words for SV_KEY_CHOICE */
-    const char *fallback;  /**< default as text; NULL: none */
+    double low, high;     /**< admissible range, both ends included unless open */
+    bool low_open;        /**< low itself is not admissible */
+    const char *choices;  /**< space-separated words for SV_KEY_CHOICE */
+    const char *fallback; /**< default as text; NULL: none */
     bool required;
-    const char *doc;       /**< one line for help and schema */
+    const char *doc; /**< one line for help and schema */
 } sv_key;
 
 /** Value of one key after validation. Lengths are in lattice constants, energies in the model's
@@ -307,9 +310,9 @@ typedef struct sv_table_field {
 typedef struct sv_table {
     const sv_table_column *columns;
     int n_columns;
-    int place[SV_TABLE_COLUMNS]; /**< field of a column, −1: absent */
+    int place[SV_TABLE_COLUMNS];           /**< field of a column, −1: absent */
     const sv_unit *unit[SV_TABLE_COLUMNS]; /**< from the header, or NULL */
-    const char *at, *end; /**< what is not read yet */
+    const char *at, *end;                  /**< what is not read yet */
     const char *line_text;
     int line, line_length; /**< line from 1 */
     int header_fields, n_fields;
@@ -341,7 +344,8 @@ SV_API SV_MUST_USE sv_status sv_table_real(sv_context *context, sv_table *table,
 /** A whole number of a column. @return SV_INVALID_INPUT, fault filled */
 SV_API SV_MUST_USE sv_status sv_table_integer(sv_context *context, sv_table *table, int column,
                                               int64_t *ret_value);
-/** Fills the fault for a column of this row (−1: the row). @param hint or NULL. @return SV_INVALID_INPUT */
+/** Fills the fault for a column of this row (−1: the row). @param hint or NULL. @return
+ * SV_INVALID_INPUT */
 SV_API SV_MUST_USE sv_status sv_table_fail(sv_context *context, sv_table *table, int column,
                                            const char *hint, const char *format, ...)
     SV_PRINTF(5, 6);

@@ -23,9 +23,9 @@
  * **Flux.** Electrons: ⟨R'|H|R⟩ carries exp(−2πi ∫A·dl) per flux quantum h/e; gauge A = φ u dv in
  * reduced coordinates r = u·a1 + v·a2, φ quanta per cell, straight path from R to R'.
  *
- * A flux Φ through a hole turns a hop from R to R' by exp(−iΦ Δθ), Δθ the angle (−π, π) from R to R'
- * seen from a point in the hole: the same up to a gauge as a phase exp(∓2πi Φ) on the hops across a
- * cut from the hole outwards, counter-clockwise (−) or clockwise (+).
+ * A flux Φ through a hole turns a hop from R to R' by exp(−iΦ Δθ), Δθ the angle (−π, π) from R to
+ * R' seen from a point in the hole: the same up to a gauge as a phase exp(∓2πi Φ) on the hops
+ * across a cut from the hole outwards, counter-clockwise (−) or clockwise (+).
  *
  * **Box disorder** is written by its full width W: V is uniform on [−W/2, W/2], variance W²/12.
  */

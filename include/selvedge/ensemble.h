@@ -52,8 +52,8 @@ typedef struct sv_record {
     /* What it cost and who computed it: no two runs agree on these. */
     double seconds;           /**< wall clock */
     double processor_seconds; /**< of its thread; of the process where solve.threads > 1 */
-    int64_t peak_bytes;       /**< largest resident memory of the process until then; 0: not known */
-    int32_t rank, thread;     /**< of the worker, from 0 */
+    int64_t peak_bytes;   /**< largest resident memory of the process until then; 0: not known */
+    int32_t rank, thread; /**< of the worker, from 0 */
     char host[64];
 } sv_record;
 
@@ -105,17 +105,18 @@ typedef struct sv_stop_rule {
     bool of_index;         /**< it is an index */
     double standard_error; /**< 0: not asked for */
     double share_width;    /**< 0: not asked for */
-    double seconds;        /**< of computing, summed over the realisations of a point; 0: no limit. What counts then
-                                depends on the machine, but given its records no longer on anything else */
+    double seconds; /**< of computing, summed over the realisations of a point; 0: no limit. What
+                       counts then depends on the machine, but given its records no longer on
+                       anything else */
     int64_t at_least;
 } sv_stop_rule;
 
 enum { SV_STOP_INDICES = 32 };
 /** The leading realisations of a point as the rule sees them; begins zeroed. */
 typedef struct sv_stop_state {
-    int64_t counted;  /**< realisations taken in */
-    int64_t judged;   /**< of them, those on which the marker exists */
-    int64_t resolved; /**< of them, those with a value */
+    int64_t counted;             /**< realisations taken in */
+    int64_t judged;              /**< of them, those on which the marker exists */
+    int64_t resolved;            /**< of them, those with a value */
     double mean, squares, cubes; /**< central sums of the values */
     double seconds;
     int n_indices;
@@ -156,7 +157,7 @@ typedef struct sv_ensemble_options {
     int threads;          /**< ≥ 1 */
     sv_stop_rule stop;
     sv_sink sink;
-    double time_limit; /**< seconds, 0: none */
+    double time_limit;   /**< seconds, 0: none */
     const sv_team *team; /**< other processes that help, or NULL */
     int32_t task, tasks; /**< compute only what belongs to task `task` (from 1) of `tasks`; 0 of 0:
                               everything */
@@ -238,8 +239,8 @@ SV_API SV_MUST_USE sv_status sv_ensemble_run(sv_context *context, const sv_case 
                                              sv_ensemble *ensemble);
 
 /**
- * Computes realisations for rank 0 of a team until it says that there are no more. The points must be
- * those rank 0 has. Waiting costs a look for messages every five milliseconds.
+ * Computes realisations for rank 0 of a team until it says that there are no more. The points must
+ * be those rank 0 has. Waiting costs a look for messages every five milliseconds.
  * @return SV_OK when rank 0 ended it, whatever the reason; SV_INTERNAL for a message that is none,
  *         or the status of the team's functions. A failure to compute is told to rank 0.
  */
@@ -262,14 +263,15 @@ enum { SV_SITE_BITS = 36, SV_SITE_FAN = 64, SV_SITE_LEVELS = 6, SV_MOST_ENTRIES 
 
 /**
  * What one realisation adds to the maps of its point. Entries: the sites of the pristine flake in
- * their order, then its cells when a cell has several sites; adatoms count in cells only. The value of a cell is the sum over the
- * sites it has left; none when all are gone or one of them has no value.
+ * their order, then its cells when a cell has several sites; adatoms count in cells only. The value
+ * of a cell is the sum over the sites it has left; none when all are gone or one of them has no
+ * value.
  */
 typedef struct sv_site_record {
-    sv_index n;       /**< entries; 0: the marker of this realisation is not resolved */
-    int64_t *values;  /**< fixed point, magnitude below 4096·2^36, or SV_SITE_ABSENT */
-    int64_t counted;  /**< leading realisations of the point known to count when this one came in:
-                           the store may sum over them for good. 0 is always right */
+    sv_index n;      /**< entries; 0: the marker of this realisation is not resolved */
+    int64_t *values; /**< fixed point, magnitude below 4096·2^36, or SV_SITE_ABSENT */
+    int64_t counted; /**< leading realisations of the point known to count when this one came in:
+                          the store may sum over them for good. 0 is always right */
 } sv_site_record;
 
 /** Entries of a flake: sites, and cells when they differ from sites. */
@@ -360,11 +362,11 @@ SV_API sv_status sv_bootstrap_interval(sv_context *context, const double *values
 #define SV_TWO_PEAKS 0.85
 /** Sorted values cut in two groups as the least sum of squares about the groups' means has it. */
 typedef struct sv_peaks {
-    bool apart;        /**< explained > SV_TWO_PEAKS */
-    double explained;  /**< share of the variance that lies between the groups; NaN: n < 4 or
-                            constant. Normal values: 0.64, uniform: 0.75, two values: 1 */
-    int64_t n_low;     /**< values of the lower group */
-    double low, high;  /**< means of the groups */
+    bool apart;       /**< explained > SV_TWO_PEAKS */
+    double explained; /**< share of the variance that lies between the groups; NaN: n < 4 or
+                           constant. Normal values: 0.64, uniform: 0.75, two values: 1 */
+    int64_t n_low;    /**< values of the lower group */
+    double low, high; /**< means of the groups */
 } sv_peaks;
 /** The best cut; `apart` false and NaN below four values and for constant ones. */
 SV_API sv_peaks sv_peaks_of(const double *sorted, int64_t n);
@@ -415,14 +417,14 @@ typedef struct sv_comparison {
     int32_t other, point; /**< point minus other */
     const char *marker;
     bool is_index;
-    int64_t pairs; /**< realisations resolved at both */
+    int64_t pairs;                                  /**< realisations resolved at both */
     double difference, standard_error, interval[2]; /**< of the means, 95 %, Student on the pairs */
     double p_value; /**< two-sided that there is none: t test of the pairs; for an index the exact
                          test of `lost` against `gained` */
     double adjusted_p_value; /**< Holm, over the comparisons of the marker; set by the caller */
     double correlation;      /**< of the pairs */
     double unpaired_error, unpaired_p_value; /**< had the points been drawn apart (Welch) */
-    int64_t index;        /**< most frequent one at `other` among the pairs */
+    int64_t index;                           /**< most frequent one at `other` among the pairs */
     int64_t lost, gained; /**< pairs that have it at `other` only, at `point` only */
 } sv_comparison;
 /**
@@ -474,7 +476,7 @@ SV_API bool sv_split_optimise(sv_split *split);
 /** How often an index came out. */
 typedef struct sv_index_share {
     int64_t index, count;
-    double share; /**< of all counted realisations */
+    double share;             /**< of all counted realisations */
     double interval[2];       /**< Wilson */
     double exact_interval[2]; /**< Clopper–Pearson */
 } sv_index_share;

@@ -33,15 +33,16 @@ typedef struct sv_outcome {
                       Chern: level spacing at the Fermi energy; localizer: its gap, unit of the
                       model; NaN: none */
     double weakest; /**< Bott: smallest modulus of an eigenvalue of V U V† U†, which is 0 when U or
-                         V is singular (or a lower bound, as for the margin); spectral flow: least share of a level
-                         found again; density response: largest movement of a level next to the Fermi energy; NaN: none */
+                         V is singular (or a lower bound, as for the margin); spectral flow: least
+                       share of a level found again; density response: largest movement of a level
+                       next to the Fermi energy; NaN: none */
     double unresolved_within; /**< levels nearer than this to the Fermi energy are occupied in part
                                    only; 0: none is; NaN: no projector. Not kept in a run folder */
     double nearest_level;     /**< distance from the Fermi energy to the nearest level; NaN: not
                                    known. Not kept in a run folder */
-    double sum_over_sites;                 /**< local Chern, when asked for; NaN otherwise */
-    int64_t window_cells;                  /**< local Chern */
-    double kappa;                          /**< localizer: energy per lattice constant; NaN: none */
+    double sum_over_sites;    /**< local Chern, when asked for; NaN otherwise */
+    int64_t window_cells;     /**< local Chern */
+    double kappa;             /**< localizer: energy per lattice constant; NaN: none */
     double highest_occupied, lowest_empty; /**< NaN when there is none */
     int64_t electrons;
     int32_t degree; /**< of the polynomial its projector applied (chebyshev); 0: none */
@@ -54,12 +55,12 @@ typedef enum sv_boundary { SV_OPEN_COPY, SV_CLOSED_COPY } sv_boundary;
 typedef struct sv_marker_input {
     const sv_sample *sample;
     const sv_occupation *occupation;
-    sv_projector *projector; /**< NULL for markers that do not need one */
-    const sv_value *values;  /**< one per key of its kind */
-    sv_index sampled_cells;  /**< local Chern: window cells to sample, 0: all */
+    sv_projector *projector;  /**< NULL for markers that do not need one */
+    const sv_value *values;   /**< one per key of its kind */
+    sv_index sampled_cells;   /**< local Chern: window cells to sample, 0: all */
     sv_index sampled_vectors; /**< local Chern: random-phase vectors instead of cells; 0: none */
-    int threads;             /**< inside this realisation; 0 or 1: one */
-    uint64_t seed;           /**< of the ensemble: draws the sampled cells */
+    int threads;              /**< inside this realisation; 0 or 1: one */
+    uint64_t seed;            /**< of the ensemble: draws the sampled cells */
     sv_index realisation;
     double *ret_site_values; /**< local Chern: n values per site, or NULL; also switches on the
                                   sum over all sites */
@@ -111,12 +112,12 @@ SV_API SV_MUST_USE sv_status sv_local_chern(sv_context *context, const sv_marker
 
 /** One block of a coarse map. NaN: does not exist. */
 typedef struct sv_block {
-    double at[2];          /**< centre, lattice constants */
-    sv_index cells;        /**< of the flake, vacant ones included; 0: outside */
-    sv_index sampled;      /**< cells computed; 0: all lie too near to the edge */
-    double left_out;       /**< share of its runs of cells that is not computed */
-    double mean;           /**< of the marker per sampled cell; none above a numerical error of 0.02 */
-    double error;          /**< standard error of sampling; none for a single run of several */
+    double at[2];     /**< centre, lattice constants */
+    sv_index cells;   /**< of the flake, vacant ones included; 0: outside */
+    sv_index sampled; /**< cells computed; 0: all lie too near to the edge */
+    double left_out;  /**< share of its runs of cells that is not computed */
+    double mean;      /**< of the marker per sampled cell; none above a numerical error of 0.02 */
+    double error;     /**< standard error of sampling; none for a single run of several */
     double numerical_error; /**< estimate, of the mean */
 } sv_block;
 
@@ -133,11 +134,11 @@ typedef struct sv_coarse {
 SV_API bool sv_local_chern_wants_blocks(const sv_value *values);
 /**
  * Coarse map of the local Chern marker: the flake is cut into squares, `blocks` along its longer
- * side; in each a stratified random sample of about `block_cells` cells, in runs of neighbouring cells
- * that one panel of columns serves (at least two runs), is computed as in sv_local_chern(). Cells
- * within three cells of the edge are left out. With runs m_k, error = √((1 − f) Σ(m_k − m)²/n(n−1)),
- * f the share of the runs that is computed: where the marker varies on the scale of a block it is
- * rather too large. The draw depends on seed, realisation and block only.
+ * side; in each a stratified random sample of about `block_cells` cells, in runs of neighbouring
+ * cells that one panel of columns serves (at least two runs), is computed as in sv_local_chern().
+ * Cells within three cells of the edge are left out. With runs m_k, error = √((1 − f) Σ(m_k −
+ * m)²/n(n−1)), f the share of the runs that is computed: where the marker varies on the scale of a
+ * block it is rather too large. The draw depends on seed, realisation and block only.
  * @param input  projector of the sample, values of all keys of local_chern, threads, seed,
  *               realisation
  * @return SV_INVALID_INPUT, SV_NO_MEMORY, SV_INTERRUPTED, SV_NUMERICAL
@@ -239,7 +240,7 @@ typedef struct sv_probe {
     double kappa;
     bool resolved; /**< by the rules of sv_localizer_index() */
     int64_t index; /**< when resolved */
-    double gap;    /**< localizer gap, relative error 1e-7; with gap: bound its bound τ; NaN: none */
+    double gap; /**< localizer gap, relative error 1e-7; with gap: bound its bound τ; NaN: none */
     double certain;   /**< lower bound of the gap, by inertia; 0: none. No potential of a smaller
                            operator norm changes the half signature */
     char reason[120]; /**< of an unresolved one */
@@ -255,11 +256,11 @@ typedef struct sv_between {
 typedef struct sv_survey {
     char reason[200]; /**< why no probe is resolved, when that has one reason for all; or empty */
     double energy, kappa, threshold;
-    sv_index points[2];   /**< nx, ny of a grid; n, 1 of a line; 0, 0: not asked for */
+    sv_index points[2]; /**< nx, ny of a grid; n, 1 of a line; 0, 0: not asked for */
     bool line;
     double from[2], to[2];
-    sv_probe *probes;     /**< nx·ny, x fastest */
-    sv_between *between;  /**< line: n − 1 segments; grid: (nx − 1)(ny − 1) cells, x fastest */
+    sv_probe *probes;    /**< nx·ny, x fastest */
+    sv_between *between; /**< line: n − 1 segments; grid: (nx − 1)(ny − 1) cells, x fastest */
     sv_index n_between;
     sv_probe *kappas; /**< at one point, κ ascending by equal ratios */
     sv_index n_kappas;
@@ -362,22 +363,22 @@ SV_API SV_MUST_USE sv_status sv_density_response(sv_context *context, const sv_m
                                                  sv_outcome *ret_outcome);
 
 /**
- * Spectral flow of an open flake with exactly one hole (annulus, polygon with one hole; R. B. Laughlin,
- * Phys. Rev. B 23, 5632 (1981); B. I. Halperin, Phys. Rev. B 25, 2185 (1982)): while one flux quantum
- * is put through the hole, C levels rise through the Fermi energy at the hole and C fall at the
- * outline. The index is the net number that rise at the hole, which is +C; sign of the flux as in
- * conventions.h.
+ * Spectral flow of an open flake with exactly one hole (annulus, polygon with one hole; R. B.
+ * Laughlin, Phys. Rev. B 23, 5632 (1981); B. I. Halperin, Phys. Rev. B 25, 2185 (1982)): while one
+ * flux quantum is put through the hole, C levels rise through the Fermi energy at the hole and C
+ * fall at the outline. The index is the net number that rise at the hole, which is +C; sign of the
+ * flux as in conventions.h.
  *
- * Levels next to the Fermi energy are split by edge and followed by overlaps; a step is halved until
- * every level that could reach the Fermi energy in it is found again to 0.8 and the crossings are
- * whole numbers to 0.2. Resolved when both edges together count 0 and each crossing level has 0.75 of
- * its weight on its side of the ring, and is coupled to levels of the other edge by at most 0.15 of
- * the level spacing: narrow rings have no two edges (annulus: about the middle radius; polygon: nearer to the hole
- * or to the outline). A level on the Fermi energy without flux leaves it unresolved; a filling is
- * turned into a Fermi energy without flux, and that energy is kept. Margin: least weight of a
- * crossing level on its side (1: none crossed); weakest: least share of a level found again.
- * Keys: steps, energy_window. Cost: one analysis and five to eight factorisations per flux, 16 to
- * some hundred fluxes.
+ * Levels next to the Fermi energy are split by edge and followed by overlaps; a step is halved
+ * until every level that could reach the Fermi energy in it is found again to 0.8 and the crossings
+ * are whole numbers to 0.2. Resolved when both edges together count 0 and each crossing level has
+ * 0.75 of its weight on its side of the ring, and is coupled to levels of the other edge by at most
+ * 0.15 of the level spacing: narrow rings have no two edges (annulus: about the middle radius;
+ * polygon: nearer to the hole or to the outline). A level on the Fermi energy without flux leaves
+ * it unresolved; a filling is turned into a Fermi energy without flux, and that energy is kept.
+ * Margin: least weight of a crossing level on its side (1: none crossed); weakest: least share of a
+ * level found again. Keys: steps, energy_window. Cost: one analysis and five to eight
+ * factorisations per flux, 16 to some hundred fluxes.
  */
 SV_API SV_MUST_USE sv_status sv_spectral_flow(sv_context *context, const sv_marker_input *input,
                                               sv_outcome *ret_outcome);

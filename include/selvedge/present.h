@@ -71,8 +71,8 @@ typedef struct sv_result {
     sv_compared *comparisons; /**< with the first point, then along the axes; all markers of a pair
                                    follow each other */
     int32_t n_comparisons;
-    double seconds; /**< of this invocation; kept outside `points` */
-    bool complete;  /**< false: stopped early */
+    double seconds;              /**< of this invocation; kept outside `points` */
+    bool complete;               /**< false: stopped early */
     sv_finite_size *finite_size; /**< or NULL */
 } sv_result;
 
@@ -146,8 +146,8 @@ typedef struct sv_site_map {
     const char *title;
     const char *note; /**< shown under the title of figures, or NULL */
     const sv_flake *flake;
-    const sv_case *point;   /**< for the window */
-    const sv_site_sum *sum; /**< sv_site_entries(flake) entries */
+    const sv_case *point;    /**< for the window */
+    const sv_site_sum *sum;  /**< sv_site_entries(flake) entries */
     double lattice_constant; /**< nm, 0: none */
 } sv_site_map;
 /** Moments of the marker of a cell: the sum over the sites it has left in a realisation. */
@@ -156,9 +156,9 @@ SV_API sv_moments sv_site_map_cell(const sv_site_map *map, sv_index cell);
 SV_API sv_site_summary sv_site_map_summary(const sv_site_map *map);
 /**
  * One row per site of the pristine flake:
- * point,site,cell_i,cell_j,orbital,x,y,mean,deviation,standard_error,present and the same four of its
- * cell, cell_mean … cell_present. Positions in lattice constants; present: realisations in which it has
- * a value; empty: does not exist.
+ * point,site,cell_i,cell_j,orbital,x,y,mean,deviation,standard_error,present and the same four of
+ * its cell, cell_mean … cell_present. Positions in lattice constants; present: realisations in
+ * which it has a value; empty: does not exist.
  * @param head  begin with the names of the columns
  * @param[out] ret_text taken from the context
  */

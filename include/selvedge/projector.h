@@ -45,11 +45,11 @@ typedef struct sv_projector_options {
                           one by one and occupied exactly; 0: left to the polynomial */
     double reach;    /**< chebyshev: radius of the parts for single columns, lattice constants;
                           0: columns use the whole flake */
-    sv_index sampled_cells; /**< local Chern: number of window cells to sample; 0: all */
+    sv_index sampled_cells;   /**< local Chern: number of window cells to sample; 0: all */
     sv_estimator estimator;   /**< read by sv_case_plan() */
     sv_index sampled_vectors; /**< local Chern: random-phase vectors; 0: none. Chebyshev then holds
                                    the whole projector besides its parts */
-    int threads;            /**< threads inside one realisation (huge flakes); 0 or 1: one */
+    int threads;              /**< threads inside one realisation (huge flakes); 0 or 1: one */
     bool trial; /**< chebyshev: do not count states to see whether a level is on the Fermi energy */
 } sv_projector_options;
 SV_API sv_projector_options sv_projector_options_default(void);

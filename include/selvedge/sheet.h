@@ -127,10 +127,10 @@ typedef struct sv_sheet_plateau {
 
 /** The block `finite_size`: where do the curves of different sizes cross? */
 typedef struct sv_sheet_finite_size {
-    int marker;     /**< number in sv_setup.markers */
-    int size_axis;  /**< number in sv_setup.axes; the other one is the parameter */
-    double range[2]; /**< of the parameter, in the unit of its axis; NaN: not given */
-    int order;       /**< 0: not given */
+    int marker;         /**< number in sv_setup.markers */
+    int size_axis;      /**< number in sv_setup.axes; the other one is the parameter */
+    double range[2];    /**< of the parameter, in the unit of its axis; NaN: not given */
+    int order;          /**< 0: not given */
     char correction[8]; /**< none, fixed, free */
     double exponent;    /**< of a fixed correction, NaN otherwise */
     int resamples;

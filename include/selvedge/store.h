@@ -26,23 +26,23 @@ typedef struct sv_run_input {
 
 /** What a run is. Texts are borrowed for the call. */
 typedef struct sv_run_identity {
-    const char *identity;      /**< canonical text; its SHA-256 names the run */
+    const char *identity;       /**< canonical text; its SHA-256 names the run */
     const char *resolved_sheet; /**< written to sheet.resolved.yaml */
     const char *program_version;
-    const char *kernel;        /**< arithmetic kernel (BLAS kind, threading, core) */
+    const char *kernel; /**< arithmetic kernel (BLAS kind, threading, core) */
     const sv_run_input *inputs;
     int n_inputs;
     /* Of this writing, for the event that begins it; no part of the identity. */
-    const char *command_line;  /**< or NULL */
-    const char *libraries;     /**< versions of those besides SQLite, one line, or NULL */
-    int threads, ranks;        /**< at work; 0: not known */
+    const char *command_line;   /**< or NULL */
+    const char *libraries;      /**< versions of those besides SQLite, one line, or NULL */
+    int threads, ranks;         /**< at work; 0: not known */
     const char *const *markers; /**< names in the order of the outcomes of a record; NULL: not
                                      known, then rows carry positions only */
     int n_markers;
-    int32_t n_points; /**< of the sweep, 1 without one; 0: not known */
+    int32_t n_points;     /**< of the sweep, 1 without one; 0: not known */
     int64_t realisations; /**< per point asked for; a note, no part of the identity; 0: not known */
-    int32_t task, tasks; /**< the part of task `task` (from 1) of `tasks`; 0 of 0: the whole run.
-                              The folder of one task refuses another task */
+    int32_t task, tasks;  /**< the part of task `task` (from 1) of `tasks`; 0 of 0: the whole run.
+                               The folder of one task refuses another task */
 } sv_run_identity;
 
 /**
@@ -80,12 +80,12 @@ SV_API SV_MUST_USE sv_status sv_run_extent(sv_context *context, sv_run *run,
                                            int64_t *ret_realisations, int32_t *ret_points);
 /**
  * The maps of a point: exact sums over its realisations 0 … counted−1. Kept as one row per
- * realisation (8 bytes an entry) until 64 of them that follow each other count for good; then one sum (36
- * bytes an entry) replaces them, 64 such sums become one, and so on: up to 10^6 realisations at most
- * about 7.5 kB an entry.
+ * realisation (8 bytes an entry) until 64 of them that follow each other count for good; then one
+ * sum (36 bytes an entry) replaces them, 64 such sums become one, and so on: up to 10^6
+ * realisations at most about 7.5 kB an entry.
  * @param entries  sv_site_entries() of the flake
- * @param[out] ret_sum  its `realisations` may be below `counted` by up to a block, when a stop rule has
- *                      been tightened since those were joined
+ * @param[out] ret_sum  its `realisations` may be below `counted` by up to a block, when a stop rule
+ * has been tightened since those were joined
  * @return SV_STORAGE when a row is damaged or of another flake
  */
 SV_API SV_MUST_USE sv_status sv_run_load_sites(sv_context *context, sv_run *run, int32_t point,
@@ -98,8 +98,8 @@ SV_API SV_MUST_USE sv_status sv_run_fold_sites(sv_context *context, sv_run *run,
 SV_API SV_MUST_USE sv_status sv_run_check_sites(sv_context *context, sv_run *run);
 /**
  * Records an event with a note. The store itself records `start`, `continue`, `end`, `identity
- * change`, and `lost` for a writing that left no end (SIGKILL, power); the caller what else happens,
- * such as `stop` with its cause.
+ * change`, and `lost` for a writing that left no end (SIGKILL, power); the caller what else
+ * happens, such as `stop` with its cause.
  */
 SV_API SV_MUST_USE sv_status sv_run_event(sv_context *context, sv_run *run, const char *what,
                                           const char *note);
@@ -190,25 +190,25 @@ typedef struct sv_merge_survey {
     int64_t distinct;     /**< of them with different numbers */
     int64_t extent;       /**< largest realisation number plus one */
     int64_t realisations; /**< most that any folder was asked for, per point; 0: none says */
-    int32_t tasks;        /**< parts all folders agree on; 0: no folder is a part, −1: they differ */
+    int32_t tasks; /**< parts all folders agree on; 0: no folder is a part, −1: they differ */
 } sv_merge_survey;
 
 /**
- * Reads every row of every folder with its checksum, compares what is there twice (times apart), and
- * writes nothing. The folders may come from elsewhere: their ledgers are checked as
+ * Reads every row of every folder with its checksum, compares what is there twice (times apart),
+ * and writes nothing. The folders may come from elsewhere: their ledgers are checked as
  * sv_run_open_read() does, and none is followed out of itself. They must be of one run: the same
  * sheet, inputs, version and arithmetic kernel.
  * Memory: 56 bytes a row.
  * @param folders  n ≥ 1 paths; the first one says which run it is
- * @return SV_OTHER_RUN naming what differs; SV_STORAGE for damage; SV_UNDECIDED when a realisation has
- *         other numbers in another folder: something is not reproducible; SV_INTERRUPTED
+ * @return SV_OTHER_RUN naming what differs; SV_STORAGE for damage; SV_UNDECIDED when a realisation
+ * has other numbers in another folder: something is not reproducible; SV_INTERRUPTED
  */
 SV_API SV_MUST_USE sv_status sv_run_survey(sv_context *context, const char *const *folders, int n,
                                            sv_merge_survey *ret_survey);
 /**
- * Puts the rows of the shards into a run of the same identity, in one transaction: all or none. Rows
- * that are there already must be the same bit for bit (times apart). Any order, any number of times.
- * An event notes each shard.
+ * Puts the rows of the shards into a run of the same identity, in one transaction: all or none.
+ * Rows that are there already must be the same bit for bit (times apart). Any order, any number of
+ * times. An event notes each shard.
  * @return as sv_run_survey(); SV_STORAGE also for a row that differs from the run's
  */
 SV_API SV_MUST_USE sv_status sv_run_merge(sv_context *context, sv_run *run,

@@ -218,15 +218,16 @@ typedef struct sv_scaling_without {
     double size;
     bool fitted;
     double critical, nu;
-    double shift[2]; /**< of p_c and of 1/ν against the whole fit, in standard errors of the shift */
+    double
+        shift[2]; /**< of p_c and of 1/ν against the whole fit, in standard errors of the shift */
 } sv_scaling_without;
 
 /** One mean in the figure of the collapse. */
 typedef struct sv_scaling_row {
     double size, parameter, mean, standard_error;
-    bool used;                       /**< inside the range of the collapse */
-    double x, collapsed, fitted;     /**< (p−p_c) L^{1/ν}; mean less its correction; F(x) */
-    double residual;                 /**< (mean − fit)/standard_error */
+    bool used;                   /**< inside the range of the collapse */
+    double x, collapsed, fitted; /**< (p−p_c) L^{1/ν}; mean less its correction; F(x) */
+    double residual;             /**< (mean − fit)/standard_error */
 } sv_scaling_row;
 
 /** mean = F[(p−p_c) L^{1/ν}] + L^{−y} G[(p−p_c) L^{1/ν}] */
@@ -236,16 +237,16 @@ typedef struct sv_scaling_collapse {
     int n_reasons;
     char reasons[SV_SCALING_REASONS][240];
     sv_scaling_estimate critical, nu, exponent; /**< exponent: NaN unless free */
-    int order, correction_order; /**< of F and G (−1: no G) */
+    int order, correction_order;                /**< of F and G (−1: no G) */
     int n_points, n_parameters;
-    double range[2];          /**< of the parameters used */
-    double reach;             /**< largest |x| used */
-    double chi_square;        /**< Σ residual² */
-    int degrees_of_freedom;   /**< n_points − n_parameters: were the points independent */
-    double scale, effective;  /**< under the correlations of the data chi_square is distributed as
-                                   scale · χ² of `effective` degrees of freedom */
+    double range[2];         /**< of the parameters used */
+    double reach;            /**< largest |x| used */
+    double chi_square;       /**< Σ residual² */
+    int degrees_of_freedom;  /**< n_points − n_parameters: were the points independent */
+    double scale, effective; /**< under the correlations of the data chi_square is distributed as
+                                  scale · χ² of `effective` degrees of freedom */
     double p_value;
-    int resamples, failed; /**< failed: of the bootstrap's refits */
+    int resamples, failed;                        /**< failed: of the bootstrap's refits */
     sv_scaling_without without[SV_SCALING_SIZES]; /**< ascending sizes; from three sizes on */
     int n_without;
 } sv_scaling_collapse;
@@ -254,12 +255,12 @@ typedef struct sv_scaling_collapse {
 typedef struct sv_scaling {
     double confidence;
     int n_sizes;
-    double sizes[SV_SCALING_SIZES]; /**< ascending */
-    int64_t least, most;            /**< realisations with a value at a point */
+    double sizes[SV_SCALING_SIZES];                  /**< ascending */
+    int64_t least, most;                             /**< realisations with a value at a point */
     sv_scaling_crossing crossings[SV_SCALING_SIZES]; /**< of neighbouring sizes */
     int n_crossings;
-    double drift;    /**< last crossing − first, NaN below two */
-    double drift_z;  /**< in standard errors */
+    double drift;                 /**< last crossing − first, NaN below two */
+    double drift_z;               /**< in standard errors */
     sv_scaling_estimate crossing; /**< p_c from crossings: weighted mean, or that of the largest
                                        pair when they drift (|drift_z| > 2); NaN: none found */
     sv_scaling_collapse collapse;
@@ -277,22 +278,23 @@ typedef struct sv_scaling {
  * The root of a parabola fitted, weighted, to the differences at up to three parameters on each
  * side (a line when there are fewer than five).
  *
- * *Collapse*: least squares, weighted with the standard errors, in p_c, 1/ν, the coefficients of the
- * polynomial F, and with a correction those of G (order 1) and y, by Levenberg and Marquardt from
- * the best cells of a grid over (p_c, ν, y) whose linear part is solved exactly. Order of F: that of
- * the smallest χ² + 2 tr(PΣ), P the projection on the columns of the Jacobian, Σ the correlations of
- * the means (for independent points Mallows' C_p; B. Efron, J. Am. Stat. Assoc. 99, 619 (2004)),
- * and two more, so that what F leaves out stays below the errors. Automatic range: all parameters,
- * then one less at the end farther from p_c, until the p-value is 0.05 and those two orders exist.
+ * *Collapse*: least squares, weighted with the standard errors, in p_c, 1/ν, the coefficients of
+ * the polynomial F, and with a correction those of G (order 1) and y, by Levenberg and Marquardt
+ * from the best cells of a grid over (p_c, ν, y) whose linear part is solved exactly. Order of F:
+ * that of the smallest χ² + 2 tr(PΣ), P the projection on the columns of the Jacobian, Σ the
+ * correlations of the means (for independent points Mallows' C_p; B. Efron, J. Am. Stat. Assoc. 99,
+ * 619 (2004)), and two more, so that what F leaves out stays below the errors. Automatic range: all
+ * parameters, then one less at the end farther from p_c, until the p-value is 0.05 and those two
+ * orders exist.
  *
  * *Errors*: the bootstrap resamples realisation numbers, at all points at once, and refits. χ² is
  * judged with the covariance of the realisations: its first two moments give scale and effective
  * degrees of freedom (J. N. K. Rao, A. J. Scott, Ann. Stat. 12, 46 (1984), second order).
  *
  * *Refusal*: reasons in words when there are fewer than three sizes, p_c is not inside the range,
- * the interval of ν is not bounded within [0.1, 20], the p-value is below 1e-3, more than a tenth of
- * the resamples fail, smallest and largest size do not cross, or leaving out the smallest size moves
- * p_c or 1/ν by more than 3.3 standard errors of the shift.
+ * the interval of ν is not bounded within [0.1, 20], the p-value is below 1e-3, more than a tenth
+ * of the resamples fail, smallest and largest size do not cross, or leaving out the smallest size
+ * moves p_c or 1/ν by more than 3.3 standard errors of the shift.
  * @param[out] ret_scaling give back with sv_scaling_free()
  * @return SV_INVALID_INPUT for a table that is none (sizes not positive, a pair twice, more than
  *         SV_SCALING_SIZES sizes, options out of range); SV_INTERRUPTED; never because the data

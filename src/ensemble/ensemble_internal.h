@@ -10,7 +10,8 @@ __extension__ typedef unsigned __int128 sv_wide_bits; /* sums modulo 2^128 */
 void sv_stop_advance(sv_stop_state *state, const sv_ensemble *ensemble, int32_t point,
                      const sv_stop_rule *rule);
 
-/* ---- pool.c: threads that compute from a queue; all functions but these threads' are the owner's */
+/* ---- pool.c: threads that compute from a queue; all functions but these threads' are the owner's
+ */
 
 typedef struct pool_job {
     int32_t point;

@@ -6,7 +6,8 @@
 
 /* Quantile of the standard normal distribution at 0.975. */
 static const double Z95 = 1.9599639845400545;
-/* Weight of the skewness: chosen by simulation (data/manual/statistics.md), no cost for even values. */
+/* Weight of the skewness: chosen by simulation (data/manual/statistics.md), no cost for even
+ * values. */
 static const double SKEW_WEIGHT = 5.0;
 /* Values that are all the same say little about rarer ones: they must be this many times at_least.
  */

@@ -9,7 +9,8 @@
 /* A blank outcome with engine and levels filled in; says so when the projector is ambiguous. */
 sv_outcome sv_outcome_start(const sv_projector *projector);
 
-/* Local Chern marker of some rows from a basis of the occupied or empty space; an empty one gives 0. */
+/* Local Chern marker of some rows from a basis of the occupied or empty space; an empty one gives
+ * 0. */
 sv_status sv_chern_of_basis(sv_context *context, const sv_sample *sample, const sv_basis *basis,
                             const sv_index *rows, sv_index n_rows, double *ret_marker);
 /* First-order effect of an error `defect` of P on one value: P enters three times, and positions
@@ -56,12 +57,12 @@ enum { CHERN_WINDOW, CHERN_BLOCKS, CHERN_BLOCK_CELLS };
 bool sv_local_chern_check(const sv_value *values, int *ret_key, char *message, size_t size);
 
 /*
- * The Fermi energy of a sample by inertia of its Hamiltonian (as given, or for a filling), electrons
- * and the levels on either side to the outcome. *ret_good false: a level lies on it, and the
- * outcome has the reason. Leaves the plan with a factor at the energy.
+ * The Fermi energy of a sample by inertia of its Hamiltonian (as given, or for a filling),
+ * electrons and the levels on either side to the outcome. *ret_good false: a level lies on it, and
+ * the outcome has the reason. Leaves the plan with a factor at the energy.
  */
 sv_status sv_energy_place(sv_context *context, sv_inertia_plan *plan, const sv_sparse *h,
-                          const sv_occupation *occupation, sv_outcome *outcome,
-                          double *ret_energy, bool *ret_good);
+                          const sv_occupation *occupation, sv_outcome *outcome, double *ret_energy,
+                          bool *ret_good);
 
 #endif

@@ -98,11 +98,11 @@ static void add_bar(sv_map_figure *f)
     sv_draft_add(script, ")\n");
     add_bar_end(f, 11, x, width, low + length, low + length + tip, 1);
     add_bar_end(f, 12, x, width, low, low - tip, -1);
-    sv_draft_add(
-        script,
-        "set label 11 '%s marker per cell' at screen %.5f,%.5f center rotate by "
-        "90 font ',7'\n",
-        f->kind == SV_MAP_MEAN ? "mean" : "local Chern", (w - 0.24) / w, (low + 0.5 * length) / h);
+    sv_draft_add(script,
+                 "set label 11 '%s marker per cell' at screen %.5f,%.5f center rotate by "
+                 "90 font ',7'\n",
+                 f->kind == SV_MAP_MEAN ? "mean" : "local Chern", (w - 0.24) / w,
+                 (low + 0.5 * length) / h);
     sv_draft_add(script,
                  "set label 12 '> %.3g' at screen %.5f,%.5f left font ',6' tc rgb '#404040'\n"
                  "set label 13 '< \xE2\x88\x92%.3g' at screen %.5f,%.5f left font ',6' tc rgb "

@@ -28,8 +28,8 @@ static const command commands[] = {
     {"export", "SHEET|RUN",
      "writes the Hamiltonian and the sites of one realisation, or the site maps of a run",
      SHEET_OPTIONS "kHLFm", 1, 1, run_export},
-    {"info", "[RUN]", "versions, BLAS, kernel, threads; or history, health and cost of a run",
-     "J", 0, 1, run_info},
+    {"info", "[RUN]", "versions, BLAS, kernel, threads; or history, health and cost of a run", "J",
+     0, 1, run_info},
     {"help", "[COMMAND|keys|presets]",
      "help on a command, the keys of a sheet, or material presets", "", 0, 1, run_help},
 };

@@ -219,8 +219,8 @@ bool coarse_wanted(const sv_case *problem);
 sv_status coarse_compute(session *s, const sv_case *problem, const sv_sample *sample,
                          sv_index realisation, sv_coarse *ret);
 sv_status coarse_write_csv(session *s, const sv_coarse *map, const char *path);
-/* The maps of an ensemble (site_maps.c), from a run whose result is made: what they come to, joined as
- * far as they count when the run is being written; a table of all sites; figures. */
+/* The maps of an ensemble (site_maps.c), from a run whose result is made: what they come to, joined
+ * as far as they count when the run is being written; a table of all sites; figures. */
 sv_status site_maps_add(session *s, sv_run *run, bool writing, sv_result *result);
 sv_status site_maps_write(session *s, sv_run *run, sv_result *result, const char *path);
 sv_status site_maps_draw(session *s, sv_run *run, sv_result *result, const char *folder,

@@ -131,7 +131,10 @@ static const sv_key stop_keys[] = {
 };
 
 static const sv_key sweep_keys[] = {
-    {.name = "parameter", .type = SV_KEY_TEXT, .required = true, .doc = "dotted path of a number, or of a pair such as flake.cells"},
+    {.name = "parameter",
+     .type = SV_KEY_TEXT,
+     .required = true,
+     .doc = "dotted path of a number, or of a pair such as flake.cells"},
     {.name = "from", .type = SV_KEY_TREE, .doc = "first value"},
     {.name = "to", .type = SV_KEY_TREE, .doc = "last value"},
     {.name = "steps",
@@ -139,7 +142,9 @@ static const sv_key sweep_keys[] = {
      .low = 2,
      .high = 100000,
      .doc = "number of points, both ends included"},
-    {.name = "values", .type = SV_KEY_TREE, .doc = "[v1, v2, …] instead of from, to, steps; a size n stands for [n, n]"},
+    {.name = "values",
+     .type = SV_KEY_TREE,
+     .doc = "[v1, v2, …] instead of from, to, steps; a size n stands for [n, n]"},
 };
 
 static const sv_key question_keys[] = {

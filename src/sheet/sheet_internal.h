@@ -189,7 +189,7 @@ struct sv_sheet {
     bool (*check_marker)(int kind, const sv_value *values, int *ret_key, char *message,
                          size_t size);
     bool (*is_index)(int kind); /* or NULL */
-    const sv_node *root;               /* overrides applied */
+    const sv_node *root;        /* overrides applied */
     const sv_kind *markers;
     int n_markers;
     double energy_unit; /* of the sheet as written; 0: none known */

@@ -141,8 +141,8 @@ sv_status sv_site_put(sv_context *context, sv_run *run, int32_t point, int64_t r
                       const sv_site_record *record);
 sv_status sv_site_fold(sv_context *context, sv_run *run, int32_t point, int64_t counted);
 enum { SV_SITE_HEAD_BYTES = 24 };
-/* The data of a row behind SV_SITE_HEAD_BYTES of room, its checksum looked at; *ret_bytes stays NULL
- * when there is no such row. */
+/* The data of a row behind SV_SITE_HEAD_BYTES of room, its checksum looked at; *ret_bytes stays
+ * NULL when there is no such row. */
 sv_status sv_site_get_row(sv_context *context, sv_run *run, const sv_site_place *at,
                           unsigned char **ret_bytes, size_t *ret_size);
 /* Writes a row; fills the room before its data. */

@@ -98,8 +98,8 @@ static void read_manual(void)
 {
     size_t size;
     if (manual == NULL)
-        CHECK_OK(sv_read_file(test_context(), test_data("../data/manual/statistics.md"), 1 << 20, &manual,
-                              &size));
+        CHECK_OK(sv_read_file(test_context(), test_data("../data/manual/statistics.md"), 1 << 20,
+                              &manual, &size));
 }
 
 static void give_manual(void)
@@ -218,7 +218,8 @@ SV_TEST(means_of_a_given_number)
 }
 
 /* Draws until the rule holds. */
-static int64_t draw_and_stop(const value_law *law, source *s, const sv_stop_rule *rule, double *values)
+static int64_t draw_and_stop(const value_law *law, source *s, const sv_stop_rule *rule,
+                             double *values)
 {
     sv_stop_state state = {0};
     for (int64_t n = 0; n < LONGEST; n += 50) {

@@ -126,11 +126,8 @@ SV_TEST(records_know_vacant_sites_and_cells)
     sv_model model = fixture_haldane(0.2, 1.5, 0.0);
     sv_flake_spec spec = fixture_cells(&model, 4, 4, false);
     sv_flake flake = fixture_flake(&model, &spec);
-    sv_disorder vacancies = {.name = "vac",
-                             .type = SV_DISORDER_VACANCIES,
-                             .on = -1,
-                             .has_share = true,
-                             .share = 0.3};
+    sv_disorder vacancies = {
+        .name = "vac", .type = SV_DISORDER_VACANCIES, .on = -1, .has_share = true, .share = 0.3};
     sv_sample sample = {0};
     sv_site_record *record = NULL;
     double values[32];

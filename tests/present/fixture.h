@@ -66,7 +66,8 @@ static inline void fixture_fill_bott(sv_summary *s, sv_index_share shares[2], in
         snprintf(s->unresolved_reason, sizeof s->unresolved_reason,
                  "an eigenvalue lies 3e-8 from the negative axis, \"too near\"");
     shares[0] = (sv_index_share){0, 50 * i, 0.25 * i, {0.1, 0.2}, {0.09, 0.21}};
-    shares[1] = (sv_index_share){1, 200 - 50 * i - s->unresolved, 1 - 0.25 * i, {0.981, 1}, {0.98, 1}};
+    shares[1] =
+        (sv_index_share){1, 200 - 50 * i - s->unresolved, 1 - 0.25 * i, {0.981, 1}, {0.98, 1}};
     s->shares = shares;
     s->n_shares = 2;
 }
